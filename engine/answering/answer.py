@@ -1,0 +1,137 @@
+"""What an answer is: marginals of each watched column in each world, with draws, and the change between worlds."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Iterator, Mapping
+from dataclasses import dataclass
+
+import numpy as np
+
+Wanted = str | Iterable[str]
+
+
+@dataclass(frozen=True, eq=False)
+class Marginal:
+    """Shares of one column's levels in one world.
+
+    point: (levels,) the posterior predictive shares.  draws: (levels, draws), draws >= 0; common across worlds.
+    """
+
+    levels: tuple[str, ...]
+    point: np.ndarray
+    draws: np.ndarray
+
+    @property
+    def shares(self) -> dict[str, float]:
+        return {level: float(share) for level, share in zip(self.levels, self.point, strict=True)}
+
+    def share(self, wanted: Wanted) -> float:
+        """Share of one level, or of several together."""
+        return float(self.point[self._rows(wanted)].sum())
+
+    def share_draws(self, wanted: Wanted) -> np.ndarray:
+        """(draws,) share of one level, or of several together, in each draw."""
+        return np.asarray(self.draws[self._rows(wanted)].sum(axis=0))
+
+    def interval(self, wanted: Wanted, coverage: float = 0.90) -> tuple[float, float]:
+        """Equal-tailed credible interval of a share over draws; a point when the parameters are known exactly."""
+        return spread(self.share_draws(wanted), self.share(wanted), coverage)
+
+    def _rows(self, wanted: Wanted) -> list[int]:
+        names = [wanted] if isinstance(wanted, str) else list(wanted)
+        return [self.levels.index(name) for name in names]
+
+
+def spread(draws: np.ndarray, point: float, coverage: float) -> tuple[float, float]:
+    """Equal-tailed interval of `draws`; (point, point) when there are none."""
+    if draws.size == 0:
+        return point, point
+    tail = (1.0 - coverage) / 2.0
+    low, high = np.quantile(draws, [tail, 1.0 - tail])
+    return float(low), float(high)
+
+
+@dataclass(frozen=True)
+class Counted:
+    """Straight from the records: `rows` that match every pin, and how many of them hold each level."""
+
+    rows: int
+    counts: Mapping[str, int]
+
+    @property
+    def shares(self) -> dict[str, float]:
+        return {level: count / self.rows for level, count in self.counts.items()}
+
+
+@dataclass(frozen=True, eq=False)
+class Reading:
+    """One column in every world asked about.
+
+    recorded: no pins.  among: pins.  set: pins and levers, None without levers.
+    had: pins and the levers' values as pins, None without levers or where no such record can be.
+    counted: from the records, None under the small-count limit or without records.
+    """
+
+    column: str
+    recorded: Marginal
+    among: Marginal
+    set: Marginal | None = None
+    had: Marginal | None = None
+    counted: Counted | None = None
+
+
+@dataclass(frozen=True)
+class Caution:
+    """A reason to distrust an answer.
+
+    rank: "blocks", "weakens" or "know".  code: stable name of the check.
+    figure: the number as shown, such as "38 of 412"; `text` is a sentence that reads on from it.
+    do: one thing to do.  figures: the numbers behind it by name.  columns: those concerned.
+    """
+
+    rank: str
+    code: str
+    figure: str
+    text: str
+    do: str
+    figures: Mapping[str, float]
+    columns: tuple[str, ...]
+
+
+@dataclass(frozen=True, eq=False)
+class Answer:
+    """Readings of every column asked for, and how they were come by.
+
+    watch: the columns the question is about; cautions concern these.  readings also holds those read beside them.
+    matching: records that match every pin, None without records.
+    method: "exact" or "sampled", and by which route.  cost: table cells times draws.  milliseconds: wall time.
+    mc_error: largest Monte Carlo standard error, 0 when exact.
+    log_evidence: natural log of the pins' probability.
+    """
+
+    watch: tuple[str, ...]
+    readings: Mapping[str, Reading]
+    method: str
+    cost: float
+    milliseconds: float
+    log_evidence: float
+    matching: int | None = None
+    mc_error: float = 0.0
+    cautions: tuple[Caution, ...] = ()
+
+    def __getitem__(self, column: str) -> Reading:
+        return self.readings[column]
+
+    def __iter__(self) -> Iterator[str]:
+        return iter(self.readings)
+
+    def change(self, column: str, wanted: Wanted, coverage: float = 0.90) -> tuple[float, float, float]:
+        """(change, low, high): share if set minus share among these, over common draws. Raises Refusal without levers."""
+        reading = self.readings[column]
+        if reading.set is None:
+            from engine.refusal import Refusal
+
+            raise Refusal("Nothing is set, so nothing changes.", do="Set a lever first.")
+        change = reading.set.share(wanted) - reading.among.share(wanted)
+        low, high = spread(reading.set.share_draws(wanted) - reading.among.share_draws(wanted), change, coverage)
+        return change, low, high

@@ -1,0 +1,19 @@
+"""Refusal: the one family of errors that are meant for people."""
+
+
+class Refusal(Exception):  # noqa: N818  a refusal is an answer to a person, not a fault in the program
+    """What is wrong, where it is, and what to do about it.
+
+    message: one sentence, plain text (names in it are not escaped).
+    where: the place, such as "line 212" or a column's name, or None.
+    do: one sentence that says what to do next, or None.
+    """
+
+    def __init__(self, message: str, where: str | None = None, do: str | None = None) -> None:
+        super().__init__(message)
+        self.message = message
+        self.where = where
+        self.do = do
+
+    def __str__(self) -> str:
+        return " ".join(part for part in (self.message, self.do) if part)
