@@ -1,0 +1,217 @@
+"""The order: what may influence what, as the user states it."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass, field
+from enum import Enum
+
+import pandas as pd
+
+from engine.refusal import Refusal
+
+Link = tuple[str, str]
+
+
+class Direction(Enum):
+    """Which way a number is better: engine.MORE and engine.LESS."""
+
+    MORE = "more"
+    LESS = "less"
+
+
+MORE = Direction.MORE
+LESS = Direction.LESS
+Better = Direction | tuple[str, ...]
+
+
+@dataclass(frozen=True)
+class Stage:
+    """A named group of columns that none of them is known to come before another."""
+
+    name: str
+    columns: tuple[str, ...]
+
+
+@dataclass(frozen=True)
+class Order:
+    """Stages, early to late: a column may lead to columns of its own stage and of later ones.
+
+    stages: (name, columns) pairs or Stages.  insist, rule_out: (source, target) links.
+    changeable: columns that may get a lever.  outcomes: column -> its better level or levels, or MORE or LESS.
+
+    Raises Refusal for a column in two places, for a column that no stage holds, and for links that contradict the
+    stages or each other.
+    """
+
+    stages: tuple[Stage, ...]
+    insist: tuple[Link, ...] = ()
+    rule_out: tuple[Link, ...] = ()
+    unrecorded: tuple[object, ...] = ()
+    changeable: tuple[str, ...] = ()
+    outcomes: Mapping[str, Better] = field(default_factory=dict)
+    _places: Mapping[str, int] = field(init=False, repr=False, compare=False)
+    _led: Mapping[str, frozenset[str]] = field(init=False, repr=False, compare=False)
+
+    def __init__(
+        self,
+        stages: Iterable[Stage | tuple[str, Iterable[str]]],
+        insist: Iterable[Link] = (),
+        rule_out: Iterable[Link] = (),
+        unrecorded: Iterable[object] = (),
+        changeable: Iterable[str] = (),
+        outcomes: Mapping[str, str | Direction | Iterable[str]] | None = None,
+    ) -> None:
+        def keep(name: str, value: object) -> None:
+            object.__setattr__(self, name, value)
+
+        keep("stages", tuple(_stage(stage) for stage in stages))
+        keep("insist", _links(insist))
+        keep("rule_out", _links(rule_out))
+        keep("unrecorded", tuple(unrecorded))
+        keep("changeable", tuple(dict.fromkeys(changeable)))
+        keep("outcomes", {column: _better(better) for column, better in (outcomes or {}).items()})
+        if self.unrecorded:
+            raise Refusal(
+                "Unrecorded causes cannot be declared yet.",
+                where="unrecorded",
+                do="Leave them out of the order; the cautions speak of what was not recorded.",
+            )
+        keep("_places", self._placed())
+        self._check_names()
+        keep("_led", _reached(self.columns, self.insist))
+        self._check_links()
+
+    @property
+    def columns(self) -> tuple[str, ...]:
+        """Every column, stage by stage."""
+        return tuple(column for stage in self.stages for column in stage.columns)
+
+    def stage_of(self, name: str) -> int:
+        """Position of the column's stage, 0 the earliest. Raises Refusal for a column that no stage holds."""
+        if name not in self._places:
+            raise Refusal(f"The order has no column “{name}”.", where=name, do="Put it into a stage or take it out.")
+        return self._places[name]
+
+    def may_lead(self, source: str, target: str) -> bool:
+        """Whether a link from `source` to `target` is allowed."""
+        return self._verdict(source, target)[0]
+
+    def why(self, source: str, target: str) -> str:
+        """Why `source` may or may not lead to `target`, in words."""
+        return self._verdict(source, target)[1]
+
+    def allows(self) -> pd.DataFrame:
+        """Every ordered pair of columns: source, target, allowed, why."""
+        rows = [
+            (source, target, *self._verdict(source, target))
+            for source in self.columns
+            for target in self.columns
+            if source != target
+        ]
+        return pd.DataFrame(rows, columns=["source", "target", "allowed", "why"])
+
+    def _verdict(self, source: str, target: str) -> tuple[bool, str]:
+        early, late = self.stage_of(source), self.stage_of(target)
+        if source == target:
+            return False, "a column does not lead to itself"
+        if early > late:
+            return False, f"{self.stages[early].name} comes after {self.stages[late].name}"
+        if (source, target) in self.insist:
+            return True, "you insist on it"
+        if (source, target) in self.rule_out:
+            return False, "you ruled it out"
+        if source in self._led[target]:
+            return False, "it would close a circle with the links you insist on"
+        if early == late:
+            return True, f"both are in {self.stages[early].name}"
+        return True, f"{self.stages[early].name} comes before {self.stages[late].name}"
+
+    def _placed(self) -> dict[str, int]:
+        places: dict[str, int] = {}
+        for place, stage in enumerate(self.stages):
+            for column in stage.columns:
+                if column in places:
+                    first = self.stages[places[column]].name
+                    raise Refusal(
+                        f"The column “{column}” is in the order twice: in {first} and in {stage.name}.",
+                        where=column,
+                        do="Keep it in one stage.",
+                    )
+                places[column] = place
+        return places
+
+    def _check_names(self) -> None:
+        mentions = [("insist", name) for link in self.insist for name in link]
+        mentions += [("rule_out", name) for link in self.rule_out for name in link]
+        mentions += [("changeable", name) for name in self.changeable]
+        mentions += [("outcomes", name) for name in self.outcomes]
+        for where, name in mentions:
+            if name not in self._places:
+                raise Refusal(
+                    f"The column “{name}” is in no stage of the order.",
+                    where=where,
+                    do=f"Put it into a stage, or take it out of {where.replace('_', ' ')}.",
+                )
+
+    def _check_links(self) -> None:
+        for source, target in self.insist:
+            if source == target:
+                raise Refusal(f"“{source}” cannot lead to itself.", where="insist", do="Take that link out.")
+            early, late = self._places[source], self._places[target]
+            if early > late:
+                raise Refusal(
+                    f"You insist that “{source}” leads to “{target}”, but {self.stages[early].name} comes after "
+                    f"{self.stages[late].name}.",
+                    where="insist",
+                    do="Move one of the columns, or take that link out.",
+                )
+            if (source, target) in self.rule_out:
+                raise Refusal(
+                    f"You insist that “{source}” leads to “{target}” and rule it out as well.",
+                    where="insist",
+                    do="Keep one of the two.",
+                )
+            if source in self._led[target]:
+                raise Refusal(
+                    f"The links you insist on run in a circle through “{source}” and “{target}”.",
+                    where="insist",
+                    do="Take one link of the circle out.",
+                )
+
+
+def _stage(stage: Stage | tuple[str, Iterable[str]]) -> Stage:
+    if isinstance(stage, Stage):
+        return stage
+    name, columns = stage
+    if isinstance(columns, str):
+        columns = (columns,)
+    return Stage(str(name), tuple(columns))
+
+
+def _links(links: Iterable[Link]) -> tuple[Link, ...]:
+    return tuple(dict.fromkeys((source, target) for source, target in links))
+
+
+def _better(better: str | Direction | Iterable[str]) -> Better:
+    if isinstance(better, Direction):
+        return better
+    return (better,) if isinstance(better, str) else tuple(better)
+
+
+def _reached(columns: Sequence[str], links: Sequence[Link]) -> dict[str, frozenset[str]]:
+    """column -> every column that the links lead to from it, itself only when they run in a circle."""
+    onward: dict[str, list[str]] = {column: [] for column in columns}
+    for source, target in links:
+        onward[source].append(target)
+    reached: dict[str, frozenset[str]] = {}
+    for column in columns:
+        found: set[str] = set()
+        ahead = list(onward[column])
+        while ahead:
+            name = ahead.pop()
+            if name not in found:
+                found.add(name)
+                ahead.extend(onward[name])
+        reached[column] = frozenset(found)
+    return reached

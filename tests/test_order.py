@@ -1,0 +1,87 @@
+"""The order: what it allows, and what it refuses to be."""
+
+import pickle
+
+import pytest
+
+from engine.order import LESS, Order
+from engine.refusal import Refusal
+
+STAGES = [("Background", ["age", "region"]), ("Programme", ["mentor", "hours"]), ("Outcome", ["passed"])]
+
+
+def test_a_column_leads_to_its_own_stage_and_later_ones_only():
+    order = Order(STAGES)
+    assert order.may_lead("age", "passed") and order.may_lead("age", "region") and order.may_lead("region", "age")
+    assert not order.may_lead("passed", "mentor")
+    assert order.why("passed", "mentor") == "Outcome comes after Programme"
+    assert not order.may_lead("age", "age")
+
+
+def test_columns_stand_stage_by_stage():
+    order = Order(STAGES)
+    assert order.columns == ("age", "region", "mentor", "hours", "passed")
+    assert [order.stage_of(name) for name in order.columns] == [0, 0, 1, 1, 2]
+
+
+def test_ruling_out_forbids_one_direction():
+    order = Order(STAGES, rule_out=[("age", "region")])
+    assert not order.may_lead("age", "region") and order.may_lead("region", "age")
+
+
+def test_insisting_forbids_every_way_back():
+    order = Order([("All", ["a", "b", "c", "d"])], insist=[("a", "b"), ("b", "c")])
+    assert order.why("a", "b") == "you insist on it"
+    assert not order.may_lead("b", "a") and not order.may_lead("c", "a") and not order.may_lead("c", "b")
+    assert order.may_lead("a", "c") and order.may_lead("d", "a")
+
+
+def test_allows_lists_every_ordered_pair_once():
+    order = Order(STAGES, insist=[("mentor", "passed")], rule_out=[("region", "passed")])
+    allows = order.allows()
+    assert list(allows.columns) == ["source", "target", "allowed", "why"]
+    assert len(allows) == 20 and not allows.duplicated(["source", "target"]).any()
+    for row in allows.itertuples():
+        assert row.allowed == order.may_lead(row.source, row.target)
+        assert row.why == order.why(row.source, row.target)
+
+
+def test_an_outcome_is_a_level_several_levels_or_a_direction():
+    order = Order(STAGES, outcomes={"passed": "yes", "hours": LESS, "mentor": ["yes", "twice"]})
+    assert order.outcomes == {"passed": ("yes",), "hours": LESS, "mentor": ("yes", "twice")}
+
+
+def test_an_order_survives_pickling():
+    order = Order(STAGES, insist=[("mentor", "passed")], changeable=["mentor"], outcomes={"hours": LESS})
+    assert pickle.loads(pickle.dumps(order)) == order
+
+
+@pytest.mark.parametrize(
+    ("more", "says"),
+    [
+        ({"insist": [("passed", "mentor")]}, "Outcome comes after Programme"),
+        ({"insist": [("mentor", "nobody")]}, "“nobody” is in no stage"),
+        ({"rule_out": [("nobody", "mentor")]}, "“nobody” is in no stage"),
+        ({"changeable": ["nobody"]}, "“nobody” is in no stage"),
+        ({"outcomes": {"nobody": "yes"}}, "“nobody” is in no stage"),
+        ({"insist": [("age", "passed")], "rule_out": [("age", "passed")]}, "rule it out as well"),
+        ({"insist": [("age", "region"), ("region", "age")]}, "circle"),
+        ({"insist": [("age", "age")]}, "itself"),
+        ({"unrecorded": [("age", "passed")]}, "cannot be declared yet"),
+    ],
+)
+def test_a_contradiction_is_refused_with_a_sentence(more, says):
+    with pytest.raises(Refusal, match=says) as refused:
+        Order(STAGES, **more)
+    assert refused.value.where and refused.value.do
+
+
+def test_a_column_in_two_stages_is_refused():
+    with pytest.raises(Refusal, match="twice: in Early and in Late") as refused:
+        Order([("Early", ["a", "b"]), ("Late", ["a"])])
+    assert refused.value.where == "a"
+
+
+def test_a_name_outside_the_order_is_refused():
+    with pytest.raises(Refusal, match="no column “weather”"):
+        Order(STAGES).may_lead("weather", "passed")
