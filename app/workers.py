@@ -1,0 +1,114 @@
+"""What runs in processes of its own: learning, and reading files that nobody vouches for.
+
+A process can be ended at any moment without harm to the server. Where the system allows, children are forked from a
+small server that has the engine loaded already; elsewhere each starts afresh and takes a second or so longer.
+"""
+
+from __future__ import annotations
+
+import logging
+import multiprocessing
+import os
+import signal
+import sys
+import threading
+from collections.abc import Callable
+from multiprocessing.connection import Connection
+from multiprocessing.context import BaseContext
+from pathlib import Path
+
+import pandas as pd
+
+import engine
+from app.store.rows import table_of
+from app.store.values import Choices, Plan
+from engine.records import read_frame
+from engine.refusal import Refusal
+
+log = logging.getLogger("steelyard")
+Report = tuple[object, ...]  # what a child sends: ("progress", fraction, words), ("done", ...), ("refused", ...), ...
+
+
+def context() -> BaseContext:
+    """How children start on this system."""
+    if "forkserver" in multiprocessing.get_all_start_methods():
+        chosen = multiprocessing.get_context("forkserver")
+        chosen.set_forkserver_preload([__name__])
+        return chosen
+    return multiprocessing.get_context("spawn")
+
+
+def warm() -> None:
+    """Start the server that children are forked from, so that the first one does not wait for it."""
+    if context().get_start_method() == "forkserver":
+        from multiprocessing import forkserver
+
+        context()
+        forkserver.ensure_running()
+
+
+def learn_study(pipe: Connection, records: Path, name: str, choices: str, plan: str, out: Path) -> None:
+    """Learn from a study's records and write the learned file to `out`. Runs in a child."""
+
+    def learn() -> Report:
+        def progress(fraction: float, words: str) -> None:
+            pipe.send(("progress", float(fraction), str(words)))
+
+        progress(0.0, "Opening the records")
+        table = table_of(pd.read_parquet(records), Choices.from_json(choices), name)
+        learned = engine.learn(table, Plan.from_json(plan).order(), progress=progress)
+        learned.save(out)
+        return ("done",)
+
+    _report(pipe, learn)
+
+
+def parse_upload(pipe: Connection, path: Path, name: str, out: Path, memory: int) -> None:
+    """Read the file at `path` and write its frame to `out` as Parquet. Runs in a child.
+
+    name: as its owner called it.  memory: bytes that reading may take.
+    """
+
+    def parse() -> Report:
+        _limit_memory(memory)
+        frame, warnings = read_frame(path, name)
+        frame.to_parquet(out, index=False)
+        return ("done", tuple(warnings))
+
+    _report(pipe, parse)
+
+
+def _report(pipe: Connection, work: Callable[[], Report]) -> None:
+    signal.signal(signal.SIGINT, signal.SIG_IGN)  # Ctrl-C is for the server, which ends its children
+    threading.Thread(target=_end_with_parent, args=(pipe,), daemon=True).start()
+    try:
+        report = work()
+    except Refusal as refusal:
+        report = ("refused", refusal.message, refusal.where, refusal.do)
+    except MemoryError:
+        report = ("memory",)
+    except BrokenPipeError:
+        return
+    except Exception as error:
+        log.exception("A child process met an error")
+        report = ("broken", type(error).__name__)
+    pipe.send(report)
+
+
+def _end_with_parent(pipe: Connection) -> None:
+    try:
+        pipe.recv()  # nothing is ever sent this way: it returns when the server is gone
+    except (EOFError, OSError):
+        os._exit(1)
+
+
+def _limit_memory(extra: int) -> None:
+    """Let this process grow by `extra` bytes and no more, where the system can enforce it."""
+    if sys.platform != "linux":
+        return
+    import resource
+
+    pages = int(Path("/proc/self/statm").read_text().split()[0])
+    limit = pages * resource.getpagesize() + extra
+    _, hard = resource.getrlimit(resource.RLIMIT_AS)
+    resource.setrlimit(resource.RLIMIT_AS, (limit if hard == resource.RLIM_INFINITY else min(limit, hard), hard))
