@@ -7,6 +7,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from engine.refusal import Refusal
+
 Wanted = str | Iterable[str]
 
 
@@ -38,7 +40,10 @@ class Marginal:
         return spread(self.share_draws(wanted), self.share(wanted), coverage)
 
     def _rows(self, wanted: Wanted) -> list[int]:
-        names = [wanted] if isinstance(wanted, str) else list(wanted)
+        names = [wanted] if isinstance(wanted, str) else list(dict.fromkeys(wanted))
+        for name in names:
+            if name not in self.levels:
+                raise Refusal(f"There is no level {name} here.", do=f"The levels are {', '.join(self.levels)}.")
         return [self.levels.index(name) for name in names]
 
 
@@ -68,7 +73,8 @@ class Reading:
     """One column in every world asked about.
 
     recorded: no pins.  among: pins.  set: pins and levers, None without levers.
-    had: pins and the levers' values as pins, None without levers or where no such record can be.
+    had: pins and the levers' values as pins, None without levers, where no such record can be, and for columns that
+    are only read beside those in question.
     counted: from the records, None under the small-count limit or without records.
     """
 
@@ -107,6 +113,8 @@ class Answer:
     method: "exact" or "sampled", and by which route.  cost: table cells times draws.  milliseconds: wall time.
     mc_error: largest Monte Carlo standard error, 0 when exact.
     log_evidence: natural log of the pins' probability.
+    cautions: those that block first, then those that weaken, then those worth knowing.
+    checks_made: how many checks for cautions could be made of this question.
     """
 
     watch: tuple[str, ...]
@@ -118,6 +126,12 @@ class Answer:
     matching: int | None = None
     mc_error: float = 0.0
     cautions: tuple[Caution, ...] = ()
+    checks_made: int = 0
+
+    @property
+    def blocked(self) -> bool:
+        """Whether a caution blocks the answer: what the levers would do is then withheld wherever it is shown."""
+        return any(caution.rank == "blocks" for caution in self.cautions)
 
     def __getitem__(self, column: str) -> Reading:
         return self.readings[column]
@@ -129,8 +143,6 @@ class Answer:
         """(change, low, high): share if set minus share among these, over common draws. Raises Refusal without levers."""
         reading = self.readings[column]
         if reading.set is None:
-            from engine.refusal import Refusal
-
             raise Refusal("Nothing is set, so nothing changes.", do="Set a lever first.")
         change = reading.set.share(wanted) - reading.among.share(wanted)
         low, high = spread(reading.set.share_draws(wanted) - reading.among.share_draws(wanted), change, coverage)

@@ -3,11 +3,16 @@
 from __future__ import annotations
 
 import zlib
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
+
+from engine.refusal import Refusal
+
+ROUNDING = 1e-8  # how far a row of a table may be from 1: tables are often written with nine or more digits
+SMALLEST = 1e-300  # a drawn share that rounds to 0 although its cell is possible is taken as this
 
 
 @dataclass(frozen=True, eq=False)
@@ -17,6 +22,7 @@ class Category:
     table: float64, one axis per parent in order, own levels last; each row sums to 1.
     dirichlet: posterior Dirichlet parameters, same shape as `table`; None when the table is known exactly.
     kind, cuts, has_blank: as in engine.records.Column (a number here acts through its bands).
+    Raises Refusal when the table is not an array of numbers.
     """
 
     name: str
@@ -29,9 +35,22 @@ class Category:
     has_blank: bool = False
 
     def __post_init__(self) -> None:
+        for what, given in (("levels", self.levels), ("parents", self.parents)):
+            if isinstance(given, str):
+                raise Refusal(
+                    f"The {what} of {self.name} are one text, not a list.", where=self.name, do=f"Write [{given!r}]."
+                )
         object.__setattr__(self, "levels", tuple(self.levels))
         object.__setattr__(self, "parents", tuple(self.parents))
-        object.__setattr__(self, "table", np.asarray(self.table, dtype=np.float64))
+        try:
+            table = np.asarray(self.table, dtype=np.float64)
+        except (TypeError, ValueError):
+            raise Refusal(
+                f"The table of {self.name} is not a regular table of numbers.",
+                where=self.name,
+                do="Give one axis per parent in order, and the column's own levels last.",
+            ) from None
+        object.__setattr__(self, "table", table)
 
 
 @dataclass(frozen=True, eq=False)
@@ -44,7 +63,7 @@ class Network:
     def index(self) -> dict[str, int]:
         return {node.name: place for place, node in enumerate(self.nodes)}
 
-    @property
+    @cached_property
     def names(self) -> tuple[str, ...]:
         return tuple(node.name for node in self.nodes)
 
@@ -55,7 +74,12 @@ class Network:
     def links(self) -> tuple[tuple[str, str], ...]:
         return tuple((parent, node.name) for node in self.nodes for parent in node.parents)
 
-    def descendants(self, names: Sequence[str]) -> frozenset[str]:
+    @property
+    def drawable(self) -> bool:
+        """Whether any table is uncertain, so that draws differ from the posterior mean."""
+        return any(node.dirichlet is not None for node in self.nodes)
+
+    def descendants(self, names: Iterable[str]) -> frozenset[str]:
         """Columns strictly downstream of any of `names` (a name itself only when it follows another of them)."""
         reached: set[str] = set()
         below = set(names)
@@ -74,6 +98,97 @@ class Network:
         return tuple(_family_draws(node, count, seed) for node in self.nodes)
 
 
+def network(nodes: Iterable[Category]) -> Network:
+    """Check `nodes` and sort them, parents before children, otherwise in the order given.
+
+    Raises Refusal for: no columns, a column twice, a level twice, an unknown parent, a parent twice, a table of
+    the wrong shape, an entry that is no probability, a row that does not sum to 1, links that run in a circle.
+    """
+    given = tuple(nodes)
+    if not given:
+        raise Refusal("A network needs at least one column.", do="Give a list of engine.Category.")
+    by_name: dict[str, Category] = {}
+    for node in given:
+        if node.name in by_name:
+            raise Refusal(f"The column {node.name} is given twice.", where=node.name, do="Give each column once.")
+        by_name[node.name] = node
+    for node in given:
+        _check_family(node, by_name)
+    return Network(_parents_first(given, by_name))
+
+
+def _check_family(node: Category, by_name: dict[str, Category]) -> None:
+    if not node.levels or not all(isinstance(level, str) for level in node.levels):
+        raise Refusal(f"{node.name} needs levels, each a text.", where=node.name, do='Give them as ["no", "yes"].')
+    if len(set(node.levels)) < len(node.levels):
+        raise Refusal(f"{node.name} has a level twice.", where=node.name, do="Give each level once.")
+    if len(set(node.parents)) < len(node.parents):
+        raise Refusal(f"{node.name} has a parent twice.", where=node.name, do="Give each parent once.")
+    for parent in node.parents:
+        if parent not in by_name:
+            raise Refusal(
+                f"{node.name} has the parent {parent}, which is no column of this network.",
+                where=node.name,
+                do=f"Add {parent}, or take it out of the parents.",
+            )
+    expected = (*(len(by_name[parent].levels) for parent in node.parents), len(node.levels))
+    table = np.asarray(node.table)
+    if table.shape != expected:
+        raise Refusal(
+            f"The table of {node.name} has the shape {table.shape}; its parents and levels ask for {expected}.",
+            where=node.name,
+            do="Give one axis per parent in order, and the column's own levels last.",
+        )
+    if not np.all(np.isfinite(table)) or np.any(table < 0.0):
+        raise Refusal(
+            f"The table of {node.name} holds an entry that is no probability.",
+            where=node.name,
+            do="Every entry is 0 or more, and each row sums to 1.",
+        )
+    off = np.abs(table.sum(axis=-1) - 1.0)
+    if np.any(off > ROUNDING):
+        row = np.unravel_index(int(np.argmax(off)), off.shape)
+        at = ", ".join(
+            f"{parent} = {by_name[parent].levels[place]}" for parent, place in zip(node.parents, row, strict=True)
+        )
+        raise Refusal(
+            f"The table of {node.name} sums to {table[row].sum():.6g} instead of 1{f' where {at}' if at else ''}.",
+            where=node.name,
+            do="Correct that row; nothing is rescaled here.",
+        )
+    if node.dirichlet is not None and node.dirichlet.shape != expected:
+        raise Refusal(f"The Dirichlet parameters of {node.name} do not fit its table.", where=node.name)
+
+
+def _parents_first(given: tuple[Category, ...], by_name: dict[str, Category]) -> tuple[Category, ...]:
+    """Topological order, stable in the order given (Kahn 1962)."""
+    done: dict[str, Category] = {}
+    waiting = list(given)
+    while waiting:
+        ready = next((node for node in waiting if all(parent in done for parent in node.parents)), None)
+        if ready is None:
+            circle = _circle(waiting, {node.name for node in waiting})
+            raise Refusal(
+                f"The links run in a circle: {', '.join(circle)} and back to {circle[0]}.",
+                where=circle[0],
+                do="Take out or turn round one of these links.",
+            )
+        waiting.remove(ready)
+        done[ready.name] = ready
+    return tuple(done.values())
+
+
+def _circle(waiting: list[Category], left: set[str]) -> list[str]:
+    """One circle among columns that each have a parent among them, told parent first."""
+    by_name = {node.name: node for node in waiting}
+    walk = [waiting[0].name]
+    while True:
+        parent = next(parent for parent in by_name[walk[-1]].parents if parent in left)
+        if parent in walk:
+            return walk[walk.index(parent) :][::-1]
+        walk.append(parent)
+
+
 def _family_draws(node: Category, count: int, seed: int) -> np.ndarray:
     mean = np.asarray(node.table)[..., None]
     if node.dirichlet is None or count == 0:
@@ -83,8 +198,12 @@ def _family_draws(node: Category, count: int, seed: int) -> np.ndarray:
     # ln Gamma(a) draws through Gamma(a + 1) and a uniform: a prior cell of 0.001 would underflow to 0 otherwise.
     alpha = node.dirichlet[..., None]
     shape = (*node.dirichlet.shape, count)
-    log_gamma = np.log(rng.standard_gamma(np.broadcast_to(alpha + 1.0, shape))) - rng.standard_exponential(shape) / alpha
+    with np.errstate(divide="ignore"):  # a parameter of 0 is a level that cannot be: its share is 0 in every draw
+        log_gamma = (
+            np.log(rng.standard_gamma(np.broadcast_to(alpha + 1.0, shape))) - rng.standard_exponential(shape) / alpha
+        )
     log_gamma -= log_gamma.max(axis=-2, keepdims=True)
     drawn = np.exp(log_gamma)
     drawn /= drawn.sum(axis=-2, keepdims=True)
+    drawn = np.where(alpha > 0.0, np.maximum(drawn, SMALLEST), 0.0)
     return np.concatenate([mean, drawn], axis=-1)

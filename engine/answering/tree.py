@@ -1,0 +1,232 @@
+"""One tree, two passes: the marginals of every column asked for from one set of tables.
+
+A binary join tree (Shenoy 1997) run by the two-pass scheme of Shafer & Shenoy (1990). Its leaves are the tables,
+each inner node contracts two of them and sums out what occurs nowhere else. Inward gives the probability of the
+pins; outward gives every marginal, without any division, so that tables may hold zeros.
+"""
+
+from __future__ import annotations
+
+import string
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+from engine.answering.orders import Scopes, elimination_order
+
+Scope = tuple[int, ...]
+DRAWS = "Z"  # the letter of the draws' axis; other letters stand for columns
+LETTERS = string.ascii_letters.replace(DRAWS, "")
+SAFE = 1e-150  # a probability of the pins above this met no cell that mattered below the smallest float
+
+
+@dataclass(frozen=True)
+class Step:
+    """Contract tables `left` and `right` (or only sum over `left` when `right` is None) into `out`."""
+
+    left: int
+    right: int | None
+    out: int
+
+
+@dataclass(frozen=True)
+class Tree:
+    """A plan that holds for every set of tables with the same scopes and sizes.
+
+    scopes: labels of every table, leaves first, then one per step.  roots: tables left at the end.
+    reads: label -> the table whose two messages give its marginal.  outward: tables whose outward message is needed.
+    cells: cells touched per draw, inward and outward.  stored: cells kept at once per draw.
+    """
+
+    leaves: int
+    scopes: tuple[Scope, ...]
+    steps: tuple[Step, ...]
+    roots: tuple[int, ...]
+    reads: Mapping[int, int]
+    outward: frozenset[int]
+    cells: float
+    stored: float
+
+    @cached_property
+    def programme(self) -> Programme:
+        return Programme(self)
+
+
+def plan(scopes: Scopes, sizes: Mapping[int, int], watched: Sequence[int], keep: Sequence[int] = ()) -> Tree:
+    """Lay out the tree for tables over `scopes`; `sizes` gives the levels of each label.
+
+    watched: labels whose marginals are asked for.  keep: labels left in the root, for one joint table of them.
+    """
+    alive: dict[int, Scope] = {table: tuple(scope) for table, scope in enumerate(scopes)}
+    every: list[Scope] = list(alive.values())
+    holders: dict[int, set[int]] = {}
+    for table, scope in alive.items():
+        for label in scope:
+            holders.setdefault(label, set()).add(table)
+    steps: list[Step] = []
+    kept = frozenset(keep)
+
+    def contract(left: int, right: int | None) -> int:
+        pair = {left} if right is None else {left, right}
+        union = dict.fromkeys((*alive[left], *(alive[right] if right is not None else ())))
+        scope = tuple(label for label in union if label in kept or holders[label] - pair)
+        out = len(every)
+        for table in pair:
+            for label in alive.pop(table):
+                holders[label].discard(table)
+        for label in scope:
+            holders[label].add(out)
+        alive[out] = scope
+        every.append(scope)
+        steps.append(Step(left, right, out))
+        return out
+
+    def by_cells(table: int) -> tuple[float, int]:
+        return _cells(alive[table], sizes), table
+
+    for label in elimination_order(scopes, sizes, keep):
+        while len(holders[label]) > 1:
+            left, right = sorted(holders[label], key=by_cells)[:2]
+            contract(left, right)
+        if holders[label]:
+            contract(next(iter(holders[label])), None)
+    while kept and len(alive) > 1:
+        left, right = sorted(alive, key=by_cells)[:2]
+        contract(left, right)
+    return _tree(len(scopes), every, steps, tuple(sorted(alive)), sizes, watched)
+
+
+def _tree(
+    leaves: int,
+    scopes: Sequence[Scope],
+    steps: Sequence[Step],
+    roots: tuple[int, ...],
+    sizes: Mapping[int, int],
+    watched: Sequence[int],
+) -> Tree:
+    """Choose where each watched label is read, and which outward messages that needs."""
+    parent = {table: step for step in steps for table in (step.left, step.right) if table is not None}
+    wanted = set(watched)
+    reads: dict[int, int] = {}
+    for step in steps:
+        sides = (step.left,) if step.right is None else (step.left, step.right)
+        by_cells = sorted(sides, key=lambda side: _cells(scopes[side], sizes), reverse=True)
+        for side in by_cells:  # the smaller of two sides that hold a label comes last and is kept
+            reads.update(dict.fromkeys(wanted.intersection(scopes[side]).difference(scopes[step.out]), side))
+    outward: set[int] = set()
+    for table in reads.values():
+        while table not in outward and table in parent:
+            outward.add(table)
+            table = parent[table].out
+    cells = 0.0
+    for step in steps:
+        sides = (step.left,) if step.right is None else (step.left, step.right)
+        union = _cells({label for side in sides for label in scopes[side]}, sizes)
+        cells += union * (1 + sum(side in outward for side in sides))
+    stored = sum(_cells(scope, sizes) for scope in scopes) + sum(_cells(scopes[table], sizes) for table in outward)
+    return Tree(leaves, tuple(scopes), tuple(steps), roots, reads, frozenset(outward), cells, stored)
+
+
+def _cells(scope: Sequence[int] | set[int], sizes: Mapping[int, int]) -> float:
+    cells = 1.0
+    for label in scope:
+        cells *= sizes[label]
+    return cells
+
+
+@dataclass(frozen=True)
+class Read:
+    """What running a tree gave.
+
+    log_evidence: (draws,) natural log of the summed total, the probability of the pins; -inf where it is 0.
+    marginals: label -> (levels, draws), each draw sums to 1; nan where the pins are impossible.
+    joint: (levels of the kept labels in the root's order..., draws), unscaled up to a factor per draw; None without.
+    """
+
+    log_evidence: np.ndarray
+    marginals: Mapping[int, np.ndarray]
+    joint: np.ndarray | None = None
+
+
+class Programme:
+    """A tree's contractions, written out once as subscripts for numpy.einsum."""
+
+    def __init__(self, tree: Tree) -> None:
+        self.tree = tree
+        scopes = tree.scopes
+        received: dict[int, Scope] = {root: () for root in tree.roots}
+        self.inward = [(step, self._inward(step)) for step in tree.steps]
+        self.outward: list[tuple[int, int | None, int, str]] = []  # receiver, sibling, from, subscripts
+        for step in reversed(tree.steps):
+            above = received.get(step.out, ())
+            for side, sibling in ((step.left, step.right), (step.right, step.left)):
+                if side is None or side not in tree.outward:
+                    continue
+                around = above if sibling is None else (*scopes[sibling], *above)
+                received[side] = tuple(label for label in dict.fromkeys(around) if label in scopes[side])
+                sources = [above] if sibling is None else [scopes[sibling], above]
+                self.outward.append((side, sibling, step.out, _subscripts(sources, received[side])))
+        self.reads = [
+            (label, table, _subscripts([scopes[table], received[table]], (label,)))
+            for label, table in tree.reads.items()
+        ]
+
+    def _inward(self, step: Step) -> str:
+        scopes = self.tree.scopes
+        sources = [scopes[step.left]] if step.right is None else [scopes[step.left], scopes[step.right]]
+        return _subscripts(sources, scopes[step.out])
+
+    def run(self, tables: Sequence[np.ndarray], scaled: bool = False) -> Read:
+        """Contract `tables`, one per leaf: (levels in the leaf's order..., draws or 1).
+
+        scaled: keep every message at a largest cell of 1 with a running log constant, for pins so improbable that
+        plain products would fall below the smallest float. Tried without first; both give the same to rounding.
+        """
+        found = self._run(tables, scaled)
+        if not scaled and not np.all(found.log_evidence > np.log(SAFE)):
+            return self._run(tables, scaled=True)
+        return found
+
+    def _run(self, tables: Sequence[np.ndarray], scaled: bool) -> Read:
+        tree = self.tree
+        inward: list[np.ndarray] = list(tables)
+        log_constant: np.ndarray | float = 0.0
+        for step, subscripts in self.inward:
+            sources = [inward[step.left]] if step.right is None else [inward[step.left], inward[step.right]]
+            message = np.einsum(subscripts, *sources)
+            if scaled:
+                message, log_scale = _scaled(message)
+                log_constant = log_constant + log_scale
+            inward.append(message)
+        one = np.ones(1)
+        outward: dict[int, np.ndarray] = dict.fromkeys(tree.roots, one)
+        for side, sibling, source, subscripts in self.outward:
+            above = outward[source]
+            message = np.einsum(subscripts, *([above] if sibling is None else [inward[sibling], above]))
+            outward[side] = _scaled(message)[0] if scaled else message
+        marginals: dict[int, np.ndarray] = {}
+        with np.errstate(invalid="ignore", divide="ignore"):
+            for label, table, subscripts in self.reads:
+                belief = np.einsum(subscripts, inward[table], outward[table])
+                marginals[label] = belief / belief.sum(axis=0)
+            log_total = log_constant
+            for root in tree.roots:
+                total = inward[root]
+                log_total = log_total + np.log(total.reshape(-1, total.shape[-1]).sum(axis=0))
+        joint = inward[tree.roots[0]] if len(tree.roots) == 1 else None
+        return Read(np.atleast_1d(np.asarray(log_total, dtype=np.float64)), marginals, joint)
+
+
+def _scaled(message: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """The message with its largest cell at 1 in every draw, and the natural log of what was divided out."""
+    largest = message.reshape(-1, message.shape[-1]).max(axis=0)
+    divisor = np.where(largest > 0.0, largest, 1.0)
+    return message / divisor, np.log(divisor)
+
+
+def _subscripts(sources: Sequence[Scope], out: Scope) -> str:
+    letters = dict(zip(dict.fromkeys(label for scope in sources for label in scope), LETTERS, strict=False))
+    words = ["".join(letters[label] for label in scope) + DRAWS for scope in (*sources, out)]
+    return ",".join(words[:-1]) + "->" + words[-1]

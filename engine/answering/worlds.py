@@ -1,0 +1,142 @@
+"""A world as tables: pins take levels away, a lever splits its column in two.
+
+The natural column keeps its own table; the set copy feeds the column's children (Richardson & Robins 2013). Labels
+are places in the network; the set copy of the column at place i has the label i + number of columns.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from engine.answering.question import Setting
+from engine.network.network import Network
+
+Left = int | tuple[int, ...] | None  # what is left of an axis: one position, some positions, or all
+
+
+@dataclass(frozen=True)
+class Part:
+    """One table of a world.
+
+    family: place of the column whose table it is.  reach, position: of the lever, when this is a set copy.
+    left: what is left of each axis.  scope: labels of the axes left with more than one level.
+    """
+
+    family: int
+    left: tuple[Left, ...]
+    scope: tuple[int, ...]
+    lever: Setting | None = None
+
+
+@dataclass(frozen=True)
+class World:
+    """The tables that one world needs, before any number is looked at.
+
+    sizes: label -> levels left.  reads: watched column -> label that shows it, or the position of its one level
+    left as a negative number, -1 - position.  kept: pinned label -> positions left.
+    """
+
+    network: Network
+    parts: tuple[Part, ...]
+    sizes: Mapping[int, int]
+    reads: Mapping[str, int]
+    kept: Mapping[int, tuple[int, ...]]
+
+    @property
+    def scopes(self) -> tuple[tuple[int, ...], ...]:
+        return tuple(part.scope for part in self.parts)
+
+    @property
+    def watched(self) -> tuple[int, ...]:
+        return tuple(label for label in self.reads.values() if label >= 0)
+
+    def tables(self, drawn: Sequence[np.ndarray]) -> list[np.ndarray]:
+        """One table per part, (levels left..., draws), from the network's tables; (..., 1) for a set copy."""
+        return [_table(part, drawn, len(self.network.nodes[part.family].levels)) for part in self.parts]
+
+    def spread_out(self, column: str, marginals: Mapping[int, np.ndarray], draws: int) -> np.ndarray:
+        """(levels, draws) of a watched column over all its levels, those pinned away at 0."""
+        place = self.network.index[column]
+        levels = len(self.network.nodes[place].levels)
+        label = self.reads[column]
+        shares = np.zeros((levels, draws))
+        if label < 0:
+            shares[-1 - label] = 1.0
+        elif label in self.kept:
+            shares[list(self.kept[label])] = marginals[label]
+        else:
+            shares[:] = marginals[label]
+        return shares
+
+
+def world(
+    network: Network, pins: Mapping[str, frozenset[int]], levers: Mapping[str, Setting], columns: Iterable[str]
+) -> World:
+    """The world where `pins` held before `levers`, with the tables that reading `columns` needs and no others."""
+    count = len(network.nodes)
+    settings = {network.index[column]: setting for column, setting in levers.items()}
+    pinned = {
+        network.index[column]: tuple(sorted(wanted))
+        for column, wanted in pins.items()
+        if len(wanted) < len(network.node(column).levels)
+    }
+    kept = {place: (0,) for place, node in enumerate(network.nodes) if len(node.levels) == 1} | pinned
+
+    def as_seen(place: int) -> tuple[int | None, Left]:
+        """Label under which the children of a column see it, and what is left of that axis."""
+        setting = settings.get(place)
+        if setting is None:
+            positions = kept.get(place)
+            return place, positions[0] if positions is not None and len(positions) == 1 else positions
+        if setting.reach == 1.0:
+            return None, setting.position
+        return place + count, None
+
+    reads: dict[str, int] = {}
+    for column in columns:
+        label, left = as_seen(network.index[column])
+        reads[column] = -1 - left if isinstance(left, int) else int(label or 0)
+
+    parts: dict[int, Part] = {}
+    waiting = [*pinned, *(label for label in reads.values() if label >= 0)]
+    while waiting:
+        own = waiting.pop()
+        if own in parts:
+            continue
+        family = own % count
+        if own >= count:
+            axes: list[tuple[int | None, Left]] = [_natural(family, kept), (own, None)]
+        else:
+            parents = [as_seen(network.index[parent]) for parent in network.nodes[own].parents]
+            axes = [*parents, _natural(own, kept)]
+        scope = tuple(label for label, left in axes if label is not None and not isinstance(left, int))
+        parts[own] = Part(family, tuple(left for _, left in axes), scope, settings[family] if own >= count else None)
+        waiting.extend(label for label, _ in axes if label is not None and label not in parts)
+    labels = sorted({label for part in parts.values() for label in part.scope})
+    sizes = {label: len(kept.get(label, network.nodes[label % count].levels)) for label in labels}
+    return World(network, tuple(parts[own] for own in sorted(parts)), sizes, reads, kept)
+
+
+def _natural(place: int, kept: Mapping[int, tuple[int, ...]]) -> tuple[int, Left]:
+    positions = kept.get(place)
+    return place, positions[0] if positions is not None and len(positions) == 1 else positions
+
+
+def _table(part: Part, drawn: Sequence[np.ndarray], levels: int) -> np.ndarray:
+    if part.lever is None:
+        table = drawn[part.family]
+    else:  # the copy is the set level with probability reach, else the natural value
+        copy = (1.0 - part.lever.reach) * np.eye(levels)
+        copy[:, part.lever.position] += part.lever.reach
+        table = copy[..., None]
+    table = table[tuple(left if isinstance(left, int) else slice(None) for left in part.left)]
+    axis = 0
+    for left in part.left:
+        if isinstance(left, tuple):
+            table = np.take(table, left, axis=axis)
+        if not isinstance(left, int):
+            axis += 1
+    return table

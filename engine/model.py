@@ -1,0 +1,115 @@
+"""Model and Learned, the objects in users' hands: they hold a network and call the rooms."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+from engine.answering.answer import Answer
+from engine.answering.asking import ask
+from engine.answering.counting import Records
+from engine.answering.levers import Fix
+from engine.answering.planner import Planner
+from engine.answering.question import question
+from engine.network.network import Category, Network, network
+from engine.order import Direction, Order
+from engine.records.table import Coded
+from engine.refusal import Refusal
+
+
+@dataclass(frozen=True, eq=False)
+class Model:
+    """A network that answers questions.
+
+    network: tables and their posterior.  order: as stated, None for a network given as it is.
+    coded: the records it was learned from, None without.
+    """
+
+    network: Network
+    order: Order | None = None
+    coded: Coded | None = None
+
+    @classmethod
+    def from_network(cls, nodes: Iterable[Category]) -> Model:
+        """A model of tables known exactly: every column may be changed, intervals are points.
+
+        Raises Refusal as engine.network.network.network does.
+        """
+        return cls(network(nodes))
+
+    @property
+    def links(self) -> tuple[tuple[str, str], ...]:
+        """(source, target), parents before children."""
+        return self.network.links
+
+    @property
+    def changeable(self) -> tuple[str, ...]:
+        """Columns that may get a lever."""
+        if self.order is None:
+            return self.network.names
+        return tuple(column for column in self.order.changeable if column in self.network.index)
+
+    def ask(
+        self,
+        pins: Mapping[str, object] | None = None,
+        levers: Mapping[str, Fix] | None = None,
+        watch: Iterable[str] | None = None,
+        beside: Iterable[str] = (),
+        draws: int = 200,
+        seed: int = 0,
+        exact: bool | None = None,
+    ) -> Answer:
+        """What `watch` would be among records with `pins`, if `levers` were set (method: Richardson & Robins 2013).
+
+        pins: column -> a level, a set of levels, or a (low, high) range that matches a number's bands.
+        levers: column -> engine.Fix.  watch: columns in question; None: the order's outcomes, else every column.
+        beside: further columns to read in the same pass.  draws: parameter draws behind the intervals.
+        Raises Refusal for an unknown column or level, a pin downstream of a lever, a lever on a column that is not
+        changeable, pins that contradict each other, and a question too wide to sum exactly.
+        """
+        wanted = self._outcomes() if watch is None else watch
+        asked = question(self.network, pins, levers, wanted, beside, self.changeable)
+        return ask(self._planner, self._records, asked, draws, seed, exact)
+
+    def strength(self, source: str, target: str) -> float:
+        """How much a link moves its child: 0 to 1.
+
+        The largest change in the share of the child's better (else commonest) levels between two values of that
+        parent, averaged over the child's other parents as they are recorded.
+        Raises Refusal when there is no such link.
+        """
+        if (source, target) not in self.links:
+            raise Refusal(f"No link leads from {source} to {target}.", where=target, do="Ask for one of model.links.")
+        node = self.network.node(target)
+        better = np.asarray(node.table)[..., self._better(target)].sum(axis=-1)
+        others = tuple(parent for parent in node.parents if parent != source)
+        shares = np.moveaxis(better, node.parents.index(source), 0)
+        if others:
+            shares = (shares * self._planner.joint(others)).reshape(len(shares), -1).sum(axis=1)
+        return float(shares.max() - shares.min())
+
+    def _outcomes(self) -> tuple[str, ...]:
+        named = () if self.order is None else tuple(self.order.outcomes)
+        return tuple(column for column in named if column in self.network.index) or self.network.names
+
+    def _better(self, column: str) -> list[int]:
+        """Positions of the better levels of an outcome, else of the commonest level."""
+        node = self.network.node(column)
+        better = None if self.order is None else self.order.outcomes.get(column)
+        if isinstance(better, Direction):
+            last = len(node.levels) - 1 - int(node.has_blank and len(node.levels) > 1)
+            return [last if better is Direction.MORE else 0]
+        if better:
+            return [node.levels.index(level) for level in better if level in node.levels]
+        return [int(np.argmax(self._planner.joint((column,))))]
+
+    @cached_property
+    def _planner(self) -> Planner:
+        return Planner(self.network)
+
+    @cached_property
+    def _records(self) -> Records | None:
+        return None if self.coded is None else Records(self.coded)
