@@ -8,7 +8,6 @@ from engine.answering.levers import Fix
 from engine.model import Model
 from engine.network.network import Category
 from engine.order import LESS, MORE, Order, Stage
-from engine.records.table import Table
 from engine.refusal import Refusal
 
 __all__ = [
@@ -25,5 +24,4 @@ __all__ = [
     "Reading",
     "Refusal",
     "Stage",
-    "Table",
 ]

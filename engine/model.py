@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from functools import cached_property
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -16,8 +17,10 @@ from engine.answering.planner import Planner
 from engine.answering.question import question
 from engine.network.network import Category, Network, network
 from engine.order import Direction, Order
-from engine.records.table import Coded
 from engine.refusal import Refusal
+
+if TYPE_CHECKING:
+    from engine.records.table import Coded
 
 
 @dataclass(frozen=True, eq=False)

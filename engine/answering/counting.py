@@ -4,11 +4,14 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
 from functools import cached_property
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from engine.answering.answer import Counted
-from engine.records.table import SMALL_COUNT, Coded
+
+if TYPE_CHECKING:
+    from engine.records.table import Coded
 
 
 class Records:
@@ -45,6 +48,8 @@ class Records:
 
     def counted(self, columns: Iterable[str], matching: np.ndarray) -> dict[str, Counted | None]:
         """What the matching records hold, column by column; None under the small-count limit."""
+        from engine.records.table import SMALL_COUNT
+
         if matching.size < SMALL_COUNT:
             return dict.fromkeys(columns)
         if matching.size == self.rows:
