@@ -1,0 +1,99 @@
+"""How well models of every size predict records that they were not learned from."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from engine.learning.scores import Floats
+from engine.learning.search import Parents
+from engine.network.parameters import dirichlet_posterior, predictive
+from engine.records.counts import ArrayCounts
+
+FOLDS = 5
+_ROWS = 65_536  # rows scored at once
+
+Ints = NDArray[np.int64]
+
+
+@dataclass(frozen=True, eq=False)
+class HeldOut:
+    """Held-out log score per record, natural log, at each of `links`.
+
+    mean: (sizes,) mean over records.
+    behind, behind_se: (sizes,) mean of the record-by-record difference to the best size, and its standard error.
+    """
+
+    links: tuple[int, ...]
+    mean: Floats
+    behind: Floats
+    behind_se: Floats
+
+    @property
+    def recommended(self) -> int:
+        """The smallest size within one standard error, of the paired difference, of the best."""
+        close = self.behind + self.behind_se >= 0.0
+        return self.links[int(np.flatnonzero(close)[0])]
+
+
+def folds(rows: int, seed: int) -> Ints:
+    """(rows,) which of FOLDS parts holds each record out, at random, as even as can be."""
+    return np.random.default_rng([seed, FOLDS]).permutation(np.arange(rows, dtype=np.int64) % FOLDS)
+
+
+class Scoring:
+    """Gathers the scores of held-out records fold by fold; keeps sums only, whatever the number of records.
+
+    codes: (rows, columns) level positions.  counts: of the same records, by fold.  links: sizes to score, ascending.
+    """
+
+    def __init__(self, codes: NDArray[np.integer], counts: ArrayCounts, links: tuple[int, ...]) -> None:
+        self.codes = codes
+        self.counts = counts
+        self.links = links
+        self.rows = 0
+        self.base = 0.0  # sum of the scores at the first size
+        self.sums = np.zeros(len(links))  # of each size's score less that of the first size
+        self.products = np.zeros((len(links), len(links)))
+
+    def take(self, held: int, models: Mapping[int, Parents], still: Callable[[], None] = lambda: None) -> None:
+        """Score the records of fold `held` by the models learned from the others."""
+        families: dict[tuple[int, tuple[int, ...]], list[int]] = {}
+        for place, size in enumerate(self.links):
+            for child, parents in enumerate(models[size]):
+                families.setdefault((child, parents), []).append(place)
+        tables = []
+        for (child, parents), places in families.items():
+            tables.append(((*parents, child), places, self._log_shares(held, child, parents)))
+            still()
+        rows = np.flatnonzero(self.counts.fold == held)
+        for low in range(0, rows.size, _ROWS):
+            codes = self.codes[rows[low : low + _ROWS]]
+            scores = np.zeros((len(self.links), codes.shape[0]))
+            for columns, places, logs in tables:
+                scores[places] += logs[tuple(codes[:, column] for column in columns)]
+            self._add(scores)
+            still()
+
+    def result(self) -> HeldOut:
+        """The curve over everything taken so far."""
+        best = int(np.argmax(self.sums))
+        behind = (self.sums - self.sums[best]) / self.rows
+        squares = np.diag(self.products) - 2.0 * self.products[best] + self.products[best, best]
+        spread = np.sqrt(np.maximum(squares / self.rows - behind**2, 0.0))
+        spread[best] = 0.0
+        return HeldOut(self.links, (self.base + self.sums) / self.rows, behind, spread / np.sqrt(self.rows - 1))
+
+    def _add(self, scores: Floats) -> None:
+        self.rows += scores.shape[1]
+        self.base += float(scores[0].sum())
+        scores -= scores[0].copy()
+        self.sums += scores.sum(axis=1)
+        self.products += scores @ scores.T
+
+    def _log_shares(self, held: int, child: int, parents: tuple[int, ...]) -> Floats:
+        by_fold = self.counts.family(parents, child)
+        return np.asarray(np.log(predictive(dirichlet_posterior(by_fold.sum(axis=0) - by_fold[held]))))

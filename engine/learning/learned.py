@@ -1,0 +1,164 @@
+"""What was learned: the best model at every number of links, and which size to take."""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import Self
+
+import pandas as pd
+
+from engine.learning import archive
+from engine.learning.search import Parents
+from engine.network.equivalence import unsettled_links
+from engine.network.network import Category, Network
+from engine.network.parameters import dirichlet_posterior, predictive
+from engine.order import Order
+from engine.records.counts import ArrayCounts
+from engine.records.table import Coded
+from engine.refusal import Refusal
+
+FORMAT = "steelyard learned"
+VERSION = 1
+_CURVE = ("links", "score", "bound", "held_out", "held_out_se")
+
+
+@dataclass(frozen=True, eq=False)
+class Learned:
+    """The best model at every number of links that the order allows.
+
+    order, coded: what it was learned from.  digest: of the table; seed: of the folds.  max_parents: the cap used.
+    chosen: links -> for each column of `coded` the positions of its parents.
+    curve: one row a number of links: links; score, the log marginal likelihood, nats; bound, what no model of that
+    size can exceed; held_out, the log score per record of records left out of learning; held_out_se, the standard
+    error of its record-by-record difference to the best size, 0 there.
+    recommended: the smallest number of links within one standard error of the best (paired).
+    notes: sentences worth knowing about how it was learned.
+    """
+
+    order: Order
+    coded: Coded
+    curve: pd.DataFrame
+    recommended: int
+    chosen: Mapping[int, Parents]
+    max_parents: int
+    seed: int
+    digest: str
+    notes: tuple[str, ...] = ()
+
+    @property
+    def rows(self) -> int:
+        """Records it was learned from."""
+        return int(self.coded.codes.shape[0])
+
+    def parents_at(self, links: int | None = None) -> dict[str, tuple[str, ...]]:
+        """Column -> its parents in the best model with that many links; None: the recommended number.
+
+        Raises Refusal for a number that the curve does not hold.
+        """
+        names = self.coded.names
+        return {
+            name: tuple(names[place] for place in parents)
+            for name, parents in zip(names, self._chosen(links), strict=True)
+        }
+
+    def network(self, links: int | None = None) -> Network:
+        """That model as a network, with posterior Dirichlet counts. Raises Refusal as `parents_at`."""
+        chosen = self._chosen(links)
+        coded = self.coded
+        counts = ArrayCounts(coded.codes, [len(levels) for levels in coded.levels])
+        nodes = []
+        for child in _parents_first(chosen):
+            posterior = dirichlet_posterior(counts.family(chosen[child], child)[0])
+            nodes.append(
+                Category(
+                    coded.names[child],
+                    coded.levels[child],
+                    tuple(coded.names[parent] for parent in chosen[child]),
+                    predictive(posterior),
+                    posterior,
+                    coded.kinds[child],
+                    coded.cuts[child],
+                    coded.has_blank[child],
+                )
+            )
+        return Network(tuple(nodes))
+
+    def settled(self, links: int | None = None) -> pd.DataFrame:
+        """Each link of that model and who settled its direction: source, target, settled.
+
+        settled: "your order"; "the data", when every equivalent graph that the order allows agrees; else "nobody".
+        """
+        names = self.coded.names
+        pairs = [(parent, child) for child, parents in self.parents_at(links).items() for parent in parents]
+        pairs.sort(key=lambda link: (names.index(link[0]), names.index(link[1])))
+        open_links = unsettled_links(pairs, self.order.may_lead)
+        rows = []
+        for source, target in pairs:
+            if not self.order.may_lead(target, source):
+                settled = "your order"
+            else:
+                settled = "nobody" if (source, target) in open_links else "the data"
+            rows.append((source, target, settled))
+        return pd.DataFrame(rows, columns=["source", "target", "settled"])
+
+    def save(self, path: str | os.PathLike[str]) -> None:
+        """Write it to one file. The same table, order and seed give the same bytes."""
+        described = {
+            "format": FORMAT,
+            "version": VERSION,
+            "order": archive.order_described(self.order),
+            "coded": archive.coded_described(self.coded),
+            "recommended": self.recommended,
+            "chosen": [[links, self.chosen[links]] for links in sorted(self.chosen)],
+            "max_parents": self.max_parents,
+            "seed": self.seed,
+            "digest": self.digest,
+            "notes": self.notes,
+        }
+        curve = {f"curve_{name}": self.curve[name].to_numpy() for name in _CURVE}
+        archive.write(path, described, {**archive.coded_arrays(self.coded), **curve})
+
+    @classmethod
+    def open(cls, path: str | os.PathLike[str]) -> Self:
+        """Read what `save` wrote; it answers as before to the last digit. Raises Refusal for any other file."""
+        described, arrays = archive.read(path, FORMAT, VERSION)
+        return cls(
+            order=archive.order_from(described["order"]),
+            coded=archive.coded_from(described["coded"], arrays),
+            curve=pd.DataFrame({name: arrays[f"curve_{name}"] for name in _CURVE}),
+            recommended=described["recommended"],
+            chosen={links: tuple(tuple(parents) for parents in model) for links, model in described["chosen"]},
+            max_parents=described["max_parents"],
+            seed=described["seed"],
+            digest=described["digest"],
+            notes=tuple(described["notes"]),
+        )
+
+    def _chosen(self, links: int | None) -> Parents:
+        size = self.recommended if links is None else links
+        if size not in self.chosen:
+            low, high = min(self.chosen), max(self.chosen)
+            raise Refusal(
+                f"No model with {size} links was learned.",
+                where="links",
+                do=f"Choose from {low} to {high} links." if low < high else f"The only size learned is {low}.",
+            )
+        return self.chosen[size]
+
+
+def open_learned(path: str | os.PathLike[str]) -> Learned:
+    """As `Learned.open`."""
+    return Learned.open(path)
+
+
+def _parents_first(chosen: Parents) -> list[int]:
+    """Columns so that parents stand before their children, otherwise as listed."""
+    placed: list[int] = []
+    waiting = list(range(len(chosen)))
+    while waiting:
+        ready = next(child for child in waiting if set(chosen[child]) <= set(placed))
+        placed.append(ready)
+        waiting.remove(ready)
+    return placed
