@@ -119,18 +119,19 @@ class _Walk:
         self.kept = _within_budget(self.levels, records.rows)
         self.first = np.full(self.columns + 1, 0, dtype=np.int64)  # where a column begins in `one_hot`
         self.first[1:] = np.cumsum(np.where(self.kept, self.levels, 0))
-        precise = np.float32 if records.rows < 2**24 else np.float64
-        self.one_hot = np.zeros((records.rows, int(self.first[-1])), dtype=precise)
+        self.exact = np.float32 if records.rows < 2**24 else np.float64
+        self.one_hot = np.zeros((records.rows, int(self.first[-1])), dtype=np.uint8)
         for column in np.flatnonzero(self.kept):
             self.one_hot[np.arange(records.rows), self.first[column] + records.codes[:, column]] = 1
         self.choose = [
             np.asarray([comb(n, k) for n in range(self.columns + 1)], dtype=np.int64) for k in range(size + 1)
         ]
+        self.layouts: dict[tuple[bytes, int], _Layout] = {}
         self.done = 0
         self.total = comb(self.columns, max(size - 2, 0))
 
     def below(self, prefix: tuple[int, ...], code: Ints, cells: int, occupied: int) -> Iterator[Block]:
-        """Blocks of every set that begins with `prefix`, itself excepted. code: (rows,) its occupied cells, numbered."""
+        """Blocks of every set that begins with `prefix`, itself excepted. code: (rows,) occupied cells by number."""
         if len(prefix) == self.size - 2:
             yield from self._ends(prefix, code, cells, occupied)
             self.done += 1
@@ -140,19 +141,21 @@ class _Walk:
             wider = cells * int(self.levels[column])
             if wider > LARGEST:
                 continue
-            yield self._single((*prefix, column), wider, code * self.levels[column] + self.records.codes[:, column])
-            number, seen = _numbered(
-                code * self.levels[column] + self.records.codes[:, column], occupied * int(self.levels[column])
-            )
+            within = code * self.levels[column] + self.records.codes[:, column]
+            number, seen = _numbered(within, occupied * int(self.levels[column]))
+            yield self._single((*prefix, column), wider, number, seen)
             yield from self.below((*prefix, column), number, wider, seen)
 
     def alone(self, column: int) -> Block:
-        return self._single((column,), int(self.levels[column]), self.records.codes[:, column])
+        number, seen = _numbered(self.records.codes[:, column], int(self.levels[column]))
+        return self._single((column,), int(self.levels[column]), number, seen)
 
-    def _single(self, columns: tuple[int, ...], cells: int, code: Ints) -> Block:
-        """One set from the codes of its cells; only occupied cells."""
-        counts = _occupied(code, self.records.fold, self.records.folds)
-        return Block(len(columns), _ints([rank(columns)]), _ints([cells]), _ints([0]), counts[:, None, :])
+    def _single(self, columns: tuple[int, ...], cells: int, number: Ints, seen: int) -> Block:
+        """One set, from the numbers of its occupied cells."""
+        folds = self.records.folds
+        counts = np.bincount(self.records.fold * seen + number, minlength=folds * seen)
+        counted: NDArray[np.int32] = counts.reshape(folds, 1, seen).astype(np.int32)
+        return Block(len(columns), _ints([rank(columns)]), _ints([cells]), _ints([0]), counted)
 
     def _ends(self, prefix: tuple[int, ...], code: Ints, cells: int, occupied: int) -> Iterator[Block]:
         """Sets of `prefix` and one or two later columns."""
@@ -173,56 +176,50 @@ class _Walk:
         self, prefix: tuple[int, ...], code: Ints, cells: int, occupied: int, later: Ints
     ) -> Iterator[Block]:
         folds = self.records.folds
-        pick, layout = self._layout(prefix, cells, later)
-        places = np.concatenate([np.arange(self.first[c], self.first[c] + self.levels[c]) for c in later])
-        wide = int(places.size)
-        whole = int(places[-1] - places[0] + 1) == wide
+        layout = self._layout(later, cells)
+        places = layout.places
+        together = int(places[-1] - places[0] + 1) == places.size
+        used = slice(int(places[0]), int(places[-1]) + 1) if together else places
         group = code * folds + self.records.fold
+        if occupied * folds <= 2**15:
+            group = group.astype(np.int16)  # numpy sorts these by radix, ten times faster
         by_group = np.argsort(group, kind="stable")
         bounds = np.concatenate([[0], np.cumsum(np.bincount(group, minlength=occupied * folds))])
-        step = max(1, _BLOCK // (folds * wide * wide))
+        step = max(1, _BLOCK // (folds * places.size**2))
         for low in range(0, occupied, step):
             high = min(low + step, occupied)
-            products = np.zeros((folds, high - low, wide, wide), dtype=self.one_hot.dtype)
+            products = np.zeros((folds, high - low, places.size, places.size), dtype=self.exact)
             rows = by_group[bounds[low * folds] : bounds[high * folds]]
-            hot = self.one_hot[rows, places[0] : places[-1] + 1] if whole else self.one_hot[np.ix_(rows, places)]
-            offset = bounds[low * folds]
+            hot = self.one_hot.take(rows, axis=0)[:, used]
             for cell in range(low, high):
                 for fold in range(folds):
-                    start, stop = bounds[cell * folds + fold] - offset, bounds[cell * folds + fold + 1] - offset
+                    start, stop = bounds[cell * folds + fold : cell * folds + fold + 2] - bounds[low * folds]
                     if start < stop:
-                        part = hot[start:stop]
+                        part = hot[start:stop].astype(self.exact)
                         np.matmul(part.T, part, out=products[fold, cell - low])
-            flat = products.reshape(folds, high - low, wide * wide)
-            for (size, ranks, joint, starts), chosen in zip(layout, pick, strict=True):
-                if ranks.size:
-                    yield Block(size, ranks, joint, starts, np.take(flat, chosen, axis=2).astype(np.int32))
+            flat = products.reshape(folds, high - low, -1)
+            for more in (layout.one, layout.two):
+                if more.levels.size:
+                    yield Block(
+                        len(prefix) + more.columns.shape[0],
+                        rank(prefix) + self._further(len(prefix), more.columns),
+                        cells * more.levels,
+                        more.starts,
+                        np.take(flat, more.entries, axis=2).astype(np.int32),
+                    )
 
-    def _layout(
-        self, prefix: tuple[int, ...], cells: int, later: Ints
-    ) -> tuple[list[Ints], list[tuple[int, Ints, Ints, Ints]]]:
-        """Which entries of a product make up the sets of one and of two later columns."""
-        depth = len(prefix)
-        base = rank(prefix)
-        levels = self.levels[later]
-        first = np.concatenate([[0], np.cumsum(levels)])
-        wide = int(first[-1])
-        one = base + self.choose[depth + 1][later]
-        diagonal = np.arange(wide, dtype=np.int64) * (wide + 1)
-        a, b = np.triu_indices(later.size, 1)
-        joint = cells * levels[a] * levels[b]
-        small = joint <= LARGEST
-        a, b, joint = a[small], b[small], joint[small]
-        two = base + self.choose[depth + 1][later[a]] + self.choose[min(depth + 2, self.size)][later[b]]
-        lengths = levels[a] * levels[b]
-        starts = np.concatenate([[0], np.cumsum(lengths)]).astype(np.int64)
-        within = np.arange(starts[-1]) - np.repeat(starts[:-1], lengths)
-        width = np.repeat(levels[b], lengths)
-        upper = (np.repeat(first[a], lengths) + within // width) * wide + np.repeat(first[b], lengths) + within % width
-        return [diagonal, upper], [
-            (depth + 1, one, cells * levels, first[:-1].astype(np.int64)),
-            (depth + 2, two, joint, starts[:-1]),
-        ]
+    def _further(self, depth: int, columns: Ints) -> Ints:
+        """What each column of (more columns, sets) adds to the rank of a prefix of `depth` smaller ones."""
+        added = sum(self.choose[depth + 1 + place][column] for place, column in enumerate(columns))
+        return np.asarray(added, dtype=np.int64)
+
+    def _layout(self, later: Ints, cells: int) -> _Layout:
+        limit = LARGEST // cells
+        widest = np.sort(self.levels[later])[-2:]
+        key = (later.tobytes(), 0 if int(np.prod(widest)) <= limit else limit)
+        if key not in self.layouts:
+            self.layouts[key] = _layout(self.levels, self.first, later, limit)
+        return self.layouts[key]
 
     def _by_codes(
         self,
@@ -237,15 +234,57 @@ class _Walk:
         """Sets too sparse for products: number the occupied cells and count them."""
         wider = code * self.levels[column] + self.records.codes[:, column]
         reach = cells * int(self.levels[column])
+        number, seen = _numbered(wider, occupied * int(self.levels[column]))
         if not pairs_only:
-            yield self._single((*prefix, column), reach, wider)
-        number, _ = _numbered(wider, occupied * int(self.levels[column]))
+            yield self._single((*prefix, column), reach, number, seen)
         for other in others:
             joint = reach * int(self.levels[other])
             if joint <= LARGEST:
+                both = number * self.levels[other] + self.records.codes[:, other]
                 yield self._single(
-                    (*prefix, column, int(other)), joint, number * self.levels[other] + self.records.codes[:, other]
+                    (*prefix, column, int(other)), joint, *_numbered(both, seen * int(self.levels[other]))
                 )
+
+
+@dataclass(frozen=True)
+class _Further:
+    """Sets of one or of two later columns inside a product.
+
+    columns: (1 or 2, sets).  levels: (sets,) joint levels of those columns.  entries: where their counts are in a
+    flattened product, set by set.  starts: (sets,) where each set begins among the entries.
+    """
+
+    columns: Ints
+    levels: Ints
+    entries: Ints
+    starts: Ints
+
+
+@dataclass(frozen=True)
+class _Layout:
+    """places: one-hot columns that make up a product.  one, two: what to read off it."""
+
+    places: Ints
+    one: _Further
+    two: _Further
+
+
+def _layout(all_levels: Ints, begins: Ints, later: Ints, limit: int) -> _Layout:
+    """limit: most joint levels of two columns."""
+    levels = all_levels[later]
+    first = np.cumsum(levels) - levels
+    wide = int(levels.sum())
+    places = np.concatenate([np.arange(begins[column], begins[column] + all_levels[column]) for column in later])
+    one = _Further(later[None, :], levels, np.arange(wide) * (wide + 1), first)
+    a, b = np.triu_indices(later.size, 1)
+    small = levels[a] * levels[b] <= limit
+    a, b = a[small], b[small]
+    joint = levels[a] * levels[b]
+    starts = np.cumsum(joint) - joint
+    within = np.arange(joint.sum()) - np.repeat(starts, joint)
+    width = np.repeat(levels[b], joint)
+    entries = (np.repeat(first[a], joint) + within // width) * wide + np.repeat(first[b], joint) + within % width
+    return _Layout(places, one, _Further(np.stack([later[a], later[b]]), joint, entries, starts))
 
 
 def _ints(values: Sequence[int]) -> Ints:
@@ -255,7 +294,7 @@ def _ints(values: Sequence[int]) -> Ints:
 def _within_budget(levels: Ints, rows: int) -> NDArray[np.bool_]:
     """Columns that are held one-hot: all, or the narrowest that fit."""
     narrow = np.argsort(levels, kind="stable")
-    fits = np.cumsum(levels[narrow]) * rows * 4 <= _ONE_HOT_BYTES
+    fits = np.cumsum(levels[narrow]) * rows <= _ONE_HOT_BYTES
     kept = np.zeros(levels.size, dtype=np.bool_)
     kept[narrow[fits]] = True
     return kept
@@ -269,9 +308,3 @@ def _numbered(code: Ints, reach: int) -> tuple[Ints, int]:
         return number[code], int(number[-1]) + 1
     distinct, number = np.unique(code, return_inverse=True)
     return number.reshape(-1).astype(np.int64), int(distinct.size)
-
-
-def _occupied(code: Ints, fold: Ints, folds: int) -> NDArray[np.int32]:
-    """(folds, occupied cells) counts."""
-    number, seen = _numbered(code, int(code.max()) + 1)
-    return np.bincount(fold * seen + number, minlength=folds * seen).reshape(folds, seen).astype(np.int32)
