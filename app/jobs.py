@@ -2,43 +2,26 @@
 
 from __future__ import annotations
 
-import json
+import logging
 import threading
 import time
-from dataclasses import dataclass, field, replace
+from collections.abc import Callable
+from dataclasses import dataclass, field
 from datetime import UTC, datetime
 from multiprocessing.connection import Connection
 from multiprocessing.process import BaseProcess
 from pathlib import Path
-from typing import Literal
 
 from app import workers
 from app.store import Store, Study, files
+from app.store.progress import JobState, Progress, State, closed
 from engine.refusal import Refusal
 
-State = Literal["running", "done", "failed", "cancelled", "died"]
+__all__ = ["JobState", "Jobs"]
+
+log = logging.getLogger("steelyard")
 BEAT = 1.0  # seconds between two signs of life in the database
-SILENCE = 5.0  # seconds without one after which the server that ran the job is taken for gone
 MERCY = 0.1  # seconds between asking a worker to end and ending it
-STEPS_KEPT = 40
-
-
-@dataclass(frozen=True)
-class JobState:
-    """How the learning of one study stands.
-
-    fraction: 0 to 1.  words: what is being done.  done: what was done before, oldest first.
-    started: with its time zone.  message, where, do: why it failed or stopped, as in Refusal; None while it did not.
-    """
-
-    state: State
-    fraction: float
-    words: str
-    done: tuple[str, ...]
-    started: datetime
-    message: str | None = None
-    where: str | None = None
-    do: str | None = None
 
 
 @dataclass
@@ -58,10 +41,12 @@ class _Job:
 
 
 class Jobs:
-    """The learning jobs of the studies in `store`, at most one a study."""
+    """The learning jobs of the studies in `store`, at most one a study. `work` is what their processes run."""
 
-    def __init__(self, store: Store) -> None:
+    def __init__(self, store: Store, work: Callable[..., None] = workers.learn_study) -> None:
         self._store = store
+        self._work = work
+        self._progress = Progress(store.database)
         self._jobs: dict[str, _Job] = {}
         self._lock = threading.RLock()
 
@@ -79,7 +64,7 @@ class Jobs:
                 return now
             state = JobState("running", 0.0, "Starting", (), datetime.now(UTC))
             job = _Job(study, files.unfinished(self._store.files(key)), state)
-            self._begin(key, state)
+            self._progress.begin(key, state)
             self._jobs[key] = job
             job.thread = threading.Thread(target=self._run, args=(job,), daemon=True, name=f"learning {key}")
             job.thread.start()
@@ -89,17 +74,19 @@ class Jobs:
         """How the last job of this study stands, whichever server ran it; None when there was none."""
         with self._lock:
             job = self._jobs.get(key)
-        return self._recorded(key) if job is None else job.state
+        written = self._progress.read(key)
+        if job is not None and (written is None or written.started == job.state.started):
+            return job.state
+        return written
 
     def cancel(self, key: str) -> JobState | None:
         """End the job at once. What was learned before stays; a job that has ended stays as it is."""
         with self._lock:
             job = self._jobs.get(key)
-        if job is not None:
+        if job is not None and job.running:
             self._end(job, "cancelled", None)
         else:
-            with self._store.database.writing() as database:  # another server's job: it looks here at every beat
-                database.execute("UPDATE jobs SET state = 'cancelled' WHERE study = ? AND state = 'running'", (key,))
+            self._progress.cancel(key)
         return self.state(key)
 
     def forget(self, key: str) -> None:
@@ -109,15 +96,14 @@ class Jobs:
             if state is None or state.state == "running":
                 return
             self._jobs.pop(key, None)
-            with self._store.database.writing() as database:
-                database.execute("DELETE FROM jobs WHERE study = ?", (key,))
+            self._progress.forget(key)
 
     def close(self) -> None:
         """End every job of this server, before the store is closed."""
         with self._lock:
             jobs = list(self._jobs.values())
         for job in jobs:
-            self._end(job, "died", _closed())
+            self._end(job, "died", closed())
         for job in jobs:
             if job.thread is not None:
                 job.thread.join()
@@ -129,6 +115,9 @@ class Jobs:
             self._decide(job, self._listen(job))
         except Refusal as refusal:
             self._finish(job, "failed", refusal)
+        except Exception as error:  # whatever it is, nobody may be left waiting for a job that is over
+            log.exception("The job of %s met an error", job.study.key)
+            self._finish(job, "failed", _fault(type(error).__name__))
         finally:
             job.out.unlink(missing_ok=True)
 
@@ -140,7 +129,7 @@ class Jobs:
             *(theirs, self._store.records(job.study.key), job.study.name),
             *(job.study.choices.to_json(), job.study.plan.to_json(), job.out),
         )
-        process = context.Process(target=workers.learn_study, args=arguments, daemon=True)
+        process = context.Process(target=self._work, args=arguments, daemon=True)
         with job.lock:
             if not job.running:
                 ours.close()
@@ -179,20 +168,15 @@ class Jobs:
                 case None:
                     pass
                 case ("progress", fraction, words):
-                    self._progress(job, fraction, words)
+                    with job.lock:
+                        job.state = job.state.moved(fraction, words)
                 case _:
                     return tuple(report)
             if time.monotonic() - saved >= BEAT:
                 saved = time.monotonic()
-                if not self._beat(job):
+                if not self._progress.write(job.study.key, job.state):  # cancelled by another server
                     self._end(job, "cancelled", None)
         return ("cancelled",)
-
-    def _progress(self, job: _Job, fraction: float, words: str) -> None:
-        with job.lock:
-            now = job.state
-            done = now.done if words == now.words else (*now.done, now.words)[-STEPS_KEPT:]
-            job.state = replace(now, fraction=min(max(fraction, now.fraction), 1.0), words=words, done=done)
 
     def _decide(self, job: _Job, report: workers.Report) -> None:
         match report:
@@ -206,8 +190,7 @@ class Jobs:
             case ("memory",):
                 self._finish(job, "failed", Refusal("Learning ran out of memory.", do=_SMALLER))
             case ("broken", name):
-                words = f"Learning met an error of the program ({name}) and stopped; the study is as it was."
-                self._finish(job, "failed", Refusal(words, do="Start again; if it stays so, report it with this line."))
+                self._finish(job, "failed", _fault(str(name)))
             case ("died", code):
                 how = f"signal {-code}" if isinstance(code, int) and code < 0 else f"exit code {code}"
                 words = f"The process that was learning was ended from outside ({how}); the study is as it was."
@@ -232,66 +215,15 @@ class Jobs:
         with job.lock:
             if not job.running:
                 return
-            job.state = _ended(job.state, state, refusal)
-        self._write(job)
-
-    # inside: the database
-
-    def _begin(self, key: str, state: JobState) -> None:
-        with self._store.database.writing() as database:
-            database.execute(
-                "INSERT OR REPLACE INTO jobs (study, state, fraction, words, done, started, beat) "
-                "VALUES (?, ?, ?, ?, ?, ?, ?)",
-                (key, state.state, state.fraction, state.words, "[]", state.started.isoformat(), time.time()),
-            )
-
-    def _beat(self, job: _Job) -> bool:
-        """Write the progress down. False when another server cancelled the job there."""
-        return self._write(job, only_running=True)
-
-    def _write(self, job: _Job, only_running: bool = False) -> bool:
-        state = job.state
-        with self._store.database.writing() as database:
-            found = database.execute(
-                "UPDATE jobs SET state = ?, fraction = ?, words = ?, done = ?, beat = ?, message = ?, place = ?, "
-                "advice = ? WHERE study = ? AND started = ? AND (state = 'running' OR ?)",
-                (
-                    *(state.state, state.fraction, state.words, json.dumps(state.done), time.time()),
-                    *(state.message, state.where, state.do),
-                    *(job.study.key, state.started.isoformat(), not only_running),
-                ),
-            )
-        return found.rowcount > 0
-
-    def _recorded(self, key: str) -> JobState | None:
-        with self._store.database.reading() as database:
-            row = database.execute("SELECT * FROM jobs WHERE study = ?", (key,)).fetchone()
-        if row is None:
-            return None
-        state = JobState(
-            state=row["state"],
-            fraction=row["fraction"],
-            words=row["words"],
-            done=tuple(json.loads(row["done"])),
-            started=datetime.fromisoformat(row["started"]),
-            message=row["message"],
-            where=row["place"],
-            do=row["advice"],
-        )
-        if state.state == "running" and time.time() - row["beat"] > SILENCE:
-            return _ended(state, "died", _closed())
-        return state
+            job.state = job.state.ended(state, refusal)
+        self._progress.write(job.study.key, job.state)
 
 
 _SMALLER = "Start again; if it happens again, close other programs or leave columns out on the Records page."
 
 
-def _closed() -> Refusal:
-    return Refusal("Steelyard was closed while this was learning; the study is as it was.", do="Start learning again.")
-
-
-def _ended(state: JobState, end: State, refusal: Refusal | None) -> JobState:
-    fraction, done = (1.0, (*state.done, state.words)) if end == "done" else (state.fraction, state.done)
-    if refusal is None:
-        return replace(state, state=end, fraction=fraction, done=done)
-    return replace(state, state=end, message=refusal.message, where=refusal.where, do=refusal.do)
+def _fault(name: str) -> Refusal:
+    return Refusal(
+        f"Learning met an error of the program ({name}) and stopped; the study is as it was.",
+        do="Start again; if it stays so, report this line and what the window of the program shows.",
+    )

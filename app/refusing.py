@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import html
 import logging
+from collections.abc import Mapping
 
 from fastapi import Request, Response
 from fastapi.exceptions import RequestValidationError
@@ -77,7 +78,7 @@ def refuse_fault(request: Request, error: Exception) -> Response:
     return refused_page(request, refusal, 500)
 
 
-def refused_page(request: Request, refusal: Refusal, status: int, headers: dict[str, str] | None = None) -> Response:
+def refused_page(request: Request, refusal: Refusal, status: int, headers: Mapping[str, str] | None = None) -> Response:
     """templates/refused.html with `refusal`, `status` and the study of the address, if there is one."""
     context = {"refusal": refusal, "status": status, "study": _study(request)}
     try:

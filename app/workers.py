@@ -14,7 +14,7 @@ import sys
 import threading
 from collections.abc import Callable
 from multiprocessing.connection import Connection
-from multiprocessing.context import BaseContext
+from multiprocessing.context import ForkServerContext, SpawnContext
 from pathlib import Path
 
 import pandas as pd
@@ -29,7 +29,7 @@ log = logging.getLogger("steelyard")
 Report = tuple[object, ...]  # what a child sends: ("progress", fraction, words), ("done", ...), ("refused", ...), ...
 
 
-def context() -> BaseContext:
+def context() -> ForkServerContext | SpawnContext:
     """How children start on this system."""
     if "forkserver" in multiprocessing.get_all_start_methods():
         chosen = multiprocessing.get_context("forkserver")
@@ -60,7 +60,7 @@ def learn_study(pipe: Connection, records: Path, name: str, choices: str, plan: 
         learned.save(out)
         return ("done",)
 
-    _report(pipe, learn)
+    report(pipe, learn)
 
 
 def parse_upload(pipe: Connection, path: Path, name: str, out: Path, memory: int) -> None:
@@ -71,28 +71,34 @@ def parse_upload(pipe: Connection, path: Path, name: str, out: Path, memory: int
 
     def parse() -> Report:
         _limit_memory(memory)
-        frame, warnings = read_frame(path, name)
+        try:
+            frame, warnings = read_frame(path, name)
+        except Refusal as refusal:
+            if _out_of_memory(refusal):
+                raise MemoryError from refusal
+            raise
         frame.to_parquet(out, index=False)
         return ("done", tuple(warnings))
 
-    _report(pipe, parse)
+    report(pipe, parse)
 
 
-def _report(pipe: Connection, work: Callable[[], Report]) -> None:
+def report(pipe: Connection, work: Callable[[], Report]) -> None:
+    """Do `work` and send how it ended; end at once when the server does. Runs in a child."""
     signal.signal(signal.SIGINT, signal.SIG_IGN)  # Ctrl-C is for the server, which ends its children
     threading.Thread(target=_end_with_parent, args=(pipe,), daemon=True).start()
     try:
-        report = work()
+        ended = work()
     except Refusal as refusal:
-        report = ("refused", refusal.message, refusal.where, refusal.do)
+        ended = ("refused", refusal.message, refusal.where, refusal.do)
     except MemoryError:
-        report = ("memory",)
+        ended = ("memory",)
     except BrokenPipeError:
         return
     except Exception as error:
         log.exception("A child process met an error")
-        report = ("broken", type(error).__name__)
-    pipe.send(report)
+        ended = ("broken", type(error).__name__)
+    pipe.send(ended)
 
 
 def _end_with_parent(pipe: Connection) -> None:
@@ -100,6 +106,15 @@ def _end_with_parent(pipe: Connection) -> None:
         pipe.recv()  # nothing is ever sent this way: it returns when the server is gone
     except (EOFError, OSError):
         os._exit(1)
+
+
+def _out_of_memory(error: BaseException | None) -> bool:
+    """Whether want of memory is behind `error`; a parser may take it for a fault of the file."""
+    while error is not None:
+        if isinstance(error, MemoryError) or "out of memory" in str(error):
+            return True
+        error = error.__cause__ or error.__context__
+    return False
 
 
 def _limit_memory(extra: int) -> None:

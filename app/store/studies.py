@@ -152,7 +152,8 @@ class Store:
         table = None if choices is None else self._open_table(study, choices, self.table(key).frame)
         with self.database.writing() as database:
             row = database.execute("SELECT * FROM studies WHERE key = ?", (key,)).fetchone()
-            wanted, said = plan or study_of(row).plan, ()
+            said: tuple[str, ...] = ()
+            wanted = plan or study_of(row).plan
             if table is None:
                 check(wanted, self.table(key))  # as the choices stand now: another tab may have changed them
             else:
