@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 from typing import TYPE_CHECKING
 
@@ -75,7 +75,14 @@ class Model:
         """
         wanted = self._outcomes() if watch is None else watch
         asked = question(self.network, pins, levers, wanted, beside, self.changeable)
-        return ask(self._planner, self._records, asked, draws, seed, exact)
+        answer = ask(self._planner, self._records, asked, draws, seed, exact)
+        if self.order is None and self._records is None:
+            return answer
+        from engine.doubting.case import Case
+        from engine.doubting.register import cautions
+
+        found, made = cautions(Case(self.network, self.order, self._records, asked, answer))
+        return replace(answer, cautions=found, checks_made=made)
 
     def strength(self, source: str, target: str) -> float:
         """How much a link moves its child: 0 to 1.

@@ -140,7 +140,10 @@ class Answer:
         return iter(self.readings)
 
     def change(self, column: str, wanted: Wanted, coverage: float = 0.90) -> tuple[float, float, float]:
-        """(change, low, high): share if set minus share among these, over common draws. Raises Refusal without levers."""
+        """(change, low, high): share if set minus share among these, over common draws.
+
+        Raises Refusal without levers.
+        """
         reading = self.readings[column]
         if reading.set is None:
             raise Refusal("Nothing is set, so nothing changes.", do="Set a lever first.")

@@ -8,15 +8,14 @@ from collections.abc import Callable, Mapping, Sequence
 Scopes = Sequence[tuple[int, ...]]
 Rule = Callable[[int, Sequence[int], Sequence[float]], float]
 
-ENOUGH = 6_000.0  # cells: a plan this small runs sooner than a better one is found
-SEEDS = (1, 2, 3)
+ENOUGH = (6e3, 5e4, 5e5)  # cells: a plan below the first runs sooner than a better one is found, and so on
 
 
 def elimination_order(scopes: Scopes, sizes: Mapping[int, int], keep: Sequence[int] = ()) -> tuple[int, ...]:
     """An order in which to sum out every label of `scopes` except those in `keep`.
 
     The cheapest of min-weight and min-fill (Kjaerulff 1990; Koller & Friedman 2009, section 9.4), ties broken
-    by several fixed seeds; further seeds are tried only while the order is costly.
+    by several fixed seeds; the costlier the order, the more seeds are tried.
     """
     labels = sorted({label for scope in scopes for label in scope})
     place = {label: position for position, label in enumerate(labels)}
@@ -33,10 +32,10 @@ def elimination_order(scopes: Scopes, sizes: Mapping[int, int], keep: Sequence[i
     free = [place[label] for label in labels if label not in set(keep)]
 
     best, cost = _greedy(neighbours, cards, free, _weight, None)
-    for seed in SEEDS:
-        for rule in (_fill, _weight):
-            if cost <= ENOUGH:
-                break
+    for seed, enough in enumerate(ENOUGH):
+        if cost <= enough:
+            break
+        for rule in (_fill, _weight) if seed else (_fill,):
             found, needed = _greedy(neighbours, cards, free, rule, random.Random(seed))
             if needed < cost:
                 best, cost = found, needed

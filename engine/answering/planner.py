@@ -69,6 +69,7 @@ class Planner:
     def __init__(self, network: Network) -> None:
         self.network = network
         self._plans: Kept[Hashable, Tree] = Kept(PLANS)
+        self._worlds: Kept[Hashable, tuple[World, Tree]] = Kept(PLANS)
         self._drawn: Kept[tuple[int, int], tuple[np.ndarray, ...]] = Kept(DRAWS)
         self._recorded: Kept[tuple[int, int, str | None], Mapping[str, np.ndarray]] = Kept(
             DRAWS * (1 + len(network.nodes))
@@ -109,7 +110,7 @@ class Planner:
         """
         here = world(self.network, {}, {}, columns)
         keep = tuple(sorted(here.watched))
-        tree = self._tree(here, keep)
+        tree = plan(here.scopes, here.sizes, (), keep)
         if tree.cells > LIMIT:
             raise _too_wide(tree.cells)
         read = tree.programme.run(here.tables(self._tables(0, 0)))
@@ -124,8 +125,8 @@ class Planner:
     def _recorded_world(self, columns: Iterable[str], count: int, seed: int) -> Mapping[str, np.ndarray]:
         """The world without pins: all columns in one tree where that can be, so that no digit hangs on what was
         asked before; else each column by itself."""
-        whole = world(self.network, {}, {}, self.network.names)
-        if self._tree(whole).cells * (1 + count) <= LIMIT:
+        _, tree = self._planned({}, {}, self.network.names)
+        if tree.cells * (1 + count) <= LIMIT:
             every = self._recorded.get(
                 (count, seed, None), lambda: self._read({}, {}, self.network.names, count, seed)[0]
             )
@@ -154,8 +155,7 @@ class Planner:
         count: int,
         seed: int,
     ) -> tuple[dict[str, np.ndarray], Read, float]:
-        here = world(self.network, pins, levers, columns)
-        tree = self._tree(here)
+        here, tree = self._planned(pins, levers, columns)
         cost = tree.cells * (1 + count)
         if cost > LIMIT:
             raise _too_wide(cost)
@@ -171,10 +171,18 @@ class Planner:
     def _tables(self, count: int, seed: int) -> tuple[np.ndarray, ...]:
         return self._drawn.get((count, seed if count else 0), lambda: self.network.draws(count, seed))
 
-    def _tree(self, here: World, keep: tuple[int, ...] = ()) -> Tree:
-        scopes, watched = here.scopes, here.watched
-        key = (scopes, tuple(here.sizes.items()), watched, keep)
-        return self._plans.get(key, lambda: plan(scopes, here.sizes, watched, keep))
+    def _planned(
+        self, pins: Mapping[str, frozenset[int]], levers: Mapping[str, Setting], columns: Iterable[str]
+    ) -> tuple[World, Tree]:
+        """The world and its tree, kept by what is pinned, set and watched."""
+        watched = tuple(columns)
+        asked = (tuple(pins.items()), tuple(levers.items()), watched)
+        return self._worlds.get(asked, lambda: self._plan(world(self.network, pins, levers, watched)))
+
+    def _plan(self, here: World) -> tuple[World, Tree]:
+        """Another level pinned or set in the same columns needs no new tree."""
+        key = (here.scopes, tuple(here.sizes.items()), here.watched)
+        return here, self._plans.get(key, lambda: plan(here.scopes, here.sizes, here.watched))
 
     def _contradiction(self, asked: Question) -> Refusal:
         """Name the smallest set of pins that no record can have together, as far as it is sought."""

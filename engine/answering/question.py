@@ -93,8 +93,10 @@ def _pin(network: Network, column: str, wanted: object) -> frozenset[int]:
     node = _known(network, column)
     if isinstance(wanted, str):
         return frozenset([_position(node, wanted)])
-    if isinstance(wanted, (set, frozenset, list)) and all(isinstance(level, str) for level in wanted):
-        found = frozenset(_position(node, level) for level in wanted)
+    several = list(wanted) if isinstance(wanted, Iterable) else [wanted]
+    levels = [level for level in several if isinstance(level, str)]
+    if len(levels) == len(several):
+        found = frozenset(_position(node, level) for level in levels)
     else:
         from engine.records.bands import level_positions
 

@@ -35,12 +35,14 @@ class Step:
 class Tree:
     """A plan that holds for every set of tables with the same scopes and sizes.
 
-    scopes: labels of every table, leaves first, then one per step.  roots: tables left at the end.
+    scopes: labels of every table, leaves first, then one per step; those summed out first lead, so that what is
+    summed over is outermost in memory.  axes: for each leaf, its axes as given in the order of its scope.
+    roots: tables left at the end.
     reads: label -> the table whose two messages give its marginal.  outward: tables whose outward message is needed.
     cells: cells touched per draw, inward and outward.  stored: cells kept at once per draw.
     """
 
-    leaves: int
+    axes: tuple[tuple[int, ...], ...]
     scopes: tuple[Scope, ...]
     steps: tuple[Step, ...]
     roots: tuple[int, ...]
@@ -59,7 +61,10 @@ def plan(scopes: Scopes, sizes: Mapping[int, int], watched: Sequence[int], keep:
 
     watched: labels whose marginals are asked for.  keep: labels left in the root, for one joint table of them.
     """
-    alive: dict[int, Scope] = {table: tuple(scope) for table, scope in enumerate(scopes)}
+    order = elimination_order(scopes, sizes, keep)
+    position = {label: turn for turn, label in enumerate((*order, *keep))}
+    axes = tuple(tuple(sorted(range(len(scope)), key=lambda axis: position[scope[axis]])) for scope in scopes)
+    alive: dict[int, Scope] = {table: tuple(scope[axis] for axis in axes[table]) for table, scope in enumerate(scopes)}
     every: list[Scope] = list(alive.values())
     holders: dict[int, set[int]] = {}
     for table, scope in alive.items():
@@ -70,8 +75,9 @@ def plan(scopes: Scopes, sizes: Mapping[int, int], watched: Sequence[int], keep:
 
     def contract(left: int, right: int | None) -> int:
         pair = {left} if right is None else {left, right}
-        union = dict.fromkeys((*alive[left], *(alive[right] if right is not None else ())))
-        scope = tuple(label for label in union if label in kept or holders[label] - pair)
+        union = set(alive[left]).union(alive[right] if right is not None else ())
+        stays = [label for label in union if label in kept or holders[label] - pair]
+        scope = tuple(sorted(stays, key=position.__getitem__))
         out = len(every)
         for table in pair:
             for label in alive.pop(table):
@@ -86,7 +92,7 @@ def plan(scopes: Scopes, sizes: Mapping[int, int], watched: Sequence[int], keep:
     def by_cells(table: int) -> tuple[float, int]:
         return _cells(alive[table], sizes), table
 
-    for label in elimination_order(scopes, sizes, keep):
+    for label in order:
         while len(holders[label]) > 1:
             left, right = sorted(holders[label], key=by_cells)[:2]
             contract(left, right)
@@ -95,11 +101,11 @@ def plan(scopes: Scopes, sizes: Mapping[int, int], watched: Sequence[int], keep:
     while kept and len(alive) > 1:
         left, right = sorted(alive, key=by_cells)[:2]
         contract(left, right)
-    return _tree(len(scopes), every, steps, tuple(sorted(alive)), sizes, watched)
+    return _tree(axes, every, steps, tuple(sorted(alive)), sizes, watched)
 
 
 def _tree(
-    leaves: int,
+    axes: tuple[tuple[int, ...], ...],
     scopes: Sequence[Scope],
     steps: Sequence[Step],
     roots: tuple[int, ...],
@@ -126,7 +132,7 @@ def _tree(
         union = _cells({label for side in sides for label in scopes[side]}, sizes)
         cells += union * (1 + sum(side in outward for side in sides))
     stored = sum(_cells(scope, sizes) for scope in scopes) + sum(_cells(scopes[table], sizes) for table in outward)
-    return Tree(leaves, tuple(scopes), tuple(steps), roots, reads, frozenset(outward), cells, stored)
+    return Tree(axes, tuple(scopes), tuple(steps), roots, reads, frozenset(outward), cells, stored)
 
 
 def _cells(scope: Sequence[int] | set[int], sizes: Mapping[int, int]) -> float:
@@ -165,7 +171,7 @@ class Programme:
                 if side is None or side not in tree.outward:
                     continue
                 around = above if sibling is None else (*scopes[sibling], *above)
-                received[side] = tuple(label for label in dict.fromkeys(around) if label in scopes[side])
+                received[side] = tuple(label for label in scopes[side] if label in around)
                 sources = [above] if sibling is None else [scopes[sibling], above]
                 self.outward.append((side, sibling, step.out, _subscripts(sources, received[side])))
         self.reads = [
@@ -191,7 +197,10 @@ class Programme:
 
     def _run(self, tables: Sequence[np.ndarray], scaled: bool) -> Read:
         tree = self.tree
-        inward: list[np.ndarray] = list(tables)
+        inward = [
+            np.ascontiguousarray(np.transpose(table, (*axes, len(axes))))
+            for table, axes in zip(tables, tree.axes, strict=True)
+        ]
         log_constant: np.ndarray | float = 0.0
         for step, subscripts in self.inward:
             sources = [inward[step.left]] if step.right is None else [inward[step.left], inward[step.right]]

@@ -1,0 +1,64 @@
+"""What every check looks at: a question, its answer, and what stands behind them; and how cautions put figures."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterable
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+from engine.answering.answer import Answer, Caution
+from engine.answering.counting import Records
+from engine.answering.question import Question, Setting
+from engine.network.network import Network
+from engine.order import Order
+from engine.records.table import SMALL_COUNT
+
+Found = tuple[Caution, ...]
+Check = Callable[["Case"], Found | None]  # None: this check cannot be made of this question
+
+
+@dataclass(frozen=True, eq=False)
+class Case:
+    """A question that was asked of a model, and its answer.
+
+    order and records are None for a network given as it is.
+    """
+
+    network: Network
+    order: Order | None
+    records: Records | None
+    asked: Question
+    answer: Answer
+
+    @cached_property
+    def matching(self) -> np.ndarray:
+        """(rows that match,) positions of the records that match every pin; empty without records."""
+        return np.empty(0, dtype=np.intp) if self.records is None else self.records.matching(self.asked.pins)
+
+    @cached_property
+    def levers(self) -> dict[str, Setting]:
+        """The levers that reach anyone and move a column in question other than themselves."""
+        return {
+            column: setting
+            for column, setting in self.asked.working.items()
+            if self.network.descendants([column]) & set(self.asked.watch)
+        }
+
+
+def out_of(part: int, whole: int) -> str:
+    """A count among others as a figure, without giving away a count under the limit."""
+    if whole < SMALL_COUNT:
+        return "all" if part == whole else "some"
+    if 0 < part < SMALL_COUNT:
+        return f"under {SMALL_COUNT} of {whole:,}"
+    if 0 < whole - part < SMALL_COUNT:
+        return f"nearly all of {whole:,}"
+    return f"{part:,} of {whole:,}"
+
+
+def named(names: Iterable[str], joint: str = "and") -> str:
+    """Names in a sentence: "a", "a and b", "a, b and c"."""
+    every = list(names)
+    return every[0] if len(every) == 1 else f"{', '.join(every[:-1])} {joint} {every[-1]}"

@@ -1,0 +1,71 @@
+"""Do the records, counted directly, agree with the model about the pinned group?"""
+
+from __future__ import annotations
+
+import math
+
+from engine.answering.answer import Caution, Counted, Marginal
+from engine.doubting.case import Case, Found, named
+from engine.order import Direction
+
+COVERAGE = 0.90
+DEVIATION = 1.6448536269514722  # the standard normal deviate that leaves 5 % on each side
+
+
+def check(case: Case) -> Found | None:
+    """Tell where the counted share of an outcome lies outside the model's interval for the same group.
+
+    Weakens when the model's share lies outside the count's own interval too (Wilson 1927), so that chance among so
+    many records is no likely reason; else worth knowing.
+    """
+    readings = [case.answer[column] for column in case.asked.watch]
+    compared = [(reading.column, reading.among, reading.counted) for reading in readings if reading.counted is not None]
+    if not compared or not case.network.drawable:
+        return None
+    return tuple(caution for column, among, count in compared for caution in _caution(case, column, among, count))
+
+
+def _caution(case: Case, column: str, among: Marginal, count: Counted) -> list[Caution]:
+    levels = _levels(case, column, among)
+    low, high = among.interval(levels, COVERAGE)
+    held = sum(count.counts[level] for level in levels)
+    share = held / count.rows
+    if low <= share <= high:
+        return []
+    at_least, at_most = wilson(held, count.rows)
+    said = among.share(levels)
+    rank = "know" if at_least <= said <= at_most else "weakens"
+    of_whom = "these" if case.asked.pins else "all"
+    text = (
+        f"of {of_whom} {count.rows:,} records have {column} = {named(levels, 'or')} when counted; "
+        f"the model says {_per_cent(said)}, between {_per_cent(low)} and {_per_cent(high)}."
+    )
+    do = "For how things are, go by the count; on the Model page, see whether more links bring the two together."
+    figures = {"counted": share, "model": said, "low": low, "high": high, "rows": count.rows}
+    return [Caution(rank, "counted", _per_cent(share), text, do, figures, (column, *case.asked.pins))]
+
+
+def _levels(case: Case, column: str, among: Marginal) -> tuple[str, ...]:
+    """The better levels of an outcome, else the commonest level of the group."""
+    better = None if case.order is None else case.order.outcomes.get(column)
+    if better is not None and not isinstance(better, Direction):
+        found = tuple(level for level in better if level in among.levels)
+        if found:
+            return found
+    return (max(among.levels, key=lambda level: among.shares[level]),)
+
+
+def wilson(held: int, rows: int) -> tuple[float, float]:
+    """90 % score interval of a share counted as `held` of `rows`, rows at least 1 (Wilson 1927)."""
+    share, square = held / rows, DEVIATION**2
+    middle = (share + square / (2.0 * rows)) / (1.0 + square / rows)
+    half = DEVIATION / (1.0 + square / rows) * math.sqrt(share * (1.0 - share) / rows + square / (4.0 * rows**2))
+    return middle - half, middle + half
+
+
+def _per_cent(share: float) -> str:
+    if 0.0 < share < 0.01:
+        return "under 1%"
+    if 0.99 < share < 1.0:
+        return "over 99%"
+    return f"{100.0 * share:.0f}%"

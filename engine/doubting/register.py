@@ -1,0 +1,22 @@
+"""Every check, in the order in which cautions of one rank are told. A new one joins with one line."""
+
+from __future__ import annotations
+
+from engine.answering.answer import Caution
+from engine.doubting import counted, direction, overlap, thin
+from engine.doubting.case import Case, Check
+
+CHECKS: tuple[Check, ...] = (
+    overlap.check,
+    thin.check,
+    direction.check,
+    counted.check,
+)
+RANKS = ("blocks", "weakens", "know")
+
+
+def cautions(case: Case) -> tuple[tuple[Caution, ...], int]:
+    """The cautions about an answer, those that block first, and how many checks could be made of it."""
+    results = [found for found in (check(case) for check in CHECKS) if found is not None]
+    every = [caution for found in results for caution in found]
+    return tuple(sorted(every, key=lambda caution: RANKS.index(caution.rank))), len(results)

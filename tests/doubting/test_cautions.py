@@ -1,0 +1,221 @@
+"""Each caution fires in a world made for it, and not in that world's clean twin."""
+
+import pytest
+
+import engine
+from engine.doubting import STANDING, UNSEEN
+from engine.doubting.counted import wilson
+from tests.doubting.worlds import codes_of, only, repeated, world
+
+STAGES = [("Before", ["shift"]), ("Offer", ["mentor"]), ("After", ["passed"])]
+LINKS = [("shift", "mentor"), ("shift", "passed"), ("mentor", "passed")]
+
+
+def school(nights_with_mentor, days_with_mentor=100, nights=200):
+    """Learners on days and nights; half of any group passes."""
+    groups = []
+    for shift, total, offered in (("days", 300, days_with_mentor), ("nights", nights, nights_with_mentor)):
+        for mentor, count in (("yes", offered), ("no", total - offered)):
+            half = count // 2
+            groups.append((half, {"shift": shift, "mentor": mentor, "passed": "yes"}))
+            groups.append((count - half, {"shift": shift, "mentor": mentor, "passed": "no"}))
+    return world(repeated(*groups), LINKS, STAGES, {"passed": "yes"}, ["mentor"])
+
+
+def offer(model, pins=None, **rest):
+    return model.ask(pins, {"mentor": engine.Fix("yes", **rest)}, draws=50)
+
+
+def test_overlap_blocks_where_most_are_like_no_record_with_the_value():
+    answer = offer(school(nights_with_mentor=0), {"shift": "nights"})
+    caution = only(answer, "overlap")
+    assert caution.rank == "blocks" and answer.blocked
+    assert caution.figure == "200 of 200"
+    assert caution.text == "of these records are alike in shift to no record with mentor = yes."
+    assert caution.columns == ("mentor", "shift")
+    assert caution.figures == {"rows": 200, "share thin": 1.0, "share without": 1.0}
+
+
+def test_overlap_weakens_where_some_are_like_no_record_with_the_value():
+    answer = offer(school(nights_with_mentor=0))
+    caution = only(answer, "overlap")
+    assert caution.rank == "weakens" and not answer.blocked
+    assert caution.figure == "200 of 500"
+    assert caution.figures["share without"] == pytest.approx(0.4)
+
+
+def test_overlap_weakens_where_the_value_is_rare():
+    caution = only(offer(school(nights_with_mentor=9), {"shift": "nights"}), "overlap")
+    assert caution.rank == "weakens"
+    assert "alike in shift to fewer than 10 records with mentor = yes" in caution.text
+
+
+@pytest.mark.parametrize("pins", [None, {"shift": "nights"}, {"mentor": "no"}])
+def test_overlap_is_silent_where_every_stratum_has_the_value(pins):
+    answer = offer(school(nights_with_mentor=10), pins)
+    assert answer.cautions == () and answer.checks_made == (3 if pins is None else 4)
+
+
+def test_overlap_is_silent_where_few_of_the_pinned_are_in_a_thin_stratum():
+    assert offer(school(nights_with_mentor=0, nights=15)).cautions == ()
+    assert codes_of(offer(school(nights_with_mentor=0, nights=16))) == [("weakens", "overlap")]
+
+
+def test_overlap_is_not_asked_of_a_lever_that_reaches_nobody_or_moves_nothing_watched():
+    model = school(nights_with_mentor=0)
+    assert codes_of(offer(model, reach=0.0)) == []
+    assert codes_of(model.ask(levers={"mentor": engine.Fix("yes")}, watch=["shift"], beside=["passed"])) == []
+
+
+def test_overlap_of_a_lever_without_parents_looks_at_all_records():
+    rows = repeated((8, {"lever": "on", "out": "yes"}), (92, {"lever": "off", "out": "no"}))
+    model = world(rows, [("lever", "out")], [("A", ["lever"]), ("B", ["out"])], {"out": "yes"})
+    caution = only(model.ask(levers={"lever": engine.Fix("on")}), "overlap")
+    assert caution.rank == "weakens" and caution.figure == "100 of 100"
+    assert caution.text.startswith("of these records are compared with fewer than 10 records with lever = on.")
+
+
+def pairs(rare):
+    """Records of which `rare` have both a = x and b = x."""
+    groups = [(rare, ("x", "x")), (200, ("x", "y")), (200, ("y", "x")), (200, ("y", "y"))]
+    rows = repeated(*[(times, {"a": a, "b": b, "out": out}) for n, (a, b) in groups for times, out in halves(n)])
+    links = [("a", "out"), ("b", "out"), ("a", "b")]
+    return world(rows, links, [("A", ["a"]), ("B", ["b"]), ("C", ["out"])], {"out": "yes"})
+
+
+def halves(times):
+    return [(times // 2, "yes"), (times - times // 2, "no")]
+
+
+@pytest.mark.parametrize(
+    ("rows", "rank", "figure"),
+    [(0, "weakens", "no record"), (4, "weakens", "under 10"), (9, "weakens", "under 10"), (12, "know", "12")],
+)
+def test_a_thin_group_is_told_without_giving_small_counts_away(rows, rank, figure):
+    caution = only(pairs(rows).ask({"a": "x", "b": "x"}), "thin")
+    assert (caution.rank, caution.figure, caution.columns) == (rank, figure, ("a", "b"))
+
+
+def test_a_group_of_thirty_is_not_thin():
+    assert "thin" not in [code for _, code in codes_of(pairs(30).ask({"a": "x", "b": "x"}))]
+
+
+def test_no_matching_record_blocks_what_a_lever_would_do():
+    groups = [(50, "x", "u"), (50, "y", "u"), (50, "y", "v")]
+    rows = repeated(*[(n, {"a": a, "b": b, "lever": k, "out": k}) for n, a, b in groups for k in ("off", "on")])
+    stages = [("A", ["a", "b"]), ("B", ["lever"]), ("C", ["out"])]
+    model = world(rows, [("a", "b"), ("lever", "out")], stages, {"out": "on"})
+    answer = model.ask({"a": "x", "b": "v"}, {"lever": engine.Fix("on")}, draws=20)
+    assert answer.blocked and answer.matching == 0
+    assert only(answer, "thin").rank == "blocks"
+    twin = model.ask({"a": "y", "b": "v"}, {"lever": engine.Fix("on")}, draws=20)
+    assert not twin.blocked and twin.matching == 100
+
+
+def settling(links, stages=None):
+    """Columns x, m, y, z with dependence along `links`, whose directions only `stages` may settle."""
+    rows = repeated(
+        *[
+            (20 + 10 * (x == m) + 10 * (m == y) + 10 * (x == z), {"x": x, "m": m, "y": y, "z": z})
+            for x in "ab"
+            for m in "ab"
+            for y in "ab"
+            for z in "ab"
+        ]
+    )
+    return world(rows, links, stages or [("All", ["x", "m", "y", "z"])], {"y": "a"})
+
+
+def test_a_direction_nobody_settled_weakens_when_it_touches_the_lever():
+    caution = only(settling([("x", "m"), ("m", "y")]).ask(levers={"x": engine.Fix("a")}), "direction")
+    assert caution.rank == "weakens" and caution.figure == "2 links"
+    assert "x goes with m and m goes with y" in caution.text
+    assert caution.figures == {"links": 2, "at the lever": 1}
+
+
+def test_a_direction_nobody_settled_away_from_the_lever_is_worth_knowing():
+    stages = [("First", ["x", "z"]), ("Then", ["m", "y"])]
+    caution = only(
+        settling([("x", "m"), ("x", "y"), ("m", "y")], stages).ask(levers={"x": engine.Fix("a")}), "direction"
+    )
+    assert caution.rank == "know" and caution.figure == "1 link" and caution.columns == ("m", "y")
+
+
+def test_a_direction_off_every_path_is_not_told():
+    stages = [("First", ["x", "z"]), ("Then", ["m"]), ("Last", ["y"])]
+    model = settling([("x", "z"), ("x", "m"), ("m", "y")], stages)
+    assert codes_of(model.ask(levers={"x": engine.Fix("a")})) == []
+
+
+def test_an_order_that_settles_every_direction_leaves_nothing_to_tell():
+    stages = [("1", ["z"]), ("2", ["x"]), ("3", ["m"]), ("4", ["y"])]
+    model = settling([("x", "m"), ("m", "y")], stages)
+    assert codes_of(model.ask(levers={"x": engine.Fix("a")})) == []
+
+
+def crossed(matched):
+    """Records where out follows a and b together, fitted with no link into out."""
+    rows = repeated(
+        *[
+            (matched if (a == b) == (out == "yes") else 100, {"a": a, "b": b, "out": out})
+            for a in "xy"
+            for b in "xy"
+            for out in ("no", "yes")
+        ]
+    )
+    return world(rows, [], [("A", ["a", "b"]), ("B", ["out"])], {"out": "yes"})
+
+
+def test_a_count_that_the_model_contradicts_is_told():
+    caution = only(crossed(matched=300).ask({"a": "x", "b": "x"}), "counted")
+    assert caution.rank == "weakens" and caution.figure == "75%"
+    assert caution.text.startswith("of these 400 records have out = yes when counted; the model says 50%, between")
+    assert caution.columns == ("out", "a", "b")
+
+
+def test_a_count_within_chance_of_the_model_is_only_worth_knowing():
+    assert only(crossed(matched=118).ask({"a": "x", "b": "x"}), "counted").rank == "know"
+
+
+def test_a_count_that_the_model_agrees_with_is_not_told():
+    assert codes_of(crossed(matched=100).ask({"a": "x", "b": "x"})) == []
+
+
+def test_wilson_at_ninety_per_cent():
+    # Wilson 1927: the ends are where the normal test of a share just fails.
+    for held, rows in ((0, 10), (7, 10), (40, 100), (100, 100)):
+        for end in wilson(held, rows):
+            if 0.0 < end < 1.0:
+                assert abs(held / rows - end) == pytest.approx(1.6448536 * (end * (1.0 - end) / rows) ** 0.5, rel=1e-6)
+
+
+def test_cautions_come_in_the_order_of_their_ranks_each_with_something_to_do():
+    model = settling([("x", "m"), ("m", "y")])
+    answers = [
+        offer(school(nights_with_mentor=0), {"shift": "nights"}),
+        offer(school(nights_with_mentor=9, nights=18), {"shift": "nights"}),
+        model.ask({"z": "a"}, {"x": engine.Fix("a")}),
+    ]
+    for answer in answers:
+        ranks = [("blocks", "weakens", "know").index(caution.rank) for caution in answer.cautions]
+        assert ranks == sorted(ranks) and ranks
+        for caution in answer.cautions:
+            assert caution.figure and caution.do.endswith(".") and caution.text.rstrip().endswith(".")
+            assert caution.text[0].islower() and caution.columns
+
+
+def test_the_same_question_has_the_same_cautions():
+    model = settling([("x", "m"), ("m", "y")])
+    first, second = (model.ask({"z": "a"}, {"x": engine.Fix("a")}) for _ in range(2))
+    assert first.cautions == second.cautions and first.cautions
+
+
+def test_a_network_given_as_it_is_has_no_records_to_doubt():
+    model = engine.Model.from_network([engine.Category("a", ["x", "y"], [], [0.5, 0.5])])
+    answer = model.ask({"a": "x"})
+    assert answer.cautions == () and answer.checks_made == 0 and answer.matching is None
+
+
+def test_the_standing_words_say_what_an_estimate_cannot_replace():
+    assert STANDING.startswith("An estimate from records.") and "does not replace a trial" in STANDING
+    assert UNSEEN == "They cannot see what was not recorded."
