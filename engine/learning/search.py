@@ -82,6 +82,7 @@ def size_curve(
             found = [*searched[place].parents(used), *found]
             left -= used
         parents[int(links)] = tuple(found)
+        tick(1.0)
     return SizeCurve(totals[-1], parents)
 
 
@@ -110,6 +111,7 @@ class StageSearch:
         self.table = self._filled(tick)  # (sets of the stage, links + 1)
         self.curve = self.table[-1]
         self._walked: dict[int, list[tuple[int, ...]]] = {}
+        self._found: dict[tuple[int, int, int], tuple[int, ...]] = {}
 
     def _filled(self, tick: Callable[[float], None]) -> Floats:
         sets = np.arange(1 << self.width, dtype=np.int64)
@@ -118,6 +120,7 @@ class StageSearch:
             members += sets >> place & 1
         table = np.full((sets.size, self.most + 1), -np.inf)
         table[0, 0] = 0.0
+        done = 0
         for count in range(1, self.width + 1):
             layer = sets[members == count]
             reach = (count - 1) * self.cap + 1
@@ -132,8 +135,9 @@ class StageSearch:
                     reached = mine[:, links : links + reach]
                     np.maximum(reached, earlier + best[links][:, None], out=reached)
                 filled[holds] = mine
+                done += holds.size
+                tick(0.3 + 0.7 * done / (self.width << (self.width - 1)))
             table[layer, : count * self.cap + 1] = filled
-            tick(0.3 + 0.7 * count / self.width)
         return table
 
     def parents(self, links: int) -> list[tuple[int, ...]]:
@@ -145,8 +149,10 @@ class StageSearch:
                 last, used = self._last(members, left)
                 members ^= 1 << last
                 within = int(_without(np.asarray([members]), last)[0])
-                score = float(self.best[last][used, within])
-                chosen[last] = self.families[last].parents(used, within, score)
+                if (last, used, within) not in self._found:
+                    score = float(self.best[last][used, within])
+                    self._found[last, used, within] = self.families[last].parents(used, within, score)
+                chosen[last] = self._found[last, used, within]
                 left -= used
             self._walked[links] = chosen
         return self._walked[links]
