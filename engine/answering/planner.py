@@ -2,15 +2,13 @@
 
 from __future__ import annotations
 
-import threading
-from collections import OrderedDict
-from collections.abc import Callable, Hashable, Iterable, Mapping
+from collections.abc import Hashable, Iterable, Mapping
 from dataclasses import dataclass
 from itertools import combinations
-from typing import Generic, TypeVar
 
 import numpy as np
 
+from engine.answering.kept import Kept
 from engine.answering.question import Question, Setting
 from engine.answering.tree import Read, Tree, plan
 from engine.answering.worlds import World, world
@@ -21,30 +19,6 @@ LIMIT = 1e9  # table cells times draws that are summed exactly; beyond this a qu
 CHUNK = 64e6  # bytes of tables held at once
 PLANS, DRAWS = 256, 3  # plans and sets of drawn tables kept for the next question
 SUBSETS = 400  # sets of pins tried, at most, when looking for the smallest that contradicts itself
-
-Key = TypeVar("Key", bound=Hashable)
-Value = TypeVar("Value")
-
-
-class Kept(Generic[Key, Value]):
-    """The last few values made, by key. Safe for many threads: two that ask at once may both make a value."""
-
-    def __init__(self, limit: int) -> None:
-        self._limit = limit
-        self._values: OrderedDict[Key, Value] = OrderedDict()
-        self._lock = threading.Lock()
-
-    def get(self, key: Key, make: Callable[[], Value]) -> Value:
-        with self._lock:
-            if key in self._values:
-                self._values.move_to_end(key)
-                return self._values[key]
-        value = make()
-        with self._lock:
-            value = self._values.setdefault(key, value)
-            while len(self._values) > self._limit:
-                self._values.popitem(last=False)
-        return value
 
 
 @dataclass(frozen=True)
