@@ -1,0 +1,75 @@
+"""Model: start learning, watch it, choose a size, read the links."""
+
+from __future__ import annotations
+
+from typing import Annotated
+
+from fastapi import APIRouter, Form, Request, Response
+from fastapi.responses import RedirectResponse
+
+from app.pages import learning_view, model_view
+from app.store import Study
+
+router = APIRouter()
+
+
+@router.get("/study/{key}/model")
+def show(request: Request, key: str, links: str = "", column: str | None = None) -> Response:
+    """The page. links: the budget to show, else the accepted one.  column: the column picked out."""
+    return _page(request, key, "model.html", links, column)
+
+
+@router.get("/study/{key}/learn")
+def progress(request: Request, key: str) -> Response:
+    """The part of the page that follows the learning; once it has ended, the model."""
+    return _page(request, key, "model_part.html", "", None)
+
+
+@router.post("/study/{key}/learn")
+def learn(request: Request, key: str) -> Response:
+    request.app.state.jobs.start(key)
+    return RedirectResponse(f"/study/{key}/model", status_code=303)
+
+
+@router.post("/study/{key}/learn/cancel")
+def cancel(request: Request, key: str) -> Response:
+    request.app.state.store.study(key)
+    request.app.state.jobs.cancel(key)
+    return RedirectResponse(f"/study/{key}/model", status_code=303)
+
+
+@router.post("/study/{key}/budget")
+def accept(request: Request, key: str, links: Annotated[int, Form()]) -> Response:
+    """Accept the model with this many links; questions are answered by it from now on."""
+    request.app.state.store.accept(key, links)
+    return RedirectResponse(f"/study/{key}/model", status_code=303)
+
+
+def _page(request: Request, key: str, template: str, links: str, column: str | None) -> Response:
+    store, jobs = request.app.state.store, request.app.state.jobs
+    study: Study = store.study(key)
+    state = jobs.state(key)
+    learning = ended = view = None
+    if state is not None and state.state == "running":
+        learning = learning_view.view(state)
+    else:
+        ended = learning_view.ended(state) if state is not None else None
+        learned = store.learned(key)
+        if learned is not None:
+            wanted = int(links) if links.isascii() and links.isdigit() else None
+            view = model_view.view(study, learned, wanted, column)
+    context = {
+        "page": "Model",
+        "study": study,
+        "state": state,
+        "learning": learning,
+        "ended": ended,
+        "view": view,
+        "headline": model_view.headline(view) if view else None,
+        "deck": model_view.deck(view) if view else None,
+        "one_stage": sum(bool(columns) for _, columns in study.plan.stages) < 2,
+        "unknown": column is not None and view is not None and view.picked is None,
+        "asked_column": column,
+    }
+    page: Response = request.app.state.templates.TemplateResponse(request, template, context)
+    return page

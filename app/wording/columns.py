@@ -1,0 +1,97 @@
+"""What the Records page says of a column: its levels, its range, its blanks, without giving small counts away."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from app.wording.amounts import count, listing, number, people, share
+from engine.records.table import Column
+
+SHOWN_LEVELS = 6
+
+
+@dataclass(frozen=True)
+class Shown:
+    """Counts of a column's levels as they may be shown.
+
+    counts: one a level, None where hidden.  hidden: positions hidden.  together: their sum.  under: positions whose
+    own count is under the limit; the others in `hidden` would give them away.
+    """
+
+    counts: tuple[int | None, ...]
+    hidden: tuple[int, ...]
+    together: int
+    under: tuple[int, ...]
+
+
+def shown(counts: Sequence[int], small: int) -> Shown:
+    """Hide counts under `small`, and as many of the next smallest as it takes so that none can be worked out."""
+    rising = sorted((place for place in range(len(counts)) if counts[place] > 0), key=lambda place: counts[place])
+    under = [place for place in rising if counts[place] < small]
+    hidden = list(under)
+    for place in rising[len(under) :]:
+        if not under or (len(hidden) > 1 and sum(counts[i] for i in hidden) >= small):
+            break
+        hidden.append(place)
+    kept = tuple(None if place in hidden else int(each) for place, each in enumerate(counts))
+    return Shown(kept, tuple(sorted(hidden)), int(sum(counts[place] for place in hidden)), tuple(sorted(under)))
+
+
+def level_counts(column: Column) -> list[int]:
+    """Kept records at each level."""
+    return [int(each) for each in np.bincount(column.codes, minlength=len(column.levels))]
+
+
+def levels(column: Column, counts: Shown, small: int) -> str:
+    """The levels with their shares; counts instead of shares where a share would give a hidden one away."""
+    total = sum(each or 0 for each in counts.counts) + counts.together
+    if len(column.levels) > SHOWN_LEVELS:
+        by_count = sorted(range(len(column.levels)), key=lambda place: -(counts.counts[place] or 0))
+        first = [place for place in by_count if counts.counts[place] is not None][:SHOWN_LEVELS]
+        said = [f"{column.levels[place]} {share((counts.counts[place] or 0) / max(total, 1))}" for place in first]
+        return f"{count(len(column.levels))} levels: {', '.join(said)} and {len(column.levels) - len(first)} more"
+    if not counts.hidden:
+        return ", ".join(
+            f"{level} {share((each or 0) / max(total, 1))}"
+            for level, each in zip(column.levels, counts.counts, strict=True)
+        )
+    said = [
+        f"{level} {count(each)}" for level, each in zip(column.levels, counts.counts, strict=True) if each is not None
+    ]
+    names = [column.levels[place] for place in counts.hidden]
+    together = f"{listing(names)} {people(counts.together, small)}" + (" together" if len(names) > 1 else "")
+    return ", ".join([*said, together])
+
+
+def small_levels(column: Column, counts: Shown, small: int) -> str | None:
+    """The warning that goes with hidden counts, or None."""
+    if not counts.under:
+        return None
+    names = [column.levels[place] for place in counts.under]
+    told = f"{listing(names, 4)} {'has' if len(names) == 1 else 'have'} under {small} records."
+    beside = [column.levels[place] for place in counts.hidden if place not in counts.under]
+    if beside:
+        told += f" The count of {listing(beside)} is hidden too, or one would give the other away."
+    return told
+
+
+def span(column: Column) -> str:
+    """A number's range, middle and bands."""
+    assert column.values is not None
+    present = column.values[np.isfinite(column.values)]
+    if present.size == 0:
+        return "no values"
+    bands = [level for place, level in enumerate(column.levels) if place <= len(column.cuts)]
+    low, high, middle = number(float(present.min())), number(float(present.max())), number(float(np.median(present)))
+    return f"{low} to {high}, middle {middle}; bands: {', '.join(bands)}"
+
+
+def blanks(blank: int, rows: int, meaning: str, small: int) -> str:
+    """How many cells are blank and what is made of them."""
+    if blank == 0:
+        return "no blanks"
+    amount = f"under {small} blank" if blank < small else f"{share(blank / max(rows, 1))} blank"
+    return f"{amount}, a level of its own" if meaning == "level" else f"{amount}, those rows are left out"

@@ -1,0 +1,93 @@
+"""What is said of columns: small counts cannot be worked out, and amounts read as a person would write them."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
+from app.wording import amounts, columns
+from app.wording.links import story, strength
+from engine.records.table import Column
+
+LIMIT = 10
+
+
+def column(levels: tuple[str, ...], counts: list[int]) -> Column:
+    return Column("x", "category", "few values", levels, np.repeat(np.arange(len(counts)), counts).astype(np.int32))
+
+
+@given(st.lists(st.integers(0, 40), max_size=8))
+def test_no_small_count_can_be_worked_out_from_the_total(counts: list[int]) -> None:
+    shown = columns.shown(counts, LIMIT)
+    small = [place for place, count in enumerate(counts) if 0 < count < LIMIT]
+    assert set(small) <= set(shown.hidden)
+    assert all(shown.counts[place] is None for place in shown.hidden)
+    if small and sum(count > 0 for count in counts) > 1:
+        assert len(shown.hidden) > 1
+        others = sum(counts[place] > 0 for place in range(len(counts)) if place not in shown.hidden)
+        assert shown.together >= LIMIT or others == 0
+
+
+@given(st.lists(st.integers(LIMIT, 40), max_size=8))
+def test_nothing_is_hidden_when_no_count_is_small(counts: list[int]) -> None:
+    assert columns.shown(counts, LIMIT).hidden == ()
+
+
+def test_a_level_under_the_limit_takes_the_next_smallest_along() -> None:
+    home = column(("Old Town", "North Bank", "Hillside", "Quay"), [739, 610, 491, 7])
+    shown = columns.shown(columns.level_counts(home), LIMIT)
+    assert columns.levels(home, shown, LIMIT) == "Old Town 739, North Bank 610, Hillside and Quay 498 together"
+    assert columns.small_levels(home, shown, LIMIT) == (
+        "Quay has under 10 records. The count of Hillside is hidden too, or one would give the other away."
+    )
+
+
+def test_levels_are_told_with_their_shares() -> None:
+    shift = column(("days", "mixed", "nights"), [52, 26, 22])
+    assert columns.levels(shift, columns.shown([52, 26, 22], LIMIT), LIMIT) == "days 52%, mixed 26%, nights 22%"
+
+
+def test_a_number_is_told_by_its_range_middle_and_bands() -> None:
+    values = np.array([4.0, 31.0, 95.0, np.nan])
+    travel = Column("t", "number", "", ("under 20", "20 and over", "blank"), cuts=(20.0,), values=values)
+    assert columns.span(travel) == "4 to 95, middle 31; bands: under 20, 20 and over"
+
+
+@pytest.mark.parametrize(
+    ("blank", "meaning", "words"),
+    [
+        (0, "level", "no blanks"),
+        (3, "level", "under 10 blank, a level of its own"),
+        (60, "drop row", "6% blank, those rows are left out"),
+    ],
+)
+def test_blanks_are_told_with_what_is_made_of_them(blank: int, meaning: str, words: str) -> None:
+    assert columns.blanks(blank, 1000, meaning, LIMIT) == words
+
+
+@pytest.mark.parametrize(
+    ("part", "words"), [(0.0, "0%"), (0.004, "under 1%"), (0.545, "55%"), (0.997, "over 99%"), (1.0, "100%")]
+)
+def test_shares_are_in_whole_per_cent_without_false_certainty(part: float, words: str) -> None:
+    assert amounts.share(part) == words
+
+
+def test_lists_and_counts_read_as_written_by_a_person() -> None:
+    assert amounts.listing(["a", "b", "c"]) == "a, b and c"
+    assert amounts.listing(["a", "b", "c"], 1) == "a and 2 more"
+    assert amounts.people(7, LIMIT) == "under 10"
+    assert amounts.people(1847, LIMIT) == "1,847"
+    assert amounts.number(-2.5) == "−2.5"
+
+
+def test_a_column_comes_about_in_one_sentence() -> None:
+    assert story(["age", "shift"], ["passed"], ["homework"]) == (
+        "comes from age and shift; leads to passed; goes with homework."
+    )
+    assert story([], [], []).startswith("stands alone")
+
+
+def test_strength_is_in_points() -> None:
+    assert [strength(x) for x in (0.0, 0.002, 0.01, 0.36)] == ["0 points", "under 1 point", "1 point", "36 points"]
