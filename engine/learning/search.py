@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from functools import partial
 
 import numpy as np
 from numpy.typing import NDArray
@@ -61,16 +62,8 @@ def size_curve(
     for stage, cost in zip(stages, work, strict=True):
         if not stage:
             continue
-        began = done
-        searched.append(
-            StageSearch(
-                stage,
-                scores,
-                part,
-                max_parents,
-                lambda part, began=began, cost=cost: tick((began + cost * part) / sum(work)),  # type: ignore[misc]
-            )
-        )
+        within = partial(_tick_within, tick, done, cost, sum(work))
+        searched.append(StageSearch(stage, scores, part, max_parents, within))
         done += cost
         totals.append(_convolved(totals[-1], searched[-1].curve, max_links))
     parents = {}
@@ -169,6 +162,10 @@ class StageSearch:
                 if self.table[before, links - used] + self.best[last][used, within] == target:
                     return last, used
         raise AssertionError("a score without a model")
+
+
+def _tick_within(tick: Callable[[float], None], began: float, cost: float, whole: float, done: float) -> None:
+    tick((began + cost * done) / whole)
 
 
 def _without(sets: NDArray[np.int64], place: int) -> NDArray[np.int64]:
