@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Hashable, Iterable, Mapping
 from dataclasses import dataclass
+from functools import partial
 from itertools import combinations
 
 import numpy as np
@@ -45,7 +46,7 @@ class Planner:
         self._plans: Kept[Hashable, Tree] = Kept(PLANS)
         self._worlds: Kept[Hashable, tuple[World, Tree]] = Kept(PLANS)
         self._drawn: Kept[tuple[int, int], tuple[np.ndarray, ...]] = Kept(DRAWS)
-        self._recorded: Kept[tuple[int, int, str | None], Mapping[str, np.ndarray]] = Kept(
+        self._recorded: Kept[tuple[int, int, str | None], tuple[Mapping[str, np.ndarray], float]] = Kept(
             DRAWS * (1 + len(network.nodes))
         )
 
@@ -55,11 +56,12 @@ class Planner:
         Raises Refusal when the pins contradict each other, or when the cost is beyond what is summed at once.
         """
         count = draws if self.network.drawable else 0
-        recorded = self._recorded_world(asked.columns, count, seed)
+        recorded, cost = self._recorded_world(asked.columns, count, seed)
         among: Mapping[str, np.ndarray]
-        among, log_evidence, cost = recorded, 0.0, 0.0
+        among, log_evidence = recorded, 0.0
         if asked.pins:
-            found, read, cost = self._read(asked.pins, {}, asked.columns, count, seed)
+            found, read, more = self._read(asked.pins, {}, asked.columns, count, seed)
+            cost += more
             log_evidence = float(read.log_evidence[0])
             if log_evidence == -np.inf:
                 raise self._contradiction(asked)
@@ -96,20 +98,24 @@ class Planner:
         table = np.transpose(read.joint[..., 0], ordered).reshape(sizes)
         return np.asarray(table / table.sum())
 
-    def _recorded_world(self, columns: Iterable[str], count: int, seed: int) -> Mapping[str, np.ndarray]:
-        """The world without pins: all columns in one tree where that can be, so that no digit hangs on what was
-        asked before; else each column by itself."""
+    def _recorded_world(self, columns: Iterable[str], count: int, seed: int) -> tuple[Mapping[str, np.ndarray], float]:
+        """The world without pins, and its cost: all columns in one tree where that can be, so that no digit hangs on
+        what was asked before; else each column by itself."""
         _, tree = self._planned({}, {}, self.network.names)
-        if tree.cells * (1 + count) <= LIMIT:
-            every = self._recorded.get(
-                (count, seed, None), lambda: self._read({}, {}, self.network.names, count, seed)[0]
-            )
-            return {column: every[column] for column in columns}
-        return {column: self._recorded_alone(column, count, seed) for column in columns}
+        parts: list[tuple[str | None, tuple[str, ...]]] = [(None, self.network.names)]
+        if tree.cells * (1 + count) > LIMIT:
+            parts = [(column, (column,)) for column in columns]
+        found: dict[str, np.ndarray] = {}
+        cost = 0.0
+        for key, together in parts:
+            shares, more = self._recorded.get((count, seed, key), partial(self._alone, together, count, seed))
+            found.update(shares)
+            cost += more
+        return found, cost
 
-    def _recorded_alone(self, column: str, count: int, seed: int) -> np.ndarray:
-        alone = self._recorded.get((count, seed, column), lambda: self._read({}, {}, [column], count, seed)[0])
-        return alone[column]
+    def _alone(self, columns: tuple[str, ...], count: int, seed: int) -> tuple[Mapping[str, np.ndarray], float]:
+        shares, _, cost = self._read({}, {}, columns, count, seed)
+        return shares, cost
 
     def _had(self, asked: Question, count: int, seed: int) -> tuple[Mapping[str, np.ndarray] | None, float]:
         """The columns in question among those who had the levers' values anyway."""

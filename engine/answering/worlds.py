@@ -21,8 +21,8 @@ Left = int | tuple[int, ...] | None  # what is left of an axis: one position, so
 class Part:
     """One table of a world.
 
-    family: place of the column whose table it is.  reach, position: of the lever, when this is a set copy.
-    left: what is left of each axis.  scope: labels of the axes left with more than one level.
+    family: place of the column whose table it is.  left: what is left of each axis.
+    scope: labels of the axes left with more than one level.  lever: when this is the set copy of that column.
     """
 
     family: int
@@ -98,7 +98,10 @@ def world(
     reads: dict[str, int] = {}
     for column in columns:
         label, left = as_seen(network.index[column])
-        reads[column] = -1 - left if isinstance(left, int) else int(label or 0)
+        if isinstance(left, int):
+            reads[column] = -1 - left
+        elif label is not None:
+            reads[column] = label
 
     parts: dict[int, Part] = {}
     waiting = [*pinned, *(label for label in reads.values() if label >= 0)]

@@ -64,6 +64,16 @@ def test_chunks_of_draws_join_to_the_same_answer(net):
         np.testing.assert_allclose(chunked[name].recorded.point, whole[name].recorded.point, rtol=0, atol=1e-12)
 
 
+def test_columns_are_summed_one_by_one_where_all_at_once_is_too_wide(chain_of_forty, monkeypatch):
+    asked = {"watch": ["c20", "c30"], "draws": 4}
+    together = Model(chain_of_forty).ask(**asked)
+    monkeypatch.setattr(planning, "LIMIT", together.cost - 1.0)
+    apart = Model(chain_of_forty).ask(**asked)
+    assert apart.cost != together.cost
+    for name in ("c20", "c30"):
+        np.testing.assert_allclose(apart[name].recorded.draws, together[name].recorded.draws, rtol=0, atol=1e-12)
+
+
 @settings(max_examples=20, deadline=None)
 @given(networks())
 def test_what_was_asked_before_changes_no_digit(net):
