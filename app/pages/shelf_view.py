@@ -5,8 +5,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 from datetime import datetime
 
-from app.store.progress import JobState
 from app.store import Study
+from app.store.progress import JobState
 from app.wording.amounts import count, listing, plural, small_word
 
 RANKS = (
