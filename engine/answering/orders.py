@@ -8,7 +8,7 @@ from collections.abc import Callable, Mapping, Sequence
 Scopes = Sequence[tuple[int, ...]]
 Rule = Callable[[int, Sequence[int], Sequence[float]], float]
 
-ENOUGH = (6e3, 5e4, 5e5)  # cells: a plan below the first runs sooner than a better one is found, and so on
+ENOUGH = (2e4, 1e5, 1e6)  # cells: a plan below the first runs sooner than a better one is found, and so on
 
 
 def elimination_order(scopes: Scopes, sizes: Mapping[int, int], keep: Sequence[int] = ()) -> tuple[int, ...]:

@@ -24,7 +24,8 @@ def check(case: Case) -> Found | None:
         return None
     links = case.network.links
     unsettled = unsettled_links(links, case.order.may_lead)
-    near = [link for link in links if set(link) <= _bearing(links, unsettled, {*levers, *watch, *case.asked.pins})]
+    bearing = _bearing(links, unsettled, {*levers, *watch, *case.asked.pins})
+    near = [link for link in links if bearing.issuperset(link)]
     met = {link for lever in levers for column in watch for link in between(near, lever, column)} & unsettled
     if not met:
         return ()

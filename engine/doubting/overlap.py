@@ -12,6 +12,7 @@ from engine.records.table import SMALL_COUNT
 
 WEAKENS_FROM = 0.05  # share of the pinned records in thin strata; below one in twenty it cannot move the answer far
 BLOCKS_OVER = 0.5
+MOST_STRATA = 1_000_000
 
 
 def check(case: Case) -> Found | None:
@@ -33,9 +34,13 @@ def check(case: Case) -> Found | None:
 
 def _records_alike(records: Records, column: str, setting: Setting, parents: tuple[str, ...]) -> np.ndarray:
     """(rows,) for each record, how many records of the same stratum of `parents` have the lever's value."""
-    stratum = np.zeros(records.rows, dtype=np.int64)
+    stratum, strata = np.zeros(records.rows, dtype=np.int64), 1
     for parent in parents:
-        _, stratum = np.unique(stratum * len(records.levels(parent)) + records.codes(parent), return_inverse=True)
+        stratum = stratum * len(records.levels(parent)) + records.codes(parent)
+        strata *= len(records.levels(parent))
+        if strata > MOST_STRATA:  # keep only those that occur
+            occurring, stratum = np.unique(stratum, return_inverse=True)
+            strata = occurring.size
     return np.bincount(stratum, weights=records.codes(column) == setting.position)[stratum]
 
 
