@@ -38,6 +38,14 @@ def cancel(request: Request, key: str) -> Response:
     return RedirectResponse(f"/study/{key}/model", status_code=303)
 
 
+@router.post("/study/{key}/learn/forget")
+def forget(request: Request, key: str) -> Response:
+    """Say no more of a job that ended without a model."""
+    request.app.state.store.study(key)
+    request.app.state.jobs.forget(key)
+    return RedirectResponse(f"/study/{key}/model", status_code=303)
+
+
 @router.post("/study/{key}/budget")
 def accept(request: Request, key: str, links: Annotated[int, Form()]) -> Response:
     """Accept the model with this many links; questions are answered by it from now on."""
