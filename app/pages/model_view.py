@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from urllib.parse import urlencode
 
 from markupsafe import Markup
@@ -49,6 +49,7 @@ class ModelView:
 
     links: the budget shown.  recommended, best: the sizes that the held-out records point to; best None without them.
     fewer, more: addresses of the budgets beside it, None at an end.  picked: the column picked out, or None.
+    unpicked: the address with nothing picked out.
     """
 
     links: int
@@ -70,7 +71,7 @@ class ModelView:
     picked: str | None
     notes: tuple[str, ...]
     records: int
-    unpicked: str = field(default="")
+    unpicked: str
 
     @property
     def is_in_use(self) -> bool:

@@ -18,7 +18,10 @@ RANKS = (
 
 @dataclass(frozen=True)
 class Entry:
-    """One study. next_step: (words, address, whether it starts something and so is a form)."""
+    """One study.
+
+    next_step: (words, address, whether it starts something and so is a form).  opens: where its name leads.
+    """
 
     key: str
     name: str
@@ -27,6 +30,7 @@ class Entry:
     sentence: str
     cautions: str
     next_step: tuple[str, str, bool]
+    opens: str
     figures: tuple[tuple[str, str], ...]
 
 
@@ -34,6 +38,7 @@ def entry(study: Study, state: JobState | None) -> Entry:
     """The ledger entry of `study`, whose last learning stands at `state`."""
     running = state is not None and state.state == "running"
     links = study.links if study.links is not None else study.recommended
+    next_step = _next_step(study, running)
     return Entry(
         key=study.key,
         name=study.name,
@@ -41,7 +46,8 @@ def entry(study: Study, state: JobState | None) -> Entry:
         when=f"Last asked, {_date(study.last.at)}" if study.last else f"Brought {_date(study.created)}",
         sentence=study.last.sentence if study.last else _unasked(study, running),
         cautions=_cautions(study.last.cautions) if study.last else "",
-        next_step=_next_step(study, running),
+        next_step=next_step,
+        opens=f"/study/{study.key}/records" if next_step[2] else next_step[1],
         figures=(
             ("records", count(study.rows)),
             ("columns", count(study.columns)),
