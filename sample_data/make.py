@@ -12,6 +12,7 @@ import json
 import sys
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from itertools import pairwise
 from pathlib import Path
 
 import numpy as np
@@ -71,18 +72,17 @@ ABOUT_THE_COLUMNS = """
 A number acts only through its bands; inside a band the figure is drawn smoothly and has no further meaning. Blanks were
 made by losing cells at random, whatever the learner was like.
 
-The programme can set *mentor*, *study group* and *fee waived*. The outcomes are *passed* and *in work after a year*; *yes*
-is better in both. *passed* comes before *in work after a year*.
+The school can set *mentor*, *study group* and *fee waived*. The outcomes are *passed* and *in work after a year*; in
+both *yes* is better. *passed* comes before *in work after a year*.
 """
 ABOUT_THE_FINDINGS = """
-  Mentors go to learners with less schooling, to those with another first language and to those on nights, who pass less
-  often anyway.
-- Groups meet when nights begin, so hardly anybody on nights was ever in a study group: fewer than ten learners. What a
-  study group would do for them is where these records are thin.
+- Mentors go to learners with less schooling, with another first language or on nights, who pass less often anyway.
+- Study groups meet late, when nights begin, so fewer than ten learners on nights were ever in one. What a group would
+  do for them is where these records are thin.
 - Learners in a study group had more schooling, so the recorded difference overstates what a group does.
 - Waiving the fee does little to passing: about one point.
 
-`truth.json` has these shares for every changeable column, both outcomes and every shift, without sampling error.
+`truth.json` has these shares for every changeable column, both outcomes and every shift, free of sampling error.
 """
 ABOUT_THE_TRUTH = (
     "Shares of the outcome at this level, summed over the generating network and not counted in the records. recorded: "
@@ -120,7 +120,8 @@ NETWORK = (
     ),
     Node(
         "travel time", PEOPLE, "From work or home to the school.",
-        ("under 20", "20 to under 45", "45 and over"), (0.36, 0.46, 0.18), {"shift work": {"mixed": 0.4, "nights": 1.0}},
+        ("under 20", "20 to under 45", "45 and over"), (0.36, 0.46, 0.18),
+        {"shift work": {"mixed": 0.4, "nights": 1.0}},
         unit="minutes", cuts=(20, 45), shape=MINUTES**1.4 * np.exp(-MINUTES / 13.0) * (MINUTES > 2),
     ),
     Node(
@@ -135,8 +136,8 @@ NETWORK = (
         "study group", OFFER, "Joined a study group. Groups meet late in the evening, when nights begin.",
         NO_YES, (0.64, 0.36),
         {
-            "shift work": {"mixed": -0.5, "nights": -3.8}, "children at home": {"one or two": -0.5, "three or more": -1.0},
-            "prior schooling": {"primary": -0.6, "upper": 0.5},
+            "shift work": {"mixed": -0.5, "nights": -3.8}, "prior schooling": {"primary": -0.6, "upper": 0.5},
+            "children at home": {"one or two": -0.5, "three or more": -1.0},
         },
     ),
     Node(
@@ -200,16 +201,13 @@ def table(node: Node) -> np.ndarray:
 def joint(setting: Mapping[str, str] | None = None) -> np.ndarray:
     """The share of every combination of levels, one axis a column; `setting` fixes columns from outside."""
     shares = np.ones(())
-    for node in NETWORK:
-        level = (setting or {}).get(node.name)
-        if level is None:
-            own = np.moveaxis(table(node), range(len(node.pulls)), np.argsort(np.argsort([AT[p] for p in node.pulls])))
-            axes = {*(AT[parent] for parent in node.pulls), AT[node.name]}
-            own = own.reshape(
-                [len(each.levels) if AT[each.name] in axes else 1 for each in NETWORK[: AT[node.name] + 1]]
-            )
+    for axis, node in enumerate(NETWORK):
+        if setting and node.name in setting:
+            own = np.array([float(level == setting[node.name]) for level in node.levels])
         else:
-            own = np.array([float(each == level) for each in node.levels])
+            axes = [*(AT[parent] for parent in node.pulls), axis]
+            sizes = [len(each.levels) if AT[each.name] in axes else 1 for each in NETWORK[: axis + 1]]
+            own = table(node).transpose(np.argsort(axes)).reshape(sizes)
         shares = shares[..., None] * own
     return shares
 
@@ -253,11 +251,8 @@ def draw() -> dict[str, list[str]]:
     cells: dict[str, list[str]] = {}
     for node in NETWORK:
         chance, within, lost = generator.random((3, ROWS))
-        shares = table(node)[tuple(codes[parent] for parent in node.pulls)]
-        level = (chance[:, None] > np.cumsum(np.broadcast_to(shares, (ROWS, len(node.levels))), axis=1)[:, :-1]).sum(
-            axis=1
-        )
-        codes[node.name] = level
+        edges = np.cumsum(table(node)[tuple(codes[parent] for parent in node.pulls)], axis=-1)[..., :-1]
+        codes[node.name] = level = (chance[:, None] > edges).sum(axis=1)
         found = [node.levels[each] for each in level] if node.shape is None else numbers(node, level, within)
         cells[node.name] = ["" if gone else cell for cell, gone in zip(found, lost < node.blank, strict=True)]
     return cells
@@ -267,7 +262,7 @@ def numbers(node: Node, band: np.ndarray, chance: np.ndarray) -> list[str]:
     """A whole number inside each learner's band, as `node.shape` weighs them."""
     edges = [0, *node.cuts, node.shape.size]
     found = np.zeros(band.size, dtype=int)
-    for each, (low, high) in enumerate(zip(edges, edges[1:], strict=False)):
+    for each, (low, high) in enumerate(pairwise(edges)):
         here = band == each
         weight = np.cumsum(node.shape[low:high])
         found[here] = low + np.searchsorted(weight / weight[-1], chance[here], side="right")
