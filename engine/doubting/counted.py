@@ -7,6 +7,7 @@ import math
 from engine.answering.answer import Caution, Counted, Marginal
 from engine.doubting.case import Case, Found, named
 from engine.order import Direction
+from engine.records.table import SMALL_COUNT
 
 COVERAGE = 0.90
 DEVIATION = 1.6448536269514722  # the standard normal deviate that leaves 5 % on each side
@@ -42,7 +43,7 @@ def _caution(case: Case, column: str, among: Marginal, count: Counted) -> list[C
     )
     do = "For how things are, go by the count; on the Model page, see whether more links bring the two together."
     figures = {"counted": share, "model": said, "low": low, "high": high, "rows": count.rows}
-    return [Caution(rank, "counted", _per_cent(share), text, do, figures, (column, *case.asked.pins))]
+    return [Caution(rank, "counted", _counted(held, count.rows), text, do, figures, (column, *case.asked.pins))]
 
 
 def _levels(case: Case, column: str, among: Marginal) -> tuple[str, ...]:
@@ -61,6 +62,15 @@ def wilson(held: int, rows: int) -> tuple[float, float]:
     middle = (share + square / (2.0 * rows)) / (1.0 + square / rows)
     half = DEVIATION / (1.0 + square / rows) * math.sqrt(share * (1.0 - share) / rows + square / (4.0 * rows**2))
     return middle - half, middle + half
+
+
+def _counted(held: int, rows: int) -> str:
+    """A counted share as a figure, without giving away a count under the limit."""
+    if 0 < held < SMALL_COUNT:
+        return f"under {math.ceil(100 * SMALL_COUNT / rows)}%"
+    if 0 < rows - held < SMALL_COUNT:
+        return f"over {math.floor(100 * (rows - SMALL_COUNT) / rows)}%"
+    return _per_cent(held / rows)
 
 
 def _per_cent(share: float) -> str:

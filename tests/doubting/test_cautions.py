@@ -181,6 +181,14 @@ def test_a_count_that_the_model_agrees_with_is_not_told():
     assert codes_of(crossed(matched=100).ask({"a": "x", "b": "x"})) == []
 
 
+def test_a_counted_share_does_not_give_a_small_count_away():
+    groups = [(4, {"a": "x", "out": "yes"}), (36, {"a": "x", "out": "no"}), (400, {"a": "y", "out": "yes"})]
+    model = world(repeated(*groups), [], [("A", ["a"]), ("B", ["out"])], {"out": "yes"})
+    assert only(model.ask({"a": "x"}), "counted").figure == "under 25%"
+    model = world(repeated(*groups), [], [("A", ["a"]), ("B", ["out"])], {"out": "no"})
+    assert only(model.ask({"a": "x"}), "counted").figure == "over 75%"
+
+
 def test_wilson_at_ninety_per_cent():
     # Wilson 1927: the ends are where the normal test of a share just fails.
     for held, rows in ((0, 10), (7, 10), (40, 100), (100, 100)):
