@@ -50,16 +50,16 @@ def _caution(column: str, setting: Setting, parents: tuple[str, ...], alike: np.
     figures = {"rows": rows, "share thin": thin / rows, "share without": none / rows}
     if none > BLOCKS_OVER * rows:
         text = (
-            f"of these records are alike in {named(parents)} to no record with {value}."
+            f"records asked about are alike in {named(parents)} to no record with {value}."
             if parents
-            else f"of these records have nothing to be compared with: no record has {value}."
+            else f"records asked about have nothing to be compared with: no record has {value}."
         )
         do = f"Ask about a group in which {value} was recorded, or set {column} to another level."
         return [Caution("blocks", "overlap", out_of(none, rows), text, do, figures, (column, *parents))]
     if thin >= WEAKENS_FROM * rows:
         like = f"are alike in {named(parents)} to" if parents else "are compared with"
         text = (
-            f"of these records {like} fewer than {SMALL_COUNT} records with {value}. "
+            f"records asked about {like} fewer than {SMALL_COUNT} records with {value}. "
             "Where records are this thin the model fills in."
         )
         do = f"Ask about a wider group, or record more of {value} there first."

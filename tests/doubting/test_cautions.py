@@ -31,7 +31,7 @@ def test_overlap_blocks_where_most_are_like_no_record_with_the_value():
     caution = only(answer, "overlap")
     assert caution.rank == "blocks" and answer.blocked
     assert caution.figure == "200 of 200"
-    assert caution.text == "of these records are alike in shift to no record with mentor = yes."
+    assert caution.text == "records asked about are alike in shift to no record with mentor = yes."
     assert caution.columns == ("mentor", "shift")
     assert caution.figures == {"rows": 200, "share thin": 1.0, "share without": 1.0}
 
@@ -72,7 +72,7 @@ def test_overlap_of_a_lever_without_parents_looks_at_all_records():
     model = world(rows, [("lever", "out")], [("A", ["lever"]), ("B", ["out"])], {"out": "yes"})
     caution = only(model.ask(levers={"lever": engine.Fix("on")}), "overlap")
     assert caution.rank == "weakens" and caution.figure == "100 of 100"
-    assert caution.text.startswith("of these records are compared with fewer than 10 records with lever = on.")
+    assert caution.text.startswith("records asked about are compared with fewer than 10 records with lever = on.")
 
 
 def pairs(rare):
