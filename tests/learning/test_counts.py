@@ -9,8 +9,8 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from engine.records import counts as counting
-from engine.records.counts import ArrayCounts, rank
+from engine.records import joint
+from engine.records.counts import LARGEST, ArrayCounts, rank
 
 
 def some_records(seed, rows, levels):
@@ -57,20 +57,20 @@ def test_every_set_is_counted_as_pandas_groups_it(seed, rows, levels, size, fold
         chosen
         for each in range(min(size, len(levels)) + 1)
         for chosen in combinations(range(len(levels)), each)
-        if prod(levels[column] for column in chosen) <= counting.LARGEST
+        if prod(levels[column] for column in chosen) <= LARGEST
     ]
     assert set(found) == set(wanted)
     for chosen in wanted:
         assert found[chosen] == grouped(codes, fold, folds, list(chosen))
 
 
-@pytest.mark.parametrize("limit", ["_BLOCK", "_ONE_HOT_BYTES"])
+@pytest.mark.parametrize("limit", ["_BLOCK", "_HELD", "_ONE_HOT"])
 def test_the_route_does_not_change_the_counts(monkeypatch, limit):
     levels = [2, 3, 4, 5, 3]
     codes, fold = some_records(1, 400, levels)
     counts = ArrayCounts(codes, levels, fold, 5)
     before = gathered(counts, 4)
-    monkeypatch.setattr(counting, limit, 400 * 7)
+    monkeypatch.setattr(joint, limit, 400 * 7)
     assert gathered(counts, 4) == before
 
 
