@@ -12,7 +12,7 @@ from starlette.exceptions import HTTPException
 from app import assets
 from app.guard import Guard
 from app.jobs import Jobs
-from app.pages import model, order, records, shelf
+from app.pages import answer, ask, model, order, records, shelf
 from app.refusing import refuse, refuse_address, refuse_values
 from app.settings import Settings
 from app.store import Store
@@ -28,7 +28,7 @@ def create_app(settings: Settings) -> FastAPI:
     app.state.templates = assets.templates()
 
     app.add_middleware(Guard, settings=settings)
-    for page in (shelf, records, order, model):
+    for page in (shelf, records, order, model, ask, answer):
         app.include_router(page.router)
     app.mount("/static", assets.Static(), name="static")
 

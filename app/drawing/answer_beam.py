@@ -1,0 +1,133 @@
+"""The beam of the answer: a rule from 0 to 100 % with a mark for every world, and the span between the two compared."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from functools import cache
+from typing import Literal
+
+from markupsafe import Markup
+
+from app.drawing.svg import INK, LINE, PAPER, join, line, percent, tag
+
+World = Literal["recorded", "among", "set"]
+FIRST, STEP, BELOW, FIGURES = 16, 32, 34, 29  # px: the first row, between rows, under the rule, baseline of figures
+COLOURS = {"recorded": LINE, "among": "#0072B2", "set": "#D55E00"}
+INKS = {"recorded": INK, "among": "#005F96", "set": "#A34700"}
+WIDE = 0.23  # of the width that the longest label takes on a wide page
+NARROW = {"recorded": 0.46, "among": 0.46, "set": 0.27}  # and on 360 px
+
+
+@dataclass(frozen=True)
+class Mark:
+    """One world on the beam.
+
+    words, figure: its label.  share, low, high: 0 to 1.
+    """
+
+    world: World
+    words: str
+    figure: str
+    share: float
+    low: float
+    high: float
+
+
+def answer_beam(marks: Sequence[Mark], told: str, compared: tuple[World, World] | None = None) -> Markup:
+    """The beam with its marks, first to last from above.
+
+    told: what a screen reader says.  compared: the two worlds whose difference is shaded.
+    """
+    rule = FIRST + STEP * (len(marks) - 1) + (24 if len(marks) > 1 else 26)
+    places = {mark.world: (mark, FIRST + STEP * row) for row, mark in enumerate(marks)}
+    drawn: list[Markup] = []
+    if compared is not None:
+        drawn.append(_between(places[compared[0]], places[compared[1]], rule))
+    for mark, y in places.values():
+        x = percent(mark.share)
+        drawn.append(line(x, x, y, rule, stroke=COLOURS[mark.world], stroke_width=1.5))
+    for mark, y in places.values():
+        drawn += [_whisker(mark, y), _shape(mark, y), _label(mark, y)]
+    drawn += [line(0, "100%", rule, rule, stroke_width=3), graduation(rule)]
+    return tag("svg", *drawn, class_="beam", height=rule + BELOW, role="img", aria_label=told)
+
+
+@cache
+def graduation(rule: int) -> Markup:
+    """Ticks at each 1, 5 and 10 points and figures at each 10, under a rule at height `rule`."""
+    drawn: list[Markup] = []
+    for point in range(101):
+        length, width, narrow = (12, 1.5, None) if point % 10 == 0 else (8, 1, None) if point % 5 == 0 else (4, 1, "t1")
+        drawn.append(line(f"{point}%", f"{point}%", rule, rule + length, stroke_width=width, class_=narrow))
+    for point in range(0, 101, 10):
+        anchor = "start" if point == 0 else "end" if point == 100 else "middle"
+        words = f"{point}%" if point in (0, 100) else str(point)
+        classes = "figure t10" if point % 20 else "figure"
+        drawn.append(tag("text", words, class_=classes, x=f"{point}%", y=rule + FIGURES, text_anchor=anchor))
+    return join(drawn)
+
+
+def _between(start: tuple[Mark, int], end: tuple[Mark, int], rule: int) -> Markup:
+    low, high = sorted((start[0].share, end[0].share))
+    y = min(start[1], end[1])
+    return tag(
+        "rect",
+        x=percent(low),
+        y=y,
+        width=percent(high - low),
+        height=rule - y,
+        fill=COLOURS["set"],
+        fill_opacity=0.13,
+    )
+
+
+def _whisker(mark: Mark, y: int) -> Markup:
+    if mark.high <= mark.low:
+        return Markup("")
+    low, high = percent(mark.low), percent(mark.high)
+    return join(
+        [
+            line(low, high, y, y, stroke_width=2.5),
+            line(low, low, y - 5, y + 5, stroke_width=1.5),
+            line(high, high, y - 5, y + 5, stroke_width=1.5),
+        ]
+    )
+
+
+def _shape(mark: Mark, y: int) -> Markup:
+    match mark.world:
+        case "recorded":
+            shape = tag("rect", x=-7, y=-6, width=14, height=12, fill=PAPER, stroke=LINE, stroke_width=2)
+        case "among":
+            shape = tag("circle", r=8, fill=COLOURS["among"])
+        case _:
+            shape = tag("path", d="M0-10 10 0 0 10-10 0Z", fill=COLOURS["set"])
+    return tag("svg", shape, x=percent(mark.share), y=y, overflow="visible")
+
+
+def _label(mark: Mark, y: int) -> Markup:
+    """Past the whisker on the right, or on the left where it would run past 100 %; both where only 360 px is tight."""
+    right, left = max(mark.high, mark.share), min(mark.low, mark.share)
+    narrow = NARROW[mark.world]
+    if right + narrow <= 1:
+        return _words(mark, y, right, "right")
+    if left - narrow >= 0:
+        return _words(mark, y, left, "left")
+    wide = _words(mark, y, right, "right", "wide") if right + WIDE <= 1 else _words(mark, y, left, "left", "wide")
+    roomier = _words(mark, y, right, "right", "slim") if 1 - right > left else _words(mark, y, left, "left", "slim")
+    return join([wide, roomier])
+
+
+def _words(mark: Mark, y: int, at: float, side: str, shown: str | None = None) -> Markup:
+    figure = tag("tspan", mark.figure, font_weight=700, fill=INKS[mark.world])
+    words = [] if shown == "slim" else [mark.words, " "]
+    text = tag(
+        "text",
+        *words,
+        figure,
+        x=12 if side == "right" else -12,
+        text_anchor=None if side == "right" else "end",
+        class_=shown,
+    )
+    return tag("svg", text, x=percent(at), y=y + 5.5, overflow="visible")

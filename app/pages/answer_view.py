@@ -1,0 +1,196 @@
+"""What the printed page of one answer holds besides the answer: numbers, links, order, data, how to ask it again."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from datetime import date
+from importlib import metadata
+
+from app.drawing.answer_beam import World
+from app.pages.ask_view import RANKS, WORDS
+from app.pages.asking import DRAWS, SEED, Asked
+from app.store import Study
+from app.wording.amounts import listing
+from app.wording.answers import WITHIN
+from app.wording.computed import method, size
+from app.wording.estimates import Estimate
+from app.wording.figures import counted, records, share, signed_span
+from app.wording.parts import plain
+from app.wording.values import either, value
+from engine.answering.answer import Caution
+from engine.doubting.direction import between
+from engine.order import Direction
+from engine.records.table import SMALL_COUNT, Table
+
+INTERVAL = f"90% interval, {WITHIN}"
+
+
+@dataclass(frozen=True)
+class Line:
+    """A row of the table of numbers. look: "", "sum" (the change) or "after" (what is told beside it)."""
+
+    words: str
+    figure: str
+    interval: str
+    world: World | None = None
+    look: str = ""
+
+
+@dataclass(frozen=True)
+class Link:
+    """A link in words. strength: how far it moves its child, in points."""
+
+    source: str
+    verb: str
+    target: str
+    strength: str
+    settled: str
+
+
+def today() -> str:
+    now = date.today()
+    return f"{now.day} {now:%B %Y}"
+
+
+def watched_words(asked: Asked) -> str:
+    return plain(value(asked.spine.nodes[asked.watch], asked.wanted(asked.watch)))
+
+
+def numbers(asked: Asked) -> list[Line]:
+    """Every figure of the answer, with its interval; withheld where the answer is."""
+    found = asked.estimates(asked.watch)
+    spine, question, matching = asked.spine, asked.question, asked.answer.matching
+    all_records = f", {records(spine.records, SMALL_COUNT)}" if matching is not None else ""
+    exact = 0 if asked.blocked or found.change is None else found.change.decimals
+    exact = exact if question.levers else found.gap.decimals if question.pins else 0
+    lines = [_line(f"{WORDS['recorded']}{all_records}", found.recorded, "recorded", exact)]
+    if question.pins:
+        these = f", {records(matching, SMALL_COUNT)}" if matching is not None else ""
+        lines.append(_line(f"{WORDS['among']}{these}", found.among, "among", exact))
+    if asked.blocked:
+        lines.append(Line(WORDS["set"], "withheld", "", "set"))
+    elif found.set is not None:
+        lines.append(_line(WORDS["set"], found.set, "set", exact))
+    change = found.gap if not question.levers else None if asked.blocked else found.change
+    if change is not None and question.touched:
+        words = "Change if set, points" if question.levers else "Difference to all records, points"
+        known = "" if change.known else signed_span(100 * change.low, 100 * change.high, change.decimals)
+        lines.append(Line(words, change.difference.split()[0], known, look="sum"))
+    count = asked.answer[asked.watch].counted
+    if count is not None:
+        held = sum(count.counts[level] for level in asked.wanted(asked.watch))
+        whom = ", among these" if question.pins else ""
+        lines.append(Line(f"Counted in the records{whom}", counted(held, count.rows, SMALL_COUNT), "", look="after"))
+    if found.had is not None and not asked.blocked:
+        had = [plain(value(spine.nodes[column], (level,))) for column, (level, _) in question.levers.items()]
+        line = _line(f"Those with {listing(had)} anyway; not the effect", found.had, None)
+        lines.append(Line(line.words, line.figure, line.interval, look="after"))
+    return lines
+
+
+def cautions(asked: Asked) -> list[tuple[str, Caution]]:
+    """Every caution with its rank in words."""
+    words = dict(RANKS)
+    return [(words[caution.rank], caution) for caution in asked.answer.cautions]
+
+
+def order_lines(asked: Asked) -> list[str]:
+    """What was insisted on, ruled out and marked."""
+    order = asked.spine.order
+    lines = [
+        f"{verb}: {'; '.join(f'{source} leads to {target}' for source, target in links)}."
+        for verb, links in (("Insisted on", order.insist), ("Ruled out", order.rule_out))
+        if links
+    ]
+    if order.changeable:
+        lines.append(f"Changeable: {listing(order.changeable)}.")
+    outcomes = []
+    for column, better in order.outcomes.items():
+        direction = isinstance(better, Direction)
+        what = ("more" if better is Direction.MORE else "less") if direction else either(better)  # type: ignore[arg-type]
+        outcomes.append(f"{column} ({what} is better)")
+    if outcomes:
+        lines.append(f"Outcomes: {listing(outcomes)}.")
+    return lines
+
+
+def links(asked: Asked) -> tuple[list[Link], list[Link]]:
+    """The links this answer runs through, and the others."""
+    through = _through(asked)
+    told = [(link, _told(asked, *link)) for link in asked.spine.model.links]
+    return [words for link, words in told if link in through], [words for link, words in told if link not in through]
+
+
+def _through(asked: Asked) -> set[tuple[str, str]]:
+    """Links on a path between any two of the columns in question, among these and what comes before them.
+
+    Where nothing is pinned or set: the links that meet the watched column.
+    """
+    network, every = asked.spine.model.network, asked.spine.model.links
+    asked_about = list(dict.fromkeys((*asked.question.levers, *asked.question.pins, asked.watch)))
+    if len(asked_about) < 2:
+        return {link for link in every if asked.watch in link}
+    bearing = {*asked_about}
+    for column in network.names:
+        if network.descendants([column]) & set(asked_about):
+            bearing.add(column)
+    near = [link for link in every if set(link) <= bearing]
+    found: set[tuple[str, str]] = set()
+    for place, start in enumerate(asked_about):
+        for end in asked_about[place + 1 :]:
+            found |= between(near, start, end)
+    return found
+
+
+def _told(asked: Asked, source: str, target: str) -> Link:
+    spine = asked.spine
+    strength = 100 * spine.model.strength(source, target)
+    words = "under 1 point" if strength < 1 else f"{strength:.0f} {'point' if round(strength) == 1 else 'points'}"
+    settled = spine.settled_by(source, target)
+    return Link(source, "goes with" if settled == "nobody" else "leads to", target, words, settled)
+
+
+def data(asked: Asked, study: Study, table: Table) -> list[tuple[str, str]]:
+    """What the answer was learned from, as (what, words)."""
+    dropped = [f"{people} by blanks in {column}" for column, people in _dropped(table)]
+    kept = f"{asked.spine.records:,}; " + (f"left out: {listing(dropped)}" if dropped else "none left out")
+    used = [column for column in table.columns.values() if column.kind != "left out"]
+    out = [column.name for column in table.columns.values() if column.kind == "left out"]
+    rows = max(len(table.kept), 1)
+    blanks = [f"{column.name} {share(column.blanks / rows)}" for column in used if column.blanks >= SMALL_COUNT]
+    lines = [("records", f"{kept}; each taken as a separate case")]
+    if asked.question.pins and asked.answer.matching is not None:
+        lines.append(("among these", records(asked.answer.matching, SMALL_COUNT)))
+    lines += [
+        ("columns", f"{len(used)} used of {len(table.columns)}" + (f"; left out: {listing(out, 12)}" if out else "")),
+        ("blanks", f"{listing(blanks, 12)}; a level of their own, unless their rows are left out" if blanks else "few"),
+        ("small counts", f"under {SMALL_COUNT} are not printed"),
+        ("file", f"{study.source}, with its choices sha256 {study.digest}"),
+    ]
+    return lines
+
+
+def _dropped(table: Table) -> list[tuple[str, str]]:
+    return [
+        (column, records(rows, SMALL_COUNT) if rows >= SMALL_COUNT else f"under {SMALL_COUNT} records")
+        for column, rows in table.dropped.items()
+        if rows
+    ]
+
+
+def again(asked: Asked, study: Study) -> list[tuple[str, str]]:
+    """What is needed to get the same answer again, as (what, words)."""
+    links = len(asked.spine.model.links)
+    state = "; learned before the records’ choices or the order were changed" if study.model == "old" else ""
+    return [
+        ("asked", f"{today()}; {study.asked:,} {'question' if study.asked == 1 else 'questions'} asked of this study"),
+        ("computed", method(asked.answer)),
+        ("intervals", f"90%, over {DRAWS} draws of this model’s figures; no doubt about its links in them"),
+        ("model", f"{size(links, study.links is not None)}; exact search{state}"),
+        ("version", f"Steelyard {metadata.version('steelyard')}, seed {SEED}"),
+    ]
+
+
+def _line(words: str, estimate: Estimate, world: World | None, decimals: int = 0) -> Line:
+    known = "" if estimate.known else f"{share(estimate.low, decimals)} to {share(estimate.high, decimals)}"
+    return Line(words, share(estimate.share, decimals), known, world)

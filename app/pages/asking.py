@@ -1,0 +1,158 @@
+"""One question asked of one study's model: what Ask shows and the printed answer prints."""
+
+from __future__ import annotations
+
+import weakref
+from collections.abc import Mapping
+from dataclasses import dataclass, replace
+from functools import cached_property
+
+from app.question import Names, Question
+from app.wording.answers import Said, answer_sentence
+from app.wording.estimates import Estimates, estimates
+from app.wording.questions import question_sentence
+from app.wording.values import Words, in_question
+from engine.answering.answer import Answer
+from engine.answering.levers import Fix
+from engine.model import Model
+from engine.network.equivalence import unsettled_links
+from engine.network.network import Category
+from engine.order import Order
+from engine.refusal import Refusal
+
+DRAWS, SEED = 200, 0
+
+
+class Spine:
+    """What every question of one model shares: its columns by stage, their links in words, their names in addresses."""
+
+    def __init__(self, model: Model) -> None:
+        assert model.order is not None
+        self.model = model
+        self.order: Order = model.order
+        self.nodes: Mapping[str, Category] = {node.name: node for node in model.network.nodes}
+        self.stages = tuple((stage.name, stage.columns) for stage in self.order.stages if stage.columns)
+        self.columns = tuple(column for _, columns in self.stages for column in columns)
+        self.names = Names([(column, self.nodes[column].levels) for column in self.columns])
+        self.unsettled = unsettled_links(model.links, self.order.may_lead)
+        self.outcomes = tuple(column for column in self.columns if column in self.order.outcomes)
+        self.changeable = frozenset(model.changeable)
+
+    @property
+    def records(self) -> int:
+        return 0 if self.model.coded is None else int(self.model.coded.codes.shape[0])
+
+    @property
+    def first_watch(self) -> str:
+        return (self.outcomes or self.columns[-1:])[0]
+
+    def watched(self, question: Question) -> tuple[str, ...]:
+        """The column of the answer sentence first, then the other outcomes."""
+        return tuple(dict.fromkeys((question.watch or self.first_watch, *self.outcomes)))
+
+    def comes_from(self, column: str) -> list[str]:
+        return [source for source, target in self._settled if target == column]
+
+    def leads_to(self, column: str) -> list[str]:
+        return [target for source, target in self._settled if source == column]
+
+    def goes_with(self, column: str) -> list[str]:
+        """Columns linked to this one by a link whose direction nobody settled."""
+        pairs = [link for link in self.model.links if link in self.unsettled and column in link]
+        return [source if target == column else target for source, target in pairs]
+
+    def settled_by(self, source: str, target: str) -> str:
+        """Who settled the direction of a link: "your order", "the data" or "nobody"."""
+        if not self.order.may_lead(target, source):
+            return "your order"
+        return "nobody" if (source, target) in self.unsettled else "the data"
+
+    @cached_property
+    def _settled(self) -> list[tuple[str, str]]:
+        return [link for link in self.model.links if link not in self.unsettled]
+
+
+_spines: weakref.WeakKeyDictionary[Model, Spine] = weakref.WeakKeyDictionary()
+
+
+def spine_of(model: Model) -> Spine:
+    """The model's spine, made once."""
+    found = _spines.get(model)
+    if found is None:
+        found = _spines[model] = Spine(model)
+    return found
+
+
+@dataclass(frozen=True, eq=False)
+class Asked:
+    """A question and what came of it.
+
+    watched: as Spine.watched.  wanted: column -> its levels in question.  refusal: why it was not answered, else None;
+    the readings are then those of the records as they are.
+    """
+
+    question: Question
+    watched: tuple[str, ...]
+    answer: Answer
+    spine: Spine
+    refusal: Refusal | None = None
+
+    @property
+    def watch(self) -> str:
+        return self.watched[0]
+
+    @property
+    def blocked(self) -> bool:
+        """Whether what the levers would do is withheld."""
+        return bool(self.question.levers) and self.answer.blocked
+
+    @property
+    def shows_among(self) -> bool:
+        return bool(self.question.pins) and self.refusal is None
+
+    @property
+    def shows_set(self) -> bool:
+        return bool(self.question.levers) and not self.blocked and self.refusal is None
+
+    def wanted(self, column: str) -> tuple[str, ...]:
+        """The levels of a column whose share answers the question."""
+        recorded = [float(part) for part in self.answer[column].recorded.point]
+        return in_question(self.spine.nodes[column], self.spine.order.outcomes.get(column), recorded)
+
+    def estimates(self, column: str) -> Estimates:
+        return estimates(self.answer[column], self.wanted(column))
+
+    @cached_property
+    def sentence(self) -> Words:
+        """The question in words."""
+        return question_sentence(self.question, self.watch, self.wanted(self.watch), self.spine.nodes)
+
+    @cached_property
+    def said(self) -> Said:
+        """The answer in words."""
+        return answer_sentence(
+            self.question,
+            self.watch,
+            self.wanted(self.watch),
+            self.estimates(self.watch),
+            self.spine.nodes,
+            self.spine.records or None,
+            self.blocked,
+        )
+
+
+def ask(model: Model, question: Question) -> Asked:
+    """Ask `question` of `model`, with every column read beside it."""
+    spine = spine_of(model)
+    watched = spine.watched(question)
+    try:
+        return Asked(question, watched, _answer(spine, question, watched), spine)
+    except Refusal as refusal:
+        bare = replace(question, pins={}, levers={})
+        return Asked(question, watched, _answer(spine, bare, watched), spine, refusal)
+
+
+def _answer(spine: Spine, question: Question, watched: tuple[str, ...]) -> Answer:
+    levers = {column: Fix(level, reach) for column, (level, reach) in question.levers.items()}
+    pins = {column: frozenset(levels) for column, levels in question.pins.items()}
+    return spine.model.ask(pins, levers, watch=watched, beside=spine.columns, draws=DRAWS, seed=SEED)

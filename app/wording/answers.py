@@ -1,0 +1,167 @@
+"""The answer as a sentence, and the quieter lines under it. Nothing here improves anything: it would move."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from app.question import Question, per_cent
+from app.wording.estimates import Estimate, Estimates
+from app.wording.figures import Change, counted, share, span
+from app.wording.parts import Clause, Part, name, plain, say, series
+from app.wording.questions import Nodes, among
+from app.wording.values import Words, is_at, is_yes, subject, value
+from engine.answering.answer import Counted
+
+WITHIN = "within this model"  # of an interval, until the one over sampled models is ready
+
+
+@dataclass(frozen=True)
+class Said:
+    """An answer in words. headline: the sentence.  aside: its change and interval, quieter, on a line of their own."""
+
+    headline: tuple[Part | Clause, ...]
+    aside: tuple[Part | Clause, ...]
+
+    @property
+    def text(self) -> str:
+        return f"{plain(self.headline)} {plain(self.aside)}".strip()
+
+
+def answer_sentence(
+    question: Question,
+    watch: str,
+    wanted: tuple[str, ...],
+    found: Estimates,
+    nodes: Nodes,
+    records: int | None = None,
+    blocked: bool = False,
+) -> Said:
+    """The sentence that is the page.
+
+    wanted: the levels of `watch` in question.  records: all of them, None when the model came without.
+    blocked: a caution withholds what the levers would do.
+    """
+    if question.levers and blocked:
+        return _withheld(question, watch, wanted, found, nodes, records)
+    if question.levers:
+        return _moved(question, watch, wanted, found, nodes)
+    if question.pins:
+        recorded, here = found.gap.ends
+        group, what = _capital(among(question, nodes)), is_at(nodes[watch], wanted)
+        words = say(group, ", ", what, " for ", Part(here, "among"), f", against {recorded} of all records.")
+        return _said(words, bracket(found.gap))
+    what, here = is_at(nodes[watch], wanted), share(found.recorded.share)
+    return _said(say(f"Across {_all(records)} ", what, " for ", Part(here, "recorded"), "."), _interval(found.recorded))
+
+
+def had_sentence(question: Question, found: Estimates, nodes: Nodes) -> Words:
+    """Those who had the levers' values without being set; empty where nobody is, or nothing is set."""
+    if found.had is None or not question.levers:
+        return []
+    having = series([value(nodes[column], (level,)) for column, (level, _) in question.levers.items()])
+    return say(
+        "Those with ", having, " anyway: ", Part(share(found.had.share), "recorded"), ". That is not the effect."
+    )
+
+
+def counted_sentence(
+    question: Question,
+    watch: str,
+    wanted: tuple[str, ...],
+    count: Counted | None,
+    matching: int,
+    nodes: Nodes,
+    small: int,
+) -> Words:
+    """What the records hold, counted; without a number where they are under the small-count limit.
+
+    matching: records that match every pin.
+    """
+    if count is None:
+        these = "this value" if len(question.pins) == 1 else "all of these values"
+        which = f"Under {small} records have" if matching else "No record has"
+        return say(f"{which} {these}, so nothing is counted; the figures come from the model.")
+    held = sum(count.counts[level] for level in wanted)
+    have = say("have ", value(nodes[watch], wanted))
+    return say("Counted in the records: ", Part(counted(held, count.rows, small), "recorded"), " ", have, ".")
+
+
+def also_sentence(
+    question: Question, column: str, wanted: tuple[str, ...], found: Estimates, nodes: Nodes, blocked: bool
+) -> tuple[Words, Words]:
+    """Another watched column: what it is, and its figures."""
+    what = subject(nodes[column], wanted)
+    if question.levers and not blocked:
+        assert found.change is not None
+        start, end = found.change.ends
+        from_to = say(" from ", Part(start, "among" if question.pins else "recorded"), " to ", Part(end, "set"))
+        return what, say(from_to, f" {bracket(found.change)}")
+    if question.pins:
+        recorded, here = found.gap.ends
+        return what, say(" ", Part(here, "among"), f", against {recorded} of all records {bracket(found.gap)}")
+    return what, say(" ", Part(share(found.recorded.share), "recorded"))
+
+
+def bracket(change: Change) -> str:
+    """(+9 points, within this model +4 to +14)"""
+    if change.known:
+        return f"({change.difference})"
+    return f"({change.difference}, {WITHIN} {change.interval})"
+
+
+def _moved(question: Question, watch: str, wanted: tuple[str, ...], found: Estimates, nodes: Nodes) -> Said:
+    assert found.change is not None
+    what = subject(nodes[watch], wanted)
+    start, end = found.change.ends
+    from_to = say("from ", Part(start, "among" if question.pins else "recorded"), " to ", Part(end, "set"))
+    opening = say("By this estimate, ", _group(question, nodes), "setting ", _settings(question, nodes))
+    moving = (" would move ", what, " ") if found.change.moves else (" may not move ", what, ": ")
+    return _said(say(opening, *moving, from_to), f"{bracket(found.change)}.")
+
+
+def _withheld(
+    question: Question, watch: str, wanted: tuple[str, ...], found: Estimates, nodes: Nodes, records: int | None
+) -> Said:
+    what = subject(nodes[watch], wanted)
+    words = say("These records cannot say what setting ", _settings(question, nodes), " would do to ", what, ".")
+    it_is = "it is " if is_yes(wanted) else "that is "
+    if question.pins:
+        recorded, here = found.gap.ends
+        known = say(_capital(among(question, nodes)), f" {it_is}", Part(here, "among"))
+        known = say(known, f", against {recorded} of all records {bracket(found.gap)}.")
+    else:
+        known = say(f"Across {_all(records)} {it_is}", Part(share(found.recorded.share), "recorded"), ".")
+    return _said(words, say(known, " If set: ", Part("withheld", "withheld")))
+
+
+def _said(headline: Words, aside: str | Words) -> Said:
+    return Said(tuple(headline), tuple(say(aside)))
+
+
+def _group(question: Question, nodes: Nodes) -> Words:
+    return say(among(question, nodes), ", ") if question.pins else []
+
+
+def _settings(question: Question, nodes: Nodes) -> Words:
+    """*L* to *l* for 80% of them and *M* to *m*"""
+    whom = "them" if question.pins else "all records"
+    found: list[Words] = []
+    for column, (level, reach) in question.levers.items():
+        part_of = "" if reach == 1.0 else f" for {per_cent(reach)}% of {whom}"
+        found.append(say(name(column), " to ", name(level), part_of))
+    return series(found)
+
+
+def _interval(estimate: Estimate) -> str:
+    return "" if estimate.known else f"({WITHIN} {span(estimate.low, estimate.high)})"
+
+
+def _all(records: int | None) -> str:
+    return "all records" if records is None else f"all {records:,} records"
+
+
+def _capital(words: Words) -> Words:
+    """The same words at the start of a sentence."""
+    first = words[0]
+    assert isinstance(first, Part)
+    return [Part(first.text[:1].upper() + first.text[1:], first.style), *words[1:]]

@@ -1,0 +1,47 @@
+/* Ask without reloading: what was clicked keeps its place and its focus, and silence of the program is said. */
+(() => {
+  let clicked = null;
+
+  /* Scroll so that the control stands where it stood; where the page has become too short for that, lengthen it. */
+  const keepPlace = (control, top) => {
+    document.body.style.paddingBottom = "";
+    const off = () => control.getBoundingClientRect().top - top;
+    const before = off();
+    scrollBy(0, before);
+    const left = off();
+    if (before > 0 && left > 1) {
+      document.body.style.paddingBottom = `${Math.ceil(left)}px`;
+      scrollBy(0, left);
+    }
+  };
+
+  document.addEventListener("htmx:before:request", (event) => {
+    const control = event.target.closest?.("a, button, input");
+    clicked = control && document.getElementById("ask")?.contains(control)
+      ? { id: control.id, then: control.dataset.then, hash: control.hash, top: control.getBoundingClientRect().top }
+      : null;
+  });
+
+  document.addEventListener("htmx:after:swap", () => {
+    if (!clicked) return;
+    const { id, then, hash, top } = clicked;
+    clicked = null;
+    document.getElementById("gone").hidden = true;
+    if (hash) {
+      const card = document.getElementById(decodeURIComponent(hash.slice(1)));
+      card?.focus({ preventScroll: true });
+      card?.scrollIntoView({ block: "center" });
+      return;
+    }
+    const kept = id && document.getElementById(id);
+    if (kept) keepPlace(kept, top);
+    if (document.activeElement === document.body || !document.activeElement?.isConnected) {
+      (kept || (then && document.getElementById(then)))?.focus({ preventScroll: true });
+    }
+  });
+
+  document.addEventListener("htmx:error", () => {
+    const gone = document.getElementById("gone");
+    if (gone) gone.hidden = false;
+  });
+})();
