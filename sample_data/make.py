@@ -18,7 +18,7 @@ from pathlib import Path
 import numpy as np
 
 ROWS = 4000
-SEED = 1887
+SEED = 1896
 NAME = "Lantern Street evening school"
 ABOUT = "4,000 invented learners of an evening school: who had a mentor, who passed, and what a mentor would do."
 
@@ -77,8 +77,8 @@ both *yes* is better. *passed* comes before *in work after a year*.
 """
 ABOUT_THE_FINDINGS = """
 - Mentors go to learners with less schooling, with another first language or on nights, who pass less often anyway.
-- Study groups meet late, when nights begin, so fewer than ten learners on nights were ever in one. What a group would
-  do for them is where these records are thin.
+- Nights are where these records are thin. Study groups meet late, when nights begin, so fewer than ten learners on
+  nights were ever in one; and of those on nights with upper schooling fewer than ten had a mentor.
 - Learners in a study group had more schooling, so the recorded difference overstates what a group does.
 - Waiving the fee does little to passing: about one point.
 
@@ -105,7 +105,7 @@ NETWORK = (
     Node(
         "prior schooling", PEOPLE, "The highest school finished before.",
         ("primary", "lower", "upper"), (0.22, 0.36, 0.42),
-        {"age band": {"25 to 34": -0.2, "35 to 49": -0.5, "50 and over": -1.2}, "first language": {"another": -0.5}},
+        {"age band": {"25 to 34": -0.2, "35 to 49": -0.5, "50 and over": -1.3}, "first language": {"another": -0.9}},
         grade=True, blank=0.02,
     ),
     Node(
@@ -115,30 +115,24 @@ NETWORK = (
     ),
     Node(
         "shift work", PEOPLE, "When the learner works; those without work count as days.",
-        ("days", "mixed", "nights"), (0.66, 0.22, 0.12),
+        ("days", "mixed", "nights"), (0.63, 0.22, 0.15),
         {"prior schooling": {"primary": 0.7, "upper": -0.5}, "first language": {"another": 0.6}},
     ),
     Node(
         "travel time", PEOPLE, "From work or home to the school.",
         ("under 20", "20 to under 45", "45 and over"), (0.36, 0.46, 0.18),
         {"shift work": {"mixed": 0.4, "nights": 1.0}},
-        unit="minutes", cuts=(20, 45), shape=MINUTES**1.4 * np.exp(-MINUTES / 13.0) * (MINUTES > 2),
+        unit="minutes", cuts=(20, 45), shape=MINUTES**1.4 * np.exp(-MINUTES / 14.0) * (MINUTES > 2),
     ),
     Node(
         "mentor", OFFER, "Was given a mentor, an hour a week. Mentors go first to those thought to need one.",
-        NO_YES, (0.86, 0.14),
-        {
-            "prior schooling": {"primary": 1.9, "upper": -2.2}, "first language": {"another": 0.5},
-            "shift work": {"mixed": 0.2, "nights": 0.4},
-        },
+        NO_YES, (0.84, 0.16),
+        {"prior schooling": {"primary": 1.9, "upper": -1.6}, "shift work": {"mixed": 0.5, "nights": 1.0}},
     ),
     Node(
         "study group", OFFER, "Joined a study group. Groups meet late in the evening, when nights begin.",
         NO_YES, (0.64, 0.36),
-        {
-            "shift work": {"mixed": -0.5, "nights": -3.8}, "prior schooling": {"primary": -0.6, "upper": 0.5},
-            "children at home": {"one or two": -0.5, "three or more": -1.0},
-        },
+        {"shift work": {"mixed": -0.6, "nights": -4.2}, "prior schooling": {"primary": -0.9, "upper": 0.8}},
     ),
     Node(
         "fee waived", OFFER, "Pays no fee.",
@@ -154,31 +148,28 @@ NETWORK = (
         "attendance", YEAR, "Evenings attended, of those held after the learner enrolled.",
         ("under 60", "60 to under 80", "80 and over"), (0.22, 0.40, 0.38),
         {
-            "mentor": {"yes": 1.3}, "shift work": {"mixed": -0.5, "nights": -1.1},
+            "mentor": {"yes": 1.3}, "shift work": {"mixed": -0.8, "nights": -1.8},
             "missed first month": {"yes": -1.6},
         },
-        unit="% of evenings", cuts=(60, 80), shape=PER_CENT**2.5 * (100.5 - PER_CENT) ** 0.6, blank=0.05,
+        unit="% of evenings", cuts=(60, 80), shape=PER_CENT**2.0 * (100.5 - PER_CENT) ** 0.6, blank=0.04,
     ),
     Node(
         "homework handed in", YEAR, "How much of the homework set was handed in.",
-        ("little", "some", "most"), (0.36, 0.36, 0.28),
-        {"mentor": {"yes": 1.4}, "study group": {"yes": 1.2}, "first language": {"another": -0.7}}, grade=True,
+        ("under half", "half or more"), (0.64, 0.36),
+        {"mentor": {"yes": 1.5}, "study group": {"yes": 1.3}, "first language": {"another": -0.7}}, grade=True,
     ),
     Node(
         "passed", AFTER, "Passed the examination at the end of the year.",
-        NO_YES, (0.94, 0.06),
+        NO_YES, (0.93, 0.07),
         {
-            "prior schooling": {"lower": 1.7, "upper": 3.4}, "attendance": {"60 to under 80": 0.9, "80 and over": 1.7},
-            "homework handed in": {"some": 0.8, "most": 1.7},
+            "prior schooling": {"lower": 1.7, "upper": 3.4}, "attendance": {"60 to under 80": 1.0, "80 and over": 2.0},
+            "homework handed in": {"half or more": 1.6},
         },
     ),
     Node(
         "in work after a year", AFTER, "In paid work twelve months after the examination.",
         NO_YES, (0.46, 0.54),
-        {
-            "passed": {"yes": 1.2}, "age band": {"50 and over": -0.8},
-            "children at home": {"one or two": -0.3, "three or more": -0.9},
-        },
+        {"passed": {"yes": 1.1}, "age band": {"35 to 49": -0.4, "50 and over": -1.4}},
     ),
 )  # fmt: skip
 AT = {node.name: axis for axis, node in enumerate(NETWORK)}
