@@ -136,7 +136,7 @@ class Jobs:
                 theirs.close()
                 return ("cancelled",)
             try:
-                process.start()
+                workers.start(process)
             except OSError as error:
                 ours.close()
                 raise Refusal(

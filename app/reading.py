@@ -61,7 +61,7 @@ def _parse(upload: Path, name: str, out: Path, settings: Settings) -> tuple[str,
         args=(theirs, upload, name, out, settings.reading_memory * 1_000_000),
         daemon=True,
     )
-    process.start()
+    workers.start(process)
     theirs.close()
     try:
         if not ours.poll(settings.reading_time):

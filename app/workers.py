@@ -6,15 +6,17 @@ small server that has the engine loaded already; elsewhere each starts afresh an
 
 from __future__ import annotations
 
+import contextlib
 import logging
 import multiprocessing
 import os
 import signal
 import sys
 import threading
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from multiprocessing.connection import Connection
 from multiprocessing.context import ForkServerContext, SpawnContext
+from multiprocessing.process import BaseProcess
 from pathlib import Path
 
 import pandas as pd
@@ -43,8 +45,14 @@ def warm() -> None:
     if context().get_start_method() == "forkserver":
         from multiprocessing import forkserver
 
-        context()
-        forkserver.ensure_running()
+        with _interrupts_held():
+            forkserver.ensure_running()
+
+
+def start(process: BaseProcess) -> None:
+    """Start a child. Ctrl-C does not reach it: that is for the server, which ends its children."""
+    with _interrupts_held():
+        process.start()
 
 
 def learn_study(pipe: Connection, records: Path, name: str, choices: str, plan: str, out: Path) -> None:
@@ -85,7 +93,7 @@ def parse_upload(pipe: Connection, path: Path, name: str, out: Path, memory: int
 
 def report(pipe: Connection, work: Callable[[], Report]) -> None:
     """Do `work` and send how it ended; end at once when the server does. Runs in a child."""
-    signal.signal(signal.SIGINT, signal.SIG_IGN)  # Ctrl-C is for the server, which ends its children
+    signal.signal(signal.SIGINT, signal.SIG_IGN)
     threading.Thread(target=_end_with_parent, args=(pipe,), daemon=True).start()
     try:
         ended = work()
@@ -99,6 +107,19 @@ def report(pipe: Connection, work: Callable[[], Report]) -> None:
         log.exception("A child process met an error")
         ended = ("broken", type(error).__name__)
     pipe.send(ended)
+
+
+@contextlib.contextmanager
+def _interrupts_held() -> Iterator[None]:
+    """Hold Ctrl-C back in this thread; processes started meanwhile hold it back for good."""
+    if not hasattr(signal, "pthread_sigmask"):
+        yield
+        return
+    before = signal.pthread_sigmask(signal.SIG_BLOCK, {signal.SIGINT})
+    try:
+        yield
+    finally:
+        signal.pthread_sigmask(signal.SIG_SETMASK, before)
 
 
 def _end_with_parent(pipe: Connection) -> None:
