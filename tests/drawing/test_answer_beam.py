@@ -1,0 +1,79 @@
+"""The beam of the answer: marks where the shares are, labels that stay on the page, names escaped."""
+
+from __future__ import annotations
+
+from xml.etree import ElementTree
+
+import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
+from app.drawing.answer_beam import Mark, answer_beam, graduation
+
+RECORDED = Mark("recorded", "as recorded", "61%", 0.61, 0.59, 0.63)
+AMONG = Mark("among", "among these", "54%", 0.54, 0.51, 0.57)
+SET = Mark("set", "if set", "63%", 0.63, 0.58, 0.68)
+
+
+def beam(*marks, **more):
+    return ElementTree.fromstring(answer_beam(marks, "Passed.", **more))
+
+
+def labels(drawing):
+    """(words, share it hangs on, side, class) of every label; the figures of the axis are left out."""
+    return [
+        ("".join(text.itertext()), holder.get("x"), "left" if text.get("text-anchor") else "right", text.get("class"))
+        for holder in drawing.iter("svg")
+        for text in holder.findall("text")
+        if holder is not drawing
+    ]
+
+
+@pytest.mark.parametrize(
+    ("marks", "height"), [((RECORDED,), 76), ((RECORDED, AMONG), 106), ((RECORDED, AMONG, SET), 138)]
+)
+def test_each_world_has_a_row(marks, height):
+    assert beam(*marks).get("height") == str(height)
+
+
+def test_each_world_has_its_shape_at_its_share():
+    drawing = beam(RECORDED, AMONG, SET)
+    places = {child[0].tag: child.get("x") for child in drawing.findall("svg") if child[0].tag != "text"}
+    assert places == {"rect": "61.00%", "circle": "54.00%", "path": "63.00%"}
+
+
+def test_the_two_that_are_compared_are_joined():
+    drawing = beam(RECORDED, AMONG, SET, compared=("among", "set"))
+    filled = [node for node in drawing.findall("rect") if node.get("fill-opacity")]
+    assert [(node.get("x"), node.get("width"), node.get("y")) for node in filled] == [("54.00%", "9.00%", "48")]
+
+
+def test_a_label_stands_right_unless_it_would_run_past_the_end():
+    assert labels(beam(RECORDED))[0][1:] == ("59.00%", "left", None)
+    assert labels(beam(SET))[0][1:] == ("68.00%", "right", None)
+    low = Mark("recorded", "as recorded", "12%", 0.12, 0.1, 0.14)
+    assert labels(beam(low))[0][1:] == ("14.00%", "right", None)
+
+
+def test_where_a_narrow_page_is_too_tight_it_gets_the_figure_alone():
+    tight = Mark("among", "among these", "55%", 0.5, 0.4, 0.6)
+    assert [(words, shown) for words, _, _, shown in labels(beam(tight))] == [
+        ("among these 55%", "wide"),
+        ("55%", "slim"),
+    ]
+
+
+def test_a_point_has_no_whisker():
+    sure = Mark("set", "if set", "63%", 0.63, 0.63, 0.63)
+    assert not [node for node in beam(sure).findall("line") if node.get("stroke-width") == "2.5"]
+
+
+def test_the_rule_runs_from_none_to_all():
+    figures = [node.text for node in ElementTree.fromstring(f"<svg>{graduation(104)}</svg>").iter("text")]
+    assert figures == ["0%", "10", "20", "30", "40", "50", "60", "70", "80", "90", "100%"]
+
+
+@given(st.text(alphabet=st.characters(exclude_categories=("Cs", "Cc"))))
+def test_a_hostile_name_is_text_in_the_drawing(name):
+    drawing = ElementTree.fromstring(answer_beam([RECORDED], f"{name}: <b>&\"'"))
+    assert drawing.get("aria-label") == f"{name}: <b>&\"'".replace("\t", " ")
