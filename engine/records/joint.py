@@ -146,13 +146,16 @@ class Walk:
             yield from self._by_products(node, node.layout)
         for column in later[~dense]:
             yield from self._by_codes(node, int(column), later[later > column], alone=True)
+            self.tick(self.done / self.total)
         for column in later[dense]:
             yield from self._by_codes(node, int(column), later[(later > column) & ~dense], alone=False)
+            self.tick(self.done / self.total)
 
     def _by_products(self, node: _Node, layout: _Layout) -> Iterator[Block]:
         step = max(1, _BLOCK // (self.folds * layout.places.size**2))
         for low in range(0, node.occupied, step):
             high = min(low + step, node.occupied)
+            self.tick(self.done / self.total)
             if node.products is None:
                 products = self._multiplied(layout, node.number, np.arange(self.rows), low, high)
             else:
