@@ -14,6 +14,7 @@ import signal
 import sys
 import threading
 from collections.abc import Callable, Iterator
+from multiprocessing import resource_tracker
 from multiprocessing.connection import Connection
 from multiprocessing.context import ForkServerContext, SpawnContext
 from multiprocessing.process import BaseProcess
@@ -115,6 +116,7 @@ def _interrupts_held() -> Iterator[None]:
     if not hasattr(signal, "pthread_sigmask"):
         yield
         return
+    resource_tracker.ensure_running()  # when started later it would let Ctrl-C through again
     before = signal.pthread_sigmask(signal.SIG_BLOCK, {signal.SIGINT})
     try:
         yield
