@@ -5,9 +5,11 @@ These names are the way in for scripts, tests and the app.
 
 from engine.answering.answer import Answer, Caution, Counted, Marginal, Reading
 from engine.answering.levers import Fix
-from engine.model import Model
+from engine.model import Learned, Model, learn, open_learned
 from engine.network.network import Category
 from engine.order import LESS, MORE, Order, Stage
+from engine.records.reading import read_frame, read_table
+from engine.records.table import Table
 from engine.refusal import Refusal
 
 __all__ = [
@@ -18,10 +20,16 @@ __all__ = [
     "Caution",
     "Counted",
     "Fix",
+    "Learned",
     "Marginal",
     "Model",
     "Order",
     "Reading",
     "Refusal",
     "Stage",
+    "Table",
+    "learn",
+    "open_learned",
+    "read_frame",
+    "read_table",
 ]

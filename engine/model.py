@@ -2,25 +2,30 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
-from dataclasses import dataclass, replace
+import os
+from collections.abc import Callable, Iterable, Mapping
+from dataclasses import dataclass, fields, replace
 from functools import cached_property
-from typing import TYPE_CHECKING
 
 import numpy as np
 
 from engine.answering.answer import Answer
 from engine.answering.asking import ask
 from engine.answering.counting import Records
+from engine.answering.kept import Kept
 from engine.answering.levers import Fix
 from engine.answering.planner import Planner
 from engine.answering.question import question
+from engine.doubting.case import Case
+from engine.doubting.register import cautions
+from engine.learning import learn as learning
+from engine.learning import learned as learnt
 from engine.network.network import Category, Network, network
 from engine.order import Direction, Order
+from engine.records.table import Coded, Table
 from engine.refusal import Refusal
 
-if TYPE_CHECKING:
-    from engine.records.table import Coded
+MODELS = 4  # models of one study kept, each with its drawn tables
 
 
 @dataclass(frozen=True, eq=False)
@@ -76,11 +81,6 @@ class Model:
         wanted = self._outcomes() if watch is None else watch
         asked = question(self.network, pins, levers, wanted, beside, self.changeable)
         answer = ask(self._planner, self._records, asked, draws, seed, exact)
-        if self.order is None and self._records is None:
-            return answer
-        from engine.doubting.case import Case
-        from engine.doubting.register import cautions
-
         found, made = cautions(Case(self.network, self.order, self._records, asked, answer))
         return replace(answer, cautions=found, checks_made=made)
 
@@ -123,3 +123,45 @@ class Model:
     @cached_property
     def _records(self) -> Records | None:
         return None if self.coded is None else Records(self.coded)
+
+
+@dataclass(frozen=True, eq=False)
+class Learned(learnt.Learned):
+    """What was learned from a table under an order: the size curve, and a Model at any of its numbers of links."""
+
+    def model(self, links: int | None = None) -> Model:
+        """The best model with that many links; None: the recommended number. The same object when asked again.
+
+        Raises Refusal for a number that the curve does not hold.
+        """
+        size = self.recommended if links is None else links
+        return self._models.get(size, lambda: Model(self.network(size), self.order, self.coded))
+
+    @cached_property
+    def _models(self) -> Kept[int, Model]:
+        return Kept(MODELS)
+
+
+def learn(
+    table: Table,
+    order: Order,
+    max_links: int | None = None,
+    max_parents: int = 3,
+    seed: int = 0,
+    progress: Callable[[float, str], None] | None = None,
+    folds: bool = True,
+) -> Learned:
+    """Find the best model at every number of links that `order` allows, and the number that predicts well enough.
+
+    max_links: stop the curve there; None: every number.  max_parents: 1 to 5.
+    progress(fraction, words) is called often; raising inside it cancels.
+    folds: False leaves the held-out scores out and recommends the size with the best score.
+    Raises Refusal for records or an order that cannot be learned from.
+    """
+    found = learning.learn(table, order, max_links, max_parents, seed, progress, folds=folds)
+    return Learned(**{field.name: getattr(found, field.name) for field in fields(found)})
+
+
+def open_learned(path: str | os.PathLike[str]) -> Learned:
+    """Read what `Learned.save` wrote; it answers as before to the last digit. Raises Refusal for any other file."""
+    return Learned.open(path)

@@ -150,10 +150,13 @@ def test_a_range_pin_must_match_the_bands():
     assert answer["hours"].among.shares == pytest.approx({"under 5": 0.4, "5 to under 10": 0.6, "10 and over": 0.0})
     assert model.ask({"hours": (5, float("inf"))}).log_evidence == pytest.approx(np.log(0.8))
     assert model.ask({"hours": "5 to under 10"}).log_evidence == pytest.approx(np.log(0.3))
-    with pytest.raises(engine.Refusal):
-        model.ask({"hours": (5, 7)})
-    with pytest.raises(engine.Refusal):
-        model.ask({"hours": (10, 5)})
+    assert model.ask({"hours": 7.5}).log_evidence == pytest.approx(np.log(0.3))
+    for wrong in ((5, 7), (10, 5), (5, float("nan")), ([], 5), {"under 5": 1, 5: 2}):
+        with pytest.raises(engine.Refusal) as refusal:
+            model.ask({"hours": wrong})
+        assert refusal.value.where == "hours"
+    set_to = model.ask(levers={"hours": engine.Fix(7.5)})
+    assert set_to["hours"].set.shares["5 to under 10"] == 1.0
 
 
 def test_strength_is_the_largest_change_of_the_better_share():

@@ -4,14 +4,11 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
 from functools import cached_property
-from typing import TYPE_CHECKING
 
 import numpy as np
 
 from engine.answering.answer import Counted
-
-if TYPE_CHECKING:
-    from engine.records.table import Coded
+from engine.records.table import SMALL_COUNT, Coded
 
 
 class Records:
@@ -48,8 +45,6 @@ class Records:
 
     def counted(self, columns: Iterable[str], matching: np.ndarray) -> dict[str, Counted | None]:
         """What the matching records hold, column by column; None under the small-count limit."""
-        from engine.records.table import SMALL_COUNT
-
         if matching.size < SMALL_COUNT:
             return dict.fromkeys(columns)
         if matching.size == self.rows:

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 from engine.answering.levers import Fix
 from engine.network.network import Category, Network
+from engine.records.bands import level_positions
 from engine.refusal import Refusal
 
 SHOWN = 12  # levels or columns named in a refusal; more are counted
@@ -98,9 +99,12 @@ def _pin(network: Network, column: str, wanted: object) -> frozenset[int]:
     if len(levels) == len(several):
         found = frozenset(_position(node, level) for level in levels)
     else:
-        from engine.records.bands import level_positions
-
-        found = level_positions(node.levels, node.kind, node.cuts, wanted)
+        try:
+            found = level_positions(node.levels, node.kind, node.cuts, wanted, column)
+        except (TypeError, ValueError):
+            raise Refusal(
+                f"{column} cannot be {wanted}.", where=column, do=f"Its levels are {listed(node.levels)}."
+            ) from None
     if not found:
         raise Refusal(f"{column} is pinned to no level at all.", where=column, do=f"Name one of {listed(node.levels)}.")
     return found
