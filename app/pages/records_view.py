@@ -136,7 +136,7 @@ def mark(column: Column) -> str:
 
 def grade_levels(column: Column) -> tuple[str, ...]:
     """The levels that have an order: all but the blank."""
-    return column.levels[:-1] if column.blanks and column.blank == "level" and column.levels else column.levels
+    return column.levels[:-1] if column.has_blank else column.levels
 
 
 def saved(study: Study, column: Column) -> Typed:
