@@ -86,6 +86,7 @@ class Names:
     def __init__(self, columns: Sequence[tuple[str, Sequence[str]]]) -> None:
         self.columns = tuple(name for name, _ in columns)
         self.levels = {name: tuple(levels) for name, levels in columns}
+        self._places = {name: place for place, name in enumerate(self.columns)}
         self.slugs = dict(zip(self.columns, slugs(self.columns, "column"), strict=True))
         self._named = {slug: name for name, slug in self.slugs.items()}
         self.level_slugs = {
@@ -94,6 +95,10 @@ class Names:
         self._levels_named = {
             name: {slug: level for level, slug in found.items()} for name, found in self.level_slugs.items()
         }
+
+    def ordered(self, columns: Iterable[str]) -> list[str]:
+        """These columns in the order of the study."""
+        return sorted(columns, key=self._places.__getitem__)
 
     def column(self, slug: str) -> str:
         """Raises Refusal when no column has that name."""
@@ -137,21 +142,19 @@ def parse(parameters: Iterable[tuple[str, str]], names: Names) -> Question:
 def query(question: Question, names: Names) -> str:
     """The question as the part of an address after "?"; empty when nothing is asked."""
     pairs: list[tuple[str, str]] = []
-    for column in names.columns:
-        if column in question.pins:
-            levels = [slug for level, slug in names.level_slugs[column].items() if level in question.pins[column]]
-            pairs.append(("pin", ".".join([names.slugs[column], *levels])))
-    for column in names.columns:
-        if column in question.levers:
-            level, reach = question.levers[column]
-            pairs.append(("set", f"{names.slugs[column]}.{names.level_slugs[column][level]}"))
-            if reach != 1.0:
-                pairs.append(("reach", f"{names.slugs[column]}.{per_cent(reach)}"))
+    for column in names.ordered(question.pins):
+        levels = [slug for level, slug in names.level_slugs[column].items() if level in question.pins[column]]
+        pairs.append(("pin", ".".join([names.slugs[column], *levels])))
+    for column in names.ordered(question.levers):
+        level, reach = question.levers[column]
+        pairs.append(("set", f"{names.slugs[column]}.{names.level_slugs[column][level]}"))
+        if reach != 1.0:
+            pairs.append(("reach", f"{names.slugs[column]}.{per_cent(reach)}"))
     if question.watch is not None:
         pairs.append(("watch", names.slugs[question.watch]))
     for key, chosen in (("open", question.opened), ("fold", question.folded), ("whole", question.whole)):
         if chosen:
-            pairs.append((key, ".".join(names.slugs[column] for column in names.columns if column in chosen)))
+            pairs.append((key, ".".join(names.slugs[column] for column in names.ordered(chosen))))
     if question.find:
         pairs.append(("find", question.find))
     if question.show != SHOWS[0]:
@@ -243,14 +246,10 @@ class _Reading:
             self.refused.append(
                 Refusal(f"A reach is given for {column}, which is not set.", where=column, do=f"Set {column} first.")
             )
-        order = self.names.columns
+        order = self.names.ordered
         return Question(
-            pins={column: self.pins[column] for column in order if column in self.pins},
-            levers={
-                column: (self.levels[column], self.reaches.get(column, 1.0))
-                for column in order
-                if column in self.levels
-            },
+            pins={column: self.pins[column] for column in order(self.pins)},
+            levers={column: (self.levels[column], self.reaches.get(column, 1.0)) for column in order(self.levels)},
             watch=self.watch,
             opened=self.cards["open"],
             folded=self.cards["fold"],

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Callable
+from typing import Protocol
 
 from markupsafe import Markup
 
@@ -16,13 +17,15 @@ ZERO = f'<line x1=".75" x2=".75" y1="0" y2="27" stroke="{INK}" stroke-width="1.5
 SURE = 0.0005  # a share this close to none or all has neither whisker nor end mark
 
 
-@dataclass(frozen=True)
-class Bar:
+class Bar(Protocol):
     """A share with its interval, all 0 to 1."""
 
-    share: float
-    low: float
-    high: float
+    @property
+    def share(self) -> float: ...
+    @property
+    def low(self) -> float: ...
+    @property
+    def high(self) -> float: ...
 
 
 def bars(recorded: float, among: Bar | None = None, set_to: Bar | None = None) -> Markup:
@@ -39,7 +42,7 @@ def bars(recorded: float, among: Bar | None = None, set_to: Bar | None = None) -
     return Markup(f'<svg class="bar" height="{HEIGHT}" aria-hidden="true">{"".join(drawn)}</svg>')
 
 
-def _bar(bar: Bar, y: float, height: int, colour: str, mark: object) -> str:
+def _bar(bar: Bar, y: float, height: int, colour: str, mark: Callable[[float, float], str]) -> str:
     middle = y + height / 2
     drawn = f'<rect x="0" y="{y:g}" width="{_per_cent(bar.share)}" height="{height}" fill="{colour}"/>'
     if SURE < bar.share < 1 - SURE:
@@ -48,7 +51,6 @@ def _bar(bar: Bar, y: float, height: int, colour: str, mark: object) -> str:
                 f'<line x1="{_per_cent(bar.low)}" x2="{_per_cent(bar.high)}" y1="{middle:g}" y2="{middle:g}" '
                 f'stroke="{INK}" stroke-width="2.5"/>'
             )
-        assert callable(mark)
         drawn += mark(bar.share, middle)
     return drawn
 

@@ -9,6 +9,7 @@ from fastapi.responses import RedirectResponse
 
 from app.drawing.beam import progress
 from app.pages import ask_lanes, ask_view
+from app.pages.ask_examples import examples
 from app.pages.asking import Asked, Spine, ask, spine_of
 from app.question import Misread, Question, parse, query, url
 from app.store import Study
@@ -45,7 +46,7 @@ def ask_page(request: Request, key: str) -> Response:
 
 
 def _answered(request: Request, study: Study, asked: Asked, learning: bool) -> Response:
-    names = asked.spine.names
+    names, question = asked.spine.names, asked.question
     address = partial(_address, study.key, asked.spine)
     return _page(
         request,
@@ -53,11 +54,12 @@ def _answered(request: Request, study: Study, asked: Asked, learning: bool) -> R
         status_code=200 if asked.refusal is None else 422,
         study=study,
         asked=asked,
-        question=asked.question,
+        question=question,
         address=address,
         view=ask_view,
+        examples=[] if question.touched else examples(asked, study.sample, address),
         lanes=ask_lanes.lanes(asked, address),
-        print_address=url(study.key, asked.question.asked, names, "answer"),
+        print_address=url(study.key, question.asked, names, "answer"),
         learning=learning,
         standing=STANDING,
         unseen=UNSEEN,

@@ -8,9 +8,9 @@ from urllib.parse import parse_qsl
 from markupsafe import Markup
 
 from app.drawing.answer_beam import Mark, World, answer_beam
-from app.pages.ask_lanes import Address
+from app.pages.ask_cards import Address
 from app.pages.asking import DRAWS, SEED, Asked
-from app.question import SHOWS, Question, query
+from app.question import SHOWS, query
 from app.store import Study
 from app.wording.answers import also_sentence, counted_sentence, had_sentence
 from app.wording.computed import intervals, method, size
@@ -189,24 +189,6 @@ def ways_out(asked: Asked, address: Address) -> list[WayOut]:
         if column in question.levers:
             ways.append(WayOut(f"Do not set {column}", address(question.without_lever(column))))
     return list(dict.fromkeys(ways))
-
-
-def examples(asked: Asked, address: Address) -> list[tuple[str, str]]:
-    """Two questions to try: one pin, one lever."""
-    spine, found = asked.spine, []
-    pinnable = [name for name in spine.columns if name not in spine.changeable and name not in asked.watched]
-    by_kind = sorted(pinnable, key=lambda name: (spine.nodes[name].kind == "number", spine.columns.index(name)))
-    if by_kind:
-        column = by_kind[0]
-        point = asked.answer[column].recorded.point
-        real = range(len(point) - int(spine.nodes[column].has_blank and len(point) > 1))
-        level = spine.nodes[column].levels[min(real, key=lambda place: abs(float(point[place]) - 0.2))]
-        found.append((f"only {column} = {level}", address(Question().pinned(column, (level,)))))
-    lever = next((name for name in spine.columns if name in spine.changeable), None)
-    if lever is not None:
-        level = asked.wanted(lever)[0] if lever not in spine.outcomes else spine.nodes[lever].levels[0]
-        found.append((f"{lever} set to {level} for everyone", address(Question().with_lever(lever, level))))
-    return found
 
 
 def status(asked: Asked) -> str:

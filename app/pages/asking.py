@@ -120,7 +120,13 @@ class Asked:
         return in_question(self.spine.nodes[column], self.spine.order.outcomes.get(column), recorded)
 
     def estimates(self, column: str) -> Estimates:
-        return estimates(self.answer[column], self.wanted(column))
+        if column not in self._estimates:
+            self._estimates[column] = estimates(self.answer[column], self.wanted(column))
+        return self._estimates[column]
+
+    @cached_property
+    def _estimates(self) -> dict[str, Estimates]:
+        return {}
 
     @cached_property
     def sentence(self) -> Words:

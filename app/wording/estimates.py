@@ -5,6 +5,8 @@ from __future__ import annotations
 from collections.abc import Iterable
 from dataclasses import dataclass
 
+import numpy as np
+
 from app.wording.figures import Change
 from engine.answering.answer import Marginal, Reading, spread
 
@@ -50,6 +52,15 @@ def estimates(reading: Reading, wanted: Iterable[str]) -> Estimates:
         had=None if reading.had is None else _estimate(reading.had, levels),
         change=None if reading.set is None else _change(reading.among, reading.set, levels),
     )
+
+
+def level_estimates(marginal: Marginal) -> list[Estimate]:
+    """Every level of a column in one world."""
+    if marginal.draws.shape[-1] == 0:
+        return [Estimate(float(part), float(part), float(part)) for part in marginal.point]
+    tail = (1.0 - COVERAGE) / 2.0
+    lows, highs = np.quantile(marginal.draws, [tail, 1.0 - tail], axis=-1)
+    return [Estimate(*map(float, each)) for each in zip(marginal.point, lows, highs, strict=True)]
 
 
 def _estimate(marginal: Marginal, levels: tuple[str, ...]) -> Estimate:

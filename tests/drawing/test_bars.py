@@ -9,7 +9,8 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from app.drawing.bars import SEEN, SET, Bar, bars
+from app.drawing.bars import SEEN, SET, bars
+from app.wording.estimates import Estimate as Bar
 
 shares = st.floats(0, 1)
 

@@ -1,0 +1,240 @@
+"""An open card of Ask: what the column is to the question, its rows, and where each of their marks leads."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass, replace
+from urllib.parse import parse_qsl
+
+from markupsafe import Markup
+
+from app.drawing.bars import bars
+from app.pages.asking import Asked
+from app.question import Question, per_cent, query
+from app.wording.estimates import Estimate, level_estimates
+from app.wording.figures import column_figure, counted
+from app.wording.questions import reach_words
+from app.wording.values import either
+from engine.network.network import Category
+from engine.order import Direction
+from engine.records.table import SMALL_COUNT
+
+Address = Callable[[Question], str]
+MOST_LEVELS, SHOWN_LEVELS, TOLD = 7, 5, 4
+
+
+@dataclass(frozen=True)
+class Act:
+    """A mark or a word that can be clicked. says: the next act, its name for those who do not see it."""
+
+    id: str
+    address: str
+    says: str
+    on: bool = False
+
+
+@dataclass(frozen=True)
+class Row:
+    """One level of a card. figures: as recorded, among these, if set; None where there is none."""
+
+    level: str
+    figures: tuple[str, str | None, str | None]
+    bar: Markup
+    ring: Act
+    also: Act | None
+    diamond: Act | None
+    bold: bool
+
+
+@dataclass(frozen=True)
+class LeverLine:
+    """The form that says for how many a lever takes. hidden: the rest of the question."""
+
+    field: str
+    reach: str
+    hidden: tuple[tuple[str, str], ...]
+
+
+@dataclass(frozen=True)
+class Card:
+    """An open card. pinned, set_to: what the state line says of them, None when it is not.  told: verb and links."""
+
+    name: str
+    slug: str
+    pinned: str | None
+    set_to: str | None
+    state: str
+    told: tuple[tuple[str, tuple[tuple[str, str], ...], int], ...]
+    narrow: bool
+    rows: tuple[Row, ...]
+    more: tuple[int, str] | None
+    fold: Act
+    watch: Act | None
+    lever: LeverLine | None
+
+
+def card_of(asked: Asked, address: Address, column: str) -> Card:
+    question, slug = asked.question, asked.spine.names.slugs[column]
+    shown, more = _shown_levels(asked, column)
+    pinned, lever = question.pins.get(column), question.levers.get(column)
+    whole = replace(question, whole=question.whole | {column})
+    return Card(
+        name=column,
+        slug=slug,
+        pinned=None if pinned is None else _pinned_words(asked, pinned),
+        set_to=None
+        if lever is None
+        else f"to {lever[0]} for {reach_words(lever[1])}" + _withheld(asked, "its effect is"),
+        state=_state(asked, column),
+        told=_told(asked, address, column),
+        narrow=pinned is not None and lever is None,
+        rows=_rows(asked, address, column, shown),
+        more=(more, address(whole)) if more else None,
+        fold=Act(f"card-{slug}", address(question.folding(column)), f"Fold {column}"),
+        watch=None
+        if column == asked.watch
+        else Act(f"watch-{slug}", address(question.watching(column)), f"Watch {column}"),
+        lever=None if lever is None else _lever_line(asked, column, lever[1]),
+    )
+
+
+def _shown_levels(asked: Asked, column: str) -> tuple[list[str], int]:
+    """Of more than seven levels the five most frequent, and any pinned or set."""
+    question, levels = asked.question, asked.spine.nodes[column].levels
+    if len(levels) <= MOST_LEVELS or column in question.whole:
+        return list(levels), 0
+    point = asked.answer[column].recorded.point
+    often = sorted(range(len(levels)), key=lambda place: -point[place])[:SHOWN_LEVELS]
+    touched = {*question.pins.get(column, ()), *question.levers.get(column, ())[:1]}
+    shown = [level for place, level in enumerate(levels) if place in often or level in touched]
+    return shown, len(levels) - len(shown)
+
+
+def _rows(asked: Asked, address: Address, column: str, shown: Sequence[str]) -> tuple[Row, ...]:
+    node, reading = asked.spine.nodes[column], asked.answer[column]
+    untouched = column in asked.question.pins and column not in asked.question.levers  # it comes before every lever
+    among = level_estimates(reading.among) if asked.shows_among else None
+    after = level_estimates(reading.set) if asked.shows_set and not untouched and reading.set is not None else None
+    return tuple(
+        _row(
+            *(asked, address, node, level, float(reading.recorded.point[place])),
+            None if among is None else among[place],
+            None if after is None else after[place],
+        )
+        for place, level in enumerate(node.levels)
+        if level in shown
+    )
+
+
+def _row(
+    asked: Asked,
+    address: Address,
+    node: Category,
+    level: str,
+    recorded: float,
+    among: Estimate | None,
+    after: Estimate | None,
+) -> Row:
+    question, column, names = asked.question, node.name, asked.spine.names
+    place = f"{names.slugs[column]}-{names.level_slugs[column][level]}"
+    pinned = question.pins.get(column, ())
+    ring = Act(f"pin-{place}", address(question.pinned(column, (level,))), f"Pin {level}")
+    also = None
+    if level in pinned:
+        rest = tuple(other for other in pinned if other != level)
+        without = question.pinned(column, rest) if rest else question.unpinned(column)
+        ring = Act(f"pin-{place}", address(without), f"Pinned at {level}, take out", True)
+    elif pinned:
+        wider = tuple(each for each in node.levels if each in pinned or each == level)
+        also = Act(f"also-{place}", address(question.pinned(column, wider)), f"Pin {level} as well")
+    diamond = _diamond(asked, address, column, level, place)
+    return Row(
+        level=level,
+        figures=(
+            column_figure(recorded),
+            None if among is None else column_figure(among.share),
+            None if after is None else column_figure(after.share),
+        ),
+        bar=bars(recorded, among, after),
+        ring=ring,
+        also=also,
+        diamond=diamond,
+        bold=ring.on or (diamond is not None and diamond.on),
+    )
+
+
+def _diamond(asked: Asked, address: Address, column: str, level: str, place: str) -> Act | None:
+    if column not in asked.spine.changeable:
+        return None
+    question, lever = asked.question, asked.question.levers.get(column)
+    if lever is not None and lever[0] == level:
+        return Act(f"set-{place}", address(question.without_lever(column)), f"Set to {level}, take out", True)
+    reach = 1.0 if lever is None else lever[1]
+    return Act(f"set-{place}", address(question.with_lever(column, level, reach)), f"Set to {level}")
+
+
+def _pinned_words(asked: Asked, levels: Sequence[str]) -> str:
+    """The count stands here only for a single pin: with more of them one count could give another away."""
+    words = f"at {either(levels)}"
+    matching = asked.answer.matching
+    if matching is None or len(asked.question.pins) > 1 or asked.refusal is not None:
+        return words
+    return f"{words} · {counted(matching, asked.spine.records, SMALL_COUNT)} records"
+
+
+def _set_words(asked: Asked, level: str, reach: float) -> str:
+    return f"to {level} for {reach_words(reach)}{_withheld(asked, 'its effect is')}"
+
+
+def _watch(asked: Asked, address: Address, column: str) -> Act | None:
+    """Make this the column of the answer sentence; None where it is."""
+    if column == asked.watch:
+        return None
+    slug = asked.spine.names.slugs[column]
+    return Act(f"watch-{slug}", address(asked.question.watching(column)), f"Watch {column}")
+
+
+def _state(asked: Asked, column: str) -> str:
+    """What the column is to the question: watched, an outcome, changeable; else its kind."""
+    better = asked.spine.order.outcomes.get(column)
+    words = []
+    if column == asked.watch or column in asked.spine.outcomes:
+        words.append("watched outcome" if better is not None else "watched")
+    if isinstance(better, Direction):
+        words.append("more is better" if better is Direction.MORE else "less is better")
+    elif better is not None:
+        words.append(f"{either(better)} is better")
+    if column in asked.spine.changeable and column not in asked.question.levers:
+        words.append("changeable")
+    if column in asked.watched:
+        words += [text for text in [_withheld(asked, "if set:").removeprefix(" · ")] if text]
+    if not words and column not in asked.question.pins and column not in asked.question.levers:
+        kind = asked.spine.nodes[column].kind
+        words.append("number, in bands" if kind == "number" else kind)
+    return " · ".join(words)
+
+
+def _withheld(asked: Asked, words: str) -> str:
+    return f" · {words} withheld" if asked.blocked else ""
+
+
+def _told(asked: Asked, address: Address, column: str) -> tuple[tuple[str, tuple[tuple[str, str], ...], int], ...]:
+    spine, told = asked.spine, []
+    for verb, found in (
+        ("comes from", spine.comes_from(column)),
+        ("leads to", spine.leads_to(column)),
+        ("goes with", spine.goes_with(column)),
+    ):
+        links = tuple(
+            (name, f"{address(asked.question.opening(name))}#card-{spine.names.slugs[name]}") for name in found[:TOLD]
+        )
+        if links:
+            told.append((verb, links, max(len(found) - TOLD, 0)))
+    return tuple(told)
+
+
+def _lever_line(asked: Asked, column: str, reach: float) -> LeverLine:
+    names = asked.spine.names
+    level = asked.question.levers[column][0]
+    rest = query(asked.question.with_lever(column, level), names)
+    return LeverLine(f"reach.{names.slugs[column]}", per_cent(reach), tuple(parse_qsl(rest)))

@@ -1,0 +1,70 @@
+"""Two questions to try on the first visit: those that came with a sample, else one pin and one lever of the study."""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Mapping
+from functools import cache
+
+from app.pages.ask_cards import Address
+from app.pages.asking import Asked, Spine
+from app.question import Question
+from app.resources import resource
+from app.wording.values import either, yes_level
+
+SHOWN = 2
+LIKELY = 0.2  # a pin on about one record in five shows a difference and has records behind it
+
+
+def examples(asked: Asked, sample: str | None, address: Address) -> list[tuple[str, str]]:
+    """Words and address of each example. sample: the folder of the sample that the study is, if it is one."""
+    given = [] if sample is None else [_question(said) for said in _tries(sample)]
+    questions = [question for question in given if _fits(asked.spine, question)] or _first_steps(asked)
+    return [(_words(question), address(question)) for question in questions[:SHOWN]]
+
+
+@cache
+def _tries(sample: str) -> tuple[Mapping[str, Mapping[str, object]], ...]:
+    path = resource("sample_data") / sample / "study.json"
+    if not path.is_file():
+        return ()
+    return tuple(json.loads(path.read_text(encoding="utf-8")).get("try", ()))
+
+
+def _question(said: Mapping[str, Mapping[str, object]]) -> Question:
+    pins = {column: tuple(map(str, levels)) for column, levels in said.get("pins", {}).items() if _is_list(levels)}
+    levers = {column: (str(level), 1.0) for column, level in said.get("levers", {}).items()}
+    return Question(pins, levers)
+
+
+def _is_list(levels: object) -> bool:
+    return isinstance(levels, list)
+
+
+def _fits(spine: Spine, question: Question) -> bool:
+    """Whether the study still has these columns and levels, and may set what is to be set."""
+    values = [*question.pins.items(), *((column, (level,)) for column, (level, _) in question.levers.items())]
+    known = all(column in spine.nodes and set(levels) <= set(spine.nodes[column].levels) for column, levels in values)
+    return known and set(question.levers) <= spine.changeable
+
+
+def _first_steps(asked: Asked) -> list[Question]:
+    spine, found = asked.spine, []
+    pinnable = [name for name in spine.columns if name not in spine.changeable and name not in asked.watched]
+    if pinnable:
+        column = min(pinnable, key=lambda name: spine.nodes[name].kind == "number")
+        point = asked.answer[column].recorded.point
+        real = range(len(point) - int(spine.nodes[column].has_blank and len(point) > 1))
+        level = spine.nodes[column].levels[min(real, key=lambda place: abs(float(point[place]) - LIKELY))]
+        found.append(Question({column: (level,)}))
+    lever = next((name for name in spine.columns if name in spine.changeable and name != asked.watch), None)
+    if lever is not None:
+        node = spine.nodes[lever]
+        found.append(Question({}, {lever: (yes_level(node) or node.levels[0], 1.0)}))
+    return found
+
+
+def _words(question: Question) -> str:
+    pins = [f"{column} = {either(levels)}" for column, levels in question.pins.items()]
+    levers = [f"{column} set to {level}" for column, (level, _) in question.levers.items()]
+    return ", ".join([*pins, *levers])
