@@ -308,8 +308,8 @@ def codebook(cells: Mapping[str, list[str]], effects: list[dict[str, object]]) -
         truth = next(each for each in effects if (each["column"], each["among"]) == ("mentor", group))
         lines.append(
             f"- {found} {truth['recorded']:.0%} passed: {truth['had']['yes']:.0%} of those with a mentor and "
-            f"{truth['had']['no']:.0%} of those without. Set for everybody, a mentor would make it "
-            f"{truth['set']['yes']:.0%}; set for nobody, {truth['set']['no']:.0%}."
+            f"{truth['had']['no']:.0%} of those without.\n  A mentor for everybody would make it "
+            f"{truth['set']['yes']:.0%}, for nobody {truth['set']['no']:.0%}."
         )
     lines += ABOUT_THE_FINDINGS.strip().splitlines()
     return "\n".join(lines) + "\n"
