@@ -1,0 +1,60 @@
+"""A column of records, and the columns together as level positions."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import Literal
+
+import numpy as np
+
+Kind = Literal["category", "grade", "number", "left out"]
+SMALL_COUNT = 10  # counts of records under this are shown as "under 10" only; common practice, no source
+
+
+@dataclass(frozen=True)
+class Column:
+    """One column as it will be learned.
+
+    name: as in the file.  kind: category, grade (ordered category), number, or left out.
+    why: one sentence: why it is taken as this kind.
+    levels: grades low to high, bands of a number in words, the blank level last; empty when left out.
+    codes: (rows,) positions in `levels` for the kept rows, int32; empty when left out.
+    cuts: inner cuts of a number's bands, ascending; band i holds cuts[i-1] <= x < cuts[i].
+    values: (rows,) float64 for a number, nan where blank; None otherwise.
+    blank: what a blank means, "level" or "drop row".  blanks: blank cells among the rows read.
+    warnings: sentences for the Records page.
+    """
+
+    name: str
+    kind: Kind
+    why: str
+    levels: tuple[str, ...] = ()
+    codes: np.ndarray = field(default_factory=lambda: np.empty(0, dtype=np.int32))
+    cuts: tuple[float, ...] = ()
+    values: np.ndarray | None = None
+    blank: Literal["level", "drop row"] = "level"
+    blanks: int = 0
+    warnings: tuple[str, ...] = ()
+
+    @property
+    def has_blank(self) -> bool:
+        """Whether the last level stands for a blank."""
+        return bool(self.levels) and self.blanks > 0 and self.blank == "level"
+
+
+@dataclass(frozen=True)
+class Coded:
+    """The columns that a model is learned from, as level positions: all that learning and counting need.
+
+    codes: (rows, columns) int32, Fortran order.  weights: (rows,) float64.
+    kinds, levels, cuts: one entry per column, as in `Column`.
+    has_blank: whether the last level of the column is its blank.
+    """
+
+    names: tuple[str, ...]
+    kinds: tuple[Kind, ...]
+    levels: tuple[tuple[str, ...], ...]
+    cuts: tuple[tuple[float, ...], ...]
+    has_blank: tuple[bool, ...]
+    codes: np.ndarray
+    weights: np.ndarray

@@ -1,0 +1,43 @@
+"""How the records' own sentences write names, numbers and counts."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from decimal import Decimal
+
+SHOWN = 40  # characters of a value that a sentence repeats
+
+
+def number_text(value: float) -> str:
+    """A number as a level's name: the shortest text that reads back as the same number, without ".0"."""
+    if value == 0:
+        return "0"
+    return f"{int(value)}" if value.is_integer() and abs(value) < 1e15 else repr(float(value))
+
+
+def figure(value: float, commas: bool = True) -> str:
+    """A number as people read it: every digit it has, a comma between thousands, a true minus sign."""
+    if value == 0:
+        return "0"
+    if not 1e-6 <= abs(value) < 1e15:
+        return repr(float(value)).replace("-", "−")
+    exact = Decimal(repr(float(value)))
+    exact = exact.quantize(Decimal(1)) if exact == exact.to_integral_value() else exact.normalize()
+    return (f"{exact:,f}" if commas else f"{exact:f}").replace("-", "−")
+
+
+def people(count: int, small: int) -> str:
+    """A count of records; under the small-count limit only "under 10" is said."""
+    return f"{count:,}" if count == 0 or count >= small else f"under {small}"
+
+
+def listing(names: Sequence[str], most: int = 4) -> str:
+    """a, b and c; after `most` names "and 3 more"."""
+    if len(names) > most:
+        return f"{', '.join(names[:most])} and {len(names) - most:,} more"
+    return "".join(names) if len(names) < 2 else f"{', '.join(names[:-1])} and {names[-1]}"
+
+
+def quoted(text: str) -> str:
+    """A value between quotation marks, cut short when it is long."""
+    return f"“{text if len(text) <= SHOWN else text[: SHOWN - 1] + '…'}”"
