@@ -2,6 +2,11 @@
 (() => {
   let clicked = null;
 
+  const say = (silent) => {
+    const gone = document.getElementById("gone");
+    if (gone) gone.hidden = !silent;
+  };
+
   /* Scroll so that the control stands where it stood; where the page has become too short for that, lengthen it. */
   const keepPlace = (control, top) => {
     document.body.style.paddingBottom = "";
@@ -16,7 +21,8 @@
   };
 
   document.addEventListener("htmx:before:request", (event) => {
-    const control = event.target.closest?.("a, button, input");
+    const source = event.target;
+    const control = source.matches?.("form") ? source.querySelector(":focus") : source.closest?.("a, button, input");
     clicked = control && document.getElementById("ask")?.contains(control)
       ? { id: control.id, then: control.dataset.then, hash: control.hash, top: control.getBoundingClientRect().top }
       : null;
@@ -26,7 +32,7 @@
     if (!clicked) return;
     const { id, then, hash, top } = clicked;
     clicked = null;
-    document.getElementById("gone").hidden = true;
+    say(false);
     if (hash) {
       const card = document.getElementById(decodeURIComponent(hash.slice(1)));
       card?.focus({ preventScroll: true });
@@ -41,7 +47,6 @@
   });
 
   document.addEventListener("htmx:error", () => {
-    const gone = document.getElementById("gone");
-    if (gone) gone.hidden = false;
+    say(true);
   });
 })();

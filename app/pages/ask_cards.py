@@ -146,7 +146,7 @@ def _row(
         ring = Act(f"pin-{place}", address(without), f"Pinned at {level}, take out", True)
     elif pinned:
         wider = tuple(each for each in node.levels if each in pinned or each == level)
-        also = Act(f"also-{place}", address(question.pinned(column, wider)), f"Pin {level} as well")
+        also = Act(f"also-{place}", address(question.pinned(column, wider)), f"Also pin {level}")
     diamond = _diamond(asked, address, column, level, place)
     return Row(
         level=level,

@@ -57,7 +57,7 @@ class Change:
     """From one share to another, with the interval of the change: shares 0 to 1.
 
     The words agree with each other: when the change does not come out of the rounded ends, or whole figures cannot
-    show that the interval leaves 0 out, all get one decimal.
+    show the width of the interval or that it leaves 0 out, all get one decimal.
     """
 
     start: float
@@ -81,8 +81,9 @@ class Change:
         worded = any(end.startswith(("under", "over")) for end in ends)
         if not worded and round(_figure(ends[1]) - _figure(ends[0])) != float(_plain(self.end - self.start, 0)):
             return 1
-        zero = "0" in (signed(100 * self.low), signed(100 * self.high))
-        return int(self.moves and (ends[0] == ends[1] or (zero and not self.known)))
+        low, high = signed(100 * self.low), signed(100 * self.high)
+        flat = not self.known and (low == high or (self.moves and "0" in (low, high)))
+        return int(flat or (self.moves and ends[0] == ends[1]))
 
     @property
     def ends(self) -> tuple[str, str]:

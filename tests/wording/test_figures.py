@@ -74,6 +74,10 @@ def test_an_interval_that_leaves_zero_out_does_not_show_a_zero():
     assert Change(0.54, 0.56, 0.003, 0.037).interval == "+0.3 to +3.7"
 
 
+def test_an_interval_does_not_shrink_to_one_figure():
+    assert Change(0.57, 0.59, 0.016, 0.024).interval == "+1.6 to +2.4"
+
+
 @given(shares, shares)
 def test_a_reader_who_subtracts_the_ends_gets_the_change(start, end):
     change = Change(start, end, min(end - start, 0) - 0.2, max(end - start, 0) + 0.2)
