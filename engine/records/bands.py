@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Iterable, Sequence
 from decimal import ROUND_FLOOR, Decimal
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -56,7 +57,7 @@ def band_levels(cuts: Sequence[float]) -> tuple[str, ...]:
         return (EVERYTHING,)
     years = all(cut.is_integer() and YEARS[0] <= cut <= YEARS[1] for cut in cuts)
     words = [figure(cut, commas=not years) for cut in cuts]
-    inner = [f"{low} to under {high}" for low, high in zip(words, words[1:], strict=False)]
+    inner = [f"{low} to under {high}" for low, high in pairwise(words)]
     return (f"under {words[0]}", *inner, f"{words[-1]} and over")
 
 
@@ -77,7 +78,7 @@ def checked_cuts(name: str, cuts: Iterable[object]) -> tuple[float, ...]:
                 f"“{cut}” among the cuts of “{name}” is not a number.", where=name, do="Give the cuts as numbers."
             )
         found.append(float(cut) + 0.0)
-    for before, after in zip(found, found[1:], strict=False):
+    for before, after in pairwise(found):
         if after <= before:
             raise Refusal(
                 f"The cuts of “{name}” do not rise: {figure(after)} comes after {figure(before)}.",

@@ -9,10 +9,10 @@ from typing import Literal
 import numpy as np
 import pandas as pd
 
-from engine.records.bands import band_names, band_positions, checked_cuts, equal_count_cuts
-from engine.records.cells import Cells
+from engine.records.bands import band_codes, band_levels, checked_cuts, equal_count_cuts
+from engine.records.cells import Cells, as_numbers
 from engine.records.column import Column, Kind
-from engine.records.kinds import MOST_LEVELS, Guess, grade_order, guess
+from engine.records.kinds import MOST_LEVELS, Guess, category_levels, grade_levels, guess
 from engine.refusal import Refusal
 
 KINDS: tuple[Kind, ...] = ("category", "grade", "number", "left out")
@@ -87,11 +87,12 @@ def column_of(name: str, cells: Cells, choice: Choice, kept: np.ndarray | None =
     if blanks >= MUCH_BLANK * codes.size:
         warnings.append(f"{round(100 * blanks / cells.codes.size)}% are blank. Say what a blank means here.")
     if kind == "number":
-        values = _values(name, cells) if kept is None else _values(name, cells)[kept]
-        present = values[np.isfinite(values)]
-        cuts = equal_count_cuts(present) if choice.cuts is None else checked_cuts(name, choice.cuts, present)
-        banded = np.where(np.isfinite(values), band_positions(values, cuts), -1)
-        codes, levels = _with_blank(banded, band_names(cuts), blank, blanks)
+        held = as_numbers(name, cells).values
+        assert held is not None
+        values = held if kept is None else held[kept]
+        cuts = equal_count_cuts(values[~np.isnan(values)]) if choice.cuts is None else _cuts(name, choice.cuts, values)
+        banded = band_codes(values, cuts)
+        codes, levels = _with_blank(banded, band_levels(cuts), blank, blanks)
         return Column(name, kind, why, levels, codes, cuts, values, blank, blanks, tuple(warnings))
     order, alphabetical = _order(name, kind, cells, codes, choice, guessed)
     if alphabetical:
@@ -103,7 +104,7 @@ def column_of(name: str, cells: Cells, choice: Choice, kept: np.ndarray | None =
             do="Take it as a number if it is one, merge levels in the file, or leave it out.",
         )
     place = {level: position for position, level in enumerate(order)}
-    positions = np.asarray([place.get(level, -1) for level in cells.different] + [-1])[codes]
+    positions = np.asarray([place.get(level, -1) for level in cells.texts] + [-1])[codes]
     codes, levels = _with_blank(positions, order, blank, blanks)
     return Column(name, kind, why, levels, codes, blank=blank, blanks=blanks, warnings=tuple(warnings))
 
@@ -143,37 +144,27 @@ def _blank(name: str, choice: Choice) -> Literal["level", "drop row"]:
     )
 
 
-def _values(name: str, cells: Cells) -> np.ndarray:
-    """(rows,) the cells as numbers. Raises Refusal when one is not."""
-    if cells.values is not None:
-        return cells.values
-    if cells.form == "date":
-        raise Refusal(f"“{name}” holds dates, which are no numbers.", where=name, do="Leave it out.")
-    texts = pd.Series(cells.different, dtype="str")
-    numbers = np.append(pd.to_numeric(texts, errors="coerce").to_numpy(dtype=np.float64, na_value=np.nan), np.nan)
-    values = numbers[cells.codes]
-    odd = ~np.isfinite(values) & ~cells.blank
-    if odd.any():
-        row = int(np.flatnonzero(odd)[0])
-        raise Refusal(
-            f"“{name}” cannot be a number: record {row + 1:,} holds “{cells.different[cells.codes[row]]}”.",
-            where=name,
-            do="Correct the file, or take the column as a category.",
-        )
-    return np.asarray(values)
+def _cuts(name: str, given: Sequence[float], values: np.ndarray) -> tuple[float, ...]:
+    """The cuts given. Raises Refusal unless they rise and leave no band without a record."""
+    cuts = checked_cuts(name, given)
+    filled = np.bincount(band_codes(values[~np.isnan(values)], cuts), minlength=len(cuts) + 1)
+    if (filled == 0).any():
+        empty = band_levels(cuts)[int((filled == 0).argmax())]
+        raise Refusal(f"No record of “{name}” lies in the band “{empty}”.", where=name, do="Move or remove that cut.")
+    return cuts
 
 
 def _order(
     name: str, kind: Kind, cells: Cells, codes: np.ndarray, choice: Choice, guessed: Guess
 ) -> tuple[tuple[str, ...], bool]:
     """The levels in order, and whether that order is nothing but the alphabet."""
-    held = np.unique(codes[codes >= 0])
-    found = tuple(cells.different[place] for place in held)
+    held = frozenset(np.unique(codes[codes >= 0]).tolist())
     if kind == "category":
-        return found, False
+        return tuple(cells.texts[place] for place in category_levels(cells) if place in held), False
+    order, _, sure = grade_levels(cells)
+    found = tuple(cells.texts[place] for place in order if place in held)
     if choice.grades is None:
-        order = found if cells.form in ("number", "ordered") else guessed.grades or grade_order(found)
-        return (tuple(level for level in order if level in found), False) if order else (found, len(found) > 2)
+        return found, not sure and len(found) > 2
     given = tuple(str(level) for level in choice.grades)
     if len(set(given)) < len(given):
         raise Refusal(f"A grade of “{name}” is given twice.", where=name, do="Give each grade once, the lowest first.")

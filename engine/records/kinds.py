@@ -1,140 +1,180 @@
-"""What a column is, guessed from its cells, with the reason in words."""
+"""What kind of column is this, and why? Guessed from the cells; the user has the last word."""
 
 from __future__ import annotations
 
 import re
-from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
-import pandas as pd
 
 from engine.records.cells import Cells
 from engine.records.column import Kind
+from engine.records.grading import grading, natural
+from engine.records.wording import figure, listing, quoted
 
-MOST_LEVELS = 50
-FEW_VALUES = 7  # whole numbers with at most so many different values are grades; common practice, no source
-NAMED_LEVELS = 20  # rows from which a column of all-different texts counts as an identifier or free text
+MOST_LEVELS = 50  # a category's levels, its blank among them
+FEW_VALUES = 7  # whole numbers with this many values or fewer are steps of a scale as often as amounts
+FEWEST_EACH = 3  # records for each value before few values count as a sign of steps
+SURE_OF_IDS = 10  # records: fewer may all differ by chance
+LONG = 5  # words in a cell from which on it reads as a sentence
 
-_DATE = (
-    r"^(\d{4}[-/.]\d{1,2}[-/.]\d{1,2}|\d{1,2}[-/.]\d{1,2}[-/.](\d{4}|\d{2}))"
-    r"([ T]\d{1,2}:\d{2}(:\d{2}(\.\d+)?)?(Z|[+-]\d{2}:?\d{2})?)?$"
+_NAMED_AS_ID = re.compile(r"(?:^|[\W_])(?:id|ids|uuid|guid|identifier|key)(?:$|[\W_])|[a-z]I[Dd]$", re.IGNORECASE)
+_DIGITS_ONLY = re.compile(r"(?:19|20)\d\d(?:0[1-9]|1[0-2])(?:0[1-9]|[12]\d|3[01])")
+_MONTH = r"(?:jan|feb|mar|apr|may|jun|jul|aug|sep|oct|nov|dec)[a-z]*\.?"
+_CLOCK = r"(?:[T ,]+\d{1,2}:\d\d(?::\d\d(?:\.\d+)?)?(?: ?[AaPp]\.?[Mm]\.?)?(?:Z| ?[+-]\d\d:?\d\d)?)?"
+_DATE = re.compile(
+    rf"(?:\d{{4}}[-/.]\d{{1,2}}[-/.]\d{{1,2}}|\d{{1,2}}[-/.]\d{{1,2}}[-/.](?:\d{{4}}|\d\d)|\d{{1,2}}[ -]{_MONTH}[ -](?:\d{{4}}|\d\d)"
+    rf"|{_MONTH} \d{{1,2}},? \d{{4}}){_CLOCK}",
+    re.IGNORECASE,
 )
-_ID_NAME = re.compile(r"(^|[ _\-.])(id|ids|nr|no|number|code|key|ref|uuid|reference|identifier)$", re.IGNORECASE)
-_SCALES: tuple[tuple[str, ...], ...] = (
-    ("very low", "low", "medium", "moderate", "high", "very high"),
-    ("never", "rarely", "seldom", "sometimes", "often", "usually", "always"),
-    ("none", "little", "some", "much", "most", "all"),
-    ("none", "few", "some", "many", "most", "all"),
-    ("very poor", "poor", "fair", "average", "good", "very good", "excellent"),
-    ("strongly disagree", "disagree", "neutral", "neither", "agree", "strongly agree"),
-    ("very dissatisfied", "dissatisfied", "neutral", "satisfied", "very satisfied"),
-    ("none", "mild", "moderate", "severe", "very severe"),
-    ("extra small", "small", "medium", "large", "extra large"),
-    ("none", "primary", "lower", "lower secondary", "secondary", "upper", "upper secondary", "tertiary", "higher"),
-    ("zero", "one", "two", "three", "four", "five", "six"),
-    ("first", "second", "third", "fourth", "fifth"),
-)
-_NUMBER_WORDS = {"none": 0.0, "zero": 0.0, "no": 0.0, "one": 1.0, "two": 2.0, "three": 3.0, "four": 4.0, "five": 5.0}
-_LEADING = re.compile(r"^(?P<under>under|below|less than|up to|<=?|≤)?\s*(?P<number>[-−]?\d+(?:[.,]\d+)?)")
 
 
 @dataclass(frozen=True)
 class Guess:
-    """kind, why: as in Column.  grades: the levels low to high, for a grade.  warnings: sentences."""
+    """A kind. why: one sentence.  levels: positions in the cells' texts, low to high for a grade.  warnings: sentences."""
 
     kind: Kind
     why: str
-    grades: tuple[str, ...] = ()
+    levels: tuple[int, ...] = ()
     warnings: tuple[str, ...] = ()
 
 
-def guess(name: str, cells: Cells) -> Guess:
-    """The kind of a column, from its cells."""
-    if not cells.different:
+def guess(name: str, held: Cells) -> Guess:
+    """The kind of the column `name`, from its cells alone."""
+    seen = int(held.codes.size - held.blanks)
+    if seen == 0:
         return Guess("left out", "Every cell is blank.")
-    if len(cells.different) == 1:
-        return Guess("left out", "Every record has the same value.")
-    if cells.form == "date":
-        return Guess("left out", "Dates cannot be learned from as they are.")
-    if cells.form == "ordered":
-        return Guess("grade", "Its levels come in order.", cells.different)
-    return _number(name, cells) if cells.values is not None else _text(name, cells)
+    if len(held.texts) == 1 and not held.blanks:
+        return Guess("left out", f"Every record has the same value: {quoted(held.texts[0])}.")
+    if held.dates or _are_dates(held):
+        return Guess("left out", "It holds dates, which cannot be learned from as they are.")
+    if len(held.texts) == 1:
+        return Guess("category", f"It holds {quoted(held.texts[0])} or nothing.", (0,))
+    return _number(name, held, seen) if held.values is not None else _text(name, held, seen)
 
 
-def _number(name: str, cells: Cells) -> Guess:
-    assert cells.values is not None
-    present = cells.values[~cells.blank]
-    size = len(cells.different)
-    whole = bool((present == np.rint(present)).all())
-    if size == 2:
-        return Guess("category", "It has two different values.")
-    if whole and size == present.size and size >= NAMED_LEVELS:
-        consecutive = float(present.max() - present.min()) == size - 1
-        if consecutive or _ID_NAME.search(name):
-            return Guess("left out", "Looks like an identifier: every record has its own value.")
-    if whole and size <= FEW_VALUES:
-        return Guess(
-            "grade",
-            f"It is a whole number with only {size} different values.",
-            cells.different,
-            (f"A number with only {size} different values, so it is taken as a grade.",),
+def category_levels(held: Cells) -> tuple[int, ...]:
+    """Positions of the texts in the order in which a category lists them."""
+    if held.values is not None or held.ordered:
+        return tuple(range(len(held.texts)))
+    return tuple(sorted(range(len(held.texts)), key=lambda place: natural(held.texts[place])))
+
+
+def grade_levels(held: Cells) -> tuple[tuple[int, ...], str, bool]:
+    """Positions of the texts low to high, where that order comes from, and whether that is more than a guess."""
+    if held.ordered:
+        return tuple(range(len(held.texts))), "The order of its levels came with it.", True
+    if held.values is not None:
+        return tuple(range(len(held.texts))), "Its levels are numbers.", True
+    found = grading(held.texts)
+    if found is not None:
+        return found.order + found.outside, found.why, not found.outside
+    return category_levels(held), "Its levels stand in alphabetical order.", False
+
+
+def _number(name: str, held: Cells, seen: int) -> Guess:
+    assert held.values is not None
+    distinct = len(held.texts)
+    present = held.values[~held.blank]
+    whole = bool((present == np.floor(present)).all())
+    if whole and _is_id(name, present, distinct, seen):
+        return Guess("left out", _id_words(distinct, seen))
+    every = tuple(range(distinct))
+    if distinct == 2:
+        return Guess("category", f"It has two values, {held.texts[0]} and {held.texts[1]}.", every)
+    if distinct <= FEW_VALUES and seen >= FEWEST_EACH * distinct:
+        low, high = figure(float(present.min())), figure(float(present.max()))
+        warning = (
+            f"A number with only {distinct} different values, {low} to {high}: taken as grades. "
+            "Choose category if the numbers only stand for names."
         )
-    return Guess("number", "Its cells are numbers.")
+        return Guess("grade", f"It is a number with only {distinct} different values.", every, (warning,))
+    return Guess("number", "It holds numbers.", (), _spike(held))
 
 
-def _text(name: str, cells: Cells) -> Guess:
-    different = pd.Series(cells.different, dtype="str")
-    present = int((~cells.blank).sum())
-    if different.str.match(_DATE).mean() >= 0.95:
-        return Guess("left out", "Dates cannot be learned from as they are.")
-    all_different = len(different) == present and present >= NAMED_LEVELS
-    wordy = bool((different.str.len() > 25).mean() > 0.5 or (different.str.count(" ") >= 3).mean() > 0.5)
-    if all_different and not wordy:
-        return Guess("left out", "Looks like an identifier: every record has its own value.")
-    if wordy and (all_different or len(different) > MOST_LEVELS):
-        return Guess("left out", "Free text cannot be learned from.")
-    if len(different) > MOST_LEVELS:
-        if _ID_NAME.search(name) and len(different) > present / 2:
-            return Guess("left out", "Looks like an identifier: most records have their own value.")
-        warnings = _nearly_a_number(cells)
-        why = f"It has {len(different):,} different values; at most {MOST_LEVELS} can be levels."
-        return Guess("left out", why, (), warnings)
-    warnings = _nearly_a_number(cells)
-    order = grade_order(cells.different)
-    if len(order) > 2:
-        return Guess("grade", f"Its levels have an order: {', '.join(order)}.", order, warnings)
-    return Guess("category", f"It has {len(different)} different values in words.", (), warnings)
+def _is_id(name: str, present: np.ndarray, distinct: int, seen: int) -> bool:
+    if seen < SURE_OF_IDS:
+        return False
+    if _NAMED_AS_ID.search(name) and distinct > MOST_LEVELS:
+        return True
+    if distinct < seen:
+        return False
+    steps = np.diff(present)
+    runs_on = bool((steps > 0).all() or (steps < 0).all())
+    fills = float(present.max() - present.min()) < 2.0 * seen
+    return bool(_NAMED_AS_ID.search(name)) or runs_on or fills
 
 
-def grade_order(levels: Sequence[str]) -> tuple[str, ...]:
-    """The levels low to high when their words tell; empty when they do not."""
-    for scale in _SCALES:
-        places = {word: place for place, word in enumerate(scale)}
-        if all(level.strip().lower() in places for level in levels):
-            return tuple(sorted(levels, key=lambda level: places[level.strip().lower()]))
-    keys = [_order_key(level) for level in levels]
-    if any(key is None for key in keys) or len(set(keys)) < len(keys):
-        return ()
-    return tuple(level for _, level in sorted(zip(keys, levels, strict=True), key=lambda pair: pair[0] or (0.0, 0)))
+def _spike(held: Cells) -> tuple[str, ...]:
+    distinct = len(held.texts)
+    said = [f"A number with only {distinct} different values."] if distinct <= 2 * FEW_VALUES else []
+    common = int(held.counts.argmax())
+    seen = int(held.counts.sum())
+    if held.counts[common] > seen / 2 and distinct > 2 * FEW_VALUES:
+        said.append(f"More than half of its values are {held.texts[common]}.")
+    return tuple(said)
 
 
-def _order_key(level: str) -> tuple[float, int] | None:
-    text = level.strip().lower()
-    if found := _LEADING.match(text):
-        return float(found["number"].replace("−", "-").replace(",", ".")), -1 if found["under"] else 0
-    first = re.split(r"[\s-]", text, maxsplit=1)[0]
-    return (_NUMBER_WORDS[first], 0) if first in _NUMBER_WORDS else None
+def _text(name: str, held: Cells, seen: int) -> Guess:
+    distinct = len(held.texts)
+    mostly = _mostly_numbers(held, seen)
+    if mostly:
+        return _levels_or_out(held, (mostly,), f"{distinct:,} different values; at most {MOST_LEVELS} can be levels.")
+    words = np.array([1 + text.count(" ") for text in held.texts])
+    wordy = float((words * held.counts).sum()) / seen
+    if distinct > seen / 2 and wordy >= LONG and seen >= SURE_OF_IDS:
+        return Guess("left out", f"Free text cannot be learned from; {distinct:,} different texts.")
+    if distinct == seen and seen >= SURE_OF_IDS and grading(held.texts[: MOST_LEVELS + 1]) is None:
+        return Guess("left out", _id_words(distinct, seen))
+    if distinct > MOST_LEVELS and (_NAMED_AS_ID.search(name) or (distinct > 0.9 * seen and wordy < 2)):
+        return Guess("left out", _id_words(distinct, seen))
+    return _levels_or_out(held, (), f"{distinct:,} different values; at most {MOST_LEVELS} can be levels.")
 
 
-def _nearly_a_number(cells: Cells) -> tuple[str, ...]:
-    numeric = pd.to_numeric(pd.Series(cells.different, dtype="str"), errors="coerce").notna().to_numpy()
-    odd = np.append(~numeric, False)[cells.codes]
-    if not odd.any() or odd.sum() > 0.2 * (~cells.blank).sum():
-        return ()
-    row = int(np.flatnonzero(odd)[0])
-    value, others = cells.different[cells.codes[row]], int(odd.sum())
+def _levels_or_out(held: Cells, warnings: tuple[str, ...], too_many: str) -> Guess:
+    if len(held.texts) + bool(held.blanks) > MOST_LEVELS:
+        return Guess("left out", f"It has {too_many}", (), warnings)
+    order, why, sure = grade_levels(held)
+    if sure:
+        return Guess("grade", why, order, warnings)
+    found = grading(held.texts)
+    if found is not None and len(found.order) > 2:
+        outside = listing([quoted(held.texts[place]) for place in found.outside])
+        warnings = (*warnings, f"Its levels have an order except for {outside}, so it is taken as a category.")
+    count = len(held.texts)
+    return Guess("category", f"It has {count} different {'value' if count == 1 else 'values'}.", order, warnings)
+
+
+def _id_words(distinct: int, seen: int) -> str:
+    if distinct == seen:
+        return "Looks like an identifier: every record has its own value."
+    return f"Looks like an identifier: {distinct:,} different values."
+
+
+def _are_dates(held: Cells) -> bool:
+    pattern = _DATE if held.values is None else _DIGITS_ONLY
+    if held.values is not None and len(held.texts) <= FEW_VALUES:
+        return False
+    return all(pattern.fullmatch(text) for text in held.texts)
+
+
+def _mostly_numbers(held: Cells, seen: int) -> str | None:
+    spelt = np.array([is_number(text) for text in held.texts])
+    numbers = int(held.counts[spelt].sum())
+    if spelt.all() or numbers <= seen / 2 or spelt.sum() <= FEW_VALUES:
+        return None
+    record = int((~np.append(spelt, True)[held.codes]).argmax())
+    others = seen - numbers
     return (
-        f"Mostly numbers, but {others:,} of its cells are not, the first in record {row + 1:,}: “{value}”. "
-        "Correct the file to have it read as a number.",
+        f"Most of its values are numbers, but record {record + 1:,} holds {quoted(held.texts[held.codes[record]])}"
+        f"{f' and {others - 1:,} more hold no number either' if others > 1 else ''}, so it is read as text. "
+        "Mend them in the file, or leave those cells empty, to use it as a number."
     )
+
+
+def is_number(text: str) -> bool:
+    """Whether a text spells a number."""
+    return _SPELT.fullmatch(text) is not None
+
+
+_SPELT = re.compile(r"[+\-−]?(?:\d+(?:[.,]\d*)?|[.,]\d+)(?:[eE][+-]?\d{1,3})?", re.ASCII)

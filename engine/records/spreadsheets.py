@@ -10,8 +10,8 @@ import openpyxl
 import pandas as pd
 import pyarrow as pa
 
-from engine.records.cells import number_text
 from engine.records.delimited import checked_names
+from engine.records.wording import number_text
 from engine.refusal import Refusal
 
 UNPACKED = 500_000_000  # bytes

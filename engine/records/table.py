@@ -12,7 +12,7 @@ import numpy as np
 import pandas as pd
 
 from engine.records.bands import level_positions
-from engine.records.cells import cells_of
+from engine.records.cells import cells as cells_of
 from engine.records.column import SMALL_COUNT, Coded, Column, Kind
 from engine.records.columns import Choice, check_names, column_of
 from engine.refusal import Refusal
@@ -97,7 +97,7 @@ class Table:
         found = hashlib.sha256(json.dumps(taken).encode())
         for name in self.columns:
             cells = cells_of(name, self.frame[name])
-            found.update(json.dumps(cells.different).encode())
+            found.update(json.dumps(cells.texts).encode())
             found.update(np.ascontiguousarray(cells.codes).tobytes())
         return found.hexdigest()
 
@@ -116,7 +116,7 @@ class Table:
                 if high is not None:
                     inside &= made.values < high
             return np.asarray(inside)
-        positions = level_positions(made.levels, made.kind, made.cuts, wanted, where=column)
+        positions = level_positions(made.levels, made.kind, made.cuts, wanted)
         return np.isin(made.codes, list(positions))
 
     def coded(self, names: Sequence[str]) -> Coded:
