@@ -141,8 +141,8 @@ class _Scale:
         return BOTTOM - (BOTTOM - TOP) * (score - self.low) / (self.high - self.low)
 
     def grid(self) -> list[tuple[float, str]]:
-        """Two to five round scores inside the range, with their words."""
-        step = _round_step((self.high - self.low) / 4)
+        """Two to six round scores inside the range, with their words."""
+        step = _round_step((self.high - self.low) / 2.5, up=False)
         digits = max(0, -math.floor(math.log10(step)))
         first = math.ceil(self.low / step)
         return [(step * i, figure_words(step * i, digits)) for i in range(first, math.floor(self.high / step) + 1)]
@@ -153,9 +153,12 @@ def figure_words(value: float, digits: int) -> str:
     return f"{value:.{digits}f}".replace("-", "−")
 
 
-def _round_step(rough: float) -> float:
+def _round_step(rough: float, up: bool = True) -> float:
+    """The next 1, 2 or 5 times a power of ten, upward or downward."""
     power = 10.0 ** math.floor(math.log10(rough))
-    return next(power * factor for factor in (1, 2, 5, 10) if power * factor >= rough * 0.999)
+    if up:
+        return next(power * factor for factor in (1, 2, 5, 10) if power * factor >= rough * 0.999)
+    return next(power * factor for factor in (5, 2, 1) if power * factor <= rough * 1.001)
 
 
 def _axis(scale: _Scale) -> Markup:
@@ -199,7 +202,7 @@ def _held_out(scale: _Scale, point: Point) -> Markup:
 
 
 def _thinned(points: Sequence[Point], recommended: int | None) -> list[Point]:
-    """At most about thirty dots, so that they stay apart; the recommended one is always among them."""
+    """At most about forty dots, so that they stay apart; the recommended one is always among them."""
     measured = [point for point in points if point.held_out is not None]
-    step = max(1, math.ceil(len(measured) / 30))
+    step = max(1, math.ceil(len(measured) / 40))
     return [point for place, point in enumerate(measured) if place % step == 0 or point.links == recommended]

@@ -12,6 +12,7 @@ from app.drawing.svg import FAR, INK, LINE, TINT, join, line, percent, tag
 HEIGHT, BASE, TALLEST = 64, 55.0, 50.0
 GAP = 0.024  # between the bars of two levels, share of the width
 BINS = 24
+WHOLE = 1e9  # a wider range of whole numbers is binned like any other
 
 
 def levels(counts: Sequence[int | None], hidden_total: int = 0) -> Markup:
@@ -35,20 +36,27 @@ def number(values: np.ndarray, small: int) -> Markup:
     present = values[np.isfinite(values)]
     if present.size == 0:
         return _frame(())
-    low, high = float(present.min()), float(present.max())
-    if high <= low:
-        return _frame([_bar(0.0, 1.0, TALLEST, present.size < small)])
-    bins = min(BINS, max(4, present.size // small))
-    along = (present / 2 - low / 2) / (high / 2 - low / 2)  # halves, so that no difference overflows
-    counts = np.bincount(np.minimum((along * bins).astype(int), bins - 1), minlength=bins)
+    counts = _bins(present, min(BINS, max(4, present.size // small)))
     top = max(int(counts.max()), small)
     bars = []
     for place, count in enumerate(counts.tolist()):
         if count == 0:
             continue
         shown = float(count) if count >= small else small / 2
-        bars.append(_bar(place / bins, 1 / bins, round(TALLEST * shown / top), count < small))
+        bars.append(_bar(place / counts.size, 1 / counts.size, round(TALLEST * shown / top), count < small))
     return _frame(bars)
+
+
+def _bins(present: np.ndarray, most: int) -> np.ndarray:
+    """Counts in at most `most` bins of one width. Whole numbers get bins that hold equally many of them."""
+    low, high = float(present.min()), float(present.max())
+    if high <= low:
+        return np.array([present.size])
+    if high - low < WHOLE and bool((present == np.round(present)).all()):
+        held = int(high - low) // most + 1  # whole numbers in a bin
+        return np.bincount((present - low).astype(np.int64) // held)
+    along = (present / 2 - low / 2) / (high / 2 - low / 2)  # halves, so that no difference overflows
+    return np.bincount(np.minimum((along * most).astype(np.int64), most - 1), minlength=most)
 
 
 def plain() -> Markup:

@@ -88,7 +88,11 @@ def view(study: Study, learned: Learned, links: int | None = None, picked: str |
     model = learned.model(shown)
     picked = picked if picked in model.network.names else None
     addresses = {name: _address(study.key, shown, name) for name in model.network.names}
-    settled = {(row.source, row.target): str(row.settled) for row in learned.settled(shown).itertuples()}
+    found = learned.settled(shown)
+    settled = {
+        (str(source), str(target)): str(by)
+        for source, target, by in zip(found["source"], found["target"], found["settled"], strict=True)
+    }
     sizes = tuple(_size(study.key, point, learned.recommended, best, shown, picked) for point in points)
     return ModelView(
         links=shown,

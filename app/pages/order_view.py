@@ -62,6 +62,8 @@ class OrderView:
     too_wide: Refusal | None
     text: str
     total: int
+    outcomes: str
+    changeable: str
 
 
 def view(study: Study, table: Table) -> OrderView:
@@ -84,6 +86,8 @@ def view(study: Study, table: Table) -> OrderView:
         too_wide=_too_wide(plan),
         text=order_text.write(plan.stages),
         total=len(plan.columns),
+        outcomes=listing(tuple(plan.outcomes)),
+        changeable=listing(plan.changeable),
     )
 
 

@@ -171,7 +171,7 @@ def _card(
         mark=mark(column),
         histogram=picture,
         told=told,
-        blanks=wording.blanks(column.blanks, len(table.kept), column.blank, SMALL_COUNT),
+        blanks=wording.blanks(column, len(table.kept), SMALL_COUNT),
         warnings=tuple(dict.fromkeys(warnings)),
         chosen=chosen,
         levels=tuple(Level(i, level, i in typed.better) for i, level in enumerate(column.levels)),
@@ -222,7 +222,10 @@ def _deck(table: Table) -> tuple[str, ...]:
     if any(column.blanks and column.blank == "level" for column in table.columns.values()):
         said.append("A blank is a level of its own; change that column by column below.")
     if any(column.kind == "number" for column in table.columns.values()):
-        said.append("Numbers are cut into bands of about equally many records and learned as grades for now.")
+        said.append(
+            "Numbers are cut into bands, of about equally many records unless you move the cuts, and learned as grades "
+            "for now."
+        )
     return tuple(sentence[:1].upper() + sentence[1:] for sentence in said)
 
 

@@ -70,12 +70,16 @@ def small_levels(column: Column, counts: Shown, small: int) -> str | None:
     """The warning that goes with hidden counts, or None."""
     if not counts.under:
         return None
-    names = [column.levels[place] for place in counts.under]
-    told = f"{listing(names, 4)} {'has' if len(names) == 1 else 'have'} under {small} records."
-    beside = [column.levels[place] for place in counts.hidden if place not in counts.under]
-    if beside:
-        told += f" The count of {listing(beside)} is hidden too, or one would give the other away."
-    return told
+    last = len(column.levels) - 1
+    names = [column.levels[place] for place in counts.under if not (column.has_blank and place == last)]
+    told = []
+    if names:
+        told.append(f"{listing(names, 4)} {'has' if len(names) == 1 else 'have'} under {small} records.")
+    if len(names) < len(counts.under):
+        told.append(f"Under {small} are blank, few for a level of their own; leaving those rows out may serve better.")
+    if beside := [column.levels[place] for place in counts.hidden if place not in counts.under]:
+        told.append(f"The count of {listing(beside)} is hidden too, or one would give the other away.")
+    return " ".join(told)
 
 
 def span(column: Column) -> str:
@@ -89,9 +93,13 @@ def span(column: Column) -> str:
     return f"{low} to {high}, middle {middle}; bands: {', '.join(bands)}"
 
 
-def blanks(blank: int, rows: int, meaning: str, small: int) -> str:
-    """How many cells are blank and what is made of them."""
-    if blank == 0:
+def blanks(column: Column, rows: int, small: int) -> str:
+    """How many of the `rows` read are blank there, and what is made of them."""
+    if column.blanks == 0:
         return "no blanks"
-    amount = f"under {small} blank" if blank < small else f"{share(blank / max(rows, 1))} blank"
-    return f"{amount}, a level of its own" if meaning == "level" else f"{amount}, those rows are left out"
+    amount = f"under {small} blank" if column.blanks < small else f"{share(column.blanks / max(rows, 1))} blank"
+    if column.kind == "left out":
+        return amount
+    if column.blank == "drop row":
+        return f"{amount}, those rows are left out"
+    return f"{amount}, a level of its own" if column.kind == "number" else "a blank is a level of its own"

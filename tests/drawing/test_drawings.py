@@ -87,6 +87,13 @@ def test_a_number_of_any_values_can_be_drawn(values: list[float]) -> None:
     parsed(histogram.number(np.array(values, dtype=float), 10))
 
 
+def test_whole_numbers_leave_no_gaps_between_their_bars() -> None:
+    values = np.repeat(np.arange(11.0), 50)
+    bars = list(parsed(histogram.number(values, 10)).iter("rect"))
+    assert len(bars) == 11
+    assert len({bar.get("height") for bar in bars}) == 1
+
+
 POINTS = [Point(links, -12 + 0.1 * links, -12.1 + 0.08 * links, 0.05) for links in range(11)]
 
 
@@ -106,7 +113,7 @@ def test_any_curve_stays_inside_its_frame(scores: list[float], recommended: int)
     for circle in drawn.iter("circle"):
         assert curve.TOP - 0.1 <= float(circle.get("cy", 0)) <= curve.BOTTOM + 0.1
         assert 0 <= float(circle.get("cx", "0%").rstrip("%")) <= 100
-    assert len(list(drawn.iter("circle"))) <= 32
+    assert len(list(drawn.iter("circle"))) <= 42
 
 
 def test_the_figure_for_exploring_holds_the_same_numbers() -> None:

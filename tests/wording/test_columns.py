@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+from typing import Literal
+
 import numpy as np
 import pytest
 from hypothesis import given
@@ -9,9 +12,10 @@ from hypothesis import strategies as st
 
 from app.wording import amounts, columns
 from app.wording.links import story, strength
-from engine.records.table import Column
+from engine.records.table import Column, Kind
 
 LIMIT = 10
+Blank = Literal["level", "drop row"]
 
 
 def column(levels: tuple[str, ...], counts: list[int]) -> Column:
@@ -44,6 +48,15 @@ def test_a_level_under_the_limit_takes_the_next_smallest_along() -> None:
     )
 
 
+def test_a_few_blanks_are_told_as_blanks_and_not_as_a_level() -> None:
+    age = replace(column(("young", "old", "blank"), [50, 40, 3]), blanks=3)
+    told = columns.small_levels(age, columns.shown([50, 40, 3], LIMIT), LIMIT)
+    assert told == (
+        "Under 10 are blank, few for a level of their own; leaving those rows out may serve better. "
+        "The count of old is hidden too, or one would give the other away."
+    )
+
+
 def test_levels_are_told_with_their_shares() -> None:
     shift = column(("days", "mixed", "nights"), [52, 26, 22])
     assert columns.levels(shift, columns.shown([52, 26, 22], LIMIT), LIMIT) == "days 52%, mixed 26%, nights 22%"
@@ -56,15 +69,17 @@ def test_a_number_is_told_by_its_range_middle_and_bands() -> None:
 
 
 @pytest.mark.parametrize(
-    ("blank", "meaning", "words"),
+    ("kind", "blank", "meaning", "words"),
     [
-        (0, "level", "no blanks"),
-        (3, "level", "under 10 blank, a level of its own"),
-        (60, "drop row", "6% blank, those rows are left out"),
+        ("number", 0, "level", "no blanks"),
+        ("number", 3, "level", "under 10 blank, a level of its own"),
+        ("grade", 30, "level", "a blank is a level of its own"),
+        ("category", 60, "drop row", "6% blank, those rows are left out"),
+        ("left out", 350, "level", "35% blank"),
     ],
 )
-def test_blanks_are_told_with_what_is_made_of_them(blank: int, meaning: str, words: str) -> None:
-    assert columns.blanks(blank, 1000, meaning, LIMIT) == words
+def test_blanks_are_told_with_what_is_made_of_them(kind: Kind, blank: int, meaning: Blank, words: str) -> None:
+    assert columns.blanks(Column("x", kind, "", blank=meaning, blanks=blank), 1000, LIMIT) == words
 
 
 @pytest.mark.parametrize(
