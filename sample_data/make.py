@@ -54,9 +54,10 @@ AFTER = "Afterwards"
 CHANGEABLE = ("mentor", "study group", "fee waived")
 OUTCOMES = ("passed", "in work after a year")
 RULE_OUT = tuple(
-    (later, given)  # in the same stage, but nobody's schooling, children or work lead to their age or first language
+    (other, given)  # of the same stage, but nothing in it leads to anybody's age or first language
     for given in ("age band", "first language")
-    for later in ("prior schooling", "children at home", "shift work")
+    for other in ("age band", "first language", "prior schooling", "children at home", "shift work", "travel time")
+    if other != given
 )
 INSIST = (("passed", "in work after a year"),)
 BY = "shift work"  # truths are given for all and at each of its levels
