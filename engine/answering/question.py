@@ -100,7 +100,9 @@ def _pin(network: Network, column: str, wanted: object) -> frozenset[int]:
         found = frozenset(_position(node, level) for level in levels)
     else:
         try:
-            found = level_positions(node.levels, node.kind, node.cuts, wanted, column)
+            found = level_positions(node.levels, node.kind, node.cuts, wanted)
+        except Refusal as refused:
+            raise Refusal(f"{column}: {refused.message}", where=column, do=refused.do) from None
         except (TypeError, ValueError):
             raise Refusal(
                 f"{column} cannot be {wanted}.", where=column, do=f"Its levels are {listed(node.levels)}."

@@ -10,6 +10,7 @@ Floats = NDArray[np.float64]
 
 # Prior records per configuration that are tried; the ends are far below and far above what tables of records need.
 WEIGHTS = (0.3, 0.5, 1.0, 2.0, 4.0, 8.0, 16.0, 32.0, 64.0, 128.0, 256.0)
+TOLERATED = 1.0  # nats; common practice, no source
 
 
 def smoothed_shares(counts: NDArray[np.integer] | Floats) -> Floats:
@@ -22,6 +23,8 @@ def prior_weight(counts: NDArray[np.integer] | Floats, shares: Floats) -> float:
     """How many records the prior of each configuration counts for, by marginal likelihood (empirical Bayes).
 
     counts: (configurations, levels).  shares: (levels,), above 0.  One of WEIGHTS, or 1 for a single configuration.
+    The smallest weight whose log marginal likelihood is within TOLERATED of the best is taken: few configurations
+    say little about the weight, and a prior heavier than the records ask for hides differences between them.
 
     The shares come from the same records. So the weight is kept below rows x (1 - 1/occupied configurations): above
     it the interval of a configuration would be narrower than if all records were one configuration.
@@ -38,7 +41,7 @@ def prior_weight(counts: NDArray[np.integer] | Floats, shares: Floats) -> float:
         prior = weight * shares
         cells = gammaln(seen + prior) - gammaln(prior)
         logs[place] = cells.sum() - (gammaln(rows + weight) - gammaln(weight)).sum()
-    return float(weights[np.argmax(logs)])
+    return float(weights[np.argmax(logs >= logs.max() - TOLERATED)])
 
 
 def dirichlet_posterior(counts: NDArray[np.integer] | Floats, shares: Floats | None = None) -> Floats:

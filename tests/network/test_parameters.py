@@ -19,13 +19,13 @@ def log_likelihood(counts, weight, shares):
     return total
 
 
-def test_the_weight_has_the_highest_marginal_likelihood_on_the_grid():
+def test_the_weight_is_the_smallest_within_a_nat_of_the_best_on_the_grid():
     rng = np.random.default_rng(3)
     for spread in (0.5, 5.0, 80.0):
         shares = np.asarray([0.5, 0.3, 0.2])
         counts = np.asarray([rng.multinomial(30, rng.dirichlet(spread * shares)) for _ in range(12)])
-        best = max(WEIGHTS, key=lambda weight: log_likelihood(counts, weight, shares))
-        assert prior_weight(counts, shares) == best
+        logs = {weight: log_likelihood(counts, weight, shares) for weight in WEIGHTS}
+        assert prior_weight(counts, shares) == min(w for w in WEIGHTS if logs[w] >= max(logs.values()) - 1.0)
 
 
 def test_the_weight_found_is_near_the_one_that_made_the_records():
@@ -83,5 +83,5 @@ def test_the_posterior_is_counts_and_prior():
         )
         for w in WEIGHTS
     ]
-    allowed = [value for w, value in zip(WEIGHTS, logs, strict=True) if w <= 20]
-    assert logs[WEIGHTS.index(weight)] == max(allowed)
+    allowed = {w: value for w, value in zip(WEIGHTS, logs, strict=True) if w <= 20}
+    assert weight == min(w for w, value in allowed.items() if value >= max(allowed.values()) - 1.0)
