@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import sys
 from collections.abc import Sequence
 from dataclasses import replace
@@ -20,12 +21,12 @@ PORTS_TRIED = 50
 def main(arguments: Sequence[str] | None = None) -> int:
     """Run Steelyard until Ctrl-C. Returns 0, or 2 when it could not start."""
     try:
-        run(read_settings(sys.argv[1:] if arguments is None else arguments))
+        with contextlib.suppress(KeyboardInterrupt):
+            run(read_settings(sys.argv[1:] if arguments is None else arguments))
     except Refusal as refusal:
         print(refusal, file=sys.stderr)
         return 2
-    except KeyboardInterrupt:
-        print("\nStopped. The studies stay where they are.")
+    print("\nStopped. The studies stay where they are.")
     return 0
 
 
