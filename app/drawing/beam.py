@@ -9,14 +9,33 @@ from app.drawing.svg import INK, RULE, join, line, percent, tag
 RULE_AT = 22  # y of the rule, px
 
 
-def ticks(start: float, end: float, steps: int, at: float, unit: str = "t1") -> Markup:
-    """Graduation from `start` to `end` (shares of the width): `steps` steps, longer at every fifth and tenth."""
-    drawn = []
+def ticks(steps: int, at: float) -> Markup:
+    """Graduation of the whole width in `steps` steps, longer at every fifth and tenth, hanging from y = `at`."""
+    kinds: dict[tuple[int, float, str | None], list[int]] = {}
     for step in range(steps + 1):
-        x = percent(start + (end - start) * step / steps)
-        length, width, hidden = (12, 1.5, None) if step % 10 == 0 else (8, 1, None) if step % 5 == 0 else (4, 1, unit)
-        drawn.append(line(x, x, at, at + length, stroke_width=width, class_=hidden))
-    return join(drawn)
+        kind = (12, 1.5, None) if step % 10 == 0 else (8, 1.0, None) if step % 5 == 0 else (4, 1.0, "t1")
+        kinds.setdefault(kind, []).append(step)
+    drawn = [
+        tag(
+            "path",
+            d="".join(f"M{place} 0v{length}" for place in places),
+            stroke=INK,
+            stroke_width=width,
+            class_=hidden,
+            vector_effect="non-scaling-stroke",
+        )
+        for (length, width, hidden), places in kinds.items()
+    ]
+    return tag(
+        "svg",
+        join(drawn),
+        y=at,
+        width="100%",
+        height=12,
+        viewBox=f"0 0 {steps} 12",
+        preserveAspectRatio="none",
+        overflow="visible",
+    )
 
 
 def progress(fraction: float, words: str) -> Markup:
@@ -30,7 +49,7 @@ def progress(fraction: float, words: str) -> Markup:
         "svg",
         line(0, "100%", RULE_AT, RULE_AT, stroke=RULE, stroke_width=3),
         line(0, at, RULE_AT, RULE_AT, stroke_width=3),
-        ticks(0, 1, 100, RULE_AT),
+        ticks(100, RULE_AT),
         diamond,
         class_="beam progress",
         height=40,

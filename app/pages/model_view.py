@@ -16,6 +16,7 @@ from app.wording.amounts import plural
 from app.wording.links import story, strength
 from engine.model import Learned, Model
 
+SHOWN_LINKS = 30  # rows of the links table before the weaker ones are folded
 EXACT = 1e-6  # nats by which a bound may exceed the score it bounds, for rounding
 
 
@@ -72,6 +73,15 @@ class ModelView:
     notes: tuple[str, ...]
     records: int
     unpicked: str
+
+    @property
+    def first_rows(self) -> tuple[LinkRow, ...]:
+        """The strongest links, and every link of the picked column."""
+        return tuple(row for place, row in enumerate(self.rows) if place < SHOWN_LINKS or row.picked)
+
+    @property
+    def more_rows(self) -> tuple[LinkRow, ...]:
+        return tuple(row for place, row in enumerate(self.rows) if place >= SHOWN_LINKS and not row.picked)
 
     @property
     def is_in_use(self) -> bool:
