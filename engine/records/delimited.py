@@ -1,130 +1,108 @@
-"""Text files of records: which encoding, which separator, and whether every line fits the header."""
+"""Text files of records: which separator, and whether every line fits the header."""
 
 from __future__ import annotations
 
 import csv
 import io
+import re
 from collections import Counter
+from collections.abc import Callable, Iterator
+from dataclasses import dataclass
 from itertools import islice
 
-import pandas as pd
 import pyarrow as pa
-import pyarrow.compute as pc
 from pyarrow import csv as arrow_csv
 
 from engine.refusal import Refusal
 
-SEPARATORS = {",": "commas", ";": "semicolons", "\t": "tabs", "|": "upright bars"}
-PROBED = 200  # lines read to find the separator
+SEPARATORS = {"\t": "tabs", ";": "semicolons", "|": "upright bars", ",": "commas"}  # the rarest inside texts first
+HEAD = 1_000_000  # bytes in which the header and the separator are found
+PROBED = 300  # records read to find the separator
 LISTED = 5  # lines that do not fit, named in a refusal
-SWALLOWED = 100  # line breaks in one cell that tell of a quote never closed
-
-_PICTURES = {
-    b"\x89PNG": "a picture (PNG)",
-    b"\xff\xd8\xff": "a picture (JPEG)",
-    b"GIF8": "a picture (GIF)",
-    b"BM": "a picture (BMP)",
-    b"RIFF": "a picture or a sound",
-    b"%PDF": "a PDF document",
-    b"PK\x03\x04": "a spreadsheet or another packed file",
-    b"\xd0\xcf\x11\xe0": "an old spreadsheet (.xls)",
-    b"\x1f\x8b": "a packed file (gzip)",
-    b"PAR1": "a Parquet file",
-    b"SQLite format 3": "a database",
-}
+LONGEST = 10_000_000  # characters of a cell
+_SAID = re.compile(rb"sep=(.)(?:\r\n|\n|\r)", re.IGNORECASE)  # a first line that spreadsheets write
+_BLANK_LINE = re.compile(rb"(?:\A|\n|\r(?!\n))[ \t]*[\r\n]")
 
 
-def decoded(content: bytes, name: str) -> str:
-    """The text of a file: UTF-8 with or without a byte order mark, UTF-16 with one, else Windows-1252.
+@dataclass(frozen=True)
+class Texts:
+    """The cells of a file as text.
 
-    Raises Refusal for what is no text.
+    columns: name -> (rows,) texts.  separator: of the file, "" when it has none.
+    line: from a row's position to where it stands, such as "line 14".
     """
-    for start, what in _PICTURES.items():
-        if content.startswith(start) and (start != b"BM" or b"\x00" in content[:64]):
-            raise Refusal(
-                f"“{name}” is {what}, not a table of text.",
-                where=name,
-                do="Save the table as CSV, or give the file the ending that fits it.",
-            )
-    if content.startswith((b"\xff\xfe", b"\xfe\xff")):
-        return content.decode("utf-16")
-    if b"\x00" in content:
-        raise Refusal(f"“{name}” is not a file of text.", where=name, do="Save the table as CSV and bring that file.")
-    try:
-        return content.decode("utf-8-sig")
-    except UnicodeDecodeError:
-        pass
-    try:
-        return content.decode("cp1252")
-    except UnicodeDecodeError as error:
-        line = content.count(b"\n", 0, error.start) + 1
-        raise Refusal(
-            f"“{name}” holds a character that is neither UTF-8 nor Windows-1252.",
-            where=f"line {line:,}",
-            do="Save the table as CSV in UTF-8.",
-        ) from None
+
+    columns: dict[str, pa.Array]
+    separator: str
+    line: Callable[[int], str]
 
 
-def separator(text: str, name: str) -> str:
-    """The separator that parts the first lines into equally many cells. Raises Refusal where none does."""
-    best, best_rank = "", (0.0, 0)
-    for candidate in SEPARATORS:
-        widths = Counter(len(row) for row in islice(csv.reader(io.StringIO(text), delimiter=candidate), PROBED) if row)
-        width, times = max(widths.items(), key=lambda item: (item[1], item[0]), default=(0, 0))
-        header = len(next(csv.reader(io.StringIO(text), delimiter=candidate), []))
-        rank = (times / max(sum(widths.values()), 1) + (header == width), width)
-        if header > 1 and width > 1 and rank > best_rank:
-            best, best_rank = candidate, rank
+def text_cells(content: bytes, name: str) -> Texts:
+    """Every cell of a file in UTF-8, under the names of its first line. Lines without a mark on them are no records.
+
+    Raises Refusal for an empty file, a header without a name or with one twice, a quotation mark that is never closed,
+    and lines with more or fewer cells than the header names, line by line.
+    """
+    if not content.strip():
+        raise Refusal(f"“{name}” is empty.", where=name, do="Bring a table with names of columns in the first line.")
+    csv.field_size_limit(LONGEST)
+    said = _SAID.match(content)
+    skipped = said.end() if said else 0
+    above = 1 if said else 0
+    head = _head(content[skipped : skipped + HEAD], len(content) - skipped > HEAD)
+    mark = said[1].decode("latin-1") if said else separator(head, name)
+    reader = csv.reader(io.StringIO(head, newline=""), delimiter=mark)
+    try:
+        header = next((row for row in reader if not _is_blank(row)), [])
+    except csv.Error as error:
+        raise _unreadable(name, reader.line_num + above, error) from None
+    names = checked_names([cell.strip() for cell in header], name)
+    lines = io.StringIO(head, newline="")
+    start = skipped + sum(len(lines.readline().encode()) for _ in range(reader.line_num))
+    body = content[start:]
+    if len(names) < 2:
+        _slow(content[skipped:].decode(), mark, names, name, above)  # a title above the header is said with its line
+        raise one_column(name)
+    cells = None if body.count(b'"') % 2 else _fast(body, mark, len(names))
+    if cells is None:
+        cells = _slow(content[skipped:].decode(), mark, names, name, above)
+    first = reader.line_num + above + 1
+
+    def line(row: int) -> str:
+        if b'"' not in body and not _BLANK_LINE.search(body):
+            return f"line {first + row:,}"
+        records = _records(content[skipped:].decode(), mark)
+        began, _ = next(islice(records, row + 1, None))  # the header is the first record
+        return f"line {began + above:,}"
+
+    return Texts(dict(zip(names, cells, strict=True)), mark, line)
+
+
+def separator(head: str, name: str) -> str:
+    """The separator that parts the header and most records below it into equally many cells.
+
+    head: the start of the file, whole lines.  Raises Refusal where none parts them.
+    """
+    best, best_fit = "", 0.0
+    for mark in SEPARATORS:
+        try:
+            widths = [len(row) for _, row in islice(_records(head, mark), PROBED)]
+        except csv.Error:
+            continue
+        fit = _fit(widths)
+        if fit > best_fit:
+            best, best_fit = mark, fit
     if not best:
-        raise Refusal(
-            f"“{name}” has one column only; no comma, semicolon, tab or upright bar parts its first line.",
-            where="line 1",
-            do="Bring a table with a column for each thing recorded, names of columns in the first line.",
-        )
+        raise one_column(name)
     return best
 
 
-def text_cells(text: str, name: str) -> tuple[dict[str, pa.Array | pd.Series], str]:
-    """Every cell as text, under the names of the first line; and the separator.
-
-    Raises Refusal for an empty file and for lines with more or fewer cells than the header names, line by line.
-    """
-    text = text.lstrip("\r\n")
-    if not text.strip():
-        raise Refusal(f"“{name}” is empty.", where=name, do="Bring a table with names of columns in the first line.")
-    csv.field_size_limit(10_000_000)
-    try:
-        mark = separator(text, name)
-        header = [cell.strip() for cell in next(csv.reader(io.StringIO(text), delimiter=mark))]
-    except csv.Error as error:
-        raise Refusal(f"“{name}” cannot be read as a table: {error}.", where=name, do="Save it as CSV again.") from None
-    header = checked_names(header, name)
-    try:
-        cells = arrow_csv.read_csv(
-            io.BytesIO(text.encode()),
-            read_options=arrow_csv.ReadOptions(autogenerate_column_names=True, use_threads=False, block_size=2**26),
-            parse_options=arrow_csv.ParseOptions(delimiter=mark, newlines_in_values=True),
-            convert_options=arrow_csv.ConvertOptions(
-                column_types={f"f{place}": pa.string() for place in range(len(header))},
-                strings_can_be_null=False,
-                quoted_strings_can_be_null=False,
-            ),
-        )
-    except pa.ArrowInvalid:
-        raise _misfits(text, mark, header, name) or Refusal(
-            f"“{name}” cannot be read as a table.", where=name, do="Save it as CSV again."
-        ) from None
-    if cells.num_columns != len(header):
-        raise _misfits(text, mark, header, name) or AssertionError("a header that does not fit itself")
-    cells = cells.slice(1)
-    for place, column in enumerate(header):
-        if cells.num_rows and (pc.max(pc.count_substring(cells.column(place), "\n")).as_py() or 0) >= SWALLOWED:
-            raise Refusal(
-                f"A cell of “{column}” holds over {SWALLOWED} lines: a quotation mark was opened and never closed.",
-                where=column,
-                do="Close the quotation mark, or double it inside a text.",
-            )
-    return {column: cells.column(place).combine_chunks() for place, column in enumerate(header)}, mark
+def one_column(name: str) -> Refusal:
+    return Refusal(
+        f"“{name}” has one column only; no comma, semicolon, tab or upright bar parts its first line.",
+        where="line 1",
+        do="Bring a table with a column for each thing recorded, names of columns in the first line.",
+    )
 
 
 def checked_names(header: list[str], name: str) -> list[str]:
@@ -135,7 +113,7 @@ def checked_names(header: list[str], name: str) -> list[str]:
             f"Column {nameless[0]} of “{name}” has no name"
             + (f", nor do {len(nameless) - 1} more." if len(nameless) > 1 else "."),
             where="line 1",
-            do="Give every column a name in the first line.",
+            do="Give every column a name in the first line, or take that column out of the file.",
         )
     twice = [column for column, times in Counter(header).items() if times > 1]
     if twice:
@@ -143,9 +121,9 @@ def checked_names(header: list[str], name: str) -> list[str]:
         raise Refusal(
             f"Two columns are called “{twice[0]}”: columns {' and '.join(places[:2])} of the first line.",
             where="line 1",
-            do="Give each column a name of its own.",
+            do="Give each column a name of its own; spaces around a name do not count.",
         )
-    if all(_is_number(column) for column in header):
+    if header and all(_is_number(column) for column in header):
         raise Refusal(
             f"The first line of “{name}” holds numbers, not names of columns.",
             where="line 1",
@@ -154,38 +132,116 @@ def checked_names(header: list[str], name: str) -> list[str]:
     return header
 
 
+def _head(content: bytes, cut: bool) -> str:
+    """Whole lines of the start of a file."""
+    end = max(content.rfind(b"\n"), content.rfind(b"\r")) + 1 if cut else 0
+    return content[: end or len(content)].decode(errors="ignore")
+
+
+def _records(text: str, mark: str) -> Iterator[tuple[int, list[str]]]:
+    """The line on which each record begins, and its cells; blank lines are none."""
+    reader = csv.reader(io.StringIO(text, newline=""), delimiter=mark)
+    began = 1
+    for row in reader:
+        if not _is_blank(row):
+            yield began, row
+        began = reader.line_num + 1
+
+
+def _is_blank(row: list[str]) -> bool:
+    return not row or (len(row) == 1 and not row[0].strip())
+
+
+def _fit(widths: list[int]) -> float:
+    """How well a separator fits, from the number of cells of the first records: 0 not at all, 2 wholly."""
+    if not widths or max(widths) < 2:
+        return 0.0
+    width, times = Counter(widths).most_common(1)[0]
+    share = times / len(widths)
+    if widths[0] < 2:
+        return share / 2 if width > 1 else 0.0  # a title above the header: the refusal will show where
+    return 1 + share if widths[0] == width else share
+
+
+def _fast(body: bytes, mark: str, width: int) -> list[pa.Array] | None:
+    """The columns, or None where something does not fit."""
+    if not body.strip():
+        return [pa.array([], pa.string())] * width
+    names = [str(place) for place in range(width)]
+    try:
+        cells = arrow_csv.read_csv(
+            pa.BufferReader(body),
+            read_options=arrow_csv.ReadOptions(column_names=names, use_threads=False, block_size=2**26),
+            parse_options=arrow_csv.ParseOptions(delimiter=mark, newlines_in_values=b'"' in body),
+            convert_options=arrow_csv.ConvertOptions(
+                column_types=dict.fromkeys(names, pa.string()),
+                strings_can_be_null=False,
+                quoted_strings_can_be_null=False,
+            ),
+        )
+    except pa.ArrowInvalid:
+        return None
+    return [column.combine_chunks() for column in cells.columns]
+
+
+def _slow(text: str, mark: str, names: list[str], name: str, above: int) -> list[pa.Array]:
+    """The columns, record by record. Raises Refusal that says on which lines something does not fit."""
+    rows: list[list[str]] = []
+    misfits: list[tuple[int, int]] = []
+    began = 1
+    try:
+        for began, row in _records(text, mark):
+            rows.append(row)
+            if len(row) != len(names):
+                misfits.append((began + above, len(row)))
+    except csv.Error as error:
+        raise _unreadable(name, began + above + 1, error) from None
+    if text.count('"') % 2 and _stays_open(text, began, mark):
+        raise Refusal(
+            f"“{name}” opens a quotation mark in the record on line {began + above:,} and never closes it.",
+            where=f"line {began + above:,}",
+            do="Close the quotation mark, or double it where it belongs to the text.",
+        )
+    if misfits:
+        raise _misfit(misfits, rows, mark, name)
+    return [pa.array(column, pa.string()) for column in zip(*rows[1:], strict=True)]
+
+
+def _stays_open(text: str, began: int, mark: str) -> bool:
+    """Whether the record that begins on this line, the last, would swallow a line added below it."""
+    lines = io.StringIO(text, newline="")
+    for _ in range(began - 1):
+        lines.readline()
+    return len(list(csv.reader(io.StringIO(lines.read() + "\nx", newline=""), delimiter=mark))) == 1
+
+
+def _misfit(misfits: list[tuple[int, int]], rows: list[list[str]], mark: str, name: str) -> Refusal:
+    width = len(rows[0])
+    named = [f"line {line:,} has {cells} {'cell' if cells == 1 else 'cells'}" for line, cells in misfits[:LISTED]]
+    more = f" and {len(misfits) - LISTED:,} more lines do not fit" if len(misfits) > LISTED else ""
+    do = (
+        f"Most often one of the {SEPARATORS.get(mark, 'separators')} stands inside a text without quotation marks. "
+        "Correct these lines and bring the file again; nothing was stored."
+    )
+    if len(misfits) > len(rows) / 2:
+        do = "See whether the first line holds the names of the columns, with no title above; nothing was stored."
+    return Refusal(
+        f"“{name}” was not read: {len(misfits):,} of {len(rows):,} lines do not fit its own header, which names "
+        f"{width} {'column' if width == 1 else 'columns'}: {', '.join(named)}{more}.",
+        where=f"line {misfits[0][0]:,}",
+        do=do,
+    )
+
+
+def _unreadable(name: str, line: int, error: csv.Error) -> Refusal:
+    return Refusal(
+        f"“{name}” cannot be read from line {line:,} on: {error}.", where=f"line {line:,}", do="Correct that line."
+    )
+
+
 def _is_number(text: str) -> bool:
     try:
         float(text.replace(",", "."))
     except ValueError:
         return False
     return True
-
-
-def _misfits(text: str, mark: str, header: list[str], name: str) -> Refusal | None:
-    """What does not fit the header, with line numbers, found by reading line by line."""
-    reader = csv.reader(io.StringIO(text), delimiter=mark)
-    lines, misfits, began = 0, [], 1
-    try:
-        for row in reader:
-            if row and len(row) != len(header):
-                misfits.append((began, len(row)))
-            lines += bool(row)
-            began = reader.line_num + 1
-    except csv.Error as error:
-        return Refusal(
-            f"“{name}” cannot be read from line {began:,} on: {error}.",
-            where=f"line {began:,}",
-            do="Correct that line.",
-        )
-    if not misfits:
-        return None
-    named = [f"line {line:,} has {width} {'cell' if width == 1 else 'cells'}" for line, width in misfits[:LISTED]]
-    more = f" and {len(misfits) - LISTED:,} more lines do not fit" if len(misfits) > LISTED else ""
-    return Refusal(
-        f"“{name}” was not read: {len(misfits):,} of {lines:,} lines do not fit its own header, which names "
-        f"{len(header)} columns: {', '.join(named)}{more}.",
-        where=f"line {misfits[0][0]:,}",
-        do=f"Most often one of the {SEPARATORS[mark]} stands inside a text without quotation marks. Correct these "
-        "lines and bring the file again; nothing was stored.",
-    )

@@ -11,16 +11,18 @@ from typing import IO
 import pandas as pd
 import pyarrow as pa
 
-from engine.records.delimited import checked_names, decoded, text_cells
+from engine.records.decoding import utf_8
+from engine.records.delimited import checked_names, one_column, text_cells
 from engine.records.parsing import typed
 from engine.records.spreadsheets import sheet_cells
 from engine.records.table import Table
 from engine.refusal import Refusal
 
 Columns = dict[str, pa.Array | pd.Series]
-Source = str | os.PathLike[str] | IO[bytes]
+Source = str | os.PathLike[str] | IO[bytes] | IO[str]
 TEXTS = (".csv", ".tsv", ".tab", ".txt")
-ENDINGS = (*TEXTS, ".xlsx", ".parquet")
+SHEETS = (".xlsx", ".xlsm")
+ENDINGS = (*TEXTS, *SHEETS, ".parquet")
 
 
 def read_table(
@@ -53,21 +55,40 @@ def read_frame(source: Source, name: str | None = None) -> tuple[pd.DataFrame, t
             where=called,
             do="Bring a file that ends in .csv, .tsv, .xlsx or .parquet.",
         )
-    content = Path(source).read_bytes() if isinstance(source, str | os.PathLike) else source.read()
+    content = _content(source, called)
     if not content:
         raise Refusal(f"“{called}” is empty.", where=called, do="Bring a table with column names in its first line.")
     said: tuple[str, ...] = ()
-    columns: Columns
-    mark = ""
-    if ending == ".xlsx":
-        columns, said = sheet_cells(content, called)
+    if ending in SHEETS:
+        sheet = sheet_cells(content, called)
+        frame, more = typed(sheet.columns, sheet.line)
+        said = sheet.said
     elif ending == ".parquet":
-        columns = _parquet(content, called)
+        frame, more = typed(_parquet(content, called), _record)
     else:
-        columns, mark = text_cells(decoded(content, called), called)
-    frame, more = typed(columns, mark)
+        text, said = utf_8(content, called)
+        texts = text_cells(text, called)
+        frame, more = typed(texts.columns, texts.line, texts.separator)
     _check(frame, called)
     return frame, (*said, *more)
+
+
+def _content(source: Source, called: str) -> bytes:
+    if not isinstance(source, str | os.PathLike):
+        content = source.read()
+        return content.encode() if isinstance(content, str) else content
+    try:
+        return Path(source).read_bytes()
+    except FileNotFoundError:
+        raise Refusal(f"There is no file “{source}”.", where=str(source), do="See how its name is spelt.") from None
+    except OSError as error:
+        raise Refusal(
+            f"“{source}” cannot be opened: {error.strerror or error}.", where=str(source), do="Give the path of a file."
+        ) from None
+
+
+def _record(row: int) -> str:
+    return f"record {row + 1:,}"
 
 
 def _called(source: Source, name: str | None) -> str:
@@ -94,9 +115,7 @@ def _parquet(content: bytes, name: str) -> Columns:
 
 def _check(frame: pd.DataFrame, name: str) -> None:
     if len(frame.columns) < 2:
-        raise Refusal(
-            f"“{name}” has one column only.", where="line 1", do="Bring a table with a column for each thing recorded."
-        )
+        raise one_column(name)
     if frame.empty or frame.isna().all(axis=None):
         what = "a header but no records" if frame.empty else "names of columns but every cell under them is blank"
         raise Refusal(f"“{name}” has {what}.", where=name, do="Bring a table with one row for each record.")
