@@ -73,11 +73,11 @@ def checked_cuts(name: str, cuts: Iterable[object]) -> tuple[float, ...]:
     given = [cuts] if isinstance(cuts, str) else list(cuts)
     found: list[float] = []
     for cut in given:
-        if isinstance(cut, bool) or not isinstance(cut, int | float | np.integer | np.floating) or not _finite(cut):
+        if not _is_number(cut) or not math.isfinite(cut):  # type: ignore[arg-type]
             raise Refusal(
                 f"“{cut}” among the cuts of “{name}” is not a number.", where=name, do="Give the cuts as numbers."
             )
-        found.append(float(cut) + 0.0)
+        found.append(float(cut) + 0.0)  # type: ignore[arg-type]
     for before, after in pairwise(found):
         if after <= before:
             raise Refusal(
@@ -88,13 +88,22 @@ def checked_cuts(name: str, cuts: Iterable[object]) -> tuple[float, ...]:
     return tuple(found)
 
 
-def level_positions(levels: Sequence[str], kind: str, cuts: Sequence[float], wanted: object) -> frozenset[int]:
+def level_positions(
+    levels: Sequence[str], kind: str, cuts: Sequence[float], wanted: object, where: str | None = None
+) -> frozenset[int]:
     """The positions in `levels` that `wanted` names.
 
     wanted: a level; an iterable of levels; on a number also a value, which means the band that holds it, and a
     (low, high) tuple of numbers or None: low <= x < high, open where None or infinite, which must match the cuts.
-    Raises Refusal for anything else.
+    where: the column's name, for a refusal. Raises Refusal for anything else.
     """
+    try:
+        return _positions(levels, kind, cuts, wanted)
+    except Refusal as refusal:
+        raise Refusal(refusal.message, refusal.where or where, refusal.do) from None
+
+
+def _positions(levels: Sequence[str], kind: str, cuts: Sequence[float], wanted: object) -> frozenset[int]:
     if is_range(kind, wanted):
         assert isinstance(wanted, tuple)
         return _range(levels, cuts, *wanted)
@@ -154,14 +163,14 @@ def _position(levels: Sequence[str], kind: str, cuts: Sequence[float], wanted: o
 
 
 def _is_number(value: object) -> bool:
-    return isinstance(value, int | float | np.integer | np.floating) and not isinstance(value, bool)
-
-
-def _finite(value: int | float | np.integer | np.floating) -> bool:
+    """A number that a float can hold, infinite or nan included."""
+    if not isinstance(value, int | float | np.integer | np.floating) or isinstance(value, bool):
+        return False
     try:
-        return math.isfinite(float(value))
+        float(value)
     except OverflowError:
         return False
+    return True
 
 
 def _end(value: float) -> str:

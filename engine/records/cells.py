@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import datetime
 import decimal
+from collections.abc import Iterable
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -21,17 +22,27 @@ EXACT = 2**53  # whole numbers above it are not all exact as floats: they are na
 class Cells:
     """One column as read.
 
+    distinct: every different value, as text or as float64; in rising order for numbers, in the stated order when
+    `ordered`, else in the order of appearance.  codes: (rows,) int32 positions in `distinct`, -1 where blank.
     values: (rows,) float64, nan where blank; None when the column holds texts.
-    codes: (rows,) int32 positions in `texts`, -1 where blank.  texts: every different value, as text; in rising
-    order for numbers, in the stated order when `ordered`, else in the order of appearance.
     ordered: the frame states an order of the texts.  dates: the frame says that these are dates.
     """
 
-    texts: tuple[str, ...]
+    distinct: tuple[str, ...] | NDArray[np.float64]
     codes: NDArray[np.int32]
     values: NDArray[np.float64] | None = None
     ordered: bool = False
     dates: bool = False
+
+    @property
+    def different(self) -> int:
+        """How many different values there are."""
+        return len(self.distinct)
+
+    @cached_property
+    def texts(self) -> tuple[str, ...]:
+        """Every different value as text: what a level made of it is called."""
+        return tuple(value if isinstance(value, str) else number_text(float(value)) for value in self.distinct)
 
     @cached_property
     def blank(self) -> NDArray[np.bool_]:
@@ -45,7 +56,7 @@ class Cells:
     @cached_property
     def counts(self) -> NDArray[np.int64]:
         """(texts,) cells of each different value."""
-        return np.bincount(self.codes + 1, minlength=len(self.texts) + 1)[1:]
+        return np.bincount(self.codes + 1, minlength=self.different + 1)[1:]
 
 
 def cells(name: str, column: pd.Series) -> Cells:
@@ -79,13 +90,15 @@ def from_values(name: str, values: NDArray[np.float64]) -> Cells:
         )
     values = values + 0.0  # no minus zero
     codes, distinct = pd.factorize(values, sort=True)
-    return Cells(tuple(number_text(value) for value in distinct.tolist()), codes.astype(np.int32), values)
+    return Cells(np.asarray(distinct), codes.astype(np.int32), values)
 
 
 def as_numbers(name: str, held: Cells) -> Cells:
     """Texts taken as the numbers they spell. Raises Refusal naming the first record that spells none."""
     if held.values is not None:
         return held
+    if held.dates:
+        raise Refusal(f"“{name}” holds dates, which are no numbers.", where=name, do="Leave it out.")
     spelt = np.full(len(held.texts), np.nan)
     for place, text in enumerate(held.texts):
         try:
@@ -114,40 +127,44 @@ def _numbers(name: str, column: pd.Series) -> Cells:
 
 def _categorical(column: pd.Series) -> Cells:
     held = column.cat.remove_unused_categories()
-    texts = [_text(value) for value in held.cat.categories]
-    places = {text: place for place, text in enumerate(dict.fromkeys(texts))}
-    renamed = np.array([places[text] if text.strip() else -1 for text in texts] + [-1], dtype=np.int32)
-    kept = [text for text in places if text.strip()]
-    shift = np.cumsum([not text.strip() for text in places])  # a category of spaces is blank: the others move up
-    renamed = np.where(renamed >= 0, renamed - np.append(shift, 0)[renamed], -1).astype(np.int32)
-    return Cells(tuple(kept), renamed[held.cat.codes.to_numpy()], ordered=bool(held.cat.ordered))
+    places, renamed = _spelt(held.cat.categories)
+    return Cells(places, renamed[held.cat.codes.to_numpy()], ordered=bool(held.cat.ordered))
 
 
 def _objects(name: str, column: pd.Series) -> Cells:
     kinds = {type(value) for value in column[column.notna().to_numpy()]}
-    if kinds and all(issubclass(kind, int | float | decimal.Decimal | np.number) for kind in kinds - {bool}):
-        if bool not in kinds and not any(issubclass(kind, complex | np.complexfloating) for kind in kinds):
-            whole = [abs(value) for value in column if isinstance(value, int)]
-            if not whole or max(whole) <= EXACT:
-                return from_values(name, column.to_numpy(dtype=np.float64, na_value=np.nan))
-    dates = bool(kinds) and all(issubclass(kind, datetime.date | pd.Period) for kind in kinds)
-    return _texts(column, dates)
+    if kinds and all(_is_real(kind) for kind in kinds):
+        whole = [abs(value) for value in column if isinstance(value, int)]
+        if not whole or max(whole) <= EXACT:
+            return from_values(name, column.to_numpy(dtype=np.float64, na_value=np.nan))
+    return _texts(column, dates=bool(kinds) and all(issubclass(kind, datetime.date | pd.Period) for kind in kinds))
+
+
+def _is_real(kind: type) -> bool:
+    return issubclass(kind, int | float | decimal.Decimal | np.integer | np.floating) and not issubclass(kind, bool)
 
 
 def _texts(column: pd.Series, dates: bool = False) -> Cells:
     try:
         codes, distinct = pd.factorize(column)
     except TypeError:  # lists and other values without a hash
-        codes, distinct = pd.factorize(column.map(_text, na_action="ignore"))
-    spelt = [_text(value) for value in distinct]
+        codes, distinct = pd.factorize(column.map(level_text, na_action="ignore"))
+    texts, renamed = _spelt(distinct)
+    return Cells(texts, renamed[codes], dates=dates)
+
+
+def _spelt(distinct: Iterable[object]) -> tuple[tuple[str, ...], NDArray[np.int32]]:
+    """Different values as different texts, and (values + 1,) where each went: -1 for nothing but spaces, and last."""
     places: dict[str, int] = {}
-    renamed = np.array(
-        [places.setdefault(text, len(places)) if text.strip() else -1 for text in spelt] + [-1], dtype=np.int32
-    )
-    return Cells(tuple(places), renamed[codes], dates=dates)
+    renamed = []
+    for value in distinct:
+        text = value if isinstance(value, str) else level_text(value)
+        renamed.append(places.setdefault(text, len(places)) if text and not text.isspace() else -1)
+    return tuple(places), np.array([*renamed, -1], dtype=np.int32)
 
 
-def _text(value: object) -> str:
+def level_text(value: object) -> str:
+    """What a level made of `value` is called."""
     if isinstance(value, float | np.floating):
         return number_text(float(value))
     if isinstance(value, datetime.datetime) and value.time() == datetime.time():

@@ -8,6 +8,7 @@ from typing import Literal
 import numpy as np
 
 Kind = Literal["category", "grade", "number", "left out"]
+BLANK = "blank"  # the name of the level that stands for a blank; longer when a real level is called so
 SMALL_COUNT = 10  # counts of records under this are shown as "under 10" only; common practice, no source
 
 
@@ -39,7 +40,7 @@ class Column:
     @property
     def has_blank(self) -> bool:
         """Whether the last level stands for a blank."""
-        return bool(self.levels) and self.blanks > 0 and self.blank == "level"
+        return self.blanks > 0 and self.blank == "level" and bool(self.levels) and self.levels[-1].startswith(BLANK)
 
 
 @dataclass(frozen=True)

@@ -2,23 +2,23 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
-import pandas as pd
+from numpy.typing import NDArray
 
 from engine.records.bands import band_codes, band_levels, checked_cuts, equal_count_cuts
-from engine.records.cells import Cells, as_numbers
-from engine.records.column import Column, Kind
+from engine.records.cells import Cells, as_numbers, level_text
+from engine.records.column import BLANK, Column, Kind
 from engine.records.kinds import MOST_LEVELS, Guess, category_levels, grade_levels, guess
+from engine.records.wording import listing, quoted
 from engine.refusal import Refusal
 
 KINDS: tuple[Kind, ...] = ("category", "grade", "number", "left out")
 LATER_KINDS = ("weight", "group")
 BLANKS = ("level", "drop row")
-BLANK = "blank"
 MUCH_BLANK = 0.05  # share of blank cells from which the page asks what a blank means; common practice, no source
 
 
@@ -32,81 +32,64 @@ class Choice:
     blank: str | None = None
 
 
-def check_names(frame: pd.DataFrame, chosen: Mapping[str, Mapping[str, object]]) -> None:
-    """Raises Refusal for a table without rows or columns, a column twice, and a choice about an unknown column."""
-    if len(frame.columns) < 2:
-        raise Refusal(
-            f"The table has too few columns ({len(frame.columns)}); at least two are needed.",
-            where="columns",
-            do="Bring a table with a column for each thing recorded.",
-        )
-    if len(frame) < 2:
-        raise Refusal(
-            f"The table has too few records ({len(frame)}); at least two are needed.",
-            where="records",
-            do="Bring a table with one row for each record, under a line of column names.",
-        )
-    names = list(frame.columns)
-    for name in names:
-        if not isinstance(name, str):
-            raise Refusal(f"The column name {name!r} is not a text.", where=str(name), do="Name columns with words.")
-        if names.count(name) > 1:
-            raise Refusal(f"Two columns are called “{name}”.", where=name, do="Give each column a name of its own.")
-    for what, choices in chosen.items():
-        for name in choices:
-            if name not in names:
-                raise Refusal(
-                    f"The table has no column “{name}”, which is named among the {what}.",
-                    where=name,
-                    do=f"Its columns are {', '.join(names)}.",
-                )
+@dataclass(frozen=True)
+class Taken:
+    """A column whose kind is decided and whose levels wait for the rows that are kept."""
+
+    name: str
+    cells: Cells
+    choice: Choice
+    kind: Kind
+    blank: Literal["level", "drop row"]
+    why: str
+    warnings: tuple[str, ...]
+
+    @property
+    def drops(self) -> bool:
+        """Whether a row that is blank here is left out."""
+        return self.kind != "left out" and self.blank == "drop row" and self.cells.blanks > 0
 
 
-def column_of(name: str, cells: Cells, choice: Choice, kept: np.ndarray | None = None) -> Column:
-    """The column made of `cells`, as chosen, else as guessed.
-
-    kept: (rows read,) which rows to code; None for all.  Raises Refusal for a choice that the cells do not bear.
-    """
+def take(name: str, cells: Cells, choice: Choice) -> Taken:
+    """Decide the kind of a column, as chosen, else as guessed. Raises Refusal for a choice that is none."""
     guessed = guess(name, cells)
     kind = _kind(name, choice, guessed)
-    blank = _blank(name, choice)
-    blanks = int(cells.blank.sum())
-    why = (
-        guessed.why
-        if choice.kind is None
-        else f"You chose it. {guessed.why}"
-        if kind == guessed.kind
-        else "You chose it."
-    )
-    warnings = list(guessed.warnings) if kind == guessed.kind else []
-    if kind == "left out":
-        return Column(name, kind, why, blank=blank, blanks=blanks, warnings=tuple(warnings))
-    codes = cells.codes if kept is None else cells.codes[kept]
+    if choice.kind is None and kind == guessed.kind:
+        why = guessed.why
+    else:
+        why = f"You chose it. {guessed.why}" if kind == guessed.kind else "You chose it."
+    warnings = guessed.warnings if kind == guessed.kind else ()
+    return Taken(name, cells, choice, kind, _blank(name, choice), why, warnings)
+
+
+def column_of(taken: Taken, kept: NDArray[np.bool_]) -> Column:
+    """The column of the rows in `kept`, (rows read,). Raises Refusal for a choice that its cells do not bear."""
+    name, cells = taken.name, taken.cells
+    if taken.kind == "left out":
+        return Column(name, "left out", taken.why, blank=taken.blank, blanks=cells.blanks, warnings=taken.warnings)
+    codes = cells.codes if kept.all() else cells.codes[kept]
     if not (codes >= 0).any():
-        raise Refusal(f"Every cell of “{name}” is blank.", where=name, do="Leave the column out.")
-    if blanks >= MUCH_BLANK * codes.size:
-        warnings.append(f"{round(100 * blanks / cells.codes.size)}% are blank. Say what a blank means here.")
-    if kind == "number":
-        held = as_numbers(name, cells).values
-        assert held is not None
-        values = held if kept is None else held[kept]
-        cuts = equal_count_cuts(values[~np.isnan(values)]) if choice.cuts is None else _cuts(name, choice.cuts, values)
-        banded = band_codes(values, cuts)
-        codes, levels = _with_blank(banded, band_levels(cuts), blank, blanks)
-        return Column(name, kind, why, levels, codes, cuts, values, blank, blanks, tuple(warnings))
-    order, alphabetical = _order(name, kind, cells, codes, choice, guessed)
-    if alphabetical:
-        warnings.append("The order of its grades is only alphabetical. Say which is lowest and which is highest.")
-    if len(order) > MOST_LEVELS:
         raise Refusal(
-            f"“{name}” has {len(order):,} different values; at most {MOST_LEVELS} can be levels.",
+            f"Every cell of “{name}” is blank" + (" in the records that are kept." if not kept.all() else "."),
             where=name,
-            do="Take it as a number if it is one, merge levels in the file, or leave it out.",
+            do="Leave the column out.",
         )
-    place = {level: position for position, level in enumerate(order)}
-    positions = np.asarray([place.get(level, -1) for level in cells.texts] + [-1])[codes]
-    codes, levels = _with_blank(positions, order, blank, blanks)
-    return Column(name, kind, why, levels, codes, blank=blank, blanks=blanks, warnings=tuple(warnings))
+    warnings = list(taken.warnings)
+    if cells.blanks >= MUCH_BLANK * kept.size:
+        warnings.append(f"{round(100 * cells.blanks / kept.size)}% are blank. Say what a blank means here.")
+    cuts: tuple[float, ...] = ()
+    values = None
+    if taken.kind == "number":
+        values, cuts = _banded(taken, kept)
+        codes, levels = band_codes(values, cuts), band_levels(cuts)
+    else:
+        levels, places, said = _levels(taken, codes)
+        codes = places[codes]
+        warnings += said
+    if len(levels) == 1 and not (codes < 0).any():
+        warnings.append("Every record that is kept has the same value.")
+    codes, levels = _with_blank(codes, levels)
+    return Column(name, taken.kind, taken.why, levels, codes, cuts, values, taken.blank, cells.blanks, tuple(warnings))
 
 
 def _kind(name: str, choice: Choice, guessed: Guess) -> Kind:
@@ -144,43 +127,81 @@ def _blank(name: str, choice: Choice) -> Literal["level", "drop row"]:
     )
 
 
-def _cuts(name: str, given: Sequence[float], values: np.ndarray) -> tuple[float, ...]:
-    """The cuts given. Raises Refusal unless they rise and leave no band without a record."""
-    cuts = checked_cuts(name, given)
-    filled = np.bincount(band_codes(values[~np.isnan(values)], cuts), minlength=len(cuts) + 1)
+def _banded(taken: Taken, kept: NDArray[np.bool_]) -> tuple[NDArray[np.float64], tuple[float, ...]]:
+    """(rows kept,) the numbers, and their cuts: as given, each band with a record in it, else of equal counts."""
+    held = as_numbers(taken.name, taken.cells).values
+    assert held is not None
+    values = held if kept.all() else held[kept]
+    present = values[~np.isnan(values)]
+    if taken.choice.cuts is None:
+        return values, equal_count_cuts(present)
+    cuts = checked_cuts(taken.name, taken.choice.cuts)
+    if len(cuts) >= MOST_LEVELS:
+        raise Refusal(
+            f"“{taken.name}” would have {len(cuts) + 1} bands; at most {MOST_LEVELS} can be levels.",
+            where=taken.name,
+            do="Give fewer cuts.",
+        )
+    filled = np.bincount(band_codes(present, cuts), minlength=len(cuts) + 1)
     if (filled == 0).any():
         empty = band_levels(cuts)[int((filled == 0).argmax())]
-        raise Refusal(f"No record of “{name}” lies in the band “{empty}”.", where=name, do="Move or remove that cut.")
-    return cuts
+        raise Refusal(
+            f"No record of “{taken.name}” lies in the band “{empty}”.", where=taken.name, do="Move or remove that cut."
+        )
+    return values, cuts
 
 
-def _order(
-    name: str, kind: Kind, cells: Cells, codes: np.ndarray, choice: Choice, guessed: Guess
-) -> tuple[tuple[str, ...], bool]:
-    """The levels in order, and whether that order is nothing but the alphabet."""
-    held = frozenset(np.unique(codes[codes >= 0]).tolist())
-    if kind == "category":
-        return tuple(cells.texts[place] for place in category_levels(cells) if place in held), False
-    order, _, sure = grade_levels(cells)
-    found = tuple(cells.texts[place] for place in order if place in held)
-    if choice.grades is None:
-        return found, not sure and len(found) > 2
-    given = tuple(str(level) for level in choice.grades)
+def _levels(taken: Taken, codes: NDArray[np.int32]) -> tuple[tuple[str, ...], NDArray[np.int32], tuple[str, ...]]:
+    """The levels that the rows kept hold, in order; (texts + 1,) the level of each text, -1 last; and warnings."""
+    name, cells = taken.name, taken.cells
+    present = np.bincount(codes + 1, minlength=cells.different + 1)[1:] > 0
+    if present.sum() > MOST_LEVELS:
+        raise Refusal(
+            f"“{name}” has {int(present.sum()):,} different values; at most {MOST_LEVELS} can be levels.",
+            where=name,
+            do="Take it as a number if it is one, merge levels in the file, or leave it out.",
+        )
+    said: tuple[str, ...] = ()
+    if taken.kind == "category":
+        order = category_levels(cells)
+    elif taken.choice.grades is not None:
+        order = _given(taken, present)
+    else:
+        order, _, sure = grade_levels(cells)
+        if not sure and present.sum() > 2:
+            said = ("Nothing tells the order of its grades. Say which is lowest and which is highest.",)
+    order = tuple(place for place in order if present[place])
+    places = np.full(cells.different + 1, -1, dtype=np.int32)
+    places[list(order)] = np.arange(len(order), dtype=np.int32)
+    return tuple(cells.texts[place] for place in order), places, said
+
+
+def _given(taken: Taken, present: NDArray[np.bool_]) -> tuple[int, ...]:
+    name, texts = taken.name, taken.cells.texts
+    given = [level_text(level) for level in taken.choice.grades or ()]
     if len(set(given)) < len(given):
         raise Refusal(f"A grade of “{name}” is given twice.", where=name, do="Give each grade once, the lowest first.")
-    if missing := [level for level in found if level not in given]:
+    places = {text: place for place, text in enumerate(texts)}
+    if unknown := [level for level in given if level not in places]:
         raise Refusal(
-            f"The grades of “{name}” leave out {', '.join(f'“{level}”' for level in missing[:5])}.",
+            f"“{name}” has no {listing([quoted(level) for level in unknown])} among its levels.",
+            where=name,
+            do=f"Its levels are {listing(texts, 12)}.",
+        )
+    if missing := [text for text, held in zip(texts, present, strict=True) if held and text not in given]:
+        raise Refusal(
+            f"The grades of “{name}” leave out {listing([quoted(level) for level in missing])}.",
             where=name,
             do="Give every level its place.",
         )
-    return tuple(level for level in given if level in found), False
+    return tuple(places[level] for level in given)
 
 
-def _with_blank(
-    codes: np.ndarray, levels: tuple[str, ...], blank: str, blanks: int
-) -> tuple[np.ndarray, tuple[str, ...]]:
-    if blank != "level" or blanks == 0:
+def _with_blank(codes: NDArray[np.int32], levels: tuple[str, ...]) -> tuple[NDArray[np.int32], tuple[str, ...]]:
+    """Codes of blanks, all under 0, moved to a level of their own where there are any."""
+    if not (codes < 0).any():
         return codes, levels
-    called = BLANK if BLANK not in levels else f"{BLANK} (no value)"
+    called = BLANK
+    while called in levels:
+        called = f"{called} (no value)"
     return np.where(codes < 0, len(levels), codes).astype(np.int32), (*levels, called)

@@ -6,6 +6,7 @@ import math
 import re
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 
 # Each ladder is low to high; words on one rung mean the same. Words are compared in lower case, with single spaces.
 LADDERS: tuple[tuple[str, ...], ...] = (
@@ -150,17 +151,23 @@ NUMBER_WORDS = (
 )
 NUMBERED_THINGS = "level|year|grade|stage|step|phase|tier|band|wave|quintile|quartile|decile|week|month|day"
 
-_NUMBER = r"(?P<{}>[-−]?\d+(?:[.,]\d+)*)\s*(?P<{}>[km]?)"
-_UNIT = r"(?:\s*(?:%|[a-z]+\.?))?"  # one word after a number: years, miles, kg
-_COIN = r"[£$€]?\s*"
+_LOW, _HIGH = (
+    rf"[£$€]?\s*(?P<{end}>[-−]?\d+(?:[.,]\d+)*)\s*(?P<{end}k>[km]?)(?:\s*(?:%|[a-z]+\.?))?"  # a word: years, miles, kg
+    for end in ("low", "high")
+)
 _BETWEEN = r"\s*(?:-|–|—|to under|to less than|to below|to|or|and under|up to under)\s*"
-_RANGES = (
-    (re.compile(rf"{_COIN}{_NUMBER.format('low', 'lowk')}{_UNIT}{_BETWEEN}{_COIN}{_NUMBER.format('high', 'highk')}{_UNIT}"), 0),
-    (re.compile(rf"(?:under|below|less than|fewer than|up to|at most|younger than|<=?|≤|-)\s*{_COIN}{_NUMBER.format('high', 'highk')}{_UNIT}"), -1),
-    (re.compile(rf"{_COIN}{_NUMBER.format('high', 'highk')}{_UNIT}\s*(?:and|or|&) (?:under|less|fewer|below|younger|lower)"), -1),
-    (re.compile(rf"{_COIN}{_NUMBER.format('low', 'lowk')}{_UNIT}\s*(?:\+|(?:and|or|&) (?:over|more|above|older|up|higher)|plus)(?: [a-z]+)?"), 1),
-    (re.compile(rf"(?:over|above|more than|at least|older than|from|>=?|≥)\s*{_COIN}{_NUMBER.format('low', 'lowk')}{_UNIT}"), 1),
-)  # fmt: skip
+_UNDER = r"(?:under|below|less than|fewer than|up to|at most|younger than|<=?|≤|-)"
+_OVER = r"(?:over|above|more than|at least|older than|from|>=?|≥)"
+_RANGES = tuple(
+    re.compile(pattern)
+    for pattern in (
+        rf"{_LOW}{_BETWEEN}{_HIGH}",
+        rf"{_UNDER}\s*{_HIGH}",
+        rf"{_HIGH}\s*(?:and|or|&) (?:under|less|fewer|below|younger|lower)",
+        rf"{_LOW}\s*(?:\+|(?:and|or|&) (?:over|more|above|older|up|higher)|plus)(?: [a-z]+)?",
+        rf"{_OVER}\s*{_LOW}",
+    )
+)
 _COUNTED = re.compile(r"(?P<low>\d+)(?:\s+[a-z]+)?")
 _NONE = re.compile(r"(?:none|no|zero|nil)(?:\s+[a-z]+)?")
 _NUMBERED = re.compile(
@@ -170,7 +177,10 @@ _NUMBERED = re.compile(
 
 @dataclass(frozen=True)
 class Grading:
-    """An order of levels. order: positions, low to high.  why: how it was found.  outside: positions without a place."""
+    """An order of levels.
+
+    order: positions, low to high.  why: how it was found.  outside: positions without a place in it.
+    """
 
     order: tuple[int, ...]
     why: str
@@ -231,23 +241,18 @@ def _ranges(words: list[str]) -> list[tuple[float, float]] | None:
     if not real:
         return None
     rising = sorted(keys)
-    if any(
-        high > next_low + abs(next_low) * 1e-9 for (_, high), (next_low, _) in zip(rising, rising[1:], strict=False)
-    ):
+    if any(high > next_low + abs(next_low) * 1e-9 for (_, high), (next_low, _) in pairwise(rising)):
         return None  # they overlap: no order of the people in them
     return keys
 
 
 def _range(word: str) -> tuple[tuple[float, float], bool] | None:
-    for pattern, side in _RANGES:
+    for pattern in _RANGES:
         if match := pattern.fullmatch(word):
             parts = match.groupdict()
             low = _value(parts["low"], parts.get("lowk") or parts.get("highk")) if parts.get("low") else -math.inf
             high = _value(parts["high"], parts.get("highk")) if parts.get("high") else math.inf
-            if side == 0 and high < low:
-                return None
-            # an open upper end at 50 comes after a closed range that ends at 50
-            return ((low, high) if side != 1 else (low, math.inf)), True
+            return ((low, high), True) if low <= high else None
     if match := _COUNTED.fullmatch(word):
         value = float(match["low"])
         return (value, value), False

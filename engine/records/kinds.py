@@ -23,19 +23,18 @@ _DIGITS_ONLY = re.compile(r"(?:19|20)\d\d(?:0[1-9]|1[0-2])(?:0[1-9]|[12]\d|3[01]
 _MONTH = r"(?:jan|feb|mar|apr|may|jun|jul|aug|sep|oct|nov|dec)[a-z]*\.?"
 _CLOCK = r"(?:[T ,]+\d{1,2}:\d\d(?::\d\d(?:\.\d+)?)?(?: ?[AaPp]\.?[Mm]\.?)?(?:Z| ?[+-]\d\d:?\d\d)?)?"
 _DATE = re.compile(
-    rf"(?:\d{{4}}[-/.]\d{{1,2}}[-/.]\d{{1,2}}|\d{{1,2}}[-/.]\d{{1,2}}[-/.](?:\d{{4}}|\d\d)|\d{{1,2}}[ -]{_MONTH}[ -](?:\d{{4}}|\d\d)"
-    rf"|{_MONTH} \d{{1,2}},? \d{{4}}){_CLOCK}",
+    rf"(?:\d{{4}}[-/.]\d{{1,2}}[-/.]\d{{1,2}}|\d{{1,2}}[-/.]\d{{1,2}}[-/.](?:\d{{4}}|\d\d)"
+    rf"|\d{{1,2}}[ -]{_MONTH}[ -](?:\d{{4}}|\d\d)|{_MONTH} \d{{1,2}},? \d{{4}}){_CLOCK}",
     re.IGNORECASE,
 )
 
 
 @dataclass(frozen=True)
 class Guess:
-    """A kind. why: one sentence.  levels: positions in the cells' texts, low to high for a grade.  warnings: sentences."""
+    """A kind. why: one sentence.  warnings: sentences."""
 
     kind: Kind
     why: str
-    levels: tuple[int, ...] = ()
     warnings: tuple[str, ...] = ()
 
 
@@ -44,28 +43,28 @@ def guess(name: str, held: Cells) -> Guess:
     seen = int(held.codes.size - held.blanks)
     if seen == 0:
         return Guess("left out", "Every cell is blank.")
-    if len(held.texts) == 1 and not held.blanks:
+    if held.different == 1 and not held.blanks:
         return Guess("left out", f"Every record has the same value: {quoted(held.texts[0])}.")
     if held.dates or _are_dates(held):
         return Guess("left out", "It holds dates, which cannot be learned from as they are.")
-    if len(held.texts) == 1:
-        return Guess("category", f"It holds {quoted(held.texts[0])} or nothing.", (0,))
+    if held.different == 1:
+        return Guess("category", f"It holds {quoted(held.texts[0])} or nothing.")
     return _number(name, held, seen) if held.values is not None else _text(name, held, seen)
 
 
 def category_levels(held: Cells) -> tuple[int, ...]:
     """Positions of the texts in the order in which a category lists them."""
     if held.values is not None or held.ordered:
-        return tuple(range(len(held.texts)))
-    return tuple(sorted(range(len(held.texts)), key=lambda place: natural(held.texts[place])))
+        return tuple(range(held.different))
+    return tuple(sorted(range(held.different), key=lambda place: natural(held.texts[place])))
 
 
 def grade_levels(held: Cells) -> tuple[tuple[int, ...], str, bool]:
     """Positions of the texts low to high, where that order comes from, and whether that is more than a guess."""
     if held.ordered:
-        return tuple(range(len(held.texts))), "The order of its levels came with it.", True
+        return tuple(range(held.different)), "The order of its levels came with it.", True
     if held.values is not None:
-        return tuple(range(len(held.texts))), "Its levels are numbers.", True
+        return tuple(range(held.different)), "Its levels are numbers.", True
     found = grading(held.texts)
     if found is not None:
         return found.order + found.outside, found.why, not found.outside
@@ -74,22 +73,21 @@ def grade_levels(held: Cells) -> tuple[tuple[int, ...], str, bool]:
 
 def _number(name: str, held: Cells, seen: int) -> Guess:
     assert held.values is not None
-    distinct = len(held.texts)
+    distinct = held.different
     present = held.values[~held.blank]
     whole = bool((present == np.floor(present)).all())
     if whole and _is_id(name, present, distinct, seen):
         return Guess("left out", _id_words(distinct, seen))
-    every = tuple(range(distinct))
     if distinct == 2:
-        return Guess("category", f"It has two values, {held.texts[0]} and {held.texts[1]}.", every)
+        return Guess("category", f"It has two values, {held.texts[0]} and {held.texts[1]}.")
     if distinct <= FEW_VALUES and seen >= FEWEST_EACH * distinct:
         low, high = figure(float(present.min())), figure(float(present.max()))
         warning = (
             f"A number with only {distinct} different values, {low} to {high}: taken as grades. "
             "Choose category if the numbers only stand for names."
         )
-        return Guess("grade", f"It is a number with only {distinct} different values.", every, (warning,))
-    return Guess("number", "It holds numbers.", (), _spike(held))
+        return Guess("grade", f"It is a number with only {distinct} different values.", (warning,))
+    return Guess("number", "It holds numbers.", _spike(held))
 
 
 def _is_id(name: str, present: np.ndarray, distinct: int, seen: int) -> bool:
@@ -106,17 +104,17 @@ def _is_id(name: str, present: np.ndarray, distinct: int, seen: int) -> bool:
 
 
 def _spike(held: Cells) -> tuple[str, ...]:
-    distinct = len(held.texts)
+    distinct = held.different
     said = [f"A number with only {distinct} different values."] if distinct <= 2 * FEW_VALUES else []
     common = int(held.counts.argmax())
     seen = int(held.counts.sum())
     if held.counts[common] > seen / 2 and distinct > 2 * FEW_VALUES:
-        said.append(f"More than half of its values are {held.texts[common]}.")
+        said.append(f"More than half of its values are {figure(float(held.distinct[common]))}.")
     return tuple(said)
 
 
 def _text(name: str, held: Cells, seen: int) -> Guess:
-    distinct = len(held.texts)
+    distinct = held.different
     mostly = _mostly_numbers(held, seen)
     if mostly:
         return _levels_or_out(held, (mostly,), f"{distinct:,} different values; at most {MOST_LEVELS} can be levels.")
@@ -132,17 +130,17 @@ def _text(name: str, held: Cells, seen: int) -> Guess:
 
 
 def _levels_or_out(held: Cells, warnings: tuple[str, ...], too_many: str) -> Guess:
-    if len(held.texts) + bool(held.blanks) > MOST_LEVELS:
-        return Guess("left out", f"It has {too_many}", (), warnings)
-    order, why, sure = grade_levels(held)
+    if held.different + bool(held.blanks) > MOST_LEVELS:
+        return Guess("left out", f"It has {too_many}", warnings)
+    _, why, sure = grade_levels(held)
     if sure:
-        return Guess("grade", why, order, warnings)
+        return Guess("grade", why, warnings)
     found = grading(held.texts)
     if found is not None and len(found.order) > 2:
         outside = listing([quoted(held.texts[place]) for place in found.outside])
         warnings = (*warnings, f"Its levels have an order except for {outside}, so it is taken as a category.")
-    count = len(held.texts)
-    return Guess("category", f"It has {count} different {'value' if count == 1 else 'values'}.", order, warnings)
+    count = held.different
+    return Guess("category", f"It has {count} different {'value' if count == 1 else 'values'}.", warnings)
 
 
 def _id_words(distinct: int, seen: int) -> str:
@@ -152,10 +150,12 @@ def _id_words(distinct: int, seen: int) -> str:
 
 
 def _are_dates(held: Cells) -> bool:
-    pattern = _DATE if held.values is None else _DIGITS_ONLY
-    if held.values is not None and len(held.texts) <= FEW_VALUES:
+    if held.values is None:
+        return all(_DATE.fullmatch(text) for text in held.texts)
+    low, high = float(held.distinct[0]), float(held.distinct[-1])
+    if held.different <= FEW_VALUES or low < 1900_01_01 or high > 2099_12_31:
         return False
-    return all(pattern.fullmatch(text) for text in held.texts)
+    return all(_DIGITS_ONLY.fullmatch(text) for text in held.texts)
 
 
 def _mostly_numbers(held: Cells, seen: int) -> str | None:

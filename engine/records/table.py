@@ -10,11 +10,13 @@ from functools import cached_property
 
 import numpy as np
 import pandas as pd
+from numpy.typing import NDArray
 
-from engine.records.bands import level_positions
-from engine.records.cells import cells as cells_of
+from engine.records.bands import is_range, level_positions, range_ends
+from engine.records.cells import Cells, cells
 from engine.records.column import SMALL_COUNT, Coded, Column, Kind
-from engine.records.columns import Choice, check_names, column_of
+from engine.records.columns import Choice, column_of, take
+from engine.records.wording import listing
 from engine.refusal import Refusal
 
 __all__ = ["SMALL_COUNT", "Coded", "Column", "Kind", "Table"]
@@ -32,9 +34,9 @@ class Table:
     name: str
     frame: pd.DataFrame
     columns: Mapping[str, Column]
-    kept: np.ndarray
+    kept: NDArray[np.bool_]
     dropped: Mapping[str, int]
-    weights: np.ndarray
+    weights: NDArray[np.float64]
     warnings: tuple[str, ...] = ()
 
     @classmethod
@@ -56,33 +58,26 @@ class Table:
         rows or columns left.
         """
         kinds, bands, grades, blanks = kinds or {}, bands or {}, grades or {}, blanks or {}
-        check_names(frame, {"kinds": kinds, "bands": bands, "grades": grades, "blanks": blanks})
-        cells = {column: cells_of(column, frame[column]) for column in frame.columns}
-        choices = {
-            column: Choice(kinds.get(column), bands.get(column), grades.get(column), blanks.get(column))
-            for column in frame.columns
-        }
-        whole = {column: column_of(column, cells[column], choices[column]) for column in frame.columns}
+        _check(frame, {"kinds": kinds, "bands": bands, "grades": grades, "blanks": blanks})
+        taken = {}
+        for column in frame.columns:
+            choice = Choice(kinds.get(column), bands.get(column), grades.get(column), blanks.get(column))
+            taken[column] = take(column, cells(column, frame[column]), choice)
         kept = np.ones(len(frame), dtype=np.bool_)
         dropped = {}
-        for column, made in whole.items():
-            if made.blank == "drop row" and made.kind != "left out":
-                blank = cells[column].blank
-                dropped[column] = int(blank.sum())
-                kept &= ~blank
-        if not kept.all():
-            if kept.sum() < 2:
-                raise Refusal(
-                    "Leaving out every row with a blank leaves fewer than two records.",
-                    where=", ".join(dropped),
-                    do="Let blanks be a level of their own in some columns.",
-                )
-            whole = {
-                column: column_of(column, cells[column], choices[column], kept) if made.kind != "left out" else made
-                for column, made in whole.items()
-            }
+        for column, each in taken.items():
+            if each.drops:
+                dropped[column] = each.cells.blanks
+                kept &= ~each.cells.blank
         rows = int(kept.sum())
-        return cls(name, frame, whole, kept, dropped, np.ones(rows), tuple(warnings))
+        if rows < 2:
+            raise Refusal(
+                "Leaving out every row with a blank leaves fewer than two records.",
+                where=", ".join(dropped),
+                do="Let blanks be a level of their own in some columns.",
+            )
+        columns = {column: column_of(each, kept) for column, each in taken.items()}
+        return cls(name, frame, columns, kept, dropped, np.ones(rows), tuple(warnings))
 
     @property
     def rows(self) -> int:
@@ -91,32 +86,29 @@ class Table:
     @cached_property
     def digest(self) -> str:
         """sha256, in hexadecimal, of the cells and of what each column is taken as."""
-        taken = [
-            [made.name, made.kind, list(made.levels), list(made.cuts), made.blank] for made in self.columns.values()
-        ]
-        found = hashlib.sha256(json.dumps(taken).encode())
-        for name in self.columns:
-            cells = cells_of(name, self.frame[name])
-            found.update(json.dumps(cells.texts).encode())
-            found.update(np.ascontiguousarray(cells.codes).tobytes())
+        found = hashlib.sha256(self.kept.tobytes())
+        for column in self.columns.values():
+            taken = [column.name, column.kind, column.levels, column.cuts, column.blank, column.blanks]
+            found.update(json.dumps(taken).encode())
+            if column.kind == "left out":
+                _add_cells(found, cells(column.name, self.frame[column.name]))
+            else:
+                found.update(np.asarray(column.codes, dtype="<i4").tobytes())
+                if column.values is not None:
+                    found.update(_one_nan(column.values).tobytes())
         return found.hexdigest()
 
-    def matches(self, column: str, wanted: object) -> np.ndarray:
+    def matches(self, column: str, wanted: object) -> NDArray[np.bool_]:
         """(rows,) True where `column` is the level, in the set of levels, or in the (low, high) range wanted.
 
         A range on a number is low <= x < high, either end None for open. Raises Refusal for an unknown column or level.
         """
         made = self._used(column)
-        if made.kind == "number" and made.values is not None and isinstance(wanted, tuple):
-            low, high = (None if end is None else float(end) for end in wanted)
-            inside = np.isfinite(made.values)
-            with np.errstate(invalid="ignore"):
-                if low is not None:
-                    inside &= made.values >= low
-                if high is not None:
-                    inside &= made.values < high
-            return np.asarray(inside)
-        positions = level_positions(made.levels, made.kind, made.cuts, wanted)
+        if is_range(made.kind, wanted):
+            assert made.values is not None and isinstance(wanted, tuple)
+            low, high = range_ends(*wanted)
+            return np.asarray((made.values >= low) & ((made.values < high) | np.isposinf(high)))
+        positions = level_positions(made.levels, made.kind, made.cuts, wanted, column)
         return np.isin(made.codes, list(positions))
 
     def coded(self, names: Sequence[str]) -> Coded:
@@ -138,8 +130,57 @@ class Table:
     def _used(self, name: str) -> Column:
         if name not in self.columns:
             raise Refusal(
-                f"The records have no column “{name}”.", where=name, do=f"Its columns are {', '.join(self.columns)}."
+                f"The records have no column “{name}”.",
+                where=name,
+                do=f"Its columns are {listing(list(self.columns), 12)}.",
             )
         if self.columns[name].kind == "left out":
             raise Refusal(f"The column “{name}” is left out.", where=name, do="Give it a kind first.")
         return self.columns[name]
+
+
+def _check(frame: pd.DataFrame, chosen: Mapping[str, Mapping[str, object]]) -> None:
+    """Raises Refusal for a table without rows or columns, a column twice, and a choice about an unknown column."""
+    if len(frame.columns) < 2:
+        raise Refusal(
+            f"The table has too few columns ({len(frame.columns)}); at least two are needed.",
+            where="columns",
+            do="Bring a table with a column for each thing recorded.",
+        )
+    if len(frame) < 2:
+        raise Refusal(
+            f"The table has too few records ({len(frame)}); at least two are needed.",
+            where="records",
+            do="Bring a table with one row for each record, under a line of column names.",
+        )
+    names: set[str] = set()
+    for name in frame.columns:
+        if not isinstance(name, str):
+            raise Refusal(f"The column name {name!r} is not a text.", where=str(name), do="Name columns with words.")
+        if name in names:
+            raise Refusal(f"Two columns are called “{name}”.", where=name, do="Give each column a name of its own.")
+        names.add(name)
+    for what, choices in chosen.items():
+        for name in choices:
+            if name not in names:
+                raise Refusal(
+                    f"The table has no column “{name}”, which is named among the {what}.",
+                    where=name,
+                    do=f"Its columns are {listing(list(frame.columns), 12)}.",
+                )
+
+
+def _one_nan(values: NDArray[np.float64]) -> NDArray[np.float64]:
+    """The same numbers with every nan written in the same bytes, which nan need not be."""
+    return np.where(np.isnan(values), np.nan, values).astype("<f8")
+
+
+def _add_cells(found: hashlib._Hash, held: Cells) -> None:
+    if held.values is not None:
+        found.update(_one_nan(held.values).tobytes())
+        return
+    order = sorted(range(held.different), key=held.texts.__getitem__)  # however pandas listed them
+    places = np.full(held.different + 1, -1, dtype="<i4")
+    places[order] = np.arange(held.different)
+    found.update(json.dumps([held.texts[place] for place in order]).encode())
+    found.update(places[held.codes].tobytes())
