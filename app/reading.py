@@ -10,7 +10,7 @@ import pandas as pd
 
 from app import workers
 from app.settings import Settings
-from app.store.files import disk_in_words
+from app.store.files import INCOMING, disk_in_words
 from engine.refusal import Refusal
 
 BLOCK = 1_000_000  # bytes copied at a time
@@ -26,7 +26,7 @@ def read_upload(file: IO[bytes], name: str, settings: Settings) -> tuple[pd.Data
     name: as its owner called it; its ending says what it is.  The limits are those of the settings.
     Raises Refusal when the file cannot be read, and when reading it takes too much memory or time.
     """
-    incoming = settings.data / "incoming"
+    incoming = settings.data / INCOMING
     with disk_in_words(incoming):
         incoming.mkdir(parents=True, exist_ok=True)
     with tempfile.TemporaryDirectory(dir=incoming) as folder:

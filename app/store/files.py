@@ -10,6 +10,7 @@ from pathlib import Path
 
 from engine.refusal import Refusal
 
+INCOMING = "incoming"  # folder in the data folder for uploads that are being read
 UNFINISHED = ".unfinished"  # suffix of files that nobody may read yet
 
 

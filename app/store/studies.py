@@ -28,7 +28,7 @@ from engine.refusal import Refusal
 RECORDS = "records.parquet"
 TABLES_KEPT = 4
 MODELS_KEPT = 4
-ABANDONED = 24 * 3600.0  # seconds after which a file that no study names is swept away
+ABANDONED = 24 * 3600.0  # seconds after which an upload or a file that no study names is swept away
 
 
 class NoSuchStudy(Refusal):
@@ -54,8 +54,10 @@ class Store:
     def __init__(self, folder: Path) -> None:
         self.folder = folder
         self._studies = folder / "studies"
+        self.incoming = folder / files.INCOMING
         with files.disk_in_words(folder):
             self._studies.mkdir(parents=True, exist_ok=True)
+            self.incoming.mkdir(exist_ok=True)
         self.database = Database(folder / "steelyard.db")
         self._tables: Bounded[Table] = Bounded(TABLES_KEPT)
         self._learned: Bounded[engine.Learned] = Bounded(MODELS_KEPT)
@@ -291,14 +293,19 @@ class Store:
         with self.database.reading() as database:
             rows = database.execute("SELECT key, learned_file FROM studies").fetchall()
         named = {row["key"]: {RECORDS, row["learned_file"]} for row in rows}
+        left = list(self.incoming.iterdir())
         for folder in self._studies.iterdir():
-            for path in [folder] if folder.name not in named else list(folder.iterdir()):
-                if path.name in named.get(folder.name, ()) or time.time() - path.stat().st_mtime < ABANDONED:
-                    continue
-                if path.is_dir():
-                    shutil.rmtree(path, ignore_errors=True)
-                else:
-                    path.unlink(missing_ok=True)
+            if folder.name in named:
+                left += [path for path in folder.iterdir() if path.name not in named[folder.name]]
+            else:
+                left.append(folder)
+        for path in left:
+            if time.time() - path.stat().st_mtime < ABANDONED:
+                continue
+            if path.is_dir():
+                shutil.rmtree(path, ignore_errors=True)
+            else:
+                path.unlink(missing_ok=True)
 
 
 def _damaged(name: str, path: Path) -> Refusal:

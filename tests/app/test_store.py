@@ -345,13 +345,14 @@ class TestFolder:
         old, new = files.unfinished(store.files(study.key)), files.unfinished(store.files(study.key))
         abandoned = store.folder / "studies" / "abandoned"
         abandoned.mkdir()
-        for path in (old, new, abandoned / "records.parquet"):
+        upload = store.incoming / "upload"
+        for path in (old, new, upload, abandoned / "records.parquet"):
             path.write_bytes(b"left")
-        for path in (old, abandoned, store.records(study.key)):
+        for path in (old, upload, abandoned, store.records(study.key)):
             os.utime(path, (0, 0))
         store.close()
         Store(store.folder).close()
-        assert (old.exists(), new.exists(), abandoned.exists()) == (False, True, False)
+        assert (old.exists(), upload.exists(), new.exists(), abandoned.exists()) == (False, False, True, False)
         assert store.records(study.key).exists()
 
 
