@@ -61,7 +61,7 @@ def answer_foot(request: Request, key: str) -> Response:
     look = "font: 9pt sans-serif; color: #50555C"
     text = (
         f'@page answer {{ @bottom-left {{ content: "{words}"; {look}; }} '
-        f'@bottom-right {{ content: counter(page) " of " counter(pages); {look}; }} }}\n.one {{ page: answer; }}\n'
+        f'@bottom-right {{ content: counter(page) " of " counter(pages); {look}; }} }}\nbody {{ page: answer; }}\n'
     )
     return Response(text, media_type="text/css", headers={"Cache-Control": "no-store"})
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from datetime import date
 from importlib import metadata
@@ -105,7 +106,8 @@ def order_lines(asked: Asked) -> list[str]:
     if order.changeable:
         lines.append(f"Changeable: {listing(order.changeable)}.")
     outcomes = []
-    for column, better in order.outcomes.items():
+    for column in asked.spine.outcomes:
+        better = order.outcomes[column]
         direction = isinstance(better, Direction)
         what = ("more" if better is Direction.MORE else "less") if direction else either(better)  # type: ignore[arg-type]
         outcomes.append(f"{column} ({what} is better)")
@@ -122,23 +124,37 @@ def links(asked: Asked) -> tuple[list[Link], list[Link]]:
 
 
 def _through(asked: Asked) -> set[tuple[str, str]]:
-    """Links on a path between any two of the columns in question, among these and what comes before them.
+    """With levers: links from the levers, from the pins and from what leads to a lever, on to the watched column.
 
-    Where nothing is pinned or set: the links that meet the watched column.
+    With pins alone, what is seen tells both ways: links on any path between the columns in question, among these and
+    what comes before them. Where nothing is asked: the links that meet the watched column.
     """
-    network, every = asked.spine.model.network, asked.spine.model.links
-    asked_about = list(dict.fromkeys((*asked.question.levers, *asked.question.pins, asked.watch)))
-    if len(asked_about) < 2:
-        return {link for link in every if asked.watch in link}
-    bearing = {*asked_about}
-    for column in network.names:
-        if network.descendants([column]) & set(asked_about):
-            bearing.add(column)
-    near = [link for link in every if set(link) <= bearing]
+    question, every = asked.question, asked.spine.model.links
+    if question.levers:
+        parents = {(source, target) for source, target in every if target in question.levers}
+        kept = [(source, target) for source, target in every if target not in {*question.pins, *question.levers}]
+        start = {*question.levers, *question.pins, *(source for source, _ in parents)}
+        ahead = _reached(start, kept)
+        behind = _reached({asked.watch}, [(target, source) for source, target in kept])
+        return parents | {(source, target) for source, target in kept if source in ahead and target in behind}
+    columns = [*question.pins, asked.watch]
+    near = [link for link in every if set(link) <= _reached(set(columns), [(end, start) for start, end in every])]
     found: set[tuple[str, str]] = set()
-    for place, start in enumerate(asked_about):
-        for end in asked_about[place + 1 :]:
-            found |= between(near, start, end)
+    for place, one in enumerate(columns):
+        for other in columns[place + 1 :]:
+            found |= between(near, one, other) if one != other else set()
+    return found if question.pins else {link for link in every if asked.watch in link}
+
+
+def _reached(start: set[str], links: Sequence[tuple[str, str]]) -> set[str]:
+    """Columns that the links lead to from any of `start`, these included."""
+    found, waiting = set(start), list(start)
+    while waiting:
+        here = waiting.pop()
+        for source, target in links:
+            if source == here and target not in found:
+                found.add(target)
+                waiting.append(target)
     return found
 
 
@@ -165,9 +181,14 @@ def data(asked: Asked, study: Study, table: Table) -> list[tuple[str, str]]:
         ("columns", f"{len(used)} used of {len(table.columns)}" + (f"; left out: {listing(out, 12)}" if out else "")),
         ("blanks", f"{listing(blanks, 12)}; a level of their own, unless their rows are left out" if blanks else "few"),
         ("small counts", f"under {SMALL_COUNT} are not printed"),
-        ("file", f"{study.source}, with its choices sha256 {study.digest}"),
+        ("file", f"{study.source}; with what was chosen for its columns sha256 {_short(study.digest)}"),
     ]
     return lines
+
+
+def _short(digest: str) -> str:
+    """The first sixteen digits, in fours."""
+    return f"{' '.join(digest[start : start + 4] for start in range(0, 16, 4))} …"
 
 
 def _dropped(table: Table) -> list[tuple[str, str]]:

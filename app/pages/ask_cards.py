@@ -82,9 +82,7 @@ def card_of(asked: Asked, address: Address, column: str) -> Card:
         name=column,
         slug=slug,
         pinned=None if pinned is None else _pinned_words(asked, pinned),
-        set_to=None
-        if lever is None
-        else f"to {lever[0]} for {reach_words(lever[1])}" + _withheld(asked, "its effect is"),
+        set_to=None if lever is None else _set_words(asked, *lever),
         state=_state(asked, column),
         told=_told(asked, address, column),
         narrow=pinned is not None and lever is None,
@@ -183,7 +181,7 @@ def _pinned_words(asked: Asked, levels: Sequence[str]) -> str:
 
 
 def _set_words(asked: Asked, level: str, reach: float) -> str:
-    return f"to {level} for {reach_words(reach)}{_withheld(asked, 'its effect is')}"
+    return f"to {level} for {reach_words(reach)}{' · its effect is withheld' if asked.blocked else ''}"
 
 
 def _watch(asked: Asked, address: Address, column: str) -> Act | None:
@@ -200,22 +198,18 @@ def _state(asked: Asked, column: str) -> str:
     words = []
     if column == asked.watch or column in asked.spine.outcomes:
         words.append("watched outcome" if better is not None else "watched")
-    if isinstance(better, Direction):
+    if column in asked.watched and asked.blocked:
+        words.append("if set: withheld")
+    elif isinstance(better, Direction):
         words.append("more is better" if better is Direction.MORE else "less is better")
     elif better is not None:
         words.append(f"{either(better)} is better")
     if column in asked.spine.changeable and column not in asked.question.levers:
         words.append("changeable")
-    if column in asked.watched:
-        words += [text for text in [_withheld(asked, "if set:").removeprefix(" · ")] if text]
     if not words and column not in asked.question.pins and column not in asked.question.levers:
         kind = asked.spine.nodes[column].kind
         words.append("number, in bands" if kind == "number" else kind)
     return " · ".join(words)
-
-
-def _withheld(asked: Asked, words: str) -> str:
-    return f" · {words} withheld" if asked.blocked else ""
 
 
 def _told(asked: Asked, address: Address, column: str) -> tuple[tuple[str, tuple[tuple[str, str], ...], int], ...]:
