@@ -137,7 +137,7 @@ def headline(view: ModelView) -> tuple[str, str]:
         than = "fewer" if view.links < view.recommended else "more"
         said = f"{'is' if one else 'are'} {than} than the {view.recommended} that unseen records call for."
     exact = " No allowed model of this size scores higher." if view.exact else ""
-    return f"{view.links} {plural(view.links, 'link')}", said + exact
+    return f"{view.links or 'No'} {plural(view.links, 'link')}", said + exact
 
 
 def deck(view: ModelView) -> str:
