@@ -6,7 +6,7 @@ import math
 import unicodedata
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field, replace
-from urllib.parse import quote, urlencode
+from urllib.parse import quote
 
 from engine.refusal import Refusal
 
@@ -88,9 +88,13 @@ class Names:
         self.levels = {name: tuple(levels) for name, levels in columns}
         self._places = {name: place for place, name in enumerate(self.columns)}
         self.slugs = dict(zip(self.columns, slugs(self.columns, "column"), strict=True))
+        self.quoted = {name: quote(slug) for name, slug in self.slugs.items()}
         self._named = {slug: name for name, slug in self.slugs.items()}
         self.level_slugs = {
             name: dict(zip(levels, slugs(levels, "level"), strict=True)) for name, levels in self.levels.items()
+        }
+        self.quoted_levels = {
+            name: {level: quote(slug) for level, slug in found.items()} for name, found in self.level_slugs.items()
         }
         self._levels_named = {
             name: {slug: level for level, slug in found.items()} for name, found in self.level_slugs.items()
@@ -141,25 +145,25 @@ def parse(parameters: Iterable[tuple[str, str]], names: Names) -> Question:
 
 def query(question: Question, names: Names) -> str:
     """The question as the part of an address after "?"; empty when nothing is asked."""
-    pairs: list[tuple[str, str]] = []
+    slugs_of, parts = names.quoted, []
     for column in names.ordered(question.pins):
-        levels = [slug for level, slug in names.level_slugs[column].items() if level in question.pins[column]]
-        pairs.append(("pin", ".".join([names.slugs[column], *levels])))
+        levels = [slug for level, slug in names.quoted_levels[column].items() if level in question.pins[column]]
+        parts.append(f"pin={'.'.join([slugs_of[column], *levels])}")
     for column in names.ordered(question.levers):
         level, reach = question.levers[column]
-        pairs.append(("set", f"{names.slugs[column]}.{names.level_slugs[column][level]}"))
+        parts.append(f"set={slugs_of[column]}.{names.quoted_levels[column][level]}")
         if reach != 1.0:
-            pairs.append(("reach", f"{names.slugs[column]}.{per_cent(reach)}"))
+            parts.append(f"reach={slugs_of[column]}.{per_cent(reach)}")
     if question.watch is not None:
-        pairs.append(("watch", names.slugs[question.watch]))
+        parts.append(f"watch={slugs_of[question.watch]}")
     for key, chosen in (("open", question.opened), ("fold", question.folded), ("whole", question.whole)):
         if chosen:
-            pairs.append((key, ".".join(names.slugs[column] for column in names.ordered(chosen))))
+            parts.append(f"{key}={'.'.join(slugs_of[column] for column in names.ordered(chosen))}")
     if question.find:
-        pairs.append(("find", question.find))
+        parts.append(f"find={quote(question.find, safe='')}")
     if question.show != SHOWS[0]:
-        pairs.append(("show", question.show))
-    return urlencode(pairs, quote_via=quote)
+        parts.append(f"show={question.show}")
+    return "&".join(parts)
 
 
 def url(key: str, question: Question, names: Names, page: str = "ask") -> str:

@@ -9,7 +9,7 @@ from typing import Literal
 
 from markupsafe import Markup
 
-from app.drawing.svg import INK, LINE, PAPER, join, line, percent, tag
+from app.drawing.svg import INK, LINE, PAPER, join, percent, tag
 
 World = Literal["recorded", "among", "set"]
 FIRST, STEP, BELOW, FIGURES = 16, 32, 34, 29  # px: the first row, between rows, under the rule, baseline of figures
@@ -46,10 +46,8 @@ def answer_beam(marks: Sequence[Mark], told: str, compared: tuple[World, World] 
         drawn.append(_between(places[compared[0]], places[compared[1]], rule))
     for mark, y in places.values():
         x = percent(mark.share)
-        drawn.append(line(x, x, y, rule, stroke=COLOURS[mark.world], stroke_width=1.5))
-    for mark, y in places.values():
-        drawn += [_whisker(mark, y), _shape(mark, y), _label(mark, y)]
-    drawn += [line(0, "100%", rule, rule, stroke_width=3), graduation(rule)]
+        drawn.append(_line(x, x, y, rule, 1.5, COLOURS[mark.world]))
+    drawn += [_line("0", "100%", rule, rule, 3), graduation(rule)]
     return tag("svg", *drawn, class_="beam", height=rule + BELOW, role="img", aria_label=told)
 
 
@@ -58,14 +56,21 @@ def graduation(rule: int) -> Markup:
     """Ticks at each 1, 5 and 10 points and figures at each 10, under a rule at height `rule`."""
     drawn: list[Markup] = []
     for point in range(101):
-        length, width, narrow = (12, 1.5, None) if point % 10 == 0 else (8, 1, None) if point % 5 == 0 else (4, 1, "t1")
-        drawn.append(line(f"{point}%", f"{point}%", rule, rule + length, stroke_width=width, class_=narrow))
+        length, width, narrow = (12, 1.5, "") if point % 10 == 0 else (8, 1.0, "") if point % 5 == 0 else (4, 1.0, "t1")
+        drawn.append(_line(f"{point}%", f"{point}%", rule, rule + length, width, shown=narrow))
     for point in range(0, 101, 10):
         anchor = "start" if point == 0 else "end" if point == 100 else "middle"
         words = f"{point}%" if point in (0, 100) else str(point)
         classes = "figure t10" if point % 20 else "figure"
         drawn.append(tag("text", words, class_=classes, x=f"{point}%", y=rule + FIGURES, text_anchor=anchor))
     return join(drawn)
+
+
+def _line(x1: str, x2: str, y1: float, y2: float, width: float, colour: str = INK, shown: str = "") -> Markup:
+    """A line; numbers and fixed words only, so that nothing in it needs escaping."""
+    named = f' class="{shown}"' if shown else ""
+    place = f'x1="{x1}" x2="{x2}" y1="{y1:g}" y2="{y2:g}"'
+    return Markup(f'<line {place} stroke="{colour}" stroke-width="{width:g}"{named}/>')
 
 
 def _between(start: tuple[Mark, int], end: tuple[Mark, int], rule: int) -> Markup:
@@ -88,9 +93,9 @@ def _whisker(mark: Mark, y: int) -> Markup:
     low, high = percent(mark.low), percent(mark.high)
     return join(
         [
-            line(low, high, y, y, stroke_width=2.5),
-            line(low, low, y - 5, y + 5, stroke_width=1.5),
-            line(high, high, y - 5, y + 5, stroke_width=1.5),
+            _line(low, high, y, y, 2.5),
+            _line(low, low, y - 5, y + 5, 1.5),
+            _line(high, high, y - 5, y + 5, 1.5),
         ]
     )
 
@@ -106,17 +111,35 @@ def _shape(mark: Mark, y: int) -> Markup:
     return tag("svg", shape, x=percent(mark.share), y=y, overflow="visible")
 
 
-def _label(mark: Mark, y: int) -> Markup:
-    """Past the whisker on the right, or on the left where it would run past 100 %; both where only 360 px is tight."""
+def _label(mark: Mark, y: int, stems: Sequence[float]) -> Markup:
+    """Past the whisker, where it does not run over an end or across the stem of a mark above.
+
+    Where a wide page and 360 px need different places both are drawn, and the stylesheet shows one.
+    stems: shares of the marks above, whose stems pass this row.
+    """
     right, left = max(mark.high, mark.share), min(mark.low, mark.share)
+    wide = _side(left, right, WIDE, stems)
     narrow = NARROW[mark.world]
-    if right + narrow <= 1:
-        return _words(mark, y, right, "right")
-    if left - narrow >= 0:
-        return _words(mark, y, left, "left")
-    wide = _words(mark, y, right, "right", "wide") if right + WIDE <= 1 else _words(mark, y, left, "left", "wide")
-    roomier = _words(mark, y, right, "right", "slim") if 1 - right > left else _words(mark, y, left, "left", "slim")
-    return join([wide, roomier])
+    if right + narrow <= 1 or left - narrow >= 0:
+        slim, words = ("right" if right + narrow <= 1 else "left"), "narrow"
+    else:
+        slim, words = ("right" if 1 - right > left else "left"), "slim"
+    if wide == slim and words == "narrow":
+        return _words(mark, y, right if wide == "right" else left, wide)
+    sides = (("wide", wide), (words, slim))
+    return join([_words(mark, y, right if side == "right" else left, side, shown) for shown, side in sides])
+
+
+def _side(left: float, right: float, width: float, stems: Sequence[float]) -> str:
+    fits = {"right": right + width <= 1, "left": left - width >= 0}
+    crossed = {
+        "right": any(right < stem < right + width for stem in stems),
+        "left": any(left - width < stem < left for stem in stems),
+    }
+    for side in ("right", "left"):
+        if fits[side] and not crossed[side]:
+            return side
+    return "right" if fits["right"] else "left"
 
 
 def _words(mark: Mark, y: int, at: float, side: str, shown: str | None = None) -> Markup:
@@ -128,6 +151,6 @@ def _words(mark: Mark, y: int, at: float, side: str, shown: str | None = None) -
         figure,
         x=12 if side == "right" else -12,
         text_anchor=None if side == "right" else "end",
-        class_=shown,
+        class_="slim" if shown == "narrow" else shown,
     )
     return tag("svg", text, x=percent(at), y=y + 5.5, overflow="visible")
