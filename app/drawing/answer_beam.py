@@ -47,6 +47,10 @@ def answer_beam(marks: Sequence[Mark], told: str, compared: tuple[World, World] 
     for mark, y in places.values():
         x = percent(mark.share)
         drawn.append(_line(x, x, y, rule, 1.5, COLOURS[mark.world]))
+    above: list[float] = []
+    for mark, y in places.values():
+        drawn += [_whisker(mark, y), _shape(mark, y), _label(mark, y, above)]
+        above.append(mark.share)
     drawn += [_line("0", "100%", rule, rule, 3), graduation(rule)]
     return tag("svg", *drawn, class_="beam", height=rule + BELOW, role="img", aria_label=told)
 

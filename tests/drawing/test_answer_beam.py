@@ -49,10 +49,20 @@ def test_the_two_that_are_compared_are_joined():
 
 
 def test_a_label_stands_right_unless_it_would_run_past_the_end():
-    assert labels(beam(RECORDED))[0][1:] == ("59.00%", "left", None)
+    assert labels(beam(RECORDED))[0][1:] == ("63.00%", "right", "wide")
+    assert labels(beam(RECORDED))[1][1:] == ("59.00%", "left", "slim")
     assert labels(beam(SET))[0][1:] == ("68.00%", "right", None)
     low = Mark("recorded", "as recorded", "12%", 0.12, 0.1, 0.14)
     assert labels(beam(low))[0][1:] == ("14.00%", "right", None)
+
+
+def test_a_label_keeps_clear_of_the_stem_of_a_mark_above():
+    low = Mark("recorded", "as recorded", "61%", 0.61, 0.6, 0.62)
+    under = Mark("among", "among these", "45%", 0.45, 0.44, 0.46)
+    wide = [(place, side) for _, place, side, shown in labels(beam(low, under)) if shown != "slim"]
+    assert wide == [("62.00%", "right"), ("44.00%", "left")]
+    free = Mark("recorded", "as recorded", "80%", 0.8, 0.79, 0.81)
+    assert ("46.00%", "right") in [place[1:3] for place in labels(beam(free, under))]
 
 
 def test_where_a_narrow_page_is_too_tight_it_gets_the_figure_alone():
