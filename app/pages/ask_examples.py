@@ -32,13 +32,13 @@ def _tries(sample: str) -> tuple[Mapping[str, Mapping[str, object]], ...]:
 
 
 def _question(said: Mapping[str, Mapping[str, object]]) -> Question:
-    pins = {column: tuple(map(str, levels)) for column, levels in said.get("pins", {}).items() if _is_list(levels)}
+    pins = {
+        column: tuple(str(level) for level in levels)
+        for column, levels in said.get("pins", {}).items()
+        if isinstance(levels, list)
+    }
     levers = {column: (str(level), 1.0) for column, level in said.get("levers", {}).items()}
     return Question(pins, levers)
-
-
-def _is_list(levels: object) -> bool:
-    return isinstance(levels, list)
 
 
 def _fits(spine: Spine, question: Question) -> bool:
