@@ -165,7 +165,7 @@ def _fit(widths: list[int]) -> float:
 
 def _fast(body: bytes, mark: str, width: int) -> list[pa.Array] | None:
     """The columns, or None where something does not fit."""
-    if not body.strip():
+    if not body.strip(b"\r\n"):
         return [pa.array([], pa.string())] * width
     names = [str(place) for place in range(width)]
     try:
@@ -204,7 +204,7 @@ def _slow(text: str, mark: str, names: list[str], name: str, above: int) -> list
         )
     if misfits:
         raise _misfit(misfits, rows, mark, name)
-    return [pa.array(column, pa.string()) for column in zip(*rows[1:], strict=True)]
+    return [pa.array([row[place] for row in rows[1:]], pa.string()) for place in range(len(names))]
 
 
 def _stays_open(text: str, began: int, mark: str) -> bool:

@@ -41,6 +41,9 @@ _LEADING_ZERO = r"[+-]?0\d+([.,]\d+)?"
 _LONG = r"[+-]?\d{16,}"  # more digits than a number can hold
 
 
+_NOTHING = pa.array([""], pa.string())
+
+
 class Style(Enum):
     """How a column writes its numbers."""
 
@@ -151,13 +154,15 @@ def _surely_point(read: _Read) -> bool:
 
 def _column(
     read: _Read, commas: bool, surely: bool, line: Callable[[int], str]
-) -> tuple[NDArray[np.generic], tuple[str, ...]]:
-    """float64 or object cells, and what was read into them. commas: the file writes decimal commas, surely or not."""
+) -> tuple[NDArray[np.float64] | pd.Series, tuple[str, ...]]:
+    """Numbers or texts, blank where there is no value, and what was read into them.
+
+    commas: the file writes decimal commas, as far as is known.  surely: a column leaves no doubt of it.
+    """
     numbers, said = _numbers(read, commas, surely)
     if numbers is None:
-        cells = np.full(len(read.texts) + 1, None, dtype=object)
-        cells[:-1][~read.blank] = np.asarray(read.texts, dtype=object)[~read.blank]
-        return np.asarray(cells[read.codes]), (*said, *_odd_one_out(read, line))
+        texts = pc.if_else(pa.array(np.append(read.blank, True)), None, pa.concat_arrays([read.texts, _NOTHING]))
+        return texts.take(pa.array(read.codes)).to_pandas(), (*said, *_odd_one_out(read, line))
     values = np.full(len(read.texts) + 1, np.nan)
     values[:-1][~read.blank] = numbers
     return np.asarray(values[read.codes]), said

@@ -75,6 +75,12 @@ def sheet_cells(content: bytes, name: str) -> Sheet:
 
 def _check(content: bytes, name: str) -> bool:
     """Whether any sheet holds a formula. Raises Refusal for what is no packed file or unpacks too large."""
+    if content.startswith(b"\xd0\xcf\x11\xe0"):
+        raise Refusal(
+            f"“{name}” is an old spreadsheet (.xls) or one with a password.",
+            where=name,
+            do="Save it as XLSX without a password, or as CSV.",
+        )
     try:
         with zipfile.ZipFile(io.BytesIO(content)) as packed:
             entries = packed.infolist()
