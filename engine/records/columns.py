@@ -93,10 +93,22 @@ def column_of(taken: Taken, kept: NDArray[np.bool_]) -> Column:
 
 
 def _kind(name: str, choice: Choice, guessed: Guess) -> Kind:
+    implied: Kind | None = "number" if choice.cuts is not None else "grade" if choice.grades is not None else None
+    if choice.cuts is not None and choice.grades is not None:
+        raise Refusal(
+            f"“{name}” has both cuts and an order of its levels.",
+            where=name,
+            do="Give cuts for a number, or an order for a grade.",
+        )
     if choice.kind is None:
-        if guessed.kind != "left out" and choice.cuts is not None:
-            return "number"
-        return "grade" if guessed.kind != "left out" and choice.grades is not None else guessed.kind
+        return implied or guessed.kind
+    if implied is not None and choice.kind in ("category", "grade", "number") and choice.kind != implied:
+        what = "cuts, which only a number" if implied == "number" else "an order of its levels, which only a grade"
+        raise Refusal(
+            f"“{name}” is to be a {choice.kind} but comes with {what} has.",
+            where=name,
+            do=f"Make it a {implied}, or take them away.",
+        )
     if choice.kind in LATER_KINDS:
         raise Refusal(
             f"“{name}” cannot be taken as a {choice.kind} yet.",

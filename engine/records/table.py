@@ -16,7 +16,7 @@ from engine.records.bands import is_range, level_positions, range_ends
 from engine.records.cells import Cells, cells
 from engine.records.column import SMALL_COUNT, Coded, Column, Kind
 from engine.records.columns import Choice, column_of, take
-from engine.records.wording import listing
+from engine.records.wording import listing, people
 from engine.refusal import Refusal
 
 __all__ = ["SMALL_COUNT", "Coded", "Column", "Kind", "Table"]
@@ -77,7 +77,8 @@ class Table:
                 do="Let blanks be a level of their own in some columns.",
             )
         columns = {column: column_of(each, kept) for column, each in taken.items()}
-        return cls(name, frame, columns, kept, dropped, np.ones(rows), tuple(warnings))
+        said = (*warnings, *_rows_left_out(kept, dropped))
+        return cls(name, frame.copy(deep=False), columns, kept, dropped, np.ones(rows), said)
 
     @property
     def rows(self) -> int:
@@ -153,13 +154,23 @@ def _check(frame: pd.DataFrame, chosen: Mapping[str, Mapping[str, object]]) -> N
             where="records",
             do="Bring a table with one row for each record, under a line of column names.",
         )
-    names: set[str] = set()
-    for name in frame.columns:
+    bare: dict[str, str] = {}
+    for place, name in enumerate(frame.columns):
         if not isinstance(name, str):
             raise Refusal(f"The column name {name!r} is not a text.", where=str(name), do="Name columns with words.")
-        if name in names:
-            raise Refusal(f"Two columns are called “{name}”.", where=name, do="Give each column a name of its own.")
-        names.add(name)
+        if not name:
+            raise Refusal(
+                f"Column {place + 1} has no name.", where=f"column {place + 1}", do="Name columns with words."
+            )
+        if name.strip() in bare:
+            spaces = "" if bare[name.strip()] == name else ", but for spaces around the name"
+            raise Refusal(
+                f"Two columns are called “{name.strip()}”{spaces}.",
+                where=name,
+                do="Give each column a name of its own.",
+            )
+        bare[name.strip()] = name
+    names = set(bare.values())
     for what, choices in chosen.items():
         for name in choices:
             if name not in names:
@@ -168,6 +179,16 @@ def _check(frame: pd.DataFrame, chosen: Mapping[str, Mapping[str, object]]) -> N
                     where=name,
                     do=f"Its columns are {listing(list(frame.columns), 12)}.",
                 )
+
+
+def _rows_left_out(kept: NDArray[np.bool_], dropped: Mapping[str, int]) -> tuple[str, ...]:
+    """How many rows are left out in all, and how many for each column."""
+    out = int((~kept).sum())
+    if not out:
+        return ()
+    causes = listing([f"“{name}” in {people(rows, SMALL_COUNT)}" for name, rows in dropped.items()], 12)
+    said = f"{people(out, SMALL_COUNT)} of {kept.size:,} rows are left out because of a blank: {causes}."
+    return (said[0].upper() + said[1:],)
 
 
 def _one_nan(values: NDArray[np.float64]) -> NDArray[np.float64]:
