@@ -5,6 +5,7 @@ from __future__ import annotations
 import html
 import re
 from collections.abc import Iterator
+from datetime import UTC, datetime
 from pathlib import Path
 from urllib.parse import urlsplit
 
@@ -12,6 +13,7 @@ import pytest
 from fastapi import FastAPI
 from fastapi.testclient import TestClient
 
+from app.jobs import JobState
 from app.store import Choices, Plan, Store, Study
 from tests.app.evening import PLAN, evening, keep_a_model
 
@@ -285,6 +287,29 @@ def test_without_a_model_the_page_says_what_comes_first(client, store):
     page = client.get(f"/study/{ordered.key}/ask").text
     assert "has no model yet" in page and f'href="/study/{ordered.key}/model">Go to Model' in page
     assert client.get(f"/study/{ordered.key}/answer").status_code == 409
+
+
+@pytest.mark.parametrize(
+    ("job", "says"),
+    [
+        (JobState("running", 0.4, "Counting families", (), datetime.now(UTC)), "is being learned"),
+        (
+            JobState("failed", 0.4, "Counting", (), datetime.now(UTC), "Learning ran out.", None, "Try again."),
+            "ran out",
+        ),
+    ],
+)
+def test_while_learning_the_page_says_how_far_it_is_or_why_it_stopped(client, store, monkeypatch, job, says):
+    study = store.bring("Waiting", evening(60), "evening.csv", Choices(), PLAN)
+    monkeypatch.setattr(client.app.state.jobs, "state", lambda key: job)
+    page = client.get(f"/study/{study.key}/ask?{NIGHTS}&{MENTOR}").text
+    assert says in words(page, "<h1[^>]*>(.*?)</h1>")
+    if job.state == "running":
+        assert "40 of 100 done: Counting families" in page and "/learn/cancel" in page
+        assert f'hx-get="/study/{study.key}/ask?{NIGHTS}&amp;{MENTOR}"' in page
+        assert '<noscript><meta http-equiv="refresh"' in page
+    else:
+        assert "Try again." in page and f'href="/study/{study.key}/model"' in page
 
 
 def test_an_old_model_still_answers_and_says_that_it_is_old(client, store):
