@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from dataclasses import dataclass
 
 from app.pages import order_text
@@ -69,18 +70,18 @@ class OrderView:
 def view(study: Study, table: Table) -> OrderView:
     """The page for `study`, whose plan is an order."""
     plan, order = study.plan, study.plan.order()
-    allows = order.allows()
-    allowed = allows[allows["allowed"]]
-    into = allowed["target"].map(order.stage_of).value_counts()
+    pairs = [(source, target) for source in order.columns for target in order.columns if source != target]
+    targets = [target for source, target in pairs if order.may_lead(source, target)]
+    into = Counter(order.stage_of(target) for target in targets)
     places = {name: place for place, name in enumerate(table.columns)}
-    lanes = tuple(_lane(plan, table, places, stage, int(into.get(stage, 0))) for stage in range(len(plan.stages)))
+    lanes = tuple(_lane(plan, table, places, stage, into[stage]) for stage in range(len(plan.stages)))
     widest = max((len(columns) for _, columns in plan.stages), default=0)
     return OrderView(
         lanes=lanes,
         rules=_rules(plan),
         columns=tuple((places[name], name) for name in plan.columns),
-        possible=count(len(allows)),
-        allowed=count(len(allowed)),
+        possible=count(len(pairs)),
+        allowed=count(len(targets)),
         ruled_out=_ruled_out(order),
         widest=widest,
         too_wide=_too_wide(plan),

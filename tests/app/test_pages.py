@@ -68,6 +68,15 @@ def test_a_table_is_brought_and_its_records_are_shown(client: TestClient, visits
     assert "spring visits.csv" in answer.text
 
 
+def test_a_table_of_columns_that_never_vary_is_shown_and_leads_nowhere_else(client: TestClient, shelf: Store) -> None:
+    same = shelf.bring("Same", pd.DataFrame({"town": ["Tern"] * 30, "year": ["2025"] * 30}), "same.csv")
+    assert client.get(f"/study/{same.key}/records").status_code == 200
+    page = client.get(f"/study/{same.key}/order")
+    assert page.status_code == 200
+    assert "No column can be put in order" in page.text
+    assert f'href="/study/{same.key}/records">Go to Records' in page.text
+
+
 def test_a_study_without_a_typed_name_is_called_after_its_file(client: TestClient, visits: pd.DataFrame) -> None:
     sent = {"file": ("spring_visits.csv", visits.to_csv(index=False), "text/csv")}
     assert str(client.post("/bring", files=sent).url).endswith("/study/spring-visits/records")
