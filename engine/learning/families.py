@@ -122,6 +122,17 @@ class Families:
                 return tuple(int(c) for c in (*group.earlier[earlier[0]], *group.own[inside[own[0]]]))
         raise AssertionError("a score without a family")
 
+    def by_mates(self) -> dict[tuple[int, ...], tuple[tuple[Ints, Ints], Floats]]:
+        """The families by their parents in the stage: (earlier parents, the family each belongs to), and the scores."""
+        found: dict[tuple[int, ...], list[_Group]] = {}
+        rows: dict[tuple[int, ...], list[int]] = {}
+        for group in self._groups():
+            for row, own in enumerate(group.own):
+                mates = tuple(int(column) for column in own)
+                found.setdefault(mates, []).append(group)
+                rows.setdefault(mates, []).append(row)
+        return {mates: _gathered(groups, rows[mates]) for mates, groups in found.items()}
+
     def left_out(self) -> int:
         """Families too large to count."""
         return sum(int(np.isneginf(group.scores).sum()) for group in self._groups())
@@ -151,6 +162,13 @@ class Families:
         base = self.scores.by_size[count][self.part][before[None, :] + without[:, None]]
         family = self.scores.by_size[count + 1][self.part][before[None, :] + with_child[:, None]]
         return np.where(np.isneginf(family), -np.inf, family - np.where(np.isneginf(base), 0.0, base))
+
+
+def _gathered(groups: list[_Group], rows: list[int]) -> tuple[tuple[Ints, Ints], Floats]:
+    scores = [group.scores[row] for group, row in zip(groups, rows, strict=True)]
+    sizes = np.repeat([group.earlier.shape[1] for group in groups], [len(each) for each in scores])
+    columns = np.concatenate([group.earlier.reshape(-1) for group in groups])
+    return (columns, np.repeat(np.arange(sizes.size), sizes)), np.concatenate(scores)
 
 
 def _choices(columns: tuple[int, ...], count: int, insisted: frozenset[int] | set[int]) -> Ints:

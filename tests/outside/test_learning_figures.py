@@ -8,7 +8,9 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from engine.learning.families import candidates
 from engine.learning.learn import learn_coded
+from engine.learning.posterior import posterior
 from engine.learning.scores import set_scores
 from engine.network.equivalence import unsettled_links
 from engine.network.network import Category, Network
@@ -150,6 +152,21 @@ def test_best_networks_of_the_survey_are_those_of_enumeration(staging, ess):
     assert {frozenset(link) for link in ours} == {frozenset(link) for link in best}
     settled = set(best) - unsettled_links(best, order.may_lead)
     assert settled == set(ours) - unsettled_links(ours, order.may_lead)
+
+
+@pytest.mark.parametrize(("staging", "ess"), [("one stage", 1), ("one stage", 10), ("three stages", 1)])
+def test_support_in_the_survey_is_that_of_every_network_weighed(staging, ess):
+    names, levels, codes = records("every-network")
+    order = Order([("All", names)] if staging == "one stage" else CASES["every-network"]["stages"])
+    places = [names.index(name) for name in order.columns]
+    counts = ArrayCounts(codes[:, places], [levels[place] for place in places])
+    scores = set_scores(counts, 4, float(ess))
+    found = posterior(candidates(order, 3), scores, 3, 0, np.random.default_rng(0))
+    told = list(figures("every-network", starting=f"{staging}, ess {ess}: support of "))
+    assert len(told) == (12 if staging == "one stage" else 7)
+    for each in told:
+        source, target = (order.columns.index(name) for name in each["name"].rpartition("of ")[2].split(" -> "))
+        assert found.support[source, target] == pytest.approx(each["value"], abs=1e-6)
 
 
 # Credible intervals for shares (conjugate results), through the draws of a network's tables.
