@@ -65,7 +65,7 @@ class Sinks:
         return float(self.forward[-1])
 
     def parents(self) -> Floats:
-        """(width, 2^width) probability, over orders and graphs, that a column has exactly these parents in the stage."""
+        """(width, 2^width) probability, over orders and graphs, that a column has just these parents in the stage."""
         sets = np.arange(1 << self.width)
         found = np.zeros(self.weights.shape)
         for column in range(self.width):
