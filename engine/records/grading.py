@@ -224,6 +224,8 @@ def _ladder(words: list[str]) -> list[float] | None:
         rungs = {word: float(rung) for rung, same in enumerate(ladder) for word in same.split("|")}
         if all(word in rungs for word in words):
             found.append([rungs[word] for word in words])
+    if len(words) < 3 and any(len(word) == 1 for word in words):
+        return None  # m and s may be sizes, or anything
     distinct = [keys for keys in found if len(set(keys)) == len(keys)]
     return distinct[0] if distinct else None
 
