@@ -152,7 +152,7 @@ NUMBER_WORDS = (
 NUMBERED_THINGS = "level|year|grade|stage|step|phase|tier|band|wave|quintile|quartile|decile|week|month|day"
 
 _LOW, _HIGH = (
-    rf"[£$€]?\s*(?P<{end}>[-−]?\d+(?:[.,]\d+)*)\s*(?P<{end}k>[km]?)(?:\s*(?:%|[a-z]+\.?))?"  # a word: years, miles, kg
+    rf"[£$€]?\s*(?P<{end}>[-−]?\d+(?:[.,]\d+)*)(?:(?P<{end}k>[km])(?![a-z]))?(?:\s*(?:%|[a-z]+\.?))?"  # 10k, 5 kg
     for end in ("low", "high")
 )
 _BETWEEN = r"\s*(?:-|–|—|to under|to less than|to below|to|or|and under|up to under)\s*"

@@ -1,5 +1,7 @@
 """The order of levels is read from their names, and only where the names tell it."""
 
+from itertools import pairwise
+
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
@@ -80,7 +82,7 @@ def test_answers_without_a_place_are_set_apart():
 )
 def test_bands_written_as_words_come_back_in_order(edges, words, random):
     edges = sorted(edges)
-    levels = [words.format(low, high) for low, high in zip(edges, edges[1:], strict=False)]
+    levels = [words.format(low, high) for low, high in pairwise(edges)]
     levels = [f"under {edges[0]}", *levels, f"{edges[-1]} and over"]
     shuffled = random.sample(levels, len(levels))
     assert ordered(shuffled) == levels
