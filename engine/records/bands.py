@@ -125,12 +125,13 @@ def is_range(kind: str, wanted: object) -> bool:
     )
 
 
-def range_ends(low: object, high: object) -> tuple[float, float]:
-    """Both ends as numbers, infinite where open. Raises Refusal unless low < high."""
+def range_ends(low: object, high: object, where: str | None = None) -> tuple[float, float]:
+    """Both ends as numbers, infinite where open. Raises Refusal about the column `where` unless low < high."""
     ends = (-math.inf if low is None else float(low), math.inf if high is None else float(high))  # type: ignore[arg-type]
     if not ends[0] < ends[1]:
         raise Refusal(
             f"The range from {_end(ends[0])} to under {_end(ends[1])} holds no value.",
+            where=where,
             do="Give the lower end first; None leaves an end open.",
         )
     return ends

@@ -39,8 +39,8 @@ class Column:
 
     @property
     def has_blank(self) -> bool:
-        """Whether the last level stands for a blank."""
-        return self.blanks > 0 and self.blank == "level" and bool(self.levels) and self.levels[-1].startswith(BLANK)
+        """Whether the last level stands for a blank; where every blank fell in a dropped row, no record holds it."""
+        return bool(self.levels) and self.blanks > 0 and self.blank == "level"
 
 
 @dataclass(frozen=True)

@@ -88,7 +88,8 @@ def column_of(taken: Taken, kept: NDArray[np.bool_]) -> Column:
         warnings += said
     if len(levels) == 1 and not (codes < 0).any():
         warnings.append("Every record that is kept has the same value.")
-    codes, levels = _with_blank(codes, levels)
+    if cells.blanks and taken.blank == "level":
+        codes, levels = _with_blank(codes, levels)
     return Column(name, taken.kind, taken.why, levels, codes, cuts, values, taken.blank, cells.blanks, tuple(warnings))
 
 
@@ -210,9 +211,7 @@ def _given(taken: Taken, present: NDArray[np.bool_]) -> tuple[int, ...]:
 
 
 def _with_blank(codes: NDArray[np.int32], levels: tuple[str, ...]) -> tuple[NDArray[np.int32], tuple[str, ...]]:
-    """Codes of blanks, all under 0, moved to a level of their own where there are any."""
-    if not (codes < 0).any():
-        return codes, levels
+    """Codes of blanks, all under 0, moved to a level of their own."""
     called = BLANK
     while called in levels:
         called = f"{called} (no value)"

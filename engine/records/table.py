@@ -107,7 +107,7 @@ class Table:
         made = self._used(column)
         if is_range(made.kind, wanted):
             assert made.values is not None and isinstance(wanted, tuple)
-            low, high = range_ends(*wanted)
+            low, high = range_ends(wanted[0], wanted[1], column)
             return np.asarray((made.values >= low) & ((made.values < high) | np.isposinf(high)))
         positions = level_positions(made.levels, made.kind, made.cuts, wanted, column)
         return np.isin(made.codes, list(positions))

@@ -12,14 +12,14 @@ def number_text(value: float) -> str:
     """A number as a level's name: the shortest text that reads back as the same number, without ".0"."""
     if value == 0:
         return "0"
-    return f"{int(value)}" if value.is_integer() and abs(value) < 1e15 else repr(float(value))
+    return f"{int(value)}" if value.is_integer() and abs(value) < 1e16 else repr(float(value))
 
 
 def figure(value: float, commas: bool = True) -> str:
     """A number as people read it: every digit it has, a comma between thousands, a true minus sign."""
     if value == 0:
         return "0"
-    if not 1e-6 <= abs(value) < 1e15:
+    if not 1e-6 <= abs(value) < 1e16:
         return repr(float(value)).replace("-", "−")
     exact = Decimal(repr(float(value)))
     exact = exact.quantize(Decimal(1)) if exact == exact.to_integral_value() else exact.normalize()
