@@ -273,3 +273,9 @@ def test_the_digest_changes_with_the_choices_and_the_order_of_rows():
     assert Table.from_frame(ONE, bands={"y": [2]}).digest != digest
     assert Table.from_frame(ONE, {"y": "number"}, blanks={"y": "drop row"}).digest != digest
     assert Table.from_frame(ONE[::-1], {"y": "number"}).digest != digest
+
+
+def test_more_than_fifty_levels_are_refused_however_they_are_chosen():
+    frame = pd.DataFrame({"street": [f"street {n % 51}" for n in range(102)], "y": [1, 2] * 51})
+    with pytest.raises(Refusal, match="“street” has 51 different values; at most 50 can be levels"):
+        Table.from_frame(frame, {"street": "category"})
