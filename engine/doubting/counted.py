@@ -67,9 +67,9 @@ def wilson(held: int, rows: int) -> tuple[float, float]:
 def _counted(held: int, rows: int) -> str:
     """A counted share as a figure, without giving away a count under the limit."""
     if 0 < held < SMALL_COUNT:
-        return f"under {math.ceil(100 * SMALL_COUNT / rows)}%"
+        return f"under {SMALL_COUNT}"
     if 0 < rows - held < SMALL_COUNT:
-        return f"over {math.floor(100 * (rows - SMALL_COUNT) / rows)}%"
+        return "nearly all"
     return _per_cent(held / rows)
 
 

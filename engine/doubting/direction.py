@@ -24,6 +24,8 @@ def check(case: Case) -> Found | None:
         return None
     links = case.network.links
     unsettled = unsettled_links(links, case.order.may_lead)
+    forward = _bearing([(target, source) for source, target in links], {link[::-1] for link in unsettled}, {*levers})
+    watch = tuple(column for column in watch if column in forward)  # whatever is turned, no lever moves the others
     bearing = _bearing(links, unsettled, {*levers, *watch, *case.asked.pins})
     near = [link for link in links if bearing.issuperset(link)]
     met = {link for lever in levers for column in watch for link in between(near, lever, column)} & unsettled

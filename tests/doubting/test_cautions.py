@@ -75,6 +75,56 @@ def test_overlap_of_a_lever_without_parents_looks_at_all_records():
     assert caution.text.startswith("records asked about are compared with fewer than 10 records with lever = on.")
 
 
+def two_offers(both):
+    """Two offers that pass on to `passed`; `both` records had the two of them, each alone was common."""
+    groups = [(both, "yes", "yes"), (200, "yes", "no"), (200, "no", "yes"), (200, "no", "no")]
+    rows = repeated(
+        *[
+            (times, {"mentor": mentor, "group": group, "passed": passed})
+            for n, mentor, group in groups
+            for times, passed in halves(n)
+        ]
+    )
+    stages = [("Offer", ["mentor", "group"]), ("After", ["passed"])]
+    return world(rows, [("mentor", "passed"), ("group", "passed")], stages, {"passed": "yes"})
+
+
+def test_two_values_that_were_never_recorded_together_block():
+    levers = {"mentor": engine.Fix("yes"), "group": engine.Fix("yes")}
+    caution = only(two_offers(both=0).ask(levers=levers), "overlap")
+    assert (caution.rank, caution.figure) == ("blocks", "600 of 600")
+    assert caution.text == (
+        "records asked about are compared with no record with mentor = yes and group = yes together, "
+        "on which passed depends."
+    )
+    assert caution.columns == ("mentor", "group", "passed")
+    assert only(two_offers(both=8).ask(levers=levers), "overlap").rank == "weakens"
+    assert codes_of(two_offers(both=10).ask(levers=levers)) == []
+    assert codes_of(two_offers(both=0).ask(levers={"mentor": engine.Fix("yes")}, watch=["group"])) == []
+
+
+def test_a_value_never_recorded_in_a_group_whose_part_in_the_outcome_differs_blocks():
+    answer = two_offers(both=0).ask({"group": "yes"}, {"mentor": engine.Fix("yes")})
+    caution = only(answer, "overlap")
+    assert (caution.rank, caution.figure) == ("blocks", "200 of 200")
+    assert "alike in group to no record with mentor = yes, on which passed depends." in caution.text
+    assert codes_of(two_offers(both=40).ask({"group": "yes"}, {"mentor": engine.Fix("yes")})) == []
+
+
+def test_two_values_block_where_one_leads_to_the_other_and_they_never_met():
+    rows = repeated(
+        *[
+            (times, {"a": a, "b": b, "out": out})
+            for a, b in (("x", "y"), ("y", "x"), ("y", "y"))
+            for times, out in halves(200)
+        ]
+    )
+    links = [("a", "b"), ("a", "out"), ("b", "out")]
+    model = world(rows, links, [("A", ["a"]), ("B", ["b"]), ("C", ["out"])], {"out": "yes"})
+    caution = model.ask(levers={"a": engine.Fix("x"), "b": engine.Fix("x")}).cautions[0]
+    assert (caution.rank, caution.code, caution.figure) == ("blocks", "overlap", "600 of 600")
+
+
 def pairs(rare):
     """Records of which `rare` have both a = x and b = x."""
     groups = [(rare, ("x", "x")), (200, ("x", "y")), (200, ("y", "x")), (200, ("y", "y"))]
@@ -147,6 +197,14 @@ def test_a_direction_off_every_path_is_not_told():
     assert codes_of(model.ask(levers={"x": engine.Fix("a")})) == []
 
 
+def test_a_direction_is_not_told_of_a_column_that_no_lever_could_move():
+    stages = [("Early", ["y"]), ("Late", ["x", "m", "z"])]
+    model = settling([("y", "x"), ("y", "m"), ("x", "m")], stages)
+    assert "direction" not in [code for _, code in codes_of(model.ask(levers={"x": engine.Fix("a")}, watch=["y"]))]
+    twin = settling([("y", "x"), ("y", "m"), ("x", "m")])
+    assert "direction" in [code for _, code in codes_of(twin.ask(levers={"x": engine.Fix("a")}, watch=["y"]))]
+
+
 def test_an_order_that_settles_every_direction_leaves_nothing_to_tell():
     stages = [("1", ["z"]), ("2", ["x"]), ("3", ["m"]), ("4", ["y"])]
     model = settling([("x", "m"), ("m", "y")], stages)
@@ -184,9 +242,11 @@ def test_a_count_that_the_model_agrees_with_is_not_told():
 def test_a_counted_share_does_not_give_a_small_count_away():
     groups = [(4, {"a": "x", "out": "yes"}), (36, {"a": "x", "out": "no"}), (400, {"a": "y", "out": "yes"})]
     model = world(repeated(*groups), [], [("A", ["a"]), ("B", ["out"])], {"out": "yes"})
-    assert only(model.ask({"a": "x"}), "counted").figure == "under 25%"
+    caution = only(model.ask({"a": "x"}), "counted")
+    assert caution.figure == "under 10"
+    assert caution.text.startswith("of these 40 records have out = yes when counted; the model says")
     model = world(repeated(*groups), [], [("A", ["a"]), ("B", ["out"])], {"out": "no"})
-    assert only(model.ask({"a": "x"}), "counted").figure == "over 75%"
+    assert only(model.ask({"a": "x"}), "counted").figure == "nearly all"
 
 
 def test_wilson_at_ninety_per_cent():
