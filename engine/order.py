@@ -40,8 +40,8 @@ class Order:
     stages: (name, columns) pairs or Stages.  insist, rule_out: (source, target) links.
     changeable: columns that may get a lever.  outcomes: column -> its better level or levels, or MORE or LESS.
 
-    Raises Refusal for a column in two places, for a column that no stage holds, and for links that contradict the
-    stages or each other.
+    Raises Refusal for a column in two places, for a column that no stage holds, for what is no stage, link or better
+    level, and for links that contradict the stages or each other.
     """
 
     stages: tuple[Stage, ...]
@@ -66,11 +66,11 @@ class Order:
             object.__setattr__(self, name, value)
 
         keep("stages", tuple(_stage(stage) for stage in stages))
-        keep("insist", _links(insist))
-        keep("rule_out", _links(rule_out))
+        keep("insist", _links(insist, "insist"))
+        keep("rule_out", _links(rule_out, "rule_out"))
         keep("unrecorded", tuple(unrecorded))
         keep("changeable", tuple(dict.fromkeys(changeable)))
-        keep("outcomes", {column: _better(better) for column, better in (outcomes or {}).items()})
+        keep("outcomes", {column: _better(column, better) for column, better in (outcomes or {}).items()})
         if self.unrecorded:
             raise Refusal(
                 "Unrecorded causes cannot be declared yet.",
@@ -183,20 +183,33 @@ class Order:
 def _stage(stage: Stage | tuple[str, Iterable[str]]) -> Stage:
     if isinstance(stage, Stage):
         return stage
+    if isinstance(stage, str) or len(stage) != 2:
+        raise Refusal(f"{stage!r} is no stage.", where="stages", do='Write ("its name", ["column", "column"]).')
     name, columns = stage
     if isinstance(columns, str):
         columns = (columns,)
     return Stage(str(name), tuple(columns))
 
 
-def _links(links: Iterable[Link]) -> tuple[Link, ...]:
-    return tuple(dict.fromkeys((source, target) for source, target in links))
+def _links(links: Iterable[Link], where: str) -> tuple[Link, ...]:
+    given = list(links)
+    for link in given:
+        if isinstance(link, str) or len(link) != 2:
+            raise Refusal(f"{link!r} is no link.", where=where, do='Write ("earlier column", "later column").')
+    return tuple(dict.fromkeys((source, target) for source, target in given))
 
 
-def _better(better: str | Direction | Iterable[str]) -> Better:
+def _better(column: str, better: str | Direction | Iterable[str]) -> Better:
     if isinstance(better, Direction):
         return better
-    return (better,) if isinstance(better, str) else tuple(better)
+    levels = (better,) if isinstance(better, str) else tuple(better) if isinstance(better, Iterable) else ()
+    if not levels or not all(isinstance(level, str) for level in levels):
+        raise Refusal(
+            f"The outcome “{column}” has no level that counts as better.",
+            where="outcomes",
+            do="Name its better level or levels as texts, or engine.MORE or engine.LESS for a number.",
+        )
+    return levels
 
 
 def _reached(columns: Sequence[str], links: Sequence[Link]) -> dict[str, frozenset[str]]:

@@ -129,6 +129,13 @@ def test_a_reach_that_is_no_probability_is_refused(school, reach):
     refused("reach of mentor", "from 0 to 1", lambda: school.ask(levers={"mentor": engine.Fix("yes", reach)}))
 
 
+@pytest.mark.parametrize("reach", [np.float32(0.5), np.float64(0.5)])
+def test_a_reach_may_be_any_kind_of_number(school, reach):
+    mentor = {"mentor": engine.Fix("yes", reach)}
+    half = {"mentor": engine.Fix("yes", 0.5)}
+    assert school.ask(levers=mentor)["passed"].set.shares == school.ask(levers=half)["passed"].set.shares
+
+
 def test_what_is_no_question_is_refused(school):
     refused("pinned to no level", "north", lambda: school.ask({"region": []}))
     refused("one level only", "no, yes", lambda: school.ask(levers={"mentor": engine.Fix({"no", "yes"})}))

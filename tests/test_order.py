@@ -68,6 +68,10 @@ def test_an_order_survives_pickling():
         ({"insist": [("age", "region"), ("region", "age")]}, "circle"),
         ({"insist": [("age", "age")]}, "itself"),
         ({"unrecorded": [("age", "passed")]}, "cannot be declared yet"),
+        ({"insist": ["ab"]}, "'ab' is no link"),
+        ({"rule_out": [("age",)]}, "is no link"),
+        ({"outcomes": {"passed": []}}, "“passed” has no level that counts as better"),
+        ({"outcomes": {"passed": 1}}, "“passed” has no level that counts as better"),
     ],
 )
 def test_a_contradiction_is_refused_with_a_sentence(more, says):
@@ -80,6 +84,13 @@ def test_a_column_in_two_stages_is_refused():
     with pytest.raises(Refusal, match="twice: in Early and in Late") as refused:
         Order([("Early", ["a", "b"]), ("Late", ["a"])])
     assert refused.value.where == "a"
+
+
+@pytest.mark.parametrize("stage", ["ab", ("Early",), ("Early", ["a"], 3)])
+def test_what_is_no_stage_is_refused(stage):
+    with pytest.raises(Refusal, match="is no stage") as refused:
+        Order([stage])
+    assert refused.value.where and refused.value.do
 
 
 def test_a_name_outside_the_order_is_refused():

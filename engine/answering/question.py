@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Collection, Iterable, Mapping
 from dataclasses import dataclass
+from numbers import Real
 
 from engine.answering.levers import Fix
 from engine.network.network import Category, Network
@@ -129,7 +130,7 @@ def _lever(network: Network, column: str, lever: object, changeable: Collection[
         raise Refusal(
             f"{column} is set by something that is no lever.", where=column, do='Write engine.Fix("a level").'
         )
-    if isinstance(lever.reach, bool) or not isinstance(lever.reach, (int, float)) or not 0.0 <= lever.reach <= 1.0:
+    if isinstance(lever.reach, bool) or not isinstance(lever.reach, Real) or not 0.0 <= lever.reach <= 1.0:
         raise Refusal(
             f"The reach of {column} is {lever.reach}, which is no probability.",
             where=column,
