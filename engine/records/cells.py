@@ -4,13 +4,12 @@ from __future__ import annotations
 
 import datetime
 import decimal
-from collections.abc import Iterable
 from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
 import pandas as pd
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
 from engine.records.wording import number_text
 from engine.refusal import Refusal
@@ -42,7 +41,9 @@ class Cells:
     @cached_property
     def texts(self) -> tuple[str, ...]:
         """Every different value as text: what a level made of it is called."""
-        return tuple(value if isinstance(value, str) else number_text(float(value)) for value in self.distinct)
+        if isinstance(self.distinct, tuple):
+            return self.distinct
+        return tuple(number_text(value) for value in self.distinct.tolist())
 
     @cached_property
     def blank(self) -> NDArray[np.bool_]:
@@ -153,11 +154,11 @@ def _texts(column: pd.Series, dates: bool = False) -> Cells:
     return Cells(texts, renamed[codes], dates=dates)
 
 
-def _spelt(distinct: Iterable[object]) -> tuple[tuple[str, ...], NDArray[np.int32]]:
+def _spelt(distinct: ArrayLike) -> tuple[tuple[str, ...], NDArray[np.int32]]:
     """Different values as different texts, and (values + 1,) where each went: -1 for nothing but spaces, and last."""
     places: dict[str, int] = {}
     renamed = []
-    for value in distinct:
+    for value in np.asarray(distinct, dtype=object).tolist():
         text = value if isinstance(value, str) else level_text(value)
         renamed.append(places.setdefault(text, len(places)) if text and not text.isspace() else -1)
     return tuple(places), np.array([*renamed, -1], dtype=np.int32)

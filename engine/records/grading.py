@@ -119,6 +119,9 @@ LADDERS: tuple[tuple[str, ...], ...] = (
     ("first", "second", "third", "fourth", "fifth", "sixth", "seventh", "eighth", "ninth", "tenth"),
     ("rural", "semi-urban|suburban|peri-urban", "urban"),
 )
+_RUNGS = tuple(
+    {word: float(rung) for rung, same in enumerate(ladder) for word in same.split("|")} for ladder in LADDERS
+)
 OUTSIDE = frozenset(
     [
         "don't know",
@@ -220,8 +223,7 @@ def _plain(level: str) -> str:
 
 def _ladder(words: list[str]) -> list[float] | None:
     found: list[list[float]] = []
-    for ladder in LADDERS:
-        rungs = {word: float(rung) for rung, same in enumerate(ladder) for word in same.split("|")}
+    for rungs in _RUNGS:
         if all(word in rungs for word in words):
             found.append([rungs[word] for word in words])
     if len(words) < 3 and any(len(word) == 1 for word in words):

@@ -5,6 +5,7 @@ from __future__ import annotations
 import datetime
 import io
 import zipfile
+import zlib
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from typing import Any
@@ -93,7 +94,7 @@ def _check(content: bytes, name: str) -> bool:
                     do="Save the table as CSV and bring that file.",
                 )
             return any(_holds_formula(packed, entry) for entry in entries if "worksheets/" in entry.filename)
-    except (zipfile.BadZipFile, NotImplementedError, RuntimeError, OSError, EOFError):  # damaged, unknown, or encrypted
+    except (zipfile.BadZipFile, zlib.error, NotImplementedError, RuntimeError, OSError, EOFError):
         raise _damaged(name) from None
 
 

@@ -200,8 +200,10 @@ def _add_cells(found: hashlib._Hash, held: Cells) -> None:
     if held.values is not None:
         found.update(_one_nan(held.values).tobytes())
         return
-    order = sorted(range(held.different), key=held.texts.__getitem__)  # however pandas listed them
+    codes, firsts = np.unique(held.codes, return_index=True)
+    order = codes[np.argsort(firsts)]
+    order = order[order >= 0]  # of appearance, however pandas listed them
     places = np.full(held.different + 1, -1, dtype="<i4")
-    places[order] = np.arange(held.different)
-    found.update(json.dumps([held.texts[place] for place in order]).encode())
+    places[order] = np.arange(order.size)
+    found.update(json.dumps([held.texts[place] for place in order.tolist()]).encode())
     found.update(places[held.codes].tobytes())

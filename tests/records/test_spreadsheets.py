@@ -129,3 +129,13 @@ def test_entities_in_a_sheet_are_not_expanded():
     parts["xl/workbook.xml"] = bomb + parts["xl/workbook.xml"].split(b"?>", 1)[-1]
     with pytest.raises(Refusal, match="is not a spreadsheet that can be opened"):
         frame(packed(parts))
+
+
+def test_a_spreadsheet_with_damaged_bytes_is_refused():
+    content = bytearray(book(TOP))
+    with zipfile.ZipFile(io.BytesIO(bytes(content))) as made:
+        start = made.getinfo("xl/worksheets/sheet1.xml").header_offset
+    for place in range(start + 60, start + 120):
+        damaged = bytes(content[:place]) + bytes([content[place] ^ 255]) + bytes(content[place + 1 :])
+        with pytest.raises(Refusal, match="is not a spreadsheet that can be opened"):
+            frame(damaged)
