@@ -147,6 +147,7 @@ def learn(
     order: Order,
     max_links: int | None = None,
     max_parents: int = 3,
+    graphs: int = 200,
     seed: int = 0,
     progress: Callable[[float, str], None] | None = None,
     folds: bool = True,
@@ -154,11 +155,12 @@ def learn(
     """Find the best model at every number of links that `order` allows, and the number that predicts well enough.
 
     max_links: stop the curve there; None: every number.  max_parents: 1 to 5.
+    graphs: how many to draw from the posterior over all graphs that the order allows.
     progress(fraction, words) is called often; raising inside it cancels.
     folds: False leaves the held-out scores out and recommends the size with the best score.
     Raises Refusal for records or an order that cannot be learned from.
     """
-    found = learning.learn(table, order, max_links, max_parents, seed, progress, folds=folds)
+    found = learning.learn(table, order, max_links, max_parents, graphs, seed, progress, folds=folds)
     return Learned(**{field.name: getattr(found, field.name) for field in fields(found)})
 
 

@@ -17,6 +17,7 @@ STEPS = (  # how learning tells its steps: the start of its words, the step's na
     ("Opening", "Opening the records", "as they stand on the Records page"),
     ("Counting", "Counting", "how often levels occur together"),
     ("Finding", "The best model of every size", "exactly, among all that the order allows"),
+    ("Weighing", "Weighing every model", "how sure each link is"),
     ("Scoring", "Trying it on records held out", "learning again without each part in turn"),
 )
 

@@ -42,7 +42,7 @@ class Layers:
 
     @cached_property
     def forward(self) -> Floats:
-        """(sets, sets) by the columns so far and the last layer: natural log of the sum over graphs of those columns."""
+        """(sets, sets) natural log of the sum over graphs of the columns so far, by these and by the last layer."""
         size = 1 << self.width
         forward = np.full((size, size), -np.inf)
         sources = _sums(self.weights[:, 0], self.everything)

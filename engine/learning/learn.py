@@ -11,6 +11,7 @@ import pandas as pd
 from engine.learning import held_out
 from engine.learning.families import Candidates, Families, candidates
 from engine.learning.learned import Learned
+from engine.learning.posterior import posterior
 from engine.learning.scores import SetScores, set_scores
 from engine.learning.search import SizeCurve, check_widths, size_curve
 from engine.order import Direction, Order
@@ -30,6 +31,7 @@ def learn(
     order: Order,
     max_links: int | None = None,
     max_parents: int = 3,
+    graphs: int = 200,
     seed: int = 0,
     progress: Progress | None = None,
     ess: float = 1.0,
@@ -38,6 +40,7 @@ def learn(
     """Find the best model at every number of links, and say which number predicts held-out records well enough.
 
     max_links: stop the curve there; None: every number that the order and `max_parents` (1 to 5) allow.
+    graphs: how many to draw from the posterior over all graphs that the order allows.
     progress(fraction, words) is called often; raising inside it cancels.  ess: equivalent sample size of the score.
     folds: False leaves the held-out scores out and recommends the size with the best score.
 
@@ -57,7 +60,7 @@ def learn(
                 do="Take it out of the order, or give it a kind.",
             )
     return learn_coded(
-        table.coded(order.columns), order, table.digest, max_links, max_parents, seed, progress, ess, folds
+        table.coded(order.columns), order, table.digest, max_links, max_parents, graphs, seed, progress, ess, folds
     )
 
 
@@ -67,6 +70,7 @@ def learn_coded(
     digest: str = "",
     max_links: int | None = None,
     max_parents: int = 3,
+    graphs: int = 200,
     seed: int = 0,
     progress: Progress | None = None,
     ess: float = 1.0,
@@ -88,6 +92,8 @@ def learn_coded(
             where="insist",
             do="Insist on fewer links, or raise the most links or parents allowed.",
         )
+    say.begin("Weighing every model that the order allows")
+    sure = posterior(stages, scores, max_parents, graphs, np.random.default_rng([seed, 1]), say.within)
     curve = _curve(found)
     recommended = int(curve["links"].iloc[int(curve["score"].to_numpy().argmax())])
     if folds:
@@ -96,7 +102,16 @@ def learn_coded(
         recommended = judged.recommended
     say.finish()
     return Learned(
-        order, coded, curve, recommended, found.parents, max_parents, seed, digest, _notes(stages, scores, max_parents)
+        order,
+        coded,
+        curve,
+        recommended,
+        found.parents,
+        sure,
+        max_parents,
+        seed,
+        digest,
+        _notes(stages, scores, max_parents),
     )
 
 
@@ -209,7 +224,8 @@ class _Saying:
         counting = comb(columns, size) * (2e-6 * thousands + 1e-6) * (1.5 if parts else 1.0)
         searching = sum(len(stage) * 2.0 ** len(stage) * columns * 2e-8 for stage in stages) + 0.02 * columns / 10
         scoring = 0.002 * columns * max_parents + 1e-5 * columns * thousands
-        self.steps = [counting, searching, *[searching + scoring] * parts]
+        weighing = sum(len(stage) * (4.0 ** min(len(stage), 10)) * 2e-7 for stage in stages) + 0.003 * columns
+        self.steps = [counting, searching, weighing, *[searching + scoring] * parts]
         self.at = -1
         self.words = ""
         self.fraction = 0.0

@@ -5,11 +5,15 @@ from __future__ import annotations
 import os
 from collections.abc import Mapping
 from dataclasses import dataclass
+from functools import cached_property
+from math import prod
 from typing import Self
 
+import numpy as np
 import pandas as pd
 
 from engine.learning import archive
+from engine.learning.posterior import Posterior
 from engine.learning.search import Parents
 from engine.network.equivalence import unsettled_links
 from engine.network.network import Category, Network
@@ -20,7 +24,8 @@ from engine.records.table import Coded
 from engine.refusal import Refusal
 
 FORMAT = "steelyard learned"
-VERSION = 1
+VERSION = 2
+SURE = 0.9  # support from which a direction counts as settled by the data; common practice, no source
 _CURVE = ("links", "score", "bound", "held_out", "held_out_se")
 
 
@@ -30,6 +35,7 @@ class Learned:
 
     order, coded: what it was learned from.  digest: of the table; seed: of the folds.  max_parents: the cap used.
     chosen: links -> for each column of `coded` the positions of its parents.
+    posterior: how sure of each link, over every graph that the order allows, and graphs drawn from that.
     curve: one row a number of links: links; score, the log marginal likelihood, nats; bound, what no model of that
     size can exceed; held_out, the log score per record of records left out of learning; held_out_se, the standard
     error of its record-by-record difference to the best size, 0 there.
@@ -42,6 +48,7 @@ class Learned:
     curve: pd.DataFrame
     recommended: int
     chosen: Mapping[int, Parents]
+    posterior: Posterior
     max_parents: int
     seed: int
     digest: str
@@ -85,10 +92,43 @@ class Learned:
             )
         return Network(tuple(nodes))
 
+    @cached_property
+    def support(self) -> pd.DataFrame:
+        """Each link that any graph has, surest first: source, target, support, settled.
+
+        support: posterior probability.  settled: as `settled` says of the recommended model; a link that it does not
+        have was settled by "your order" or by "nobody".
+        """
+        names = self.coded.names
+        known = self.settled()
+        by = {(s, t): who for s, t, who in zip(known["source"], known["target"], known["settled"], strict=True)}
+        rows = []
+        for source, target in np.argwhere(self.posterior.support > 0.0):
+            link = (names[source], names[target])
+            other = "nobody" if self.order.may_lead(link[1], link[0]) else "your order"
+            rows.append((*link, float(self.posterior.support[source, target]), by.get(link, other)))
+        rows.sort(key=lambda row: -row[2])
+        return pd.DataFrame(rows, columns=["source", "target", "support", "settled"])
+
+    @property
+    def graphs(self) -> tuple[tuple[tuple[tuple[str, str], ...], float], ...]:
+        """Graphs drawn from the posterior: (links, weight), the weights summing to 1."""
+        names = self.coded.names
+        return tuple(
+            (tuple((names[source], names[target]) for source, target in np.argwhere(graph)), float(weight))
+            for graph, weight in zip(self.posterior.graphs, self.posterior.weights, strict=True)
+        )
+
+    def support_of(self, source: str, target: str) -> float:
+        """Posterior probability of one link, 0 to 1."""
+        names = self.coded.names
+        return float(self.posterior.support[names.index(source), names.index(target)])
+
     def settled(self, links: int | None = None) -> pd.DataFrame:
         """Each link of that model and who settled its direction: source, target, settled.
 
-        settled: "your order"; "the data", when every equivalent graph that the order allows agrees; else "nobody".
+        settled: "your order"; "the data", when every equivalent graph that the order allows agrees and the support is
+        over SURE; else "nobody".
         """
         names = self.coded.names
         pairs = [(parent, child) for child, parents in self.parents_at(links).items() for parent in parents]
@@ -99,7 +139,8 @@ class Learned:
             if not self.order.may_lead(target, source):
                 settled = "your order"
             else:
-                settled = "nobody" if (source, target) in open_links else "the data"
+                sure = (source, target) not in open_links and self.support_of(source, target) > SURE
+                settled = "the data" if sure else "nobody"
             rows.append((source, target, settled))
         return pd.DataFrame(rows, columns=["source", "target", "settled"])
 
@@ -118,18 +159,26 @@ class Learned:
             "notes": self.notes,
         }
         curve = {f"curve_{name}": self.curve[name].to_numpy() for name in _CURVE}
-        archive.write(path, described, {**archive.coded_arrays(self.coded), **curve})
+        posterior: dict[str, np.ndarray] = {
+            "support": self.posterior.support,
+            "graphs": np.packbits(self.posterior.graphs),
+            "graph_weights": self.posterior.weights,
+        }
+        archive.write(path, described, {**archive.coded_arrays(self.coded), **curve, **posterior})
 
     @classmethod
     def open(cls, path: str | os.PathLike[str]) -> Self:
         """Read what `save` wrote; it answers as before to the last digit. Raises Refusal for any other file."""
         described, arrays = archive.read(path, FORMAT, VERSION)
+        shape = (arrays["graph_weights"].size, *arrays["support"].shape)
+        graphs = np.unpackbits(arrays["graphs"], count=prod(shape)).reshape(shape).astype(np.bool_)
         return cls(
             order=archive.order_from(described["order"]),
             coded=archive.coded_from(described["coded"], arrays),
             curve=pd.DataFrame({name: arrays[f"curve_{name}"] for name in _CURVE}),
             recommended=described["recommended"],
             chosen={links: tuple(tuple(parents) for parents in model) for links, model in described["chosen"]},
+            posterior=Posterior(arrays["support"], graphs, arrays["graph_weights"]),
             max_parents=described["max_parents"],
             seed=described["seed"],
             digest=described["digest"],

@@ -2,15 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from engine.learning.families import Candidates, Families
 from engine.learning.layers import WIDEST_LAYERED, Layers, pick
 from engine.learning.scores import Floats, SetScores
-from engine.learning.search import Parents
 from engine.learning.sinks import Sinks, linear_extensions
 
 
@@ -19,13 +19,13 @@ class Posterior:
     """Every graph that the order and the parent cap allow is equally likely beforehand.
 
     support: (columns, columns) probability of the link from row to column.
-    graphs: one tuple of parent positions a column, for every graph drawn.  weights: (graphs,) summing to 1.
+    graphs: (graphs, columns, columns) True for a link from row to column.  weights: (graphs,) summing to 1.
     effective: how many independent draws the graphs are worth (Kish 1965); less than their number only where a stage
     was too wide to sum over its layers.
     """
 
     support: Floats
-    graphs: tuple[Parents, ...]
+    graphs: NDArray[np.bool_]
     weights: Floats
 
     @property
@@ -48,7 +48,7 @@ def posterior(
     tick = tick or (lambda fraction: None)
     columns = sum(len(stage) for stage in stages)
     support = np.zeros((columns, columns))
-    drawn: list[list[tuple[int, ...]]] = [[] for _ in range(graphs)]
+    drawn = np.zeros((graphs, columns, columns), dtype=np.bool_)
     logs = np.zeros(graphs)
     for number, stage in enumerate(stages):
         here = _Stage(stage, scores, max_parents)
@@ -59,10 +59,11 @@ def posterior(
             orders = {chosen: linear_extensions(chosen) for chosen in set(inside)}
             logs -= np.asarray([np.log(float(orders[chosen])) for chosen in inside])
         for graph, chosen in zip(drawn, inside, strict=True):
-            graph += [here.with_earlier(place, own, rng) for place, own in enumerate(chosen)]
+            for who, parents in zip(stage, here.with_earlier(chosen, rng), strict=True):
+                graph[parents, who.child] = True
         tick((number + 1) / len(stages))
     weights = np.exp(logs - logs.max()) if graphs else logs
-    return Posterior(support, tuple(tuple(graph) for graph in drawn), weights / max(weights.sum(), 1e-300))
+    return Posterior(np.clip(support, 0.0, 1.0), drawn, weights / max(weights.sum(), 1.0))
 
 
 class _Stage:
@@ -93,10 +94,9 @@ class _Stage:
                 each = share * np.exp(logs - np.logaddexp.reduce(logs))
                 np.add.at(support[:, who.child], earlier[0], each[earlier[1]])
 
-    def with_earlier(self, place: int, own: int, rng: np.random.Generator) -> tuple[int, ...]:
-        """Parents in the stage (`own`, as a set) and a draw of those from earlier stages."""
-        who = self.stage[place]
-        mates = tuple(who.first + bit for bit in range(self.width) if own >> bit & 1)
-        (columns, family), logs = self.families[place][mates]
-        chosen = pick(logs, rng)
-        return tuple(sorted((*(int(column) for column in columns[family == chosen]), *mates)))
+    def with_earlier(self, chosen: tuple[int, ...], rng: np.random.Generator) -> Iterator[list[int]]:
+        """The parents of each column: those in the stage, chosen as sets, and a draw of those from earlier stages."""
+        for who, family, own in zip(self.stage, self.families, chosen, strict=True):
+            mates = tuple(who.first + bit for bit in range(self.width) if own >> bit & 1)
+            (columns, belongs), logs = family[mates]
+            yield [*mates, *columns[belongs == pick(logs, rng)].tolist()]

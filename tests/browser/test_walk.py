@@ -1,4 +1,4 @@
-"""The whole walk in a browser: a table comes in, an order is stated, a model is learned, a question is asked and read."""
+"""The whole walk in a browser: a table comes in, an order is stated, a model is learned, a question is answered."""
 
 from __future__ import annotations
 
@@ -49,7 +49,8 @@ def test_from_a_file_to_a_pinned_and_set_answer(open_page: OpenPage, csv: Path, 
     page.get_by_role("link", name="Set to yes", exact=True).click()
     said = re.compile(
         r"By this estimate, among records with shift work = nights, setting mentor to yes "
-        r"(would move passed from|may not move passed: from) [\d.]+% to [\d.]+% \([+−]?[\d.]+ points?, within this model"
+        r"(would move passed from|may not move passed: from) [\d.]+% to [\d.]+% "
+        r"\([+−]?[\d.]+ points?, within this model"
     )
     expect(answer(page)).to_contain_text(said)
     expect(page.locator(".had")).to_contain_text("That is not the effect.")

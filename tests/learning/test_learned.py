@@ -125,6 +125,19 @@ def test_renaming_and_shuffling_change_no_score():
     assert again.curve.equals(learned.curve) and again.chosen == learned.chosen
 
 
+def test_support_and_drawn_graphs_agree_and_are_kept(tmp_path):
+    learned = learn_coded(school(), ORDER, folds=False)
+    assert len(learned.graphs) == 200 and sum(weight for _, weight in learned.graphs) == pytest.approx(1.0)
+    for source, target, support, settled in learned.support.itertuples(index=False):
+        drawn = sum(weight for links, weight in learned.graphs if (source, target) in links)
+        assert abs(drawn - support) < 4.5 * np.sqrt(support * (1 - support) / 200) + 1e-9
+        assert (settled == "your order") == (not ORDER.may_lead(target, source))
+    assert learned.support["support"].is_monotonic_decreasing
+    learned.save(tmp_path / "learned")
+    again = open_learned(tmp_path / "learned")
+    assert again.support.equals(learned.support) and again.graphs == learned.graphs
+
+
 def test_progress_is_in_plain_words_and_never_runs_back():
     heard = []
     learn_coded(school(), ORDER, progress=lambda fraction, words: heard.append((fraction, words)))
@@ -134,12 +147,13 @@ def test_progress_is_in_plain_words_and_never_runs_back():
     assert words == [
         "Counting how often levels occur together",
         "Finding the best model of every size",
+        "Weighing every model that the order allows",
         *(f"Scoring part {part} of 5 of the records held out" for part in range(1, 6)),
         "Done",
     ]
 
 
-@pytest.mark.parametrize("at", ["Counting", "Finding", "Scoring part 3"])
+@pytest.mark.parametrize("at", ["Counting", "Finding", "Weighing", "Scoring part 3"])
 def test_raising_in_progress_cancels(at):
     class CancelledError(Exception):
         pass
