@@ -29,6 +29,12 @@ def test_the_readme_begins_with_the_job():
     assert "what would move if a column were *set*" in " ".join(paragraphs[1].split())
 
 
+def test_the_pictures_of_the_readme_are_there():
+    pictures = re.findall(r"!\[[^\]]+\]\(([^)]+)\)", README)
+    assert pictures
+    assert all((ROOT / picture).is_file() for picture in pictures)
+
+
 def test_the_licence_is_the_same_everywhere():
     project = tomllib.loads((ROOT / "pyproject.toml").read_text(encoding="utf-8"))["project"]
     assert project["license"] == "MIT"
