@@ -41,6 +41,8 @@ def refuse(request: Request, error: Exception) -> Response:
 def refuse_address(request: Request, error: Exception) -> Response:
     """The page for an address that leads nowhere, or that cannot be used in this way."""
     assert isinstance(error, HTTPException)
+    if isinstance(error.__cause__, Refusal):  # raised while a form was read, and wrapped by its reader
+        return refuse(request, error.__cause__)
     shelf = "Go back, or pick a study on the Shelf."
     match error.status_code:
         case 404:
