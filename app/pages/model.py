@@ -58,14 +58,16 @@ def _page(request: Request, key: str, template: str, links: str, column: str | N
     study: Study = store.study(key)
     state = jobs.state(key)
     learning = ended = view = None
+    wanted = int(links) if links.isascii() and links.isdigit() and len(links) < 10 else None
     if state is not None and state.state == "running":
         learning = learning_view.view(state)
     else:
         ended = learning_view.ended(state) if state is not None else None
         learned = store.learned(key)
         if learned is not None:
-            wanted = int(links) if links.isascii() and links.isdigit() else None
             view = model_view.view(study, learned, wanted, column)
+    no_size = links if view is not None and links and view.links != wanted else None
+    no_column = column if view is not None and column is not None and view.picked is None else None
     context = {
         "page": "Model",
         "study": study,
@@ -76,8 +78,9 @@ def _page(request: Request, key: str, template: str, links: str, column: str | N
         "headline": model_view.headline(view) if view else None,
         "deck": model_view.deck(view) if view else None,
         "one_stage": sum(bool(columns) for _, columns in study.plan.stages) < 2,
-        "unknown": column is not None and view is not None and view.picked is None,
-        "asked_column": column,
+        "no_size": no_size,
+        "no_column": no_column,
     }
-    page: Response = request.app.state.templates.TemplateResponse(request, template, context)
+    status = 200 if no_size is None and no_column is None else 422
+    page: Response = request.app.state.templates.TemplateResponse(request, template, context, status)
     return page

@@ -87,7 +87,7 @@ def _column(table: Table, place: int) -> str:
 
 
 def _whole(text: str) -> int:
-    return int(text) if text.isascii() and text.isdigit() else -1
+    return int(text) if text.isascii() and text.isdigit() and len(text) < 10 else -1
 
 
 def _page(

@@ -57,9 +57,11 @@ def moved(grades: str, step: str) -> str:
     """The typed grades with one moved: `step` is "3 up" or "3 down"."""
     lines = _lines(grades)
     place, _, way = step.partition(" ")
-    if not place.isdigit() or int(place) >= len(lines) or way not in ("up", "down"):
+    places = [str(each) for each in range(len(lines))]
+    if place not in places or way not in ("up", "down"):
         return grades
-    here, there = int(place), int(place) + (-1 if way == "up" else 1)
+    here = places.index(place)
+    there = here + (-1 if way == "up" else 1)
     if 0 <= there < len(lines):
         lines[here], lines[there] = lines[there], lines[here]
     return "\n".join(lines)

@@ -252,7 +252,9 @@ def test_a_backward_link_is_refused_with_the_engines_sentence(
     assert shelf.study(study.key).plan == visits_plan
 
 
-@pytest.mark.parametrize("do", ["", "nonsense", "place 99 0", "place 0 99", "remove 7", "free must 3", "place x y"])
+@pytest.mark.parametrize(
+    "do", ["", "nonsense", "place 99 0", "place 0 99", "remove 7", "free must 3", "place x y", "remove " + "9" * 5000]
+)
 def test_a_button_that_does_not_exist_changes_nothing(client: TestClient, study: Study, shelf: Store, do: str) -> None:
     assert client.post(f"/study/{study.key}/order", data={"do": do}).status_code == 422
     assert shelf.study(study.key) == study
@@ -295,13 +297,18 @@ def test_a_picked_column_is_marked_in_drawing_and_table(client: TestClient, lear
     page = client.get(f"/study/{learned.key}/model?column=shift").text
     assert "shift picked out" in page
     assert page.count('aria-current="true"') >= 1
-    assert "no column <em>no such</em>" in client.get(f"/study/{learned.key}/model?column=no+such").text
+    unknown = client.get(f"/study/{learned.key}/model?column=no+such")
+    assert unknown.status_code == 422
+    assert "no column <em>no such</em>" in unknown.text
 
 
-@pytest.mark.parametrize("links", ["-1", "many", "9999", "%00", "1.5"])
-def test_a_nonsense_budget_in_the_address_shows_the_one_in_use(client: TestClient, learned: Study, links: str) -> None:
+@pytest.mark.parametrize("links", ["-1", "many", "9999", "9" * 5000, "%00", "1.5"])
+def test_a_nonsense_budget_in_the_address_is_said_and_shows_the_one_in_use(
+    client: TestClient, learned: Study, links: str
+) -> None:
     page = client.get(f"/study/{learned.key}/model?links={links}")
-    assert page.status_code == 200
+    assert page.status_code == 422
+    assert "There is no model of" in page.text
     assert f'<span class="big">{learned.recommended}</span>' in page.text
 
 

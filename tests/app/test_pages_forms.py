@@ -104,7 +104,14 @@ def test_grades_that_are_not_the_levels_are_refused(grades: str, words: str) -> 
 
 @pytest.mark.parametrize(
     ("step", "moved"),
-    [("0 down", "b\na\nc"), ("2 up", "a\nc\nb"), ("0 up", "a\nb\nc"), ("2 down", "a\nb\nc"), ("9 up", "a\nb\nc")],
+    [
+        ("0 down", "b\na\nc"),
+        ("2 up", "a\nc\nb"),
+        ("0 up", "a\nb\nc"),
+        ("2 down", "a\nb\nc"),
+        ("9 up", "a\nb\nc"),
+        ("² up", "a\nb\nc"),
+    ],
 )
 def test_a_grade_moves_by_one_and_never_off_the_end(step: str, moved: str) -> None:
     assert records_form.moved("a\nb\nc", step) == moved
