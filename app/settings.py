@@ -42,7 +42,13 @@ TABLE = (
     Setting("port", "--port", "8377", "Port to listen on; the next free one is taken when it is busy.", 1, 65535),
     Setting("host", "--host", "127.0.0.1", "Loopback address to listen on; no other address is accepted."),
     Setting("data", "--data", "the user's data folder", "Folder in which the studies are kept."),
-    Setting("open_browser", "--no-browser", "yes", "Open the browser at the start.", switch=True),
+    Setting(
+        "open_browser",
+        "--no-browser",
+        "yes",
+        "Open the browser at the start; the option leaves it closed.",
+        switch=True,
+    ),
     Setting("upload_limit", "--upload-limit", "200", "Largest file that can be brought, in megabytes.", 1),
     Setting("reading_memory", "--reading-memory", "2000", "Memory that reading a file may take, in megabytes.", 100),
     Setting("reading_time", "--reading-time", "120", "Time that reading a file may take, in seconds.", 1),
@@ -138,7 +144,7 @@ def _whole_number(setting: Setting, text: str, where: str) -> int:
     assert setting.least is not None
     most = setting.most
     bounds = f"from {setting.least} to {most}" if most is not None else f"of at least {setting.least}"
-    number = int(text) if text.isascii() and text.isdigit() else -1
+    number = int(text) if text.isascii() and text.isdigit() and len(text) < 10 else -1
     if number < setting.least or (most is not None and number > most):
         raise Refusal(
             f"{where} is {text!r}, which is not a whole number {bounds}.", where=where, do=f"Give a number {bounds}."

@@ -48,7 +48,7 @@ def disk_in_words(folder: Path) -> Iterator[None]:
         yield
     except OSError as error:
         raise Refusal(
-            f"The data folder could not be written: {error.strerror or 'the disk refused'}.",
+            f"The data folder {folder} could not be written: {error.strerror or 'the disk refused'}.",
             where=str(folder),
             do="Make room on the disk or check the folder's permissions, then try again. What was saved is intact.",
         ) from error
