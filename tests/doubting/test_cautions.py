@@ -42,6 +42,8 @@ def test_overlap_weakens_where_some_are_like_no_record_with_the_value():
     assert caution.rank == "weakens" and not answer.blocked
     assert caution.figure == "200 of 500"
     assert caution.figures["share without"] == pytest.approx(0.4)
+    assert only(offer(school(nights_with_mentor=0, nights=290)), "overlap").rank == "weakens"
+    assert only(offer(school(nights_with_mentor=0, nights=310)), "overlap").rank == "blocks"
 
 
 def test_overlap_weakens_where_the_value_is_rare():
