@@ -103,7 +103,8 @@ def counted(asked: Asked) -> Words:
         return []
     wanted, count = asked.wanted(asked.watch), answer[asked.watch].counted
     question = asked.question if asked.refusal is None else replace(asked.question, pins={}, levers={})
-    return counted_sentence(question, asked.watch, wanted, count, answer.matching, asked.spine.nodes, SMALL_COUNT)
+    matching, every = answer.matching, asked.spine.records
+    return counted_sentence(question, asked.watch, wanted, count, matching, asked.spine.nodes, SMALL_COUNT, every)
 
 
 def also(asked: Asked, address: Address) -> list[Also]:

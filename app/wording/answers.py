@@ -6,7 +6,7 @@ from dataclasses import dataclass
 
 from app.question import Question, per_cent
 from app.wording.estimates import Estimate, Estimates
-from app.wording.figures import Change, counted, share, span
+from app.wording.figures import Change, counted, gives_away, share, span
 from app.wording.parts import Clause, Part, name, plain, say, series
 from app.wording.questions import Nodes, among
 from app.wording.values import Words, is_at, is_yes, subject, value
@@ -72,14 +72,17 @@ def counted_sentence(
     matching: int,
     nodes: Nodes,
     small: int,
+    records: int,
 ) -> Words:
-    """What the records hold, counted; without a number where they are under the small-count limit.
+    """What the records hold, counted; without a number where they, or the others, are under the small-count limit.
 
-    matching: records that match every pin.
+    matching: of all `records`, those that match every pin.
     """
-    if count is None:
+    if count is None or gives_away(matching, records, small):
         these = "this value" if len(question.pins) == 1 else "all of these values"
         which = f"Under {small} records have" if matching else "No record has"
+        if matching >= small:
+            which = f"All but under {small} records have"
         return say(f"{which} {these}, so nothing is counted; the figures come from the model.")
     held = sum(count.counts[level] for level in wanted)
     have = say("have ", value(nodes[watch], wanted))

@@ -111,8 +111,15 @@ def counted(held: int, rows: int, small: int) -> str:
     return f"{held:,} of {rows:,}"
 
 
-def records(number: int, small: int) -> str:
-    """A number of records: 412 records, 1 record, under 10 records."""
+def gives_away(part: int, whole: int, small: int) -> bool:
+    """Whether a count tells a small one: its own, or that of those it leaves out of a known whole."""
+    return 0 < part < small or 0 < whole - part < small
+
+
+def records(number: int, small: int, whole: int = 0) -> str:
+    """A number of records: 412 records, 1 record, under 10 records; of a known whole all but under 10 records."""
+    if 0 < whole - number < small:
+        return f"all but under {small} records"
     said = f"under {small}" if 0 < number < small else f"{number:,}"
     return f"{said} {'record' if number == 1 and small <= 1 else 'records'}"
 

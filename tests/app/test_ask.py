@@ -194,6 +194,18 @@ def test_small_counts_are_not_shown(ask, store, study):
     assert "under 10 records" in ask("pin=age.60-and-over&pin=shift-work.mixed", page="answer")
 
 
+def test_a_group_that_leaves_few_out_does_not_give_their_count_away(client, store):
+    frame = evening()[["shift work", "passed"]]
+    frame.loc[:6, "shift work"] = "other"
+    plan = Plan((("Before", ("shift work",)), ("After", ("passed",))), outcomes={"passed": ("yes",)})
+    few = keep_a_model(store, store.bring("Few", frame, "few.csv", Choices(), plan))
+    query = "pin=shift-work.days.mixed.nights"
+    for page, hidden in (("ask", "All but under 10 records have this value"), ("answer", "all but under 10 records")):
+        text = client.get(f"/study/{few.key}/{page}?{query}").text
+        assert hidden in text
+        assert "593" not in re.sub(r"<svg.*?</svg>", "", text, flags=re.DOTALL)
+
+
 def test_a_pin_after_the_lever_is_refused_with_a_way_out_for_each(ask, client):
     page = ask(f"pin=turned-up.most&{MENTOR}", status=422)
     assert sentence(page) == "turned up follows mentor, which you set, so pinning it would mix two worlds."

@@ -202,6 +202,12 @@ def test_an_answer_about_other_levels_names_them():
         ),
         (
             NIGHTS,
+            Counted(1840, {"no": 713, "yes": 1127}),
+            1840,
+            "All but under 10 records have this value, so nothing is counted; the figures come from the model.",
+        ),
+        (
+            NIGHTS,
             None,
             4,
             "Under 10 records have this value, so nothing is counted; the figures come from the model.",
@@ -215,7 +221,7 @@ def test_an_answer_about_other_levels_names_them():
     ],
 )
 def test_the_records_are_counted_without_giving_small_counts_away(pins, count, matching, words):
-    assert plain(counted_sentence(Question(pins), "passed", YES, count, matching, NODES, 10)) == words
+    assert plain(counted_sentence(Question(pins), "passed", YES, count, matching, NODES, 10, 1847)) == words
 
 
 @pytest.mark.parametrize(

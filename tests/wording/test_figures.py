@@ -115,3 +115,6 @@ def test_numbers_of_records():
         "10 records",
         "1,847 records",
     ]
+    assert records(1840, 10, 1847) == "all but under 10 records"
+    assert records(1837, 10, 1847) == "1,837 records"
+    assert records(1847, 10, 1847) == "1,847 records"
