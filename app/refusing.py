@@ -12,7 +12,7 @@ from fastapi.responses import HTMLResponse
 from starlette.exceptions import HTTPException
 
 from app.reading import TooLarge
-from app.store import NoModelYet, NoSuchStudy, Study
+from app.store import ModelUnreadable, NoModelYet, NoSuchStudy, Study
 from engine.refusal import Refusal
 
 log = logging.getLogger("steelyard")
@@ -25,6 +25,7 @@ class NotFromHere(Refusal):
 STATUSES: tuple[tuple[type[Refusal], int], ...] = (
     (NoSuchStudy, 404),
     (NoModelYet, 409),
+    (ModelUnreadable, 409),
     (TooLarge, 413),
     (NotFromHere, 403),
     (Refusal, 422),
@@ -61,8 +62,10 @@ def refuse_values(request: Request, error: Exception) -> Response:
     assert isinstance(error, RequestValidationError)
     first = error.errors()[0]
     place = ".".join(str(part) for part in first["loc"][1:]) or request.url.path
+    given = first.get("input")
+    what = f"is “{given[:40]}”" if isinstance(given, str) else "is missing"
     refusal = Refusal(
-        f"A part of the address or form cannot be used: {place} ({first['msg']}).",
+        f"A part of the address or form cannot be used: “{place}” {what}.",
         where=place,
         do="Go back and choose again on the page.",
     )
@@ -82,7 +85,10 @@ def refuse_fault(request: Request, error: Exception) -> Response:
 
 def refused_page(request: Request, refusal: Refusal, status: int, headers: Mapping[str, str] | None = None) -> Response:
     """templates/refused.html with `refusal`, `status` and the study of the address, if there is one."""
-    context = {"refusal": refusal, "status": status, "study": _study(request)}
+    study = _study(request)
+    to_model = isinstance(refusal, NoModelYet | ModelUnreadable) and study is not None
+    onward = ("Go to the model", f"/study/{study.key}/model") if to_model and study is not None else None
+    context = {"refusal": refusal, "status": status, "study": study, "onward": onward}
     try:
         page: Response = request.app.state.templates.TemplateResponse(request, "refused.html", context, status)
     except Exception as error:  # the page that says what went wrong must not go wrong itself

@@ -8,7 +8,7 @@ from pathlib import Path
 
 from app.jobs import Jobs
 from app.resources import resource
-from app.store import Choices, Plan, Store, Study
+from app.store import Choices, ModelUnreadable, Plan, Store, Study
 from engine.records import read_frame
 from engine.refusal import Refusal
 
@@ -42,9 +42,17 @@ def open_sample(store: Store, jobs: Jobs, name: str) -> Study:
     if name not in found:
         raise Refusal(f"There is no sample “{name}”.", where=name, do="Pick one on the Shelf.")
     study = store.sample(name) or _bring(store, found[name])
-    if study.model == "none":
+    if study.model == "none" or not _opens(store, study):
         jobs.start(study.key)
     return study
+
+
+def _opens(store: Store, study: Study) -> bool:
+    try:
+        store.learned(study.key)
+    except ModelUnreadable:
+        return False
+    return True
 
 
 def _bring(store: Store, sample: Sample) -> Study:

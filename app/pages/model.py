@@ -8,7 +8,7 @@ from fastapi import APIRouter, Form, Request, Response
 from fastapi.responses import RedirectResponse
 
 from app.pages import learning_view, model_view
-from app.store import Study
+from app.store import ModelUnreadable, Study
 
 router = APIRouter()
 
@@ -63,7 +63,10 @@ def _page(request: Request, key: str, template: str, links: str, column: str | N
         learning = learning_view.view(state)
     else:
         ended = learning_view.ended(state) if state is not None else None
-        learned = store.learned(key)
+        try:
+            learned = store.learned(key)
+        except ModelUnreadable as refusal:
+            learned, ended = None, (refusal.message, refusal.do or "")
         if learned is not None:
             view = model_view.view(study, learned, wanted, column)
     no_size = links if view is not None and links and view.links != wanted else None

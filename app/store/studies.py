@@ -38,6 +38,17 @@ class NoSuchStudy(Refusal):
         super().__init__(f"There is no study “{key}”.", where=key, do="Pick one on the Shelf.")
 
 
+class ModelUnreadable(Refusal):
+    """What was learned cannot be opened: the file is damaged, missing or of another version."""
+
+    def __init__(self, path: Path) -> None:
+        super().__init__(
+            "The model of this study cannot be opened: its file is damaged, or another version of Steelyard wrote it.",
+            where=str(path),
+            do="Learn it again; the records and the order are as they were.",
+        )
+
+
 class NoModelYet(Refusal):
     """A question was asked before anything was learned."""
 
@@ -208,7 +219,7 @@ class Store:
             (self.files(key) / row["learned_file"]).unlink(missing_ok=True)
 
     def learned(self, key: str) -> engine.Learned | None:
-        """What was learned last, current or old; None before the first time. Raises NoSuchStudy."""
+        """What was learned last, current or old; None before the first time. Raises NoSuchStudy and ModelUnreadable."""
         with self.database.reading() as database:
             row = database.execute("SELECT learned_file FROM studies WHERE key = ?", (key,)).fetchone()
         if row is None:
@@ -285,8 +296,8 @@ class Store:
         path = self.files(key) / name
         try:
             return engine.open_learned(path)
-        except OSError as error:
-            raise _damaged(key, path) from error
+        except (OSError, Refusal) as error:
+            raise ModelUnreadable(path) from error
 
     def _sweep(self) -> None:
         """Remove what a crash left behind: old files and folders that no study names."""

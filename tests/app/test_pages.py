@@ -11,6 +11,8 @@ from fastapi import FastAPI
 from fastapi.testclient import TestClient
 
 from app.jobs import Jobs
+from app.main import create_app
+from app.settings import Settings
 from app.store import Plan, Store, Study
 from engine.order import MORE
 from tests.app import slow_work
@@ -293,6 +295,13 @@ def test_another_budget_is_shown_accepted_and_kept(client: TestClient, learned: 
     assert shelf.study(learned.key).links == links
 
 
+def test_a_nonsense_place_in_the_address_is_said_in_words(client: TestClient, study: Study) -> None:
+    page = client.get(f"/study/{study.key}/records?open=first")
+    assert page.status_code == 422
+    assert "“open” is “first”" in page.text
+    assert "integer" not in page.text
+
+
 def test_a_picked_column_is_marked_in_drawing_and_table(client: TestClient, learned: Study) -> None:
     page = client.get(f"/study/{learned.key}/model?column=shift").text
     assert "shift picked out" in page
@@ -315,6 +324,23 @@ def test_a_nonsense_budget_in_the_address_is_said_and_shows_the_one_in_use(
 def test_a_model_older_than_its_order_says_so(client: TestClient, learned: Study) -> None:
     client.post(f"/study/{learned.key}/order", data={"do": "add"})
     assert "learned before the order or the columns were changed" in client.get(f"/study/{learned.key}/model").text
+
+
+def test_a_model_that_cannot_be_opened_can_be_learned_again(
+    app: FastAPI, learned: Study, shelf: Store, settings: Settings
+) -> None:
+    (file,) = shelf.files(learned.key).glob("*.learned")
+    file.write_bytes(b"of another version")
+    with TestClient(create_app(settings), base_url=settings.address) as later:
+        for place in ("ask", "answer"):
+            refused = later.get(f"/study/{learned.key}/{place}")
+            assert refused.status_code == 409
+            assert "The model of this study cannot be opened" in refused.text
+            assert f'href="/study/{learned.key}/model">Go to the model' in refused.text
+        page = later.get(f"/study/{learned.key}/model")
+    assert page.status_code == 200
+    assert "The model of this study cannot be opened" in page.text
+    assert "Learn the model</button>" in page.text
 
 
 def test_learning_shows_progress_and_can_be_cancelled(client: TestClient, app: FastAPI, study: Study) -> None:
