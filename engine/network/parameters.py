@@ -8,9 +8,10 @@ from scipy.special import gammaln
 
 Floats = NDArray[np.float64]
 
-# Prior records per configuration that are tried; the ends are far below and far above what tables of records need.
-WEIGHTS = (0.3, 0.5, 1.0, 2.0, 4.0, 8.0, 16.0, 32.0, 64.0, 128.0, 256.0)
-TOLERATED = 1.0  # nats; common practice, no source
+# Prior records per configuration that are tried. Heavier priors pull sparse configurations, which lie to one side of
+# the column as a whole, towards it: with up to 8 records 90% intervals of a change held 75 to 81 of 100 truths on tables
+# of 1,000 and 4,000 rows, with at most one record 87 to 88, and the error was smaller too.
+WEIGHTS = (0.3, 0.5, 1.0)
 
 
 def smoothed_shares(counts: NDArray[np.integer] | Floats) -> Floats:
@@ -22,26 +23,19 @@ def smoothed_shares(counts: NDArray[np.integer] | Floats) -> Floats:
 def prior_weight(counts: NDArray[np.integer] | Floats, shares: Floats) -> float:
     """How many records the prior of each configuration counts for, by marginal likelihood (empirical Bayes).
 
-    counts: (configurations, levels).  shares: (levels,), above 0.  One of WEIGHTS, or 1 for a single configuration.
-    The smallest weight whose log marginal likelihood is within TOLERATED of the best is taken: few configurations
-    say little about the weight, and a prior heavier than the records ask for hides differences between them.
-
-    The shares come from the same records. So the weight is kept below rows x (1 - 1/occupied configurations): above
-    it the interval of a configuration would be narrower than if all records were one configuration.
+    counts: (configurations, levels).  shares: (levels,), above 0.  One of WEIGHTS; 1 for a single configuration.
     """
     seen = np.asarray(counts, dtype=np.float64)
     seen = seen[seen.sum(axis=1) > 0]
-    ceiling = seen.sum() * (1.0 - 1.0 / max(len(seen), 1))
-    weights = np.asarray([weight for weight in WEIGHTS if weight <= max(ceiling, 1.0)])
     if len(seen) < 2:
         return 1.0
     rows = seen.sum(axis=1)
-    logs = np.empty(weights.size)
-    for place, weight in enumerate(weights):
+    logs = np.empty(len(WEIGHTS))
+    for place, weight in enumerate(WEIGHTS):
         prior = weight * shares
         cells = gammaln(seen + prior) - gammaln(prior)
         logs[place] = cells.sum() - (gammaln(rows + weight) - gammaln(weight)).sum()
-    return float(weights[np.argmax(logs >= logs.max() - TOLERATED)])
+    return float(WEIGHTS[int(np.argmax(logs))])
 
 
 def dirichlet_posterior(counts: NDArray[np.integer] | Floats, shares: Floats | None = None) -> Floats:
