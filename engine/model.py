@@ -21,6 +21,7 @@ from engine.doubting.register import cautions
 from engine.learning import learn as learning
 from engine.learning import learned as learnt
 from engine.network.network import Category, Network, network
+from engine.network.program import program
 from engine.order import Direction, Order
 from engine.records.table import Coded, Table
 from engine.refusal import Refusal
@@ -100,6 +101,10 @@ class Model:
         if others:
             shares = (shares * self._planner.joint(others)).reshape(len(shares), -1).sum(axis=1)
         return float(shares.max() - shares.min())
+
+    def program(self) -> str:
+        """The model as a short, readable Python text that draws invented records; it needs numpy alone."""
+        return program(self.network, self.order)
 
     def _outcomes(self) -> tuple[str, ...]:
         named = () if self.order is None else tuple(self.order.outcomes)
