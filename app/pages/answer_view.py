@@ -206,7 +206,10 @@ def again(asked: Asked, study: Study) -> list[tuple[str, str]]:
     return [
         ("asked", f"{today()}; {study.asked:,} {'question' if study.asked == 1 else 'questions'} asked of this study"),
         ("computed", method(asked.answer)),
-        ("intervals", f"90%, over {DRAWS} draws of this model’s figures; no doubt about its links in them"),
+        (
+            "intervals",
+            f"90%, over {DRAWS} plausible versions of this model’s figures; the doubt about its links is left out",
+        ),
         ("model", f"{size(links, study.links is not None)}; exact search{state}"),
         ("version", f"Steelyard {metadata.version('steelyard')}, seed {SEED}"),
     ]

@@ -28,5 +28,6 @@ def size(links: int, accepted: bool) -> str:
 def intervals(draws: int) -> str:
     """What the intervals hold and what they leave out."""
     return (
-        f"intervals hold {share(COVERAGE)} of {draws:,} draws of this model’s figures, and no doubt about its links yet"
+        f"intervals hold {share(COVERAGE)} of {draws:,} plausible versions of this model’s figures; "
+        "they leave out the doubt about its links"
     )
