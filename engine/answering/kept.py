@@ -12,12 +12,22 @@ Value = TypeVar("Value")
 
 
 class Kept(Generic[Key, Value]):
-    """The last few values made, by key. Safe for many threads: two that ask at once may both make a value."""
+    """The last values made, by key, as many as weigh no more than `limit` together; each weighs 1 if not told.
 
-    def __init__(self, limit: int) -> None:
+    Safe for many threads: two that ask at once may both make a value.
+    """
+
+    def __init__(self, limit: float, weigh: Callable[[Value], float] = lambda value: 1) -> None:
         self._limit = limit
+        self._weigh = weigh
+        self._weight = 0.0
         self._values: OrderedDict[Key, Value] = OrderedDict()
         self._lock = threading.Lock()
+
+    @property
+    def weight(self) -> float:
+        """What all that is kept weighs."""
+        return self._weight
 
     def get(self, key: Key, make: Callable[[], Value]) -> Value:
         with self._lock:
@@ -25,8 +35,13 @@ class Kept(Generic[Key, Value]):
                 self._values.move_to_end(key)
                 return self._values[key]
         value = make()
+        weight = self._weigh(value)
         with self._lock:
-            value = self._values.setdefault(key, value)
-            while len(self._values) > self._limit:
-                self._values.popitem(last=False)
+            if key in self._values or weight > self._limit:
+                return self._values.get(key, value)
+            self._values[key] = value
+            self._weight += weight
+            while self._weight > self._limit:
+                _, oldest = self._values.popitem(last=False)
+                self._weight -= self._weigh(oldest)
         return value

@@ -6,8 +6,9 @@ are places in the network; the set copy of the column at place i has the label i
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
@@ -53,8 +54,13 @@ class World:
     def watched(self) -> tuple[int, ...]:
         return tuple(label for label in self.reads.values() if label >= 0)
 
-    def tables(self, drawn: Sequence[np.ndarray]) -> list[np.ndarray]:
-        """One table per part, (levels left..., draws), from the network's tables; (..., 1) for a set copy."""
+    @cached_property
+    def families(self) -> tuple[int, ...]:
+        """Places of the columns whose own tables this world needs."""
+        return tuple(part.family for part in self.parts if part.lever is None)
+
+    def tables(self, drawn: Mapping[int, np.ndarray]) -> list[np.ndarray]:
+        """One table per part, (levels left..., draws), from the tables of `families`; (..., 1) for a set copy."""
         return [_table(part, drawn, len(self.network.nodes[part.family].levels)) for part in self.parts]
 
     def spread_out(self, column: str, marginals: Mapping[int, np.ndarray], draws: int) -> np.ndarray:
@@ -128,7 +134,7 @@ def _natural(place: int, kept: Mapping[int, tuple[int, ...]]) -> tuple[int, Left
     return place, positions[0] if positions is not None and len(positions) == 1 else positions
 
 
-def _table(part: Part, drawn: Sequence[np.ndarray], levels: int) -> np.ndarray:
+def _table(part: Part, drawn: Mapping[int, np.ndarray], levels: int) -> np.ndarray:
     if part.lever is None:
         table = drawn[part.family]
     else:  # the copy is the set level with probability reach, else the natural value

@@ -13,6 +13,7 @@ from engine.refusal import Refusal
 
 ROUNDING = 1e-8  # how far a row of a table may be from 1: tables are often written with nine or more digits
 SMALLEST = 1e-300  # a drawn share that rounds to 0 although its cell is possible is taken as this
+AT_ONCE = 1_000_000  # cells times draws that are drawn at once; a larger table is drawn in parts
 
 
 @dataclass(frozen=True, eq=False)
@@ -95,7 +96,7 @@ class Network:
         The first draw is the posterior mean. A family (column and parents) draws the same numbers in every
         network that holds it, so that answers from different networks are compared on common draws.
         """
-        return tuple(_family_draws(node, count, seed) for node in self.nodes)
+        return tuple(drawn_table(node, count, seed) for node in self.nodes)
 
 
 def network(nodes: Iterable[Category]) -> Network:
@@ -189,21 +190,32 @@ def _circle(waiting: list[Category], left: set[str]) -> list[str]:
         walk.append(parent)
 
 
-def _family_draws(node: Category, count: int, seed: int) -> np.ndarray:
+def drawn_table(node: Category, count: int, seed: int) -> np.ndarray:
+    """One family's part of `Network.draws`, read-only: (parent levels..., own levels, 1 + count).
+
+    A table known exactly is the same in every draw and takes no more room than once.
+    """
     mean = np.asarray(node.table)[..., None]
     if node.dirichlet is None or count == 0:
-        return np.repeat(mean, 1 + count, axis=-1)
+        return np.broadcast_to(mean, (*mean.shape[:-1], 1 + count))
     key = zlib.crc32("\x1f".join((node.name, *node.parents)).encode())
     rng = np.random.default_rng([seed, key])
     # ln Gamma(a) draws through Gamma(a + 1) and a uniform: a prior cell of 0.001 would underflow to 0 otherwise.
-    alpha = node.dirichlet[..., None]
-    shape = (*node.dirichlet.shape, count)
+    alpha = node.dirichlet.reshape(-1, node.dirichlet.shape[-1], 1)  # (configurations, own levels, 1)
+    drawn = np.empty((*alpha.shape[:2], 1 + count))
+    drawn[..., :1] = mean.reshape(alpha.shape)
+    rows = max(1, AT_ONCE // (alpha.shape[1] * count))
+    parts = [slice(start, start + rows) for start in range(0, len(alpha), rows)]
+    for part in parts:
+        shape = (*alpha[part].shape[:2], count)
+        drawn[part, :, 1:] = rng.standard_gamma(np.broadcast_to(alpha[part] + 1.0, shape))
     with np.errstate(divide="ignore"):  # a parameter of 0 is a level that cannot be: its share is 0 in every draw
-        log_gamma = (
-            np.log(rng.standard_gamma(np.broadcast_to(alpha + 1.0, shape))) - rng.standard_exponential(shape) / alpha
-        )
-    log_gamma -= log_gamma.max(axis=-2, keepdims=True)
-    drawn = np.exp(log_gamma)
-    drawn /= drawn.sum(axis=-2, keepdims=True)
-    drawn = np.where(alpha > 0.0, np.maximum(drawn, SMALLEST), 0.0)
-    return np.concatenate([mean, drawn], axis=-1)
+        for part in parts:
+            shape = (*alpha[part].shape[:2], count)
+            log_gamma = np.log(drawn[part, :, 1:]) - rng.standard_exponential(shape) / alpha[part]
+            log_gamma -= log_gamma.max(axis=-2, keepdims=True)
+            shares = np.exp(log_gamma, out=log_gamma)
+            shares /= shares.sum(axis=-2, keepdims=True)
+            drawn[part, :, 1:] = np.where(alpha[part] > 0.0, np.maximum(shares, SMALLEST), 0.0)
+    drawn.flags.writeable = False
+    return drawn.reshape(*node.dirichlet.shape, 1 + count)
