@@ -20,8 +20,10 @@ from engine.doubting.case import Case
 from engine.doubting.register import cautions
 from engine.learning import learn as learning
 from engine.learning import learned as learnt
+from engine.network import conditional
 from engine.network.network import Category, Network, network
 from engine.network.program import program
+from engine.network.story import Story, sentences
 from engine.order import Direction, Order
 from engine.records.table import Coded, Table
 from engine.refusal import Refusal
@@ -34,12 +36,13 @@ class Model:
     """A network that answers questions.
 
     network: tables and their posterior.  order: as stated, None for a network given as it is.
-    coded: the records it was learned from, None without.
+    coded: the records it was learned from, None without.  unsettled: links whose direction nobody settled.
     """
 
     network: Network
     order: Order | None = None
     coded: Coded | None = None
+    unsettled: frozenset[tuple[str, str]] = frozenset()
 
     @classmethod
     def from_network(cls, nodes: Iterable[Category]) -> Model:
@@ -102,6 +105,26 @@ class Model:
             shares = (shares * self._planner.joint(others)).reshape(len(shares), -1).sum(axis=1)
         return float(shares.max() - shares.min())
 
+    def story(self, column: str) -> str:
+        """How a column comes about: what it comes from or goes with, and its rules in plain words.
+
+        Raises Refusal for an unknown column.
+        """
+        return self.account(column).text
+
+    def account(self, column: str, most: int = 24) -> Story:
+        """The same in sentences made of parts, with the table behind it: its `most` commonest configurations.
+
+        Raises Refusal for an unknown column.
+        """
+        if column not in self.network.index:
+            raise Refusal(f"This model has no column {column}.", where=column, do="Ask for one of model.network.names.")
+        common = self._planner.joint(self.network.node(column).parents)
+        better = self._better(column) if self.order is not None and column in self.order.outcomes else None
+        rows = conditional.rows(self.network, column, common, most)
+        told = sentences(self.network, column, common, better, self.unsettled)
+        return Story(told, rows, common.size - len(rows))
+
     def program(self) -> str:
         """The model as a short, readable Python text that draws invented records; it needs numpy alone."""
         return program(self.network, self.order)
@@ -140,7 +163,13 @@ class Learned(learnt.Learned):
         Raises Refusal for a number that the curve does not hold.
         """
         size = self.recommended if links is None else links
-        return self._models.get(size, lambda: Model(self.network(size), self.order, self.coded))
+        return self._models.get(size, lambda: self._model(size))
+
+    def _model(self, links: int) -> Model:
+        found = self.settled(links)
+        pairs = zip(found["source"], found["target"], found["settled"], strict=True)
+        unsettled = frozenset((source, target) for source, target, by in pairs if by == "nobody")
+        return Model(self.network(links), self.order, self.coded, unsettled)
 
     @cached_property
     def _models(self) -> Kept[int, Model]:
