@@ -9,8 +9,8 @@ from scipy.special import gammaln
 Floats = NDArray[np.float64]
 
 # Prior records per configuration that are tried. Heavier priors pull sparse configurations, which lie to one side of
-# the column as a whole, towards it: with up to 8 records 90% intervals of a change held 75 to 81 of 100 truths on tables
-# of 1,000 and 4,000 rows, with at most one record 87 to 88, and the error was smaller too.
+# the column as a whole, towards it: with up to 8 records, 90% intervals of a change held 75 to 81 of 100 truths on
+# tables of 1,000 and 4,000 rows; with at most one record 87 to 88, and the error was smaller too.
 WEIGHTS = (0.3, 0.5, 1.0)
 
 
