@@ -6,12 +6,15 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Iterator, Sequence
+from math import lgamma
 from typing import Protocol
 
 import numpy as np
 from numpy.typing import NDArray
 
-from engine.records.joint import LARGEST, Block, Ints, Walk, rank
+from engine.records.covering import BLOCK_CELLS, MOST_COLUMNS, Cover
+from engine.records.joint import LARGEST, Block, Ints, rank
+from engine.records.products import Walk
 
 __all__ = ["LARGEST", "ArrayCounts", "Block", "Counts", "rank"]
 
@@ -66,4 +69,33 @@ class ArrayCounts:
         yield Block(0, nought, one, nought, everything[:, None, None])
         size = min(size, len(self.levels))
         if size:
-            yield from Walk(self.codes, self.levels, self.fold, self.folds, size, tick or (lambda part: None)).blocks()
+            way = Cover if self._covering_is_cheaper(size) else Walk
+            yield from way(self.codes, self.levels, self.fold, self.folds, size, tick or (lambda part: None)).blocks()
+
+    def _covering_is_cheaper(self, size: int) -> bool:
+        columns = len(self.levels)
+        if columns > MOST_COLUMNS:
+            return False
+        fits = np.log(BLOCK_CELLS) / float(np.mean(np.log(np.maximum(self.levels, 2))))  # columns of a block
+        covering = covering_seconds(self.rows, columns, size, fits, self.folds)
+        return covering < walking_seconds(self.rows, columns, size, sum(self.levels), self.folds)
+
+
+# Rough seconds of either way, as measured from 10 to 37 columns and from 10,000 to 400,000 rows. They only choose.
+
+
+def covering_seconds(rows: int, columns: int, size: int, fits: float, folds: int) -> float:
+    """fits: columns that a block can hold. A cover takes about three times the fewest blocks there could be."""
+    blocks = max(1.0, _choose(columns, size) / max(1.0, _choose(min(fits, columns), size) / 3.0))
+    return blocks * (0.004 * (1.4 if folds > 1 else 1.0) + 14e-9 * rows)
+
+
+def walking_seconds(rows: int, columns: int, size: int, levels: int, folds: int) -> float:
+    """levels: of all columns together."""
+    wide = levels**2 * 2.0 / (size * (size + 1.0))  # one-hot columns after a prefix, squared
+    return _choose(columns, max(size - 2, 0)) * (0.001 * (2.0 if folds > 1 else 1.0) + rows * (60e-9 + 4e-11 * wide))
+
+
+def _choose(n: float, k: int) -> float:
+    """n choose k for any real n; 0 below k."""
+    return float(np.exp(lgamma(n + 1) - lgamma(k + 1) - lgamma(n - k + 1))) if n >= k else 0.0

@@ -1,22 +1,17 @@
-"""Joint counts of every set of columns up to a size, by products of one-hot columns."""
+"""Joint counts of sets of columns: how sets are numbered, and the blocks that their counts come in."""
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
-from itertools import pairwise
 from math import comb
 
 import numpy as np
 from numpy.typing import NDArray
 
 LARGEST = 1_000_000  # joint levels of a set that is counted; larger ones are left out of learning
-_BLOCK = 2_000_000  # counts in a block, so that memory stays flat
-_HELD = 16_000_000  # entries of a prefix's products that are kept for the prefixes below it
-_ONE_HOT = 256_000_000  # bytes of one-hot columns; the widest columns beyond it are counted by their codes
 
 Ints = NDArray[np.int64]
-Products = NDArray[np.floating]
 
 
 def rank(columns: Sequence[int]) -> int:
@@ -41,280 +36,7 @@ class Block:
     counts: NDArray[np.int32]
 
 
-@dataclass(frozen=True)
-class _Node:
-    """The records split by the levels of a prefix of columns.
-
-    number: (rows,) which occupied cell each record is in.  occupied: how many there are.  cells: joint levels.
-    layout: the later columns that are counted by products, None when there are none.
-    products: (folds, occupied cells, one-hot columns, the same), None when they are not kept.
-    """
-
-    prefix: tuple[int, ...]
-    number: Ints
-    occupied: int
-    cells: int
-    layout: _Layout | None
-    products: Products | None
-
-
-class Walk:
-    """Depth first over prefixes of size - 2 columns; the last two columns of every set come from matrix products.
-
-    The records of one cell of a prefix, one-hot, times themselves give the counts of all pairs of later columns in
-    that cell. Products of 0 and 1 in float32 are exact below 2^24 rows. The cell of a column's commonest level is the
-    cell above it less its other cells, so most records are never multiplied again.
-
-    codes: (rows, columns).  levels: of each column.  fold: (rows,) 0 to folds - 1.
-    size: of the largest sets, 1 or more.  tick: hears the fraction done.
-    """
-
-    def __init__(
-        self, codes: Ints, levels: Sequence[int], fold: Ints, folds: int, size: int, tick: Callable[[float], None]
-    ) -> None:
-        self.codes = codes
-        self.fold = fold
-        self.folds = folds
-        self.size = size
-        self.tick = tick
-        self.rows, self.columns = codes.shape
-        self.levels = np.asarray(levels, dtype=np.int64)
-        self.kept = _within_budget(self.levels, self.rows)
-        self.first = np.zeros(self.columns + 1, dtype=np.int64)  # where a column begins in `one_hot`
-        self.first[1:] = np.cumsum(np.where(self.kept, self.levels, 0))
-        self.exact = np.float32 if self.rows < 2**24 else np.float64
-        self.one_hot = np.zeros((self.rows, int(self.first[-1])), dtype=np.uint8)
-        for column in np.flatnonzero(self.kept):
-            self.one_hot[np.arange(self.rows), self.first[column] + codes[:, column]] = 1
-        self.commonest = [int(np.bincount(codes[:, column]).argmax()) for column in range(self.columns)]
-        self.others = [np.flatnonzero(codes[:, column] != self.commonest[column]) for column in range(self.columns)]
-        self.choose = [
-            np.asarray([comb(n, k) for n in range(self.columns + 1)], dtype=np.int64) for k in range(size + 1)
-        ]
-        self.layouts: dict[tuple[bytes, int], _Layout] = {}
-        self.done = 0
-        self.total = comb(self.columns, max(size - 2, 0))
-
-    def blocks(self) -> Iterator[Block]:
-        """Every set of 1 to `size` columns with at most LARGEST joint levels."""
-        if self.size == 1:
-            for column in range(self.columns):
-                number, seen = _numbered(self.codes[:, column], int(self.levels[column]))
-                yield self._single((column,), int(self.levels[column]), number, seen.size)
-            return
-        number = np.zeros(self.rows, dtype=np.int64)
-        layout = self._layout((), 1, 1)
-        products = None
-        if layout is not None and self._holds(layout, 1):
-            products = self._multiplied(layout, number, np.arange(self.rows), 0, 1)
-        yield from self._below(_Node((), number, 1, 1, layout, products))
-
-    def _below(self, node: _Node) -> Iterator[Block]:
-        """Every set that begins with the node's prefix, itself excepted."""
-        if len(node.prefix) == self.size - 2:
-            yield from self._ends(node)
-            self.done += 1
-            self.tick(self.done / self.total)
-            return
-        for column in range(node.prefix[-1] + 1 if node.prefix else 0, self.columns):
-            if node.cells * self.levels[column] <= LARGEST:
-                lower = self._lower(node, column)
-                yield self._single(lower.prefix, lower.cells, lower.number, lower.occupied)
-                yield from self._below(lower)
-
-    def _lower(self, node: _Node, column: int) -> _Node:
-        """The node's cells split by one more column."""
-        levels = int(self.levels[column])
-        number, seen = _numbered(node.number * levels + self.codes[:, column], node.occupied * levels)
-        prefix, cells, occupied = (*node.prefix, column), node.cells * levels, int(seen.size)
-        layout = self._layout(prefix, cells, occupied)
-        products = None
-        if layout is not None and self._holds(layout, occupied):
-            if node.layout is None or node.products is None:
-                products = self._multiplied(layout, number, np.arange(self.rows), 0, occupied)
-            else:
-                products = self._multiplied(layout, number, self.others[column], 0, occupied)
-                self._subtract(products, layout, node.products, node.layout, seen, column)
-        return _Node(prefix, number, occupied, cells, layout, products)
-
-    def _ends(self, node: _Node) -> Iterator[Block]:
-        """Sets of the prefix and one or two later columns."""
-        later = self._later(node.prefix, node.cells)
-        dense = np.zeros(later.size, dtype=np.bool_)
-        if node.layout is not None:
-            dense = np.isin(later, node.layout.one.columns[0])
-            yield from self._by_products(node, node.layout)
-        for column in later[~dense]:
-            yield from self._by_codes(node, int(column), later[later > column], alone=True)
-            self.tick(self.done / self.total)
-        for column in later[dense]:
-            yield from self._by_codes(node, int(column), later[(later > column) & ~dense], alone=False)
-            self.tick(self.done / self.total)
-
-    def _by_products(self, node: _Node, layout: _Layout) -> Iterator[Block]:
-        step = max(1, _BLOCK // (self.folds * layout.places.size**2))
-        for low in range(0, node.occupied, step):
-            high = min(low + step, node.occupied)
-            self.tick(self.done / self.total)
-            if node.products is None:
-                products = self._multiplied(layout, node.number, np.arange(self.rows), low, high)
-            else:
-                products = node.products[:, low:high]
-            flat = products.reshape(self.folds, high - low, -1)
-            for more in (layout.one, layout.two):
-                if more.levels.size:
-                    yield Block(
-                        len(node.prefix) + more.columns.shape[0],
-                        rank(node.prefix) + self._further(len(node.prefix), more.columns),
-                        node.cells * more.levels,
-                        more.starts,
-                        np.take(flat, more.entries, axis=2).astype(np.int32),
-                    )
-
-    def _by_codes(self, node: _Node, column: int, others: Ints, alone: bool) -> Iterator[Block]:
-        """Sets too sparse for products: number the occupied cells and count them."""
-        if not alone and not others.size:
-            return
-        levels = int(self.levels[column])
-        prefix, cells = (*node.prefix, column), node.cells * levels
-        number, seen = _numbered(node.number * levels + self.codes[:, column], node.occupied * levels)
-        if alone:
-            yield self._single(prefix, cells, number, seen.size)
-        for other in others:
-            more = int(self.levels[other])
-            if cells * more <= LARGEST:
-                both, found = _numbered(number * more + self.codes[:, other], seen.size * more)
-                yield self._single((*prefix, int(other)), cells * more, both, found.size)
-
-    def _single(self, columns: tuple[int, ...], cells: int, number: Ints, occupied: int) -> Block:
-        """One set, from the numbers of its occupied cells."""
-        counts = np.bincount(self.fold * occupied + number, minlength=self.folds * occupied)
-        counted: NDArray[np.int32] = counts.reshape(self.folds, 1, occupied).astype(np.int32)
-        where = np.asarray([rank(columns)], dtype=np.int64)
-        return Block(len(columns), where, np.asarray([cells], dtype=np.int64), np.zeros(1, dtype=np.int64), counted)
-
-    def _multiplied(self, layout: _Layout, number: Ints, rows: Ints, low: int, high: int) -> Products:
-        """(folds, high - low, one-hot columns, the same) products of the given rows in cells low to high."""
-        products = np.zeros((self.folds, high - low, layout.places.size, layout.places.size), dtype=self.exact)
-        group = number[rows] * self.folds + self.fold[rows]
-        if high * self.folds <= 2**15:
-            group = group.astype(np.int16)  # numpy sorts these by radix, ten times faster
-        by_group = rows[np.argsort(group, kind="stable")]
-        bounds = np.concatenate([[0], np.cumsum(np.bincount(group, minlength=high * self.folds))])
-        begin, end = bounds[low * self.folds], bounds[high * self.folds]
-        hot = self.one_hot.take(by_group[begin:end], axis=0)[:, layout.used]
-        edges = (bounds[low * self.folds : high * self.folds + 1] - begin).tolist()
-        for place, (start, stop) in enumerate(pairwise(edges)):
-            if start < stop:
-                part = hot[start:stop].astype(self.exact)
-                np.matmul(part.T, part, out=products[place % self.folds, place // self.folds])
-        return products
-
-    def _subtract(
-        self, products: Products, layout: _Layout, above: Products, wider: _Layout, seen: Ints, column: int
-    ) -> None:
-        """Fill in the cells of the column's commonest level: the cell above less its other cells.
-
-        seen: (occupied cells,) cell above x levels + level, ascending.
-        """
-        owner, level = np.divmod(seen, int(self.levels[column]))
-        inside = np.searchsorted(wider.places, layout.places)
-        together = int(inside[-1] - inside[0] + 1) == inside.size
-        for cell in np.flatnonzero(level == self.commonest[column]).tolist():
-            whole = above[:, owner[cell]]
-            if together:
-                products[:, cell] = whole[:, inside[0] : inside[-1] + 1, inside[0] : inside[-1] + 1]
-            else:
-                products[:, cell] = whole[:, inside[:, None], inside]
-            first, last = np.searchsorted(owner, [owner[cell], owner[cell] + 1])
-            for other in range(first, last):
-                if other != cell:
-                    products[:, cell] -= products[:, other]
-
-    def _holds(self, layout: _Layout, occupied: int) -> bool:
-        return self.folds * occupied * layout.places.size**2 <= _HELD
-
-    def _later(self, prefix: tuple[int, ...], cells: int) -> Ints:
-        later = np.arange(prefix[-1] + 1 if prefix else 0, self.columns)
-        return later[cells * self.levels[later] <= LARGEST]
-
-    def _layout(self, prefix: tuple[int, ...], cells: int, occupied: int) -> _Layout | None:
-        """The later columns whose products have fewer entries than the codes would have work, or None."""
-        later = self._later(prefix, cells)
-        most = min(max(4 * self.rows, 10_000), 65_536)
-        dense = later[self.kept[later] & (occupied * self.levels[later] ** 2 <= most)]
-        if not dense.size:
-            return None
-        limit = LARGEST // cells
-        widest = np.sort(self.levels[dense])[-2:]
-        key = (dense.tobytes(), 0 if int(np.prod(widest)) <= limit else limit)
-        if key not in self.layouts:
-            self.layouts[key] = _laid_out(self.levels, self.first, dense, limit)
-        return self.layouts[key]
-
-    def _further(self, depth: int, columns: Ints) -> Ints:
-        """What each column of (more columns, sets) adds to the rank of a prefix of `depth` smaller ones."""
-        added = sum(self.choose[depth + 1 + place][column] for place, column in enumerate(columns))
-        return np.asarray(added, dtype=np.int64)
-
-
-@dataclass(frozen=True)
-class _Further:
-    """Sets of one or of two later columns inside a product.
-
-    columns: (1 or 2, sets).  levels: (sets,) joint levels of those columns.  entries: where their counts are in a
-    flattened product, set by set.  starts: (sets,) where each set begins among the entries.
-    """
-
-    columns: Ints
-    levels: Ints
-    entries: Ints
-    starts: Ints
-
-
-@dataclass(frozen=True)
-class _Layout:
-    """places: one-hot columns that make up a product; used: the same, as a slice where it can be.
-
-    one, two: what to read off it.
-    """
-
-    places: Ints
-    used: slice | Ints
-    one: _Further
-    two: _Further
-
-
-def _laid_out(all_levels: Ints, begins: Ints, later: Ints, limit: int) -> _Layout:
-    """limit: most joint levels of two columns."""
-    levels = all_levels[later]
-    first = np.cumsum(levels) - levels
-    wide = int(levels.sum())
-    places = np.concatenate([np.arange(begins[column], begins[column] + all_levels[column]) for column in later])
-    together = int(places[-1] - places[0] + 1) == wide
-    used = slice(int(places[0]), int(places[-1]) + 1) if together else places
-    one = _Further(later[None, :], levels, np.arange(wide) * (wide + 1), first)
-    a, b = np.triu_indices(later.size, 1)
-    small = levels[a] * levels[b] <= limit
-    a, b = a[small], b[small]
-    joint = levels[a] * levels[b]
-    starts = np.cumsum(joint) - joint
-    within = np.arange(joint.sum()) - np.repeat(starts, joint)
-    width = np.repeat(levels[b], joint)
-    entries = (np.repeat(first[a], joint) + within // width) * wide + np.repeat(first[b], joint) + within % width
-    return _Layout(places, used, one, _Further(np.stack([later[a], later[b]]), joint, entries, starts))
-
-
-def _within_budget(levels: Ints, rows: int) -> NDArray[np.bool_]:
-    """Columns that are held one-hot: all, or the narrowest that fit."""
-    narrow = np.argsort(levels, kind="stable")
-    fits = np.cumsum(levels[narrow]) * rows <= _ONE_HOT
-    kept = np.zeros(levels.size, dtype=np.bool_)
-    kept[narrow[fits]] = True
-    return kept
-
-
-def _numbered(code: Ints, reach: int) -> tuple[Ints, Ints]:
+def numbered(code: Ints, reach: int) -> tuple[Ints, Ints]:
     """Codes below `reach` renumbered without gaps, and the codes that there are, ascending."""
     if reach <= 8 * code.size + 1024:
         seen = np.flatnonzero(np.bincount(code, minlength=reach))
@@ -323,3 +45,23 @@ def _numbered(code: Ints, reach: int) -> tuple[Ints, Ints]:
         return number[code], seen
     distinct, place = np.unique(code, return_inverse=True)
     return place.reshape(-1).astype(np.int64), distinct
+
+
+def single(
+    columns: Sequence[int],
+    cells: int,
+    number: Ints,
+    occupied: int,
+    fold: NDArray[np.integer],
+    folds: int,
+    weights: NDArray[np.integer] | None = None,
+) -> Block:
+    """The block of one set.
+
+    number: (rows,) 0 to occupied - 1, which occupied cell each row is in.  fold: (rows,) 0 to folds - 1.
+    weights: (rows,) whole numbers, how many records each row stands for; None for one each.
+    """
+    counts = np.bincount(fold * occupied + number, weights, minlength=folds * occupied)
+    counted = counts.reshape(folds, 1, occupied).astype(np.int32)
+    where = np.asarray([rank(columns)], dtype=np.int64)
+    return Block(len(columns), where, np.asarray([cells], dtype=np.int64), np.zeros(1, dtype=np.int64), counted)

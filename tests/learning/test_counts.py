@@ -9,8 +9,10 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from engine.records import joint
-from engine.records.counts import LARGEST, ArrayCounts, rank
+from engine.records import covering, products
+from engine.records.counts import LARGEST, ArrayCounts, covering_seconds, rank, walking_seconds
+from engine.records.covering import Cover
+from engine.records.products import Walk
 
 
 def some_records(seed, rows, levels):
@@ -19,12 +21,21 @@ def some_records(seed, rows, levels):
     return codes, rng.permutation(np.arange(rows) % 5)
 
 
-def gathered(counts, size):
+WAYS = [Cover, Walk]
+
+
+def by_way(way, codes, levels, fold, folds, size):
+    """As `gathered`, in one way whatever is cheaper."""
+    size = min(size, len(levels))
+    return gathered(ArrayCounts(codes, levels, fold, folds), size, way(codes, levels, fold, folds, size, abs).blocks())
+
+
+def gathered(counts, size, blocks=None):
     """Set -> sorted list of (count in each fold) over its occupied cells, from the blocks."""
     columns = len(counts.levels)
     names = {(each, rank(chosen)): chosen for each in range(size + 1) for chosen in combinations(range(columns), each)}
     found: dict[tuple[int, ...], list[tuple[int, ...]]] = {}
-    for block in counts.blocks(size):
+    for block in counts.blocks(size) if blocks is None else blocks:
         ends = [*block.starts[1:], block.counts.shape[2]]
         for place, (start, end) in enumerate(zip(block.starts, ends, strict=True)):
             chosen = names[block.size, int(block.ranks[place])]
@@ -52,26 +63,62 @@ def grouped(codes, fold, folds, chosen):
 def test_every_set_is_counted_as_pandas_groups_it(seed, rows, levels, size, folds):
     codes, fold = some_records(seed, rows, levels)
     fold = fold if folds > 1 else np.zeros(rows, dtype=np.int64)
-    found = gathered(ArrayCounts(codes, levels, fold, folds), size)
     wanted = [
         chosen
         for each in range(min(size, len(levels)) + 1)
         for chosen in combinations(range(len(levels)), each)
         if prod(levels[column] for column in chosen) <= LARGEST
     ]
-    assert set(found) == set(wanted)
-    for chosen in wanted:
-        assert found[chosen] == grouped(codes, fold, folds, list(chosen))
+    truth = {chosen: grouped(codes, fold, folds, list(chosen)) for chosen in wanted}
+    assert gathered(ArrayCounts(codes, levels, fold, folds), size) == truth
+    del truth[()]
+    for way in WAYS:
+        assert by_way(way, codes, levels, fold, folds, size) == truth
 
 
 @pytest.mark.parametrize("limit", ["_BLOCK", "_HELD", "_ONE_HOT"])
-def test_the_route_does_not_change_the_counts(monkeypatch, limit):
+def test_the_limits_of_products_do_not_change_the_counts(monkeypatch, limit):
     levels = [2, 3, 4, 5, 3]
     codes, fold = some_records(1, 400, levels)
-    counts = ArrayCounts(codes, levels, fold, 5)
-    before = gathered(counts, 4)
-    monkeypatch.setattr(joint, limit, 400 * 7)
-    assert gathered(counts, 4) == before
+    before = by_way(Walk, codes, levels, fold, 5, 4)
+    monkeypatch.setattr(products, limit, 400 * 7)
+    assert by_way(Walk, codes, levels, fold, 5, 4) == before
+
+
+@pytest.mark.parametrize("cells", [2, 30, 200])
+def test_the_size_of_a_block_of_columns_does_not_change_the_counts(monkeypatch, cells):
+    levels = [2, 3, 4, 5, 3]
+    codes, fold = some_records(1, 400, levels)
+    before = by_way(Walk, codes, levels, fold, 5, 4)
+    monkeypatch.setattr(covering, "BLOCK_CELLS", cells)
+    monkeypatch.setattr(covering, "_ROWS", 37)
+    assert by_way(Cover, codes, levels, fold, 5, 4) == before
+
+
+@pytest.mark.parametrize("cells", [30, 65_536])
+def test_rows_that_are_alike_are_added_up_first_and_counted_the_same(monkeypatch, cells):
+    levels = [2, 2, 3, 2]
+    codes, fold = some_records(6, 3_000, levels)
+    monkeypatch.setattr(covering, "BLOCK_CELLS", cells)
+    cover = Cover(codes, levels, fold, 5, 3, abs)
+    assert cover.weights is not None and cover.weights.sum() == 3_000 and cover.weights.size <= 120
+    assert by_way(Cover, codes, levels, fold, 5, 3) == by_way(Walk, codes, levels, fold, 5, 3)
+
+
+def test_configurations_beyond_one_number_are_told_apart():
+    levels = [50] * 12  # 50^12 is more than 2^62
+    codes, fold = some_records(7, 60, levels)
+    codes = np.concatenate([codes] * 4)
+    fold = np.concatenate([fold] * 4)
+    cover = Cover(codes, levels, fold, 5, 2, abs)
+    assert cover.weights is not None and sorted(cover.weights) == [4] * 60
+    assert by_way(Cover, codes, levels, fold, 5, 2) == by_way(Walk, codes, levels, fold, 5, 2)
+
+
+def test_long_tables_are_covered_and_short_wide_ones_walked():
+    long, wide = (400_000, 20, 4), (10_000, 37, 5)
+    assert covering_seconds(*long, 8.8, 1) < walking_seconds(*long, 70, 1) / 2
+    assert walking_seconds(*wide, 130, 1) < covering_seconds(*wide, 8.8, 1) / 2
 
 
 def test_a_family_is_counted_as_crosstab_counts_it():
@@ -91,9 +138,11 @@ def test_sets_of_one_size_are_ranked_without_gaps():
         assert sorted(ranks) == list(range(comb(columns, size)))
 
 
-def test_counting_says_how_far_it_is():
-    codes, _ = some_records(3, 50, [2] * 6)
+@pytest.mark.parametrize("way", WAYS)
+def test_counting_says_how_far_it_is(monkeypatch, way):
+    monkeypatch.setattr(covering, "BLOCK_CELLS", 16)
+    codes, fold = some_records(3, 50, [2] * 6)
     heard = []
-    for _ in ArrayCounts(codes, [2] * 6).blocks(4, heard.append):
+    for _ in way(codes, [2] * 6, fold, 5, 4, heard.append).blocks():
         pass
     assert heard == sorted(heard) and heard[-1] == 1.0 and len(heard) > 3
