@@ -1,0 +1,277 @@
+"""Sums, squares and products of number columns inside every configuration of the categories."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator, Sequence
+from dataclasses import dataclass
+from itertools import combinations
+from math import prod
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.sparse import csc_matrix
+
+from engine.records.joint import LARGEST
+from engine.records.steps import recording_step
+
+_ROWS = 16_384  # rows whose products are laid out at once
+_HELD = 2_000_000  # sums held at once, so that memory stays flat
+_TOGETHER = 60_000  # sums that one sparse product fills: they and a row of products stay in a core's own cache
+
+Floats = NDArray[np.float64]
+Ints = NDArray[np.int64]
+
+
+@dataclass(frozen=True, eq=False)
+class Numbers:
+    """Number columns, measured from `centre` in units of `scale`.
+
+    columns: (numbers,) positions among all columns, ascending.  values: (rows, numbers) float64, standardised.
+    centre, scale, step: (numbers,) in each column's own units; `step` is what it was recorded to, 0 for finely.
+    """
+
+    columns: tuple[int, ...]
+    values: Floats
+    centre: Floats
+    scale: Floats
+    step: Floats
+
+    @classmethod
+    def standardised(cls, columns: Sequence[int], values: Floats) -> Numbers:
+        """(rows, numbers) `values` in their own units, finite, each column of more than one value."""
+        values = np.asarray(values, dtype=np.float64).reshape(-1, len(columns))
+        if not np.isfinite(values).all():
+            raise AssertionError("a number with blanks is taken as bands before it comes here")
+        centre, scale = values.mean(axis=0), values.std(axis=0)
+        if not (scale > 0.0).all():
+            raise AssertionError("a number with a single value is refused before it comes here")
+        step = np.asarray([recording_step(values[:, place]) for place in range(len(columns))])
+        return cls(tuple(columns), (values - centre) / scale, centre, scale, step)
+
+    @property
+    def rounding(self) -> Floats:
+        """(numbers,) variance that rounding to the step adds, standardised: step^2 / 12 (Sheppard 1898)."""
+        return np.asarray((self.step / self.scale) ** 2 / 12.0)
+
+
+@dataclass(frozen=True, eq=False)
+class Sums:
+    """Sums over the records of each configuration, for several sets of equally many categories.
+
+    sets: (sets, categories) positions among all columns.  starts: (sets,) where each begins on the last axis.
+    count: (folds, configurations) records.  first: (numbers, folds, configurations) sums.
+    second: (products, folds, configurations): all pairs i <= j, a row of the upper triangle after the other, when
+    `pairs`; else the squares only.
+    Configurations without records are left out, and a set may come in several pieces, each with its own.
+    """
+
+    sets: Ints
+    starts: Ints
+    pairs: bool
+    count: Floats
+    first: Floats
+    second: Floats
+
+
+@dataclass(frozen=True, eq=False)
+class FamilySums:
+    """Sums of one family: a number, its category parents and its number parents.
+
+    levels: of each category parent.  columns: the number parents, then the child, as positions among `Numbers`.
+    products: (folds, configurations, terms, terms) sums of the products of (1, number parents, child), standardised;
+    every configuration, the last category parent fastest.
+    """
+
+    levels: tuple[int, ...]
+    columns: tuple[int, ...]
+    products: Floats
+    numbers: Numbers
+
+    def part(self, part: int) -> Floats:
+        """(configurations, terms, terms) from all records when `part` is 0, else from all but fold `part` - 1."""
+        whole = self.products.sum(axis=0)
+        return np.asarray(whole if part == 0 else whole - self.products[part - 1])
+
+
+@dataclass(frozen=True, eq=False)
+class _Piece:
+    """A set of categories with some of its configurations, those numbered `low` to under `high` in `number`."""
+
+    columns: tuple[int, ...]
+    number: NDArray[np.int32]  # (joint levels,) which occupied configuration each is
+    low: int
+    high: int
+    whole: bool
+
+
+class ArrayMoments:
+    """Moments of records held in memory.
+
+    codes: (rows, columns) level positions; those of number columns are not looked at.  levels: of each column.
+    fold: (rows,) 0 to folds - 1, or None for one fold.  weights: (rows,) what each record counts for, or None for 1.
+    """
+
+    def __init__(
+        self,
+        codes: NDArray[np.integer],
+        levels: Sequence[int],
+        numbers: Numbers,
+        fold: NDArray[np.integer] | None = None,
+        folds: int = 1,
+        weights: Floats | None = None,
+    ) -> None:
+        self.codes = np.asfortranarray(codes, dtype=np.int32)
+        self.levels = tuple(int(level) for level in levels)
+        self.numbers = numbers
+        self.rows = int(numbers.values.shape[0])
+        self.fold = np.zeros(self.rows, dtype=np.int32) if fold is None else np.asarray(fold, dtype=np.int32)
+        self.folds = folds
+        self.weights = np.ones(self.rows) if weights is None else np.asarray(weights, dtype=np.float64)
+        self.categories = tuple(place for place in range(len(self.levels)) if place not in set(numbers.columns))
+        self._laid: dict[bool, Floats] = {}
+
+    def blocks(self, size: int, tick: Callable[[float], None] | None = None) -> Iterator[Sums]:
+        """Sums for every set of up to `size` - 1 categories, with pairs where two numbers more still fit into `size`.
+
+        Sets with more than LARGEST joint levels are left out. `tick` hears the fraction done.
+        """
+        numbers = len(self.numbers.columns)
+        if numbers == 0:
+            return
+        hear = tick or (lambda part: None)
+        sets = [list(combinations(self.categories, count)) for count in range(min(size - 1, len(self.categories)) + 1)]
+        pairs = [size - count >= 2 for count in range(len(sets))]
+        costs = [len(each) * (1 + _terms(numbers, wide)) for each, wide in zip(sets, pairs, strict=True)]
+        for count, (chosen, wide) in enumerate(zip(sets, pairs, strict=True)):
+            before, per_piece = sum(costs[:count]), costs[count] / max(len(chosen), 1)
+            waiting: list[_Piece] = []
+            held = done = 0
+            for piece in self._pieces(chosen, wide):
+                more = (piece.high - piece.low) * self.folds * _terms(numbers, wide)
+                if waiting and held + more > _HELD:
+                    yield self._summed(waiting, wide, lambda: hear((before + done * per_piece) / sum(costs)))  # noqa: B023
+                    waiting, held = [], 0
+                waiting.append(piece)
+                held += more
+                done += piece.high == piece.number.max(initial=-1) + 1
+            if waiting:
+                yield self._summed(waiting, wide, lambda: hear((before + done * per_piece) / sum(costs)))  # noqa: B023
+        hear(1.0)
+
+    def family(self, categories: Sequence[int], numbers: Sequence[int], child: int) -> FamilySums:
+        """Sums of the number column `child` and its parents; all three as positions among all columns."""
+        places = tuple(self.numbers.columns.index(column) for column in (*numbers, child))
+        shape = tuple(self.levels[column] for column in categories)
+        configurations = prod(shape)
+        if configurations > LARGEST:
+            raise AssertionError("a family of so many configurations is left out of learning")
+        code = (self._joint(categories, 0, self.rows).astype(np.int64) + configurations * self.fold).astype(np.int64)
+        terms = [np.ones(self.rows), *(self.numbers.values[:, place] for place in places)]
+        products = np.empty((self.folds * configurations, len(terms), len(terms)))
+        for one in range(len(terms)):
+            for other in range(one, len(terms)):
+                weights = self.weights * terms[one] * terms[other]
+                found = np.bincount(code, weights, minlength=products.shape[0])
+                products[:, one, other] = products[:, other, one] = found
+        return FamilySums(
+            shape, places, products.reshape(self.folds, configurations, len(terms), len(terms)), self.numbers
+        )
+
+    def _joint(self, columns: Sequence[int], low: int, high: int) -> NDArray[np.int32]:
+        """(rows low to high,) the joint level of `columns`."""
+        code = np.zeros(high - low, dtype=np.int32)
+        for column in columns:
+            code *= self.levels[column]
+            code += self.codes[low:high, column]
+        return code
+
+    def _pieces(self, sets: Sequence[tuple[int, ...]], pairs: bool) -> Iterator[_Piece]:
+        most = max(1, _HELD // (self.folds * _terms(len(self.numbers.columns), pairs)))
+        for columns in sets:
+            joint = prod(self.levels[column] for column in columns)
+            if joint > LARGEST:
+                continue
+            seen = np.zeros(joint, dtype=np.bool_)
+            for low in range(0, self.rows, _ROWS):
+                seen[self._joint(columns, low, min(low + _ROWS, self.rows))] = True
+            number = np.cumsum(seen, dtype=np.int32) - np.int32(1)
+            occupied = int(seen.sum())
+            for low in range(0, occupied, most):
+                high = min(low + most, occupied)
+                yield _Piece(columns, number, low, high, occupied <= most)
+
+    def _summed(self, pieces: Sequence[_Piece], pairs: bool, tick: Callable[[], None]) -> Sums:
+        """One pass over the rows for all `pieces`."""
+        numbers = len(self.numbers.columns)
+        sizes = [piece.high - piece.low for piece in pieces]
+        starts = np.concatenate([[0], np.cumsum(sizes)])
+        sums = np.zeros((int(starts[-1]) * self.folds, _terms(numbers, pairs)))
+        for low in range(0, self.rows, _ROWS):
+            high = min(low + _ROWS, self.rows)
+            laid = self._products(low, high, pairs)
+            for first, last in _together(sizes, self.folds * sums.shape[1]):
+                begin, end = int(starts[first]) * self.folds, int(starts[last]) * self.folds
+                sums[begin:end] += self._placed(pieces[first:last], low, high, end - begin) @ laid
+                tick()
+        by_term = np.ascontiguousarray(sums.reshape(-1, self.folds, sums.shape[1]).transpose(2, 1, 0))
+        sets = np.asarray([piece.columns for piece in pieces], dtype=np.int64).reshape(len(pieces), -1)
+        return Sums(
+            sets, starts[:-1].astype(np.int64), pairs, by_term[0], by_term[1 : 1 + numbers], by_term[1 + numbers :]
+        )
+
+    def _placed(self, pieces: Sequence[_Piece], low: int, high: int, places: int) -> csc_matrix:
+        """(places, rows) sparse: which sums each record adds to, one a piece."""
+        rows = high - low
+        where = np.empty((rows, len(pieces)), dtype=np.int32)
+        weights = np.repeat(self.weights[low:high], len(pieces)).reshape(rows, len(pieces))
+        before = 0
+        for place, piece in enumerate(pieces):
+            number = piece.number[self._joint(piece.columns, low, high)]
+            if not piece.whole:
+                outside = (number < piece.low) | (number >= piece.high)
+                weights[outside, place] = 0.0
+                number = np.where(outside, 0, number - piece.low).astype(np.int32)
+            number += before
+            number *= self.folds
+            number += self.fold[low:high]
+            where[:, place] = number
+            before += piece.high - piece.low
+        ends = np.arange(0, rows * len(pieces) + 1, len(pieces), dtype=np.int32)
+        return csc_matrix((weights.reshape(-1), where.reshape(-1), ends), shape=(places, rows))
+
+    def _products(self, low: int, high: int, pairs: bool) -> Floats:
+        """(rows, terms): 1, the numbers, their products; kept when they are those of all rows."""
+        if pairs in self._laid:
+            return self._laid[pairs]
+        values = self.numbers.values[low:high]
+        numbers = values.shape[1]
+        laid = np.empty((high - low, _terms(numbers, pairs)))
+        laid[:, 0] = 1.0
+        laid[:, 1 : 1 + numbers] = values
+        if not pairs:
+            np.multiply(values, values, out=laid[:, 1 + numbers :])
+        else:
+            begin = 1 + numbers
+            for place in range(numbers):
+                end = begin + numbers - place
+                np.multiply(values[:, place : place + 1], values[:, place:], out=laid[:, begin:end])
+                begin = end
+        if high - low == self.rows:
+            self._laid = {pairs: laid}
+        return laid
+
+
+def _terms(numbers: int, pairs: bool) -> int:
+    return 1 + numbers + (numbers * (numbers + 1) // 2 if pairs else numbers)
+
+
+def _together(sizes: Sequence[int], each: int) -> Iterator[tuple[int, int]]:
+    """Runs of pieces whose sums, `each` a configuration, fit a core's own cache."""
+    first, held = 0, 0
+    for place, size in enumerate(sizes):
+        if place > first and held + size * each > _TOGETHER:
+            yield first, place
+            first, held = place, 0
+        held += size * each
+    if sizes:
+        yield first, len(sizes)
