@@ -8,7 +8,7 @@ from enum import Enum
 
 import pandas as pd
 
-from engine.refusal import Refusal
+from engine.refusal import Refusal, quoted
 
 Link = tuple[str, str]
 
@@ -90,7 +90,9 @@ class Order:
     def stage_of(self, name: str) -> int:
         """Position of the column's stage, 0 the earliest. Raises Refusal for a column that no stage holds."""
         if name not in self._places:
-            raise Refusal(f"The order has no column “{name}”.", where=name, do="Put it into a stage or take it out.")
+            raise Refusal(
+                f"The order has no column {quoted(name)}.", where=name, do="Put it into a stage or take it out."
+            )
         return self._places[name]
 
     def may_lead(self, source: str, target: str) -> bool:
@@ -134,7 +136,7 @@ class Order:
                 if column in places:
                     first = self.stages[places[column]].name
                     raise Refusal(
-                        f"The column “{column}” is in the order twice: in {first} and in {stage.name}.",
+                        f"The column {quoted(column)} is in the order twice: in {first} and in {stage.name}.",
                         where=column,
                         do="Keep it in one stage.",
                     )
@@ -149,7 +151,7 @@ class Order:
         for where, name in mentions:
             if name not in self._places:
                 raise Refusal(
-                    f"The column “{name}” is in no stage of the order.",
+                    f"The column {quoted(name)} is in no stage of the order.",
                     where=where,
                     do=f"Put it into a stage, or take it out of {where.replace('_', ' ')}.",
                 )
@@ -157,24 +159,24 @@ class Order:
     def _check_links(self) -> None:
         for source, target in self.insist:
             if source == target:
-                raise Refusal(f"“{source}” cannot lead to itself.", where="insist", do="Take that link out.")
+                raise Refusal(f"{quoted(source)} cannot lead to itself.", where="insist", do="Take that link out.")
             early, late = self._places[source], self._places[target]
             if early > late:
                 raise Refusal(
-                    f"You insist that “{source}” leads to “{target}”, but {self.stages[early].name} comes after "
-                    f"{self.stages[late].name}.",
+                    f"You insist that {quoted(source)} leads to {quoted(target)}, but "
+                    f"{self.stages[early].name} comes after {self.stages[late].name}.",
                     where="insist",
                     do="Move one of the columns, or take that link out.",
                 )
             if (source, target) in self.rule_out:
                 raise Refusal(
-                    f"You insist that “{source}” leads to “{target}” and rule it out as well.",
+                    f"You insist that {quoted(source)} leads to {quoted(target)} and rule it out as well.",
                     where="insist",
                     do="Keep one of the two.",
                 )
             if source in self._led[target]:
                 raise Refusal(
-                    f"The links you insist on run in a circle through “{source}” and “{target}”.",
+                    f"The links you insist on run in a circle through {quoted(source)} and {quoted(target)}.",
                     where="insist",
                     do="Take one link of the circle out.",
                 )
@@ -205,7 +207,7 @@ def _better(column: str, better: str | Direction | Iterable[str]) -> Better:
     levels = (better,) if isinstance(better, str) else tuple(better) if isinstance(better, Iterable) else ()
     if not levels or not all(isinstance(level, str) for level in levels):
         raise Refusal(
-            f"The outcome “{column}” has no level that counts as better.",
+            f"The outcome {quoted(column)} has no level that counts as better.",
             where="outcomes",
             do="Name its better level or levels as texts, or engine.MORE or engine.LESS for a number.",
         )

@@ -17,3 +17,8 @@ class Refusal(Exception):  # noqa: N818  a refusal is an answer to a person, not
 
     def __str__(self) -> str:
         return " ".join(part for part in (self.message, self.do) if part)
+
+
+def quoted(text: object) -> str:
+    """A column's name, a level or a file's name in a sentence, in full and between quotation marks."""
+    return f"“{text}”"

@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from engine.records.wording import figure, listing, number_text
-from engine.refusal import Refusal
+from engine.refusal import Refusal, quoted
 
 BANDS = 4
 EVERYTHING = "any value"  # the only band of a number that is not cut
@@ -75,13 +75,15 @@ def checked_cuts(name: str, cuts: Iterable[object]) -> tuple[float, ...]:
     for cut in given:
         if not _is_number(cut) or not math.isfinite(cut):  # type: ignore[arg-type]
             raise Refusal(
-                f"“{cut}” among the cuts of “{name}” is not a number.", where=name, do="Give the cuts as numbers."
+                f"{quoted(cut)} among the cuts of {quoted(name)} is not a number.",
+                where=name,
+                do="Give the cuts as numbers.",
             )
         found.append(float(cut) + 0.0)  # type: ignore[arg-type]
     for before, after in pairwise(found):
         if after <= before:
             raise Refusal(
-                f"The cuts of “{name}” do not rise: {figure(after)} comes after {figure(before)}.",
+                f"The cuts of {quoted(name)} do not rise: {figure(after)} comes after {figure(before)}.",
                 where=name,
                 do="Give each cut once, the smallest first.",
             )
@@ -160,7 +162,7 @@ def _position(levels: Sequence[str], kind: str, cuts: Sequence[float], wanted: o
             return list(levels).index(number_text(value))
     elif isinstance(wanted, bool | np.bool_) and str(wanted) in levels:
         return list(levels).index(str(wanted))
-    raise Refusal(f"There is no level “{wanted}”.", do=f"The levels are {listing(levels, 12)}.")
+    raise Refusal(f"There is no level {quoted(wanted)}.", do=f"The levels are {listing(levels, 12)}.")
 
 
 def _is_number(value: object) -> bool:

@@ -12,7 +12,7 @@ import pandas as pd
 from numpy.typing import ArrayLike, NDArray
 
 from engine.records.wording import number_text
-from engine.refusal import Refusal
+from engine.refusal import Refusal, quoted
 
 EXACT = 2**53  # whole numbers above it are not all exact as floats: they are names, not amounts
 
@@ -68,7 +68,9 @@ def cells(name: str, column: pd.Series) -> Cells:
     if pd.api.types.is_bool_dtype(kind) and not pd.api.types.is_object_dtype(kind):
         return _texts(column.astype("object"))
     if pd.api.types.is_complex_dtype(kind):
-        raise Refusal(f"“{name}” holds complex numbers.", where=name, do="Give their parts as columns of their own.")
+        raise Refusal(
+            f"{quoted(name)} holds complex numbers.", where=name, do="Give their parts as columns of their own."
+        )
     if pd.api.types.is_numeric_dtype(kind):
         return _numbers(name, column)
     if pd.api.types.is_datetime64_any_dtype(kind) or isinstance(kind, pd.PeriodDtype):
@@ -84,7 +86,7 @@ def from_values(name: str, values: NDArray[np.float64]) -> Cells:
     if infinite.any():
         record = int(infinite.argmax()) + 1
         raise Refusal(
-            f"“{name}” holds a number that is infinite in {int(infinite.sum()):,} of its cells; "
+            f"{quoted(name)} holds a number that is infinite in {int(infinite.sum()):,} of its cells; "
             f"the first is record {record:,}.",
             where=name,
             do="Put a real number there, or leave the cell empty.",
@@ -99,7 +101,7 @@ def as_numbers(name: str, held: Cells) -> Cells:
     if held.values is not None:
         return held
     if held.dates:
-        raise Refusal(f"“{name}” holds dates, which are no numbers.", where=name, do="Leave it out.")
+        raise Refusal(f"{quoted(name)} holds dates, which are no numbers.", where=name, do="Leave it out.")
     spelt = np.full(len(held.texts), np.nan)
     for place, text in enumerate(held.texts):
         try:
@@ -109,7 +111,7 @@ def as_numbers(name: str, held: Cells) -> Cells:
         if not np.isfinite(number):
             record = int((held.codes == place).argmax()) + 1
             raise Refusal(
-                f"“{name}” cannot be a number: record {record:,} holds “{text}”.",
+                f"{quoted(name)} cannot be a number: record {record:,} holds {quoted(text)}.",
                 where=name,
                 do="Put a number there in the file, leave the cell empty, or choose another kind.",
             )

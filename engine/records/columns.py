@@ -13,8 +13,8 @@ from engine.records.bands import band_codes, band_levels, checked_cuts, equal_co
 from engine.records.cells import Cells, as_numbers, level_text
 from engine.records.column import BLANK, Column, Kind
 from engine.records.kinds import MOST_LEVELS, Guess, category_levels, grade_levels, guess
-from engine.records.wording import listing, quoted
-from engine.refusal import Refusal
+from engine.records.wording import cited, listing
+from engine.refusal import Refusal, quoted
 
 KINDS: tuple[Kind, ...] = ("category", "grade", "number", "left out")
 LATER_KINDS = ("weight", "group")
@@ -70,7 +70,7 @@ def column_of(taken: Taken, kept: NDArray[np.bool_]) -> Column:
     codes = cells.codes if kept.all() else cells.codes[kept]
     if not (codes >= 0).any():
         raise Refusal(
-            f"Every cell of “{name}” is blank" + (" in the records that are kept." if not kept.all() else "."),
+            f"Every cell of {quoted(name)} is blank" + (" in the records that are kept." if not kept.all() else "."),
             where=name,
             do="Leave the column out.",
         )
@@ -97,7 +97,7 @@ def _kind(name: str, choice: Choice, guessed: Guess) -> Kind:
     implied: Kind | None = "number" if choice.cuts is not None else "grade" if choice.grades is not None else None
     if choice.cuts is not None and choice.grades is not None:
         raise Refusal(
-            f"“{name}” has both cuts and an order of its levels.",
+            f"{quoted(name)} has both cuts and an order of its levels.",
             where=name,
             do="Give cuts for a number, or an order for a grade.",
         )
@@ -106,20 +106,20 @@ def _kind(name: str, choice: Choice, guessed: Guess) -> Kind:
     if implied is not None and choice.kind in ("category", "grade", "number") and choice.kind != implied:
         what = "cuts, which only a number" if implied == "number" else "an order of its levels, which only a grade"
         raise Refusal(
-            f"“{name}” is to be a {choice.kind} but comes with {what} has.",
+            f"{quoted(name)} is to be a {choice.kind} but comes with {what} has.",
             where=name,
             do=f"Make it a {implied}, or take them away.",
         )
     if choice.kind in LATER_KINDS:
         raise Refusal(
-            f"“{name}” cannot be taken as a {choice.kind} yet.",
+            f"{quoted(name)} cannot be taken as a {choice.kind} yet.",
             where=name,
             do="Take it as another kind, or leave it out.",
         )
     for kind in KINDS:
         if choice.kind == kind:
             return kind
-    raise Refusal(f"“{choice.kind}” is not a kind of column.", where=name, do=f"Choose among {', '.join(KINDS)}.")
+    raise Refusal(f"{quoted(choice.kind)} is not a kind of column.", where=name, do=f"Choose among {', '.join(KINDS)}.")
 
 
 def _blank(name: str, choice: Choice) -> Literal["level", "drop row"]:
@@ -129,12 +129,12 @@ def _blank(name: str, choice: Choice) -> Literal["level", "drop row"]:
         return "drop row"
     if choice.blank == "fill":
         raise Refusal(
-            f"Blanks of “{name}” cannot be filled in yet.",
+            f"Blanks of {quoted(name)} cannot be filled in yet.",
             where=name,
             do="Let a blank be a level, or leave the row out.",
         )
     raise Refusal(
-        f"“{choice.blank}” is not a meaning of a blank in “{name}”.",
+        f"{quoted(choice.blank)} is not a meaning of a blank in {quoted(name)}.",
         where=name,
         do=f"Choose among {', '.join(BLANKS)}.",
     )
@@ -151,7 +151,7 @@ def _banded(taken: Taken, kept: NDArray[np.bool_]) -> tuple[NDArray[np.float64],
     cuts = checked_cuts(taken.name, taken.choice.cuts)
     if len(cuts) >= MOST_LEVELS:
         raise Refusal(
-            f"“{taken.name}” would have {len(cuts) + 1} bands; at most {MOST_LEVELS} can be levels.",
+            f"{quoted(taken.name)} would have {len(cuts) + 1} bands; at most {MOST_LEVELS} can be levels.",
             where=taken.name,
             do="Give fewer cuts.",
         )
@@ -159,7 +159,9 @@ def _banded(taken: Taken, kept: NDArray[np.bool_]) -> tuple[NDArray[np.float64],
     if (filled == 0).any():
         empty = band_levels(cuts)[int((filled == 0).argmax())]
         raise Refusal(
-            f"No record of “{taken.name}” lies in the band “{empty}”.", where=taken.name, do="Move or remove that cut."
+            f"No record of {quoted(taken.name)} lies in the band {quoted(empty)}.",
+            where=taken.name,
+            do="Move or remove that cut.",
         )
     return values, cuts
 
@@ -170,7 +172,7 @@ def _levels(taken: Taken, codes: NDArray[np.int32]) -> tuple[tuple[str, ...], ND
     present = np.bincount(codes + 1, minlength=cells.different + 1)[1:] > 0
     if present.sum() > MOST_LEVELS:
         raise Refusal(
-            f"“{name}” has {int(present.sum()):,} different values; at most {MOST_LEVELS} can be levels.",
+            f"{quoted(name)} has {int(present.sum()):,} different values; at most {MOST_LEVELS} can be levels.",
             where=name,
             do="Take it as a number if it is one, merge levels in the file, or leave it out.",
         )
@@ -193,17 +195,19 @@ def _given(taken: Taken, present: NDArray[np.bool_]) -> tuple[int, ...]:
     name, texts = taken.name, taken.cells.texts
     given = [level_text(level) for level in taken.choice.grades or ()]
     if len(set(given)) < len(given):
-        raise Refusal(f"A grade of “{name}” is given twice.", where=name, do="Give each grade once, the lowest first.")
+        raise Refusal(
+            f"A grade of {quoted(name)} is given twice.", where=name, do="Give each grade once, the lowest first."
+        )
     places = {text: place for place, text in enumerate(texts)}
     if unknown := [level for level in given if level not in places]:
         raise Refusal(
-            f"“{name}” has no {listing([quoted(level) for level in unknown])} among its levels.",
+            f"{quoted(name)} has no {listing([cited(level) for level in unknown])} among its levels.",
             where=name,
             do=f"Its levels are {listing(texts, 12)}.",
         )
     if missing := [text for text, held in zip(texts, present, strict=True) if held and text not in given]:
         raise Refusal(
-            f"The grades of “{name}” leave out {listing([quoted(level) for level in missing])}.",
+            f"The grades of {quoted(name)} leave out {listing([cited(level) for level in missing])}.",
             where=name,
             do="Give every level its place.",
         )

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import re
 
-from engine.refusal import Refusal
+from engine.refusal import Refusal, quoted
 
 PROBED = 100_000  # bytes looked at for control characters
 ODD = 0.01  # share of control characters from which on it is no text
@@ -34,7 +34,7 @@ def utf_8(content: bytes, name: str) -> tuple[bytes, tuple[str, ...]]:
     for start, what in _STARTS.items():
         if content.startswith(start) and (start != b"BM" or b"\x00" in content[:64]):
             raise Refusal(
-                f"“{name}” is {what}, not a table of text.",
+                f"{quoted(name)} is {what}, not a table of text.",
                 where=name,
                 do="Save the table as CSV, or give the file the ending that fits it.",
             )
@@ -57,15 +57,17 @@ def utf_8(content: bytes, name: str) -> tuple[bytes, tuple[str, ...]]:
     except UnicodeDecodeError as error:
         line = content.count(b"\n", 0, error.start) + 1
         raise Refusal(
-            f"“{name}” holds a character that is neither UTF-8 nor Windows-1252 on line {line:,}.",
+            f"{quoted(name)} holds a character that is neither UTF-8 nor Windows-1252 on line {line:,}.",
             where=f"line {line:,}",
             do="Save the table as CSV in UTF-8.",
         ) from None
     return text.encode(), (
-        f"The file is not in UTF-8, so its letters were read as Windows-1252; the first is “{text[strange]}” "
+        f"The file is not in UTF-8, so its letters were read as Windows-1252; the first is {quoted(text[strange])} "
         f"on line {line:,}.",
     )
 
 
 def _no_text(name: str) -> Refusal:
-    return Refusal(f"“{name}” is not a file of text.", where=name, do="Save the table as CSV and bring that file.")
+    return Refusal(
+        f"{quoted(name)} is not a file of text.", where=name, do="Save the table as CSV and bring that file."
+    )

@@ -13,7 +13,7 @@ from itertools import islice
 import pyarrow as pa
 from pyarrow import csv as arrow_csv
 
-from engine.refusal import Refusal
+from engine.refusal import Refusal, quoted
 
 SEPARATORS = {"\t": "tabs", ";": "semicolons", "|": "upright bars", ",": "commas"}  # the rarest inside texts first
 HEAD = 1_000_000  # bytes in which the header and the separator are found
@@ -44,7 +44,9 @@ def text_cells(content: bytes, name: str) -> Texts:
     and lines with more or fewer cells than the header names, line by line.
     """
     if not content.strip():
-        raise Refusal(f"“{name}” is empty.", where=name, do="Bring a table with names of columns in the first line.")
+        raise Refusal(
+            f"{quoted(name)} is empty.", where=name, do="Bring a table with names of columns in the first line."
+        )
     csv.field_size_limit(LONGEST)
     said = _SAID.match(content)
     skipped = said.end() if said else 0
@@ -99,7 +101,7 @@ def separator(head: str, name: str) -> str:
 
 def one_column(name: str) -> Refusal:
     return Refusal(
-        f"“{name}” has one column only; no comma, semicolon, tab or upright bar parts its first line.",
+        f"{quoted(name)} has one column only; no comma, semicolon, tab or upright bar parts its first line.",
         where="line 1",
         do="Bring a table with a column for each thing recorded, names of columns in the first line.",
     )
@@ -110,7 +112,7 @@ def checked_names(header: list[str], name: str) -> list[str]:
     nameless = [place + 1 for place, column in enumerate(header) if not column]
     if nameless:
         raise Refusal(
-            f"Column {nameless[0]} of “{name}” has no name"
+            f"Column {nameless[0]} of {quoted(name)} has no name"
             + (f", nor do {len(nameless) - 1} more." if len(nameless) > 1 else "."),
             where="line 1",
             do="Give every column a name in the first line, or take that column out of the file.",
@@ -119,13 +121,13 @@ def checked_names(header: list[str], name: str) -> list[str]:
     if twice:
         places = [str(place + 1) for place, column in enumerate(header) if column == twice[0]]
         raise Refusal(
-            f"Two columns are called “{twice[0]}”: columns {' and '.join(places[:2])} of the first line.",
+            f"Two columns are called {quoted(twice[0])}: columns {' and '.join(places[:2])} of the first line.",
             where="line 1",
             do="Give each column a name of its own; spaces around a name do not count.",
         )
     if header and all(_is_number(column) for column in header):
         raise Refusal(
-            f"The first line of “{name}” holds numbers, not names of columns.",
+            f"The first line of {quoted(name)} holds numbers, not names of columns.",
             where="line 1",
             do="Put a line with the names of the columns on top.",
         )
@@ -198,7 +200,7 @@ def _slow(text: str, mark: str, names: list[str], name: str, above: int) -> list
         raise _unreadable(name, began + above + 1, error) from None
     if text.count('"') % 2 and _stays_open(text, began, mark):
         raise Refusal(
-            f"“{name}” opens a quotation mark in the record on line {began + above:,} and never closes it.",
+            f"{quoted(name)} opens a quotation mark in the record on line {began + above:,} and never closes it.",
             where=f"line {began + above:,}",
             do="Close the quotation mark, or double it where it belongs to the text.",
         )
@@ -226,7 +228,7 @@ def _misfit(misfits: list[tuple[int, int]], rows: list[list[str]], mark: str, na
     if len(misfits) > len(rows) / 2:
         do = "See whether the first line holds the names of the columns, with no title above; nothing was stored."
     return Refusal(
-        f"“{name}” was not read: {len(misfits):,} of {len(rows):,} lines do not fit its own header, which names "
+        f"{quoted(name)} was not read: {len(misfits):,} of {len(rows):,} lines do not fit its own header, which names "
         f"{width} {'column' if width == 1 else 'columns'}: {', '.join(named)}{more}.",
         where=f"line {misfits[0][0]:,}",
         do=do,
@@ -235,7 +237,9 @@ def _misfit(misfits: list[tuple[int, int]], rows: list[list[str]], mark: str, na
 
 def _unreadable(name: str, line: int, error: csv.Error) -> Refusal:
     return Refusal(
-        f"“{name}” cannot be read from line {line:,} on: {error}.", where=f"line {line:,}", do="Correct that line."
+        f"{quoted(name)} cannot be read from line {line:,} on: {error}.",
+        where=f"line {line:,}",
+        do="Correct that line.",
     )
 
 

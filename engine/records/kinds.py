@@ -10,7 +10,7 @@ import numpy as np
 from engine.records.cells import Cells
 from engine.records.column import Kind
 from engine.records.grading import grading, natural
-from engine.records.wording import figure, listing, quoted
+from engine.records.wording import cited, figure, listing
 
 MOST_LEVELS = 50  # a category's levels, its blank among them
 FEW_VALUES = 7  # whole numbers with this many values or fewer are steps of a scale as often as amounts
@@ -44,11 +44,11 @@ def guess(name: str, held: Cells) -> Guess:
     if seen == 0:
         return Guess("left out", "Every cell is blank.")
     if held.different == 1 and not held.blanks:
-        return Guess("left out", f"Every record has the same value: {quoted(held.texts[0])}.")
+        return Guess("left out", f"Every record has the same value: {cited(held.texts[0])}.")
     if held.dates or _are_dates(held):
         return Guess("left out", "It holds dates, which cannot be learned from as they are.")
     if held.different == 1:
-        return Guess("category", f"It holds {quoted(held.texts[0])} or nothing.")
+        return Guess("category", f"It holds {cited(held.texts[0])} or nothing.")
     return _number(name, held, seen) if held.values is not None else _text(name, held, seen)
 
 
@@ -137,7 +137,7 @@ def _levels_or_out(held: Cells, warnings: tuple[str, ...], too_many: str) -> Gue
         return Guess("grade", why, warnings)
     found = grading(held.texts)
     if found is not None and len(found.order) > 2:
-        outside = listing([quoted(held.texts[place]) for place in found.outside])
+        outside = listing([cited(held.texts[place]) for place in found.outside])
         warnings = (*warnings, f"Its levels have an order except for {outside}, so it is taken as a category.")
     count = held.different
     return Guess("category", f"It has {count} different {'value' if count == 1 else 'values'}.", warnings)
@@ -166,7 +166,7 @@ def _mostly_numbers(held: Cells, seen: int) -> str | None:
     record = int((~np.append(spelt, True)[held.codes]).argmax())
     others = seen - numbers
     return (
-        f"Most of its values are numbers, but record {record + 1:,} holds {quoted(held.texts[held.codes[record]])}"
+        f"Most of its values are numbers, but record {record + 1:,} holds {cited(held.texts[held.codes[record]])}"
         f"{f' and {others - 1:,} more hold no number either' if others > 1 else ''}, so it is read as text. "
         "Mend them in the file, or leave those cells empty, to use it as a number."
     )

@@ -12,7 +12,8 @@ import pyarrow as pa
 import pyarrow.compute as pc
 from numpy.typing import NDArray
 
-from engine.records.wording import quoted
+from engine.records.wording import cited
+from engine.refusal import quoted
 
 MISSING = (
     "NA",
@@ -108,10 +109,10 @@ def _read(name: str, cells: pa.Array) -> _Read:
     missing = _which(pc.is_in(texts, pa.array(MISSING)))
     read = _Read(name, texts, codes, missing | _which(pc.equal(texts, "")))
     if missing.any():
-        words = ", ".join(quoted(word) for word in texts.filter(pa.array(missing)).to_pylist())
+        words = ", ".join(cited(word) for word in texts.filter(pa.array(missing)).to_pylist())
         count = int(np.append(missing, False)[codes].sum())
         cells_said = f"{count:,} cells" if count > 1 else "1 cell"
-        read = replace(read, said=(f"{words} in {cells_said} of “{name}” was read as blank.",))
+        read = replace(read, said=(f"{words} in {cells_said} of {quoted(name)} was read as blank.",))
     return _spelt(read)
 
 
@@ -130,7 +131,7 @@ def _spelt(read: _Read) -> _Read:
     for pattern, why in ((_LEADING_ZERO, "zeros in front"), (_LONG, "more digits than a number holds")):
         if _any(plain, pattern):
             example = plain.filter(pc.match_substring_regex(plain, f"^({pattern})$"))[0].as_py()
-            sentence = f"“{read.name}” is kept as text, because it has {why}, such as {quoted(example)}."
+            sentence = f"{quoted(read.name)} is kept as text, because it has {why}, such as {cited(example)}."
             return replace(read, said=(*read.said, sentence))
     return replace(read, spelt=plain, style=style, per_cent=per_cent)
 
@@ -178,19 +179,21 @@ def _numbers(read: _Read, commas: bool, surely: bool) -> tuple[NDArray[np.float6
         style = Style.COMMA if commas else Style.GROUPED
     if style is Style.PLAIN and surely and _any(plain, r"[^.]+\.[^.]+") and _all(plain, _DOTTED):
         plain = pc.replace_substring(plain, ".", "")
-        said.append(f"The points in “{name}” were read as marks between thousands, as the file has decimal commas.")
+        said.append(
+            f"The points in {quoted(name)} were read as marks between thousands, as the file has decimal commas."
+        )
     elif style is Style.GROUPED:
         plain = pc.replace_substring(plain, ",", "")
-        said.append(f"The commas in “{name}” were read as marks between thousands.")
+        said.append(f"The commas in {quoted(name)} were read as marks between thousands.")
     elif style is Style.COMMA:
         plain = pc.replace_substring(pc.replace_substring(plain, ".", ""), ",", ".")
-        said.append(f"The commas in “{name}” were read as decimal points.")
+        said.append(f"The commas in {quoted(name)} were read as decimal points.")
     values = np.asarray(pc.cast(pc.replace_substring_regex(plain, r"^\+", ""), pa.float64()))
     if not np.isfinite(values).all():
-        worst = quoted(read.texts.filter(pa.array(~read.blank))[int(np.isinf(values).argmax())].as_py())
-        return None, (*read.said, f"“{name}” is kept as text, because {worst} is too large for a number.")
+        worst = cited(read.texts.filter(pa.array(~read.blank))[int(np.isinf(values).argmax())].as_py())
+        return None, (*read.said, f"{quoted(name)} is kept as text, because {worst} is too large for a number.")
     if read.per_cent:
-        said.append(f"“{name}” was read as a number of per cent.")
+        said.append(f"{quoted(name)} was read as a number of per cent.")
     return values + 0.0, tuple(said)
 
 
@@ -205,8 +208,8 @@ def _odd_one_out(read: _Read, line: Callable[[int], str]) -> tuple[str, ...]:
     if not odd.any() or rows <= MOSTLY * (rows + odd_rows) or number.sum() < 3:
         return ()
     row = int(np.append(odd, False)[read.codes].argmax())
-    value = quoted(read.texts[int(read.codes[row])].as_py())
-    return (f"“{read.name}” is mostly numbers, but {line(row)} holds {value}, so it was read as text.",)
+    value = cited(read.texts[int(read.codes[row])].as_py())
+    return (f"{quoted(read.name)} is mostly numbers, but {line(row)} holds {value}, so it was read as text.",)
 
 
 def _which(found: pa.Array) -> NDArray[np.bool_]:

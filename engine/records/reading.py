@@ -16,7 +16,7 @@ from engine.records.delimited import checked_names, one_column, text_cells
 from engine.records.parsing import typed
 from engine.records.spreadsheets import sheet_cells
 from engine.records.table import Table
-from engine.refusal import Refusal
+from engine.refusal import Refusal, quoted
 
 Columns = dict[str, pa.Array | pd.Series]
 Source = str | os.PathLike[str] | IO[bytes] | IO[str]
@@ -51,13 +51,15 @@ def read_frame(source: Source, name: str | None = None) -> tuple[pd.DataFrame, t
     ending = Path(called).suffix.lower()
     if ending not in ENDINGS:
         raise Refusal(
-            f"“{called}” has an ending that is not known here.",
+            f"{quoted(called)} has an ending that is not known here.",
             where=called,
             do="Bring a file that ends in .csv, .tsv, .xlsx or .parquet.",
         )
     content = _content(source, called)
     if not content:
-        raise Refusal(f"“{called}” is empty.", where=called, do="Bring a table with column names in its first line.")
+        raise Refusal(
+            f"{quoted(called)} is empty.", where=called, do="Bring a table with column names in its first line."
+        )
     said: tuple[str, ...] = ()
     if ending in SHEETS:
         sheet = sheet_cells(content, called)
@@ -80,10 +82,14 @@ def _content(source: Source, called: str) -> bytes:
     try:
         return Path(source).read_bytes()
     except FileNotFoundError:
-        raise Refusal(f"There is no file “{source}”.", where=str(source), do="See how its name is spelt.") from None
+        raise Refusal(
+            f"There is no file {quoted(source)}.", where=str(source), do="See how its name is spelt."
+        ) from None
     except OSError as error:
         raise Refusal(
-            f"“{source}” cannot be opened: {error.strerror or error}.", where=str(source), do="Give the path of a file."
+            f"{quoted(source)} cannot be opened: {error.strerror or error}.",
+            where=str(source),
+            do="Give the path of a file.",
         ) from None
 
 
@@ -103,11 +109,15 @@ def _parquet(content: bytes, name: str) -> Columns:
     try:
         cells = pq.read_table(io.BytesIO(content))
     except Exception as error:  # whatever a damaged file sets off inside the reader
-        raise Refusal(f"“{name}” is not a Parquet file that can be opened.", where=name, do="Save it again.") from error
+        raise Refusal(
+            f"{quoted(name)} is not a Parquet file that can be opened.", where=name, do="Save it again."
+        ) from error
     columns: Columns = {}
     for column, each in zip(checked_names(list(cells.column_names), name), cells.columns, strict=True):
         if pa.types.is_nested(each.type):
-            raise Refusal(f"“{column}” holds lists, not single values.", where=column, do="Leave that column out.")
+            raise Refusal(
+                f"{quoted(column)} holds lists, not single values.", where=column, do="Leave that column out."
+            )
         text = pa.types.is_string(each.type) or pa.types.is_large_string(each.type)
         columns[column] = each.combine_chunks().cast(pa.string()) if text else each.to_pandas()
     return columns
@@ -118,8 +128,10 @@ def _check(frame: pd.DataFrame, name: str) -> None:
         raise one_column(name)
     if frame.empty or frame.isna().all(axis=None):
         what = "a header but no records" if frame.empty else "names of columns but every cell under them is blank"
-        raise Refusal(f"“{name}” has {what}.", where=name, do="Bring a table with one row for each record.")
+        raise Refusal(f"{quoted(name)} has {what}.", where=name, do="Bring a table with one row for each record.")
     if len(frame) < 2:
         raise Refusal(
-            f"“{name}” has one record only.", where="line 2", do="Bring a table with many records, one in each line."
+            f"{quoted(name)} has one record only.",
+            where="line 2",
+            do="Bring a table with many records, one in each line.",
         )

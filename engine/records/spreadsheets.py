@@ -15,8 +15,8 @@ import pandas as pd
 import pyarrow as pa
 
 from engine.records.delimited import checked_names
-from engine.records.wording import listing, number_text, quoted
-from engine.refusal import Refusal
+from engine.records.wording import cited, listing, number_text
+from engine.refusal import Refusal, quoted
 
 UNPACKED = 500_000_000  # bytes
 RATIO = 200  # unpacked to packed, from `HARMLESS` bytes on
@@ -49,7 +49,7 @@ def sheet_cells(content: bytes, name: str) -> Sheet:
         title, rows, others = _first_filled(content)
         if formulas and (cell := _without_result(content, title, rows)):
             raise Refusal(
-                f"The formula in {cell} of the sheet {quoted(title)} has no stored result.",
+                f"The formula in {cell} of the sheet {cited(title)} has no stored result.",
                 where=cell,
                 do="Open the file in a spreadsheet program, save it, and bring it again; or save it as CSV.",
             )
@@ -59,18 +59,20 @@ def sheet_cells(content: bytes, name: str) -> Sheet:
         raise _damaged(name) from error
     first = next((place for place, row in enumerate(rows) if row), None)
     if first is None:
-        raise Refusal(f"“{name}” is empty.", where=name, do="Bring a table with names of columns in the first line.")
+        raise Refusal(
+            f"{quoted(name)} is empty.", where=name, do="Bring a table with names of columns in the first line."
+        )
     names = checked_names(["" if cell is None else _text(cell).strip() for cell in rows[first]], name)
     for place, row in enumerate(rows[first + 1 :], start=first + 2):
         if len(row) > len(names):
             raise Refusal(
-                f"Row {place:,} of the sheet {quoted(title)} has {len(row)} cells; the header names {len(names)}.",
+                f"Row {place:,} of the sheet {cited(title)} has {len(row)} cells; the header names {len(names)}.",
                 where=f"row {place:,}",
                 do="Give the extra cells a column name in the header, or clear them.",
             )
     body = [row + [None] * (len(names) - len(row)) for row in rows[first + 1 :]]
     columns = {column: _column([row[place] for row in body]) for place, column in enumerate(names)}
-    said = (f"Only the sheet {quoted(title)} was read, not {listing([quoted(each) for each in others])}.",)
+    said = (f"Only the sheet {cited(title)} was read, not {listing([cited(each) for each in others])}.",)
     return Sheet(columns, said if others else (), lambda row: f"row {row + first + 2:,}")
 
 
@@ -78,7 +80,7 @@ def _check(content: bytes, name: str) -> bool:
     """Whether any sheet holds a formula. Raises Refusal for what is no packed file or unpacks too large."""
     if content.startswith(b"\xd0\xcf\x11\xe0"):
         raise Refusal(
-            f"“{name}” is an old spreadsheet (.xls) or one with a password.",
+            f"{quoted(name)} is an old spreadsheet (.xls) or one with a password.",
             where=name,
             do="Save it as XLSX without a password, or as CSV.",
         )
@@ -89,7 +91,8 @@ def _check(content: bytes, name: str) -> bool:
             bloated = total > HARMLESS and total > RATIO * len(content)
             if len(entries) > ENTRIES or total > UNPACKED or bloated:
                 raise Refusal(
-                    f"“{name}” would unpack to {total / 1e6:,.0f} MB in {len(entries):,} parts, too much for a table.",
+                    f"{quoted(name)} would unpack to {total / 1e6:,.0f} MB in {len(entries):,} parts, "
+                    "too much for a table.",
                     where=name,
                     do="Save the table as CSV and bring that file.",
                 )
@@ -140,7 +143,7 @@ def _without_result(content: bytes, title: str, rows: list[list[Any]]) -> str | 
 
 def _damaged(name: str) -> Refusal:
     return Refusal(
-        f"“{name}” is not a spreadsheet that can be opened.", where=name, do="Save it again as XLSX or as CSV."
+        f"{quoted(name)} is not a spreadsheet that can be opened.", where=name, do="Save it again as XLSX or as CSV."
     )
 
 

@@ -17,7 +17,7 @@ from engine.records.cells import Cells, cells
 from engine.records.column import SMALL_COUNT, Coded, Column, Kind
 from engine.records.columns import Choice, column_of, take
 from engine.records.wording import listing, people
-from engine.refusal import Refusal
+from engine.refusal import Refusal, quoted
 
 __all__ = ["SMALL_COUNT", "Coded", "Column", "Kind", "Table"]
 
@@ -131,12 +131,12 @@ class Table:
     def _used(self, name: str) -> Column:
         if name not in self.columns:
             raise Refusal(
-                f"The records have no column “{name}”.",
+                f"The records have no column {quoted(name)}.",
                 where=name,
                 do=f"Its columns are {listing(list(self.columns), 12)}.",
             )
         if self.columns[name].kind == "left out":
-            raise Refusal(f"The column “{name}” is left out.", where=name, do="Give it a kind first.")
+            raise Refusal(f"The column {quoted(name)} is left out.", where=name, do="Give it a kind first.")
         return self.columns[name]
 
 
@@ -165,7 +165,7 @@ def _check(frame: pd.DataFrame, chosen: Mapping[str, Mapping[str, object]]) -> N
         if name.strip() in bare:
             spaces = "" if bare[name.strip()] == name else ", but for spaces around the name"
             raise Refusal(
-                f"Two columns are called “{name.strip()}”{spaces}.",
+                f"Two columns are called {quoted(name.strip())}{spaces}.",
                 where=name,
                 do="Give each column a name of its own.",
             )
@@ -175,7 +175,7 @@ def _check(frame: pd.DataFrame, chosen: Mapping[str, Mapping[str, object]]) -> N
         for name in choices:
             if name not in names:
                 raise Refusal(
-                    f"The table has no column “{name}”, which is named among the {what}.",
+                    f"The table has no column {quoted(name)}, which is named among the {what}.",
                     where=name,
                     do=f"Its columns are {listing(list(frame.columns), 12)}.",
                 )
@@ -186,7 +186,7 @@ def _rows_left_out(kept: NDArray[np.bool_], dropped: Mapping[str, int]) -> tuple
     out = int((~kept).sum())
     if not out:
         return ()
-    causes = listing([f"“{name}” in {people(rows, SMALL_COUNT)}" for name, rows in dropped.items()], 12)
+    causes = listing([f"{quoted(name)} in {people(rows, SMALL_COUNT)}" for name, rows in dropped.items()], 12)
     said = f"{people(out, SMALL_COUNT)} of {kept.size:,} rows are left out because of a blank: {causes}."
     return (said[0].upper() + said[1:],)
 

@@ -5,6 +5,8 @@ from __future__ import annotations
 from collections.abc import Sequence
 from decimal import Decimal
 
+from engine.refusal import quoted
+
 SHOWN = 40  # characters of a value that a sentence repeats
 
 
@@ -38,6 +40,6 @@ def listing(names: Sequence[str], most: int = 4) -> str:
     return "".join(names) if len(names) < 2 else f"{', '.join(names[:-1])} and {names[-1]}"
 
 
-def quoted(text: str) -> str:
+def cited(text: str) -> str:
     """A value between quotation marks, cut short when it is long."""
-    return f"“{text if len(text) <= SHOWN else text[: SHOWN - 1] + '…'}”"
+    return quoted(text if len(text) <= SHOWN else text[: SHOWN - 1] + "…")
