@@ -14,7 +14,7 @@ from engine.answering.question import Question, Setting
 from engine.answering.tree import Read, Tree, plan
 from engine.answering.worlds import World, world
 from engine.network.network import Category, Network, drawn_table
-from engine.refusal import Refusal
+from engine.refusal import Refusal, quoted
 
 LIMIT = 1e9  # table cells times draws that are summed exactly; beyond this a question is refused
 CHUNK = 64e6  # bytes of tables held at once
@@ -75,7 +75,7 @@ class Planner:
         among, log_evidence = recorded, 0.0
         if asked.pins:
             found, read = self._read(asked.pins, {}, asked.columns, count, seed, work)
-            log_evidence = float(read.log_evidence[0])
+            log_evidence = min(float(read.log_evidence[0]), 0.0)  # rounding may lift certainty above it
             if log_evidence == -np.inf:
                 raise self._contradiction(asked)
             among = found
@@ -243,7 +243,7 @@ def _joined(reads: list[Read]) -> Read:
 def _impossible(network: Network, asked: Question, columns: list[str]) -> Refusal:
     def told(column: str) -> str:
         levels = network.node(column).levels
-        return f"{column} = {' or '.join(levels[place] for place in sorted(asked.pins[column]))}"
+        return f"{quoted(column)} = {' or '.join(quoted(levels[place]) for place in sorted(asked.pins[column]))}"
 
     pins = [told(column) for column in columns]
     if len(pins) == 1:
@@ -252,7 +252,7 @@ def _impossible(network: Network, asked: Question, columns: list[str]) -> Refusa
     return Refusal(
         f"No record in this model can have {together} together.",
         where=", ".join(columns),
-        do=f"Take out one of these: {', '.join(columns)}.",
+        do=f"Take out one of these: {', '.join(map(quoted, columns))}.",
     )
 
 

@@ -17,6 +17,7 @@ from app.main import create_app
 from app.settings import Settings
 from app.store import Choices, Plan, Store, Study
 from engine.learning.learned import Learned
+from engine.learning.posterior import Posterior
 from engine.records.table import Table
 
 ROWS, STAGES, IN_A_STAGE, ROUNDS = 2000, 5, 8, 40
@@ -51,7 +52,11 @@ def keep_a_model(store: Store, parents: dict[str, tuple[str, ...]], frame: pd.Da
     chosen = tuple(tuple(sorted(names.index(parent) for parent in parents[name])) for name in names)
     links = sum(map(len, chosen))
     curve = pd.DataFrame({"links": [links], "score": [0.0], "bound": [0.0], "held_out": [0.0], "held_out_se": [0.0]})
-    learned = Learned(plan.order(), coded, curve, links, {links: chosen}, 3, 0, study.digest)
+    linked = np.zeros((1, len(names), len(names)), dtype=np.bool_)
+    for child, parents_of in enumerate(chosen):
+        linked[0, list(parents_of), child] = True
+    sure = Posterior(linked[0].astype(np.float64), linked, np.ones(1))
+    learned = Learned(plan.order(), coded, curve, links, {links: chosen}, sure, 3, 0, study.digest)
     path = store.files(study.key) / "forty.unfinished"
     learned.save(path)
     store.keep_learned(study.key, path, study.basis)
