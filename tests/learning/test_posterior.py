@@ -83,7 +83,8 @@ def test_graphs_are_drawn_as_often_as_they_are_likely(way):
     shares, _ = weighed(weights, graphs, times)
     rng = np.random.default_rng(2)
     drawn = 4000
-    found = Counter(way(weights).draw(rng) for _ in range(drawn))
+    held = way(weights)
+    found = Counter(held.draw(rng) for _ in range(drawn))
     assert set(found) <= set(graphs)
     for graph, share in zip(graphs, shares, strict=True):
         assert abs(found[graph] / drawn - share) < 4.5 * np.sqrt(share * (1 - share) / drawn) + 1e-9
