@@ -21,14 +21,18 @@ def recording_step(values: NDArray[np.float64]) -> float:
         return 0.0
     rises = distinct[1:] - distinct[0]
     exact = 4.0 * float(np.spacing(np.abs(distinct).max()))  # how far a difference may be off
-    step = float(np.diff(distinct).min())
+    step, off = float(np.diff(distinct).min()), exact
     for _ in range(_TRIES):
         if step < FINE * spread:
             return 0.0
         times = np.rint(rises / step)
         rest = np.abs(rises - times * step)
-        left = rest[rest > exact * (1.0 + times) + 1e-9 * step]
+        tolerated = exact + times * off
+        if tolerated[-1] > 0.1 * step:
+            return 0.0  # too fine to be told from rounding in floats
+        left = np.flatnonzero(rest > tolerated)
         if left.size == 0:
             return float(rises[-1] / times[-1])
-        step = float(left.min())
+        least = int(left[rest[left].argmin()])
+        step, off = float(rest[least]), float(tolerated[least])
     return 0.0

@@ -1,0 +1,163 @@
+"""Which numbers cannot be learned from as numbers: spikes, constants inside configurations, exact sums of others."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from itertools import combinations
+from math import prod
+
+import numpy as np
+from numpy.typing import NDArray
+
+from engine.records.column import Column
+from engine.records.joint import LARGEST
+from engine.records.moments import Numbers
+from engine.records.wording import figure, listing
+from engine.refusal import Refusal, quoted
+
+SPIKE = 0.1  # share of the records in one value from which a number is no smooth amount
+CONSTANT = 10  # records of one value throughout a configuration from which its density has no limit
+EXACT = 1e-6  # of the standard deviation: what rounding to float leaves of an exact sum
+
+Floats = NDArray[np.float64]
+
+
+def taken_as_bands(columns: Sequence[Column], size: int) -> dict[str, str]:
+    """The numbers among `columns` that are learned from as bands, and why, in a sentence each.
+
+    A density has no limit where a number does not vary: such a number would outweigh everything else. So bands are
+    taken for one with SPIKE of its records or more in one value, and for one that holds a single value throughout
+    a configuration of CONSTANT records or more of up to `size` categories (bands included); and for one with blanks
+    that are a level of their own, since no number stands for a blank.
+    """
+    found: dict[str, str] = {}
+    for column in columns:
+        why = _own_reason(column) if column.kind == "number" else None
+        if why is not None:
+            found[column.name] = why
+    fresh = {column.name for column in columns if column.kind != "number" or column.name in found}
+    while fresh:
+        constant = _constant_inside(columns, set(found), fresh, size)
+        found.update(constant)
+        fresh = set(constant)
+    return {column.name: found[column.name] for column in columns if column.name in found}
+
+
+def refuse_collinear(columns: Sequence[Column], size: int) -> None:
+    """Raises Refusal naming numbers of which one follows from the others in every record, up to rounding.
+
+    columns: all are taken as numbers.  size: columns in the largest set that is scored; a sum of more columns than
+    that is never scored as a whole and does no harm.
+    """
+    held = [column for column in columns if column.kind == "number" and column.values is not None]
+    if not held:
+        return
+    values = np.column_stack([np.asarray(column.values) for column in held])
+    numbers = Numbers.standardised(range(len(held)), values)
+    if len(numbers.values) <= 2 * size:
+        return
+    basis: list[int] = []
+    for place in range(len(held)):
+        sources = _sources(numbers, place, basis, size - 1)
+        if sources is None:
+            basis.append(place)
+            continue
+        names = listing([quoted(held[source].name) for source in sources], 12)
+        raise Refusal(
+            f"{quoted(held[place].name)} follows exactly from {names} in every record, up to rounding, so they cannot "
+            "all be learned from as numbers.",
+            where=held[place].name,
+            do="Leave one of them out.",
+        )
+
+
+def _own_reason(column: Column) -> str | None:
+    values = np.asarray(column.values)
+    blank = np.isnan(values)
+    name = quoted(column.name)
+    if blank.any():
+        return f"{name} is taken as bands: a blank is a level of its own here, which only bands can have."
+    distinct, counts = np.unique(values, return_counts=True)
+    common = int(counts.argmax())
+    share = counts[common] / values.size
+    if share < SPIKE:
+        return None
+    return f"{name} is taken as bands: {round(100 * share)}% of its records hold {figure(float(distinct[common]))}."
+
+
+def _most_alike(column: Column) -> int:
+    return int(np.unique(np.asarray(column.values), return_counts=True)[1].max())
+
+
+def _constant_inside(columns: Sequence[Column], bands: set[str], fresh: set[str], size: int) -> dict[str, str]:
+    """Numbers that are constant in a configuration of categories of which at least one is `fresh`."""
+    categories = [column for column in columns if column.kind != "number" or column.name in bands]
+    still = [column for column in columns if column.kind == "number" and column.name not in bands]
+    still = [column for column in still if _most_alike(column) >= CONSTANT]
+    found: dict[str, str] = {}
+    for count in range(1, size + 1):
+        for chosen in combinations(categories, count):
+            if not still:
+                return found
+            if not fresh.intersection(column.name for column in chosen):
+                continue
+            joint = prod(len(column.levels) for column in chosen)
+            if joint > LARGEST:
+                continue
+            code = np.zeros(chosen[0].codes.size, dtype=np.int64)
+            for column in chosen:
+                code = code * len(column.levels) + column.codes
+            found.update(_constant_in(code, joint, chosen, still))
+            still = [column for column in still if column.name not in found]
+    return found
+
+
+def _constant_in(
+    code: NDArray[np.int64], joint: int, chosen: Sequence[Column], numbers: Sequence[Column]
+) -> dict[str, str]:
+    records = np.bincount(code, minlength=joint)
+    large = records >= CONSTANT
+    last = np.zeros(joint, dtype=np.int64)
+    last[code] = np.arange(code.size)  # one record of each configuration
+    found = {}
+    for column in numbers:
+        values = np.asarray(column.values)
+        different = values != values[last[code]]
+        constant = np.flatnonzero(large & (np.bincount(code[different], minlength=joint) == 0))
+        if constant.size:
+            at = int(constant[0])
+            places = np.unravel_index(at, [len(each.levels) for each in chosen])
+            where = listing(
+                [f"{quoted(e.name)} is {quoted(e.levels[p])}" for e, p in zip(chosen, places, strict=True)], 12
+            )
+            found[column.name] = (
+                f"{quoted(column.name)} is taken as bands: it is {figure(float(values[last[at]]))} in all "
+                f"{records[at]:,} records where {where}."
+            )
+    return found
+
+
+def _sources(numbers: Numbers, place: int, basis: Sequence[int], most: int) -> list[int] | None:
+    """The fewest of `basis`, at most `most`, that the number at `place` is a linear sum of."""
+    if not basis:
+        return None
+    child = numbers.values[:, place]
+    every = numbers.values[:, basis]
+    slopes = np.linalg.lstsq(every, child, rcond=None)[0]
+    if not _follows(numbers, place, list(basis), slopes):
+        return None
+    strongest = [basis[at] for at in np.argsort(-np.abs(slopes), kind="stable")]
+    for count in range(1, min(most, len(basis)) + 1):
+        chosen = strongest[:count]
+        slopes = np.linalg.lstsq(numbers.values[:, chosen], child, rcond=None)[0]
+        if _follows(numbers, place, chosen, slopes):
+            return sorted(chosen)
+    return None
+
+
+def _follows(numbers: Numbers, place: int, sources: Sequence[int], slopes: NDArray[np.floating]) -> bool:
+    """Whether no record is further from the sum than rounding of the columns to their steps explains."""
+    away = np.abs(numbers.values[:, place] - numbers.values[:, list(sources)] @ slopes).max()
+    steps = numbers.step / numbers.scale
+    rounding = 0.5 * (steps[place] + np.abs(slopes) @ steps[list(sources)])
+    return bool(away <= max(EXACT, 1.01 * rounding))
