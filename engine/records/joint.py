@@ -19,6 +19,11 @@ def rank(columns: Sequence[int]) -> int:
     return sum(comb(column, place + 1) for place, column in enumerate(columns))
 
 
+def choose(columns: Ints, place: int) -> Ints:
+    """What each column adds to the rank of a set in which it is the `place`-th smallest."""
+    return np.asarray([comb(int(column), place) for column in columns], dtype=np.int64)
+
+
 @dataclass(frozen=True)
 class Block:
     """Counts of several sets of columns that have the same size.
@@ -62,6 +67,10 @@ def single(
     weights: (rows,) whole numbers, how many records each row stands for; None for one each.
     """
     counts = np.bincount(fold * occupied + number, weights, minlength=folds * occupied)
-    counted = counts.reshape(folds, 1, occupied).astype(np.int32)
-    where = np.asarray([rank(columns)], dtype=np.int64)
-    return Block(len(columns), where, np.asarray([cells], dtype=np.int64), np.zeros(1, dtype=np.int64), counted)
+    return one_set(columns, cells, counts.reshape(folds, occupied))
+
+
+def one_set(columns: Sequence[int], cells: int, counts: NDArray[np.number]) -> Block:
+    """The block of one set from (folds, occupied cells) whole numbers."""
+    where, joint = np.asarray([rank(columns)], dtype=np.int64), np.asarray([cells], dtype=np.int64)
+    return Block(len(columns), where, joint, np.zeros(1, dtype=np.int64), counts[:, None, :].astype(np.int32))

@@ -10,11 +10,13 @@ from math import comb
 import numpy as np
 from numpy.typing import NDArray
 
-from engine.records.joint import LARGEST, Block, Ints, numbered, rank, single
+from engine.records.joint import LARGEST, Block, Ints, numbered, one_set, rank, single
 from engine.records.layouts import Layout, laid_out
 
 _BLOCK = 2_000_000  # counts in a block, so that memory stays flat
 _HELD = 16_000_000  # entries of a prefix's products that are kept for the prefixes below it
+_AT_ONCE = 8_000_000  # one-hot entries turned into floats together
+_SHORT = 500  # rows to a product below which two copies multiply faster than one by itself
 _ONE_HOT = 256_000_000  # bytes of one-hot columns; the widest columns beyond it are counted by their codes
 
 Products = NDArray[np.floating]
@@ -24,7 +26,8 @@ Products = NDArray[np.floating]
 class _Node:
     """The records split by the levels of a prefix of columns.
 
-    number: (rows,) which occupied cell each record is in.  occupied: how many there are.  cells: joint levels.
+    number: (rows,) which occupied cell each record is in; empty at the ends of prefixes that are read off products.
+    occupied: how many cells hold a record.  cells: joint levels.
     layout: the later columns that are counted by products, None when there are none.
     products: (folds, occupied cells, one-hot columns, the same), None when they are not kept.
     """
@@ -67,9 +70,7 @@ class Walk:
             self.one_hot[np.arange(self.rows), self.first[column] + codes[:, column]] = 1
         self.commonest = [int(np.bincount(codes[:, column]).argmax()) for column in range(self.columns)]
         self.others = [np.flatnonzero(codes[:, column] != self.commonest[column]) for column in range(self.columns)]
-        self.choose = [
-            np.asarray([comb(n, k) for n in range(self.columns + 1)], dtype=np.int64) for k in range(size + 1)
-        ]
+        self.other_codes = [codes[rows, column] for column, rows in enumerate(self.others)]
         self.layouts: dict[tuple[bytes, int], Layout] = {}
         self.done = 0
         self.total = comb(self.columns, max(size - 2, 0))
@@ -97,24 +98,42 @@ class Walk:
             return
         for column in range(node.prefix[-1] + 1 if node.prefix else 0, self.columns):
             if node.cells * self.levels[column] <= LARGEST:
-                lower = self._lower(node, column)
-                yield self._single(lower.prefix, lower.cells, lower.number, lower.occupied)
+                lower, counts = self._lower(node, column)
+                yield one_set(lower.prefix, lower.cells, counts)
                 yield from self._below(lower)
 
-    def _lower(self, node: _Node, column: int) -> _Node:
-        """The node's cells split by one more column."""
+    def _lower(self, node: _Node, column: int) -> tuple[_Node, NDArray[np.integer]]:
+        """The node's cells split by one more column, and (folds, occupied cells) the records in them."""
         levels = int(self.levels[column])
-        number, seen = numbered(node.number * levels + self.codes[:, column], node.occupied * levels)
-        prefix, cells, occupied = (*node.prefix, column), node.cells * levels, int(seen.size)
-        layout = self._layout(prefix, cells, occupied)
+        prefix, cells = (*node.prefix, column), node.cells * levels
+        if node.products is None or node.layout is None or not node.layout.holds(column):
+            number, seen = numbered(node.number * levels + self.codes[:, column], node.occupied * levels)
+            layout = self._layout(prefix, cells, seen.size)
+            products = None
+            if layout is not None and self._holds(layout, seen.size):
+                products = self._multiplied(layout, number, np.arange(self.rows), 0, seen.size)
+            counts = np.bincount(self.fold * seen.size + number, minlength=self.folds * seen.size)
+            return _Node(prefix, number, seen.size, cells, layout, products), counts.reshape(self.folds, -1)
+        own = node.layout.own(column)
+        every = node.products[:, :, own, own].reshape(self.folds, -1)
+        seen = np.flatnonzero(every.any(axis=0))
+        place = np.zeros(every.shape[1], dtype=np.int64)
+        place[seen] = np.arange(seen.size)
+        layout = self._layout(prefix, cells, seen.size)
+        held = layout is not None and self._holds(layout, seen.size)
+        number = np.empty(0, dtype=np.int64)
+        if not held or len(prefix) < self.size - 2 or not self._all_dense(layout, prefix, cells):
+            number = place[node.number * levels + self.codes[:, column]]
         products = None
-        if layout is not None and self._holds(layout, occupied):
-            if node.layout is None or node.products is None:
-                products = self._multiplied(layout, number, np.arange(self.rows), 0, occupied)
-            else:
-                products = self._multiplied(layout, number, self.others[column], 0, occupied)
-                self._subtract(products, layout, node.products, node.layout, seen, column)
-        return _Node(prefix, number, occupied, cells, layout, products)
+        if layout is not None and held:
+            others = self.others[column]
+            into = place[node.number[others] * levels + self.other_codes[column]]
+            products = self._multiplied(layout, into, others, 0, seen.size)
+            self._subtract(products, layout, node.products, node.layout, seen, column)
+        return _Node(prefix, number, seen.size, cells, layout, products), every[:, seen].astype(np.int32)
+
+    def _all_dense(self, layout: Layout | None, prefix: tuple[int, ...], cells: int) -> bool:
+        return layout is not None and layout.one.columns.shape[1] == self._later(prefix, cells).size
 
     def _ends(self, node: _Node) -> Iterator[Block]:
         """Sets of the prefix and one or two later columns."""
@@ -134,7 +153,8 @@ class Walk:
         step = max(1, _BLOCK // (self.folds * layout.places.size**2))
         for low in range(0, node.occupied, step):
             high = min(low + step, node.occupied)
-            self.tick(self.done / self.total)
+            if low:
+                self.tick(self.done / self.total)
             if node.products is None:
                 products = self._multiplied(layout, node.number, np.arange(self.rows), low, high)
             else:
@@ -144,7 +164,7 @@ class Walk:
                 if more.levels.size:
                     yield Block(
                         len(node.prefix) + more.columns.shape[0],
-                        rank(node.prefix) + self._further(len(node.prefix), more.columns),
+                        rank(node.prefix) + more.ranks,
                         node.cells * more.levels,
                         more.starts,
                         np.take(flat, more.entries, axis=2).astype(np.int32),
@@ -170,20 +190,26 @@ class Walk:
         return single(columns, cells, number, occupied, self.fold, self.folds)
 
     def _multiplied(self, layout: Layout, number: Ints, rows: Ints, low: int, high: int) -> Products:
-        """(folds, high - low, one-hot columns, the same) products of the given rows in cells low to high."""
+        """(folds, high - low, one-hot columns, the same) products of the given rows, numbered, in cells low to high."""
         products = np.zeros((self.folds, high - low, layout.places.size, layout.places.size), dtype=self.exact)
-        group = number[rows] * self.folds + self.fold[rows]
+        group = number * self.folds + self.fold[rows]
         if high * self.folds <= 2**15:
             group = group.astype(np.int16)  # numpy sorts these by radix, ten times faster
         by_group = rows[np.argsort(group, kind="stable")]
         bounds = np.concatenate([[0], np.cumsum(np.bincount(group, minlength=high * self.folds))])
-        begin, end = bounds[low * self.folds], bounds[high * self.folds]
-        hot = self.one_hot.take(by_group[begin:end], axis=0)[:, layout.used]
+        begin, end = int(bounds[low * self.folds]), int(bounds[high * self.folds])
         edges = (bounds[low * self.folds : high * self.folds + 1] - begin).tolist()
+        hot = self.one_hot.take(by_group[begin:end], axis=0)[:, layout.used]
+        whole = hot.size <= _AT_ONCE
+        if whole:
+            hot = hot.astype(self.exact)
+        twin = hot.copy() if whole and hot.shape[0] < _SHORT * len(edges) else hot
         for place, (start, stop) in enumerate(pairwise(edges)):
             if start < stop:
-                part = hot[start:stop].astype(self.exact)
-                np.matmul(part.T, part, out=products[place % self.folds, place // self.folds])
+                part, same = hot[start:stop], twin[start:stop]
+                if not whole:
+                    part = same = part.astype(self.exact)
+                np.matmul(part.T, same, out=products[place % self.folds, place // self.folds])
         return products
 
     def _subtract(
@@ -191,21 +217,19 @@ class Walk:
     ) -> None:
         """Fill in the cells of the column's commonest level: the cell above less its other cells.
 
-        seen: (occupied cells,) cell above x levels + level, ascending.
+        products: nothing yet in those cells.  seen: (occupied cells,) cell above x levels + level, ascending.
         """
         owner, level = np.divmod(seen, int(self.levels[column]))
+        cells = np.flatnonzero(level == self.commonest[column])
         inside = np.searchsorted(wider.places, layout.places)
         together = int(inside[-1] - inside[0] + 1) == inside.size
-        for cell in np.flatnonzero(level == self.commonest[column]).tolist():
-            whole = above[:, owner[cell]]
-            if together:
-                products[:, cell] = whole[:, inside[0] : inside[-1] + 1, inside[0] : inside[-1] + 1]
-            else:
-                products[:, cell] = whole[:, inside[:, None], inside]
-            first, last = np.searchsorted(owner, [owner[cell], owner[cell] + 1])
-            for other in range(first, last):
-                if other != cell:
-                    products[:, cell] -= products[:, other]
+        used = slice(int(inside[0]), int(inside[-1]) + 1)
+        first = np.searchsorted(owner, owner[cells])
+        last = np.searchsorted(owner, owner[cells], side="right")
+        for cell, low, high in zip(cells.tolist(), first.tolist(), last.tolist(), strict=True):
+            whole = above[:, owner[cell], used, used] if together else above[:, owner[cell], inside[:, None], inside]
+            others = products[:, low:high].sum(axis=1) if high - low > 2 else products[:, low + high - 1 - cell]
+            np.subtract(whole, others, out=products[:, cell])
 
     def _holds(self, layout: Layout, occupied: int) -> bool:
         return self.folds * occupied * layout.places.size**2 <= _HELD
@@ -225,13 +249,8 @@ class Walk:
         widest = np.sort(self.levels[dense])[-2:]
         key = (dense.tobytes(), 0 if int(np.prod(widest)) <= limit else limit)
         if key not in self.layouts:
-            self.layouts[key] = laid_out(self.levels, self.first, dense, limit)
+            self.layouts[key] = laid_out(self.levels, self.first, dense, limit, self.size - 2)
         return self.layouts[key]
-
-    def _further(self, depth: int, columns: Ints) -> Ints:
-        """What each column of (more columns, sets) adds to the rank of a prefix of `depth` smaller ones."""
-        added = sum(self.choose[depth + 1 + place][column] for place, column in enumerate(columns))
-        return np.asarray(added, dtype=np.int64)
 
 
 def _within_budget(levels: Ints, rows: int) -> NDArray[np.bool_]:
