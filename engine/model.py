@@ -23,7 +23,7 @@ from engine.learning import learned as learnt
 from engine.network import conditional
 from engine.network.network import Category, Network, network
 from engine.network.program import program
-from engine.network.story import Story, sentences
+from engine.network.story import Story, rules, touches
 from engine.order import Direction, Order
 from engine.records.table import Coded, Table
 from engine.refusal import Refusal
@@ -122,8 +122,8 @@ class Model:
         common = self._planner.joint(self.network.node(column).parents)
         better = self._better(column) if self.order is not None and column in self.order.outcomes else None
         rows = conditional.rows(self.network, column, common, most)
-        told = sentences(self.network, column, common, better, self.unsettled)
-        return Story(told, rows, common.size - len(rows))
+        told = rules(self.network, column, common, better)
+        return Story(touches(self.network, column, self.unsettled), told, rows, common.size - len(rows))
 
     def program(self) -> str:
         """The model as a short, readable Python text that draws invented records; it needs numpy alone."""

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 from markupsafe import Markup
 
-from app.drawing.svg import FAR, INK, PAPER, join, tag
+from app.drawing.svg import FAR, INK, PAPER, RULE, join, percent, tag
 
 WIDTH, NAMES, DOTS = 404, 184, 196  # px: the drawing, where names end, where the dots stand
 ROW, HEAD, FIRST = 34, 44, 6
@@ -23,11 +23,12 @@ KEY = (
 
 @dataclass(frozen=True)
 class Arc:
-    """One link. settled: a key of STROKES."""
+    """One link. settled: a key of STROKES.  support: posterior probability, 0 to 1, told by the width."""
 
     source: str
     target: str
     settled: str
+    support: float = 1.0
 
 
 def arcs(
@@ -72,6 +73,19 @@ def key() -> list[tuple[Markup, str]]:
     ]
 
 
+def support_bar(share: float) -> Markup:
+    """How sure of a link, as a bar; the figure beside it says the same."""
+    return tag(
+        "svg",
+        tag("rect", x=0, y=0, width=percent(share), height=8, fill=INK),
+        tag("path", d="M0 7.5H32", stroke=RULE, stroke_width=1),
+        class_="supbar",
+        width=32,
+        height=8,
+        aria_hidden="true",
+    )
+
+
 def _layout(stages: Sequence[tuple[str, Sequence[str]]]) -> tuple[list[tuple[str, int]], dict[str, int], int]:
     heads, places, y = [], {}, FIRST
     for name, columns in stages:
@@ -98,7 +112,7 @@ def _arc(start: int, end: int, arc: Arc, picked: str | None) -> Markup:
         d=f"M{DOTS} {start}A{wide:.1f} {tall:.1f} 0 0 1 {DOTS} {end}",
         fill="none",
         stroke=INK if chosen else FAR,
-        stroke_width=3.0 if chosen else 2.0,
+        stroke_width=1.0 + 3.0 * arc.support,
         stroke_dasharray=STROKES[arc.settled],
     )
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from typing import Annotated
 
 from fastapi import APIRouter, Form, Request, Response
@@ -9,6 +10,7 @@ from fastapi.responses import RedirectResponse
 
 from app.pages import learning_view, model_view
 from app.store import ModelUnreadable, Study
+from engine.refusal import Refusal
 
 router = APIRouter()
 
@@ -17,6 +19,22 @@ router = APIRouter()
 def show(request: Request, key: str, links: str = "", column: str | None = None) -> Response:
     """The page. links: the budget to show, else the accepted one.  column: the column picked out."""
     return _page(request, key, "model.html", links, column)
+
+
+@router.get("/study/{key}/model.py")
+def program(request: Request, key: str, links: str = "") -> Response:
+    """The model as a program to keep and run. links: its size, else the one in use."""
+    store = request.app.state.store
+    learned, size = store.learned(key), _size(links)
+    if learned is None or not links:
+        model = store.model(key)
+    elif size is None:
+        raise Refusal(f"“{links}” is no number of links.", where="links", do="Give a number, or leave it out.")
+    else:
+        model = learned.model(size)
+    name = re.sub(r"[^a-z0-9-]", "", key) or "model"
+    held = {"Content-Disposition": f'attachment; filename="{name}-{len(model.links)}-links.py"'}
+    return Response(model.program(), media_type="text/x-python", headers=held)
 
 
 @router.get("/study/{key}/learn")
@@ -58,7 +76,7 @@ def _page(request: Request, key: str, template: str, links: str, column: str | N
     study: Study = store.study(key)
     state = jobs.state(key)
     learning = ended = view = None
-    wanted = int(links) if links.isascii() and links.isdigit() and len(links) < 10 else None
+    wanted = _size(links)
     if state is not None and state.state == "running":
         learning = learning_view.view(state)
     else:
@@ -87,3 +105,7 @@ def _page(request: Request, key: str, template: str, links: str, column: str | N
     status = 200 if no_size is None and no_column is None else 422
     page: Response = request.app.state.templates.TemplateResponse(request, template, context, status)
     return page
+
+
+def _size(links: str) -> int | None:
+    return int(links) if links.isascii() and links.isdigit() and len(links) < 10 else None

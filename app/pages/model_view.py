@@ -11,12 +11,15 @@ from markupsafe import Markup
 from app.drawing import arcs, curve
 from app.drawing.arcs import Arc
 from app.drawing.curve import Point, figure_words
+from app.pages.model_accounts import Account, accounts
 from app.store import Study
 from app.wording.amounts import plural
-from app.wording.links import story, strength
+from app.wording.links import SETTLED, strength, support, wide_stages
+from engine.learning.layers import WIDEST_LAYERED
 from engine.model import Learned, Model
 
-SHOWN_LINKS = 30  # rows of the links table before the weaker ones are folded
+SHOWN_LINKS = 30  # rows of the links table before those with less support are folded
+SUREST = 1.0  # where every support shown as "over 99%" stands in the table
 EXACT = 1e-6  # nats by which a bound may exceed the score it bounds, for rounding
 
 
@@ -34,11 +37,13 @@ class Size:
 
 @dataclass(frozen=True)
 class LinkRow:
-    """A row of the links table. verb: "leads to" or "goes with"."""
+    """A row of the links table. verb: "leads to" or "goes with".  settled: who gave it its direction, in words."""
 
     source: str
     verb: str
     target: str
+    support: str
+    bar: Markup
     strength: str
     settled: str
     picked: bool
@@ -50,7 +55,8 @@ class ModelView:
 
     links: the budget shown.  recommended, best: the sizes that the held-out records point to; best None without them.
     fewer, more: addresses of the budgets beside it, None at an end.  picked: the column picked out, or None.
-    unpicked: the address with nothing picked out.
+    unpicked: the address with nothing picked out.  program: the address of the model as a program.
+    wide: what to know of support where a stage holds many columns.
     """
 
     links: int
@@ -67,16 +73,18 @@ class ModelView:
     arcs: Markup
     arc_key: list[tuple[Markup, str]]
     rows: tuple[LinkRow, ...]
-    stories: tuple[tuple[str, str], ...]
+    wide: str | None
+    accounts: tuple[Account, ...]
     addresses: dict[str, str]
     picked: str | None
     notes: tuple[str, ...]
     records: int
     unpicked: str
+    program: str
 
     @property
     def first_rows(self) -> tuple[LinkRow, ...]:
-        """The strongest links, and every link of the picked column."""
+        """The links with most support, and every link of the picked column."""
         return tuple(row for place, row in enumerate(self.rows) if place < SHOWN_LINKS or row.picked)
 
     @property
@@ -118,13 +126,15 @@ def view(study: Study, learned: Learned, links: int | None = None, picked: str |
         more=_address(study.key, budgets[place + 1], picked) if place + 1 < len(budgets) else None,
         arcs=_arcs(learned, model, settled, addresses, picked),
         arc_key=arcs.key(),
-        rows=_rows(model, settled, picked),
-        stories=_stories(learned, settled, picked),
+        rows=_rows(learned, model, settled, picked),
+        wide=_wide(learned),
+        accounts=accounts(model, picked),
         addresses=addresses,
         picked=picked,
         notes=learned.notes,
         records=learned.rows,
         unpicked=_address(study.key, shown, None),
+        program=f"/study/{study.key}/model.py?{urlencode({'links': str(shown)})}",
     )
 
 
@@ -204,38 +214,41 @@ def _arcs(
 ) -> Markup:
     sequence = {name: place for place, name in enumerate(model.network.names)}  # parents stand before their children
     stages = [(stage.name, sorted(stage.columns, key=lambda name: sequence[name])) for stage in learned.order.stages]
-    drawn = [Arc(source, target, settled[source, target]) for source, target in model.links]
+    drawn = [
+        Arc(source, target, settled[source, target], learned.support_of(source, target))
+        for source, target in model.links
+    ]
     return arcs.arcs([stage for stage in stages if stage[1]], drawn, addresses, picked)
 
 
-def _rows(model: Model, settled: dict[tuple[str, str], str], picked: str | None) -> tuple[LinkRow, ...]:
+def _rows(
+    learned: Learned, model: Model, settled: dict[tuple[str, str], str], picked: str | None
+) -> tuple[LinkRow, ...]:
+    """Links of the picked column first, then by support as it is shown, the strongest first within equal."""
     strengths = {link: model.strength(*link) for link in model.links}
-    ordered = sorted(model.links, key=lambda link: (picked not in link, -strengths[link]))
+    supports = {link: learned.support_of(*link) for link in model.links}
+    said = {link: "100%" if link in learned.order.insist else support(supports[link]) for link in model.links}
+    shown = {link: SUREST if said[link].startswith("over") else round(supports[link], 2) for link in model.links}
+    ordered = sorted(model.links, key=lambda link: (picked not in link, -shown[link], -strengths[link]))
     return tuple(
         LinkRow(
-            source,
-            "goes with" if settled[source, target] == "nobody" else "leads to",
-            target,
-            strength(strengths[source, target]),
-            settled[source, target],
-            picked in (source, target),
+            source=source,
+            verb="goes with" if settled[source, target] == "nobody" else "leads to",
+            target=target,
+            support=said[source, target],
+            bar=arcs.support_bar(supports[source, target]),
+            strength=strength(strengths[source, target]),
+            settled=SETTLED[settled[source, target]],
+            picked=picked in (source, target),
         )
         for source, target in ordered
     )
 
 
-def _stories(learned: Learned, settled: dict[tuple[str, str], str], picked: str | None) -> tuple[tuple[str, str], ...]:
-    told = []
-    for name in sorted(learned.order.columns, key=lambda name: name != picked):
-        comes = [source for (source, target), by in settled.items() if target == name and by != "nobody"]
-        leads = [target for (source, target), by in settled.items() if source == name and by != "nobody"]
-        beside = [
-            source if target == name else target
-            for (source, target), by in settled.items()
-            if by == "nobody" and name in (source, target)
-        ]
-        told.append((name, story(comes, leads, beside)))
-    return tuple(told)
+def _wide(learned: Learned) -> str | None:
+    wide = [stage.name for stage in learned.order.stages if len(stage.columns) > WIDEST_LAYERED]
+    drawn = learned.posterior
+    return wide_stages(wide, WIDEST_LAYERED, drawn.weights.size, drawn.effective) if wide else None
 
 
 def _address(key: str, links: int, column: str | None) -> str:

@@ -1,22 +1,35 @@
-"""How each column comes about, in words."""
+"""What the Model page says of links."""
 
 from __future__ import annotations
 
 from collections.abc import Sequence
 
-from app.wording.amounts import listing
+from app.wording.amounts import count, listing, plural, small_word
+from app.wording.figures import share
+
+SETTLED = {
+    "your order": "your order",
+    "the data": "the data, if nothing unrecorded",
+    "nobody": "nobody",
+}
 
 
-def story(comes_from: Sequence[str], leads_to: Sequence[str], goes_with: Sequence[str]) -> str:
-    """One sentence for one column. goes_with: links whose direction nobody settled."""
-    parts = []
-    if comes_from:
-        parts.append(f"comes from {listing(comes_from)}")
-    if leads_to:
-        parts.append(f"leads to {listing(leads_to)}")
-    if goes_with:
-        parts.append(f"goes with {listing(goes_with)}")
-    return f"{'; '.join(parts)}." if parts else "stands alone: no link of this model touches it."
+def wide_stages(stages: Sequence[str], widest: int, drawn: int, effective: float) -> str:
+    """What to know of support where stages hold more columns than can be summed graph by graph.
+
+    stages: their names.  widest: the most columns that can.  drawn, effective: models drawn and what they are worth.
+    """
+    which = f"the {plural(len(stages), 'stage')} {listing(stages)}"
+    said = f"In {which}, of more than {small_word(widest)} columns, support is summed over orders of the columns."
+    said += " That favours models that fit many orders, and may move a support by up to 20 points."
+    if drawn:
+        said += f" The {count(drawn)} models drawn are corrected for it and are worth {count(int(effective))}."
+    return said
+
+
+def support(likely: float) -> str:
+    """A posterior probability in per cent; what records say is never quite sure."""
+    return share(min(max(likely, 1e-6), 1 - 1e-6))
 
 
 def strength(points: float) -> str:

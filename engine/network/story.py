@@ -6,7 +6,7 @@ share differs; each part is then a few conditions that can be said (regression t
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Collection, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -32,17 +32,30 @@ LISTED = 4  # levels told of a column without parents
 class Story:
     """How a column comes about.
 
-    sentences: each a row of parts.  rows: its table, a row for each configuration of its parents.
-    left_out: rarer configurations without a row.
+    touches: what it comes from and goes with, a sentence.  rules: how its shares differ.
+    rows: its table, a row for each configuration of its parents.  left_out: rarer configurations without a row.
     """
 
-    sentences: tuple[Words, ...]
+    touches: Words
+    rules: Rules
     rows: tuple[Row, ...]
     left_out: int
 
     @property
     def text(self) -> str:
-        return " ".join(plain(sentence) for sentence in self.sentences)
+        return f"{plain(self.touches)} {self.rules.text}"
+
+
+@dataclass(frozen=True)
+class Rules:
+    """A sentence in pieces: what is told, such as "It is yes for", and a clause for each part, the highest first."""
+
+    lead: Words
+    clauses: tuple[Words, ...]
+
+    @property
+    def text(self) -> str:
+        return f"{plain(self.lead)} {'; for '.join(plain(clause) for clause in self.clauses)}."
 
 
 @dataclass(frozen=True, eq=False)
@@ -72,20 +85,8 @@ class Split:
     sides: Held
 
 
-def sentences(
-    network: Network, column: str, weights: Floats, better: Sequence[int] | None, unsettled: Iterable[Link]
-) -> tuple[Words, ...]:
-    """What `column` comes from and goes with, then its rules.
-
-    weights: (parent levels...) how common each configuration of the parents is, summing to 1.
-    better: positions of the levels to tell of, None to choose them.  unsettled: links whose direction nobody settled.
-    """
-    node = network.node(column)
-    loose = frozenset(unsettled)
-    return _touches(network, column, loose), _rules(network, node, weights, better)
-
-
-def _touches(network: Network, column: str, unsettled: frozenset[Link]) -> Words:
+def touches(network: Network, column: str, unsettled: Collection[Link]) -> Words:
+    """What a column comes from, and what it goes with. unsettled: links whose direction nobody settled."""
     comes = [source for source, target in network.links if target == column and (source, target) not in unsettled]
     beside = [
         source if target == column else target
@@ -104,8 +105,13 @@ def _touches(network: Network, column: str, unsettled: frozenset[Link]) -> Words
     return (Said("stands alone: no link of this model touches it."),)
 
 
-def _rules(network: Network, node: Category, weights: Floats, better: Sequence[int] | None) -> Words:
-    """The shares of a category; a column told by its mean gets rules of its own beside these."""
+def rules(network: Network, column: str, weights: Floats, better: Sequence[int] | None = None) -> Rules:
+    """How the shares of a category differ; a column told by its mean gets rules of its own beside these.
+
+    weights: (parent levels...) how common each configuration of the parents is, summing to 1.
+    better: positions of the levels to tell of, None to choose them.
+    """
+    node = network.node(column)
     table = np.asarray(node.table)
     overall = (table * weights[..., None]).reshape(-1, len(node.levels)).sum(axis=0)
     told = tuple(better) if better is not None else _telling(node, table, weights, overall)
@@ -114,21 +120,21 @@ def _rules(network: Network, node: Category, weights: Floats, better: Sequence[i
     shares = table[..., list(told)].sum(axis=-1)
     parents = tuple(network.node(parent) for parent in node.parents)
     found = parts(parents, shares, weights)
-    is_what = (Said("It is "), *these(node, told), Said(" for "))
+    lead = (Said("It is "), *these(node, told), Said(" for"))
     if len(found) == 1 and not _conditions(parents, found[0]):
         among = figure(found[0].share)
         if varies := _varies(parents, found[0]):
-            return (*is_what, among, *varies, Said("."))
+            return Rules(lead, ((among, *varies),))
         names = series([[name(parent.name)] for parent in parents], " and ")
         verb = "is" if len(parents) == 1 else "are"
-        return (*is_what, Said("about "), among, Said(", whatever "), *names, Said(f" {verb}."))
+        return Rules(lead, ((Said("about "), among, Said(", whatever "), *names, Said(f" {verb}")),))
     common = max(found, key=lambda part: part.weight)
-    clauses = []
+    clauses: list[Words] = []
     for part in sorted(found, key=lambda part: (-part.share, part.held)):
         where = (figure(part.share), Said(" where "), *_conditions(parents, part))
         commonest = (Said(", the commonest case"),) if part is common and len(found) > 2 else ()
         clauses.append((*where, *_varies(parents, part), *commonest))
-    return (*is_what, *series(clauses, "; for ", "; for "), Said("."))
+    return Rules(lead, tuple(clauses))
 
 
 def _telling(node: Category, table: Floats, weights: Floats, overall: Floats) -> tuple[int, ...]:
@@ -150,11 +156,11 @@ def _telling(node: Category, table: Floats, weights: Floats, overall: Floats) ->
     return (min(range(real), key=lambda place: (-round(float(differs[place]), 9), -overall[place], place)),)
 
 
-def _distribution(node: Category, overall: Floats, better: tuple[int, ...] | None) -> Words:
+def _distribution(node: Category, overall: Floats, better: tuple[int, ...] | None) -> Rules:
     """The shares of a column without parents: all levels, or the commonest of many."""
     if better is not None or len(node.levels) <= 2:
         told = better or _telling(node, overall, np.ones(()), overall)
-        return (Said("It is "), *these(node, told), Said(" for "), figure(float(overall[list(told)].sum())), Said("."))
+        return Rules((Said("It is "), *these(node, told), Said(" for")), ((figure(float(overall[list(told)].sum())),),))
     ranked = sorted(range(len(node.levels)), key=lambda place: (-overall[place], place))
     most = LISTED if len(node.levels) <= LISTED else LISTED - 1
     shown = ranked[:most] if node.kind == "category" else sorted(ranked[:most])
@@ -162,7 +168,7 @@ def _distribution(node: Category, overall: Floats, better: tuple[int, ...] | Non
     if rest := ranked[most:]:
         others = "another level" if len(rest) == 1 else f"one of {len(rest)} other levels"
         clauses.append((Said(f"{others} for "), figure(float(overall[rest].sum()))))
-    return (Said("It is "), *series(clauses, " and "), Said("."))
+    return Rules((Said("It is"),), (series(clauses, " and "),))
 
 
 def parts(parents: Sequence[Category], shares: Floats, weights: Floats) -> list[Part]:

@@ -57,6 +57,14 @@ def test_the_arcs_of_the_picked_column_are_in_ink_and_the_others_are_not() -> No
     assert [link.get("aria-current") for link in drawn.iter("a")] == [None, "true", None]
 
 
+def test_an_arc_and_a_bar_are_as_wide_as_the_link_is_sure() -> None:
+    links = [Arc("a", "b", "nobody", 0.0), Arc("a", "c", "your order", 0.5), Arc("b", "c", "the data", 1.0)]
+    drawn = parsed(arcs.arcs([("One", ["a", "b", "c"])], links, dict.fromkeys("abc", "#")))
+    widths = [path.get("stroke-width") for path in drawn.iter("path") if "A" in path.get("d", "")]
+    assert widths == ["1", "2.5", "4"]
+    assert [bar.get("width") for bar in parsed(arcs.support_bar(0.25)).iter("rect")] == ["25.00%"]
+
+
 @pytest.mark.parametrize(("fraction", "at"), [(0.0, "0.00%"), (0.54, "54.00%"), (1.0, "100.00%"), (1.7, "100.00%")])
 def test_the_weight_on_the_beam_stands_at_the_share_done(fraction: float, at: str) -> None:
     drawn = parsed(beam.progress(fraction, "Counting"))

@@ -11,7 +11,6 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from app.wording import amounts, columns
-from app.wording.links import story, strength
 from engine.records.table import Column, Kind
 
 LIMIT = 10
@@ -95,14 +94,3 @@ def test_lists_and_counts_read_as_written_by_a_person() -> None:
     assert amounts.people(7, LIMIT) == "under 10"
     assert amounts.people(1847, LIMIT) == "1,847"
     assert amounts.number(-2.5) == "−2.5"
-
-
-def test_a_column_comes_about_in_one_sentence() -> None:
-    assert story(["age", "shift"], ["passed"], ["homework"]) == (
-        "comes from age and shift; leads to passed; goes with homework."
-    )
-    assert story([], [], []).startswith("stands alone")
-
-
-def test_strength_is_in_points() -> None:
-    assert [strength(x) for x in (0.0, 0.002, 0.01, 0.36)] == ["0 points", "under 1 point", "1 point", "36 points"]
