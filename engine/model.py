@@ -24,9 +24,9 @@ from engine.network import conditional
 from engine.network.network import Category, Network, network
 from engine.network.program import program
 from engine.network.story import Story, rules, touches
-from engine.order import Direction, Order
+from engine.order import Order, better_levels
 from engine.records.table import Coded, Table
-from engine.refusal import Refusal
+from engine.refusal import Refusal, quoted
 
 MODELS = 4  # models of one study kept, each with its drawn tables
 
@@ -96,7 +96,11 @@ class Model:
         Raises Refusal when there is no such link.
         """
         if (source, target) not in self.links:
-            raise Refusal(f"No link leads from {source} to {target}.", where=target, do="Ask for one of model.links.")
+            raise Refusal(
+                f"No link leads from {quoted(source)} to {quoted(target)}.",
+                where=target,
+                do="Ask for one of model.links.",
+            )
         node = self.network.node(target)
         better = np.asarray(node.table)[..., self._better(target)].sum(axis=-1)
         others = tuple(parent for parent in node.parents if parent != source)
@@ -118,7 +122,9 @@ class Model:
         Raises Refusal for an unknown column.
         """
         if column not in self.network.index:
-            raise Refusal(f"This model has no column {column}.", where=column, do="Ask for one of model.network.names.")
+            raise Refusal(
+                f"This model has no column {quoted(column)}.", where=column, do="Ask for one of model.network.names."
+            )
         common = self._planner.joint(self.network.node(column).parents)
         better = self._better(column) if self.order is not None and column in self.order.outcomes else None
         rows = conditional.rows(self.network, column, common, most)
@@ -137,12 +143,8 @@ class Model:
         """Positions of the better levels of an outcome, else of the commonest level."""
         node = self.network.node(column)
         better = None if self.order is None else self.order.outcomes.get(column)
-        if isinstance(better, Direction):
-            last = len(node.levels) - 1 - int(node.has_blank and len(node.levels) > 1)
-            return [last if better is Direction.MORE else 0]
-        if better:
-            return [node.levels.index(level) for level in better if level in node.levels]
-        return [int(np.argmax(self._planner.joint((column,))))]
+        found = better_levels(better, node.levels, node.has_blank)
+        return [node.levels.index(level) for level in found] or [int(np.argmax(self._planner.joint((column,))))]
 
     @cached_property
     def _planner(self) -> Planner:

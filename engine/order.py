@@ -25,6 +25,17 @@ LESS = Direction.LESS
 Better = Direction | tuple[str, ...]
 
 
+def better_levels(better: Better | None, levels: Sequence[str], has_blank: bool) -> tuple[str, ...]:
+    """The levels whose share says how well an outcome does; none for a column that is no outcome.
+
+    MORE: the highest level, LESS: the lowest; a blank, which stands last, is neither.
+    """
+    if isinstance(better, Direction):
+        last = len(levels) - 1 - int(has_blank and len(levels) > 1)
+        return (levels[last if better is Direction.MORE else 0],)
+    return tuple(level for level in better or () if level in levels)
+
+
 @dataclass(frozen=True)
 class Stage:
     """A named group of columns that none of them is known to come before another."""

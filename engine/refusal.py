@@ -1,5 +1,7 @@
 """Refusal: the one family of errors that are meant for people."""
 
+from numbers import Integral
+
 
 class Refusal(Exception):  # noqa: N818  a refusal is an answer to a person, not a fault in the program
     """What is wrong, where it is, and what to do about it.
@@ -22,3 +24,13 @@ class Refusal(Exception):  # noqa: N818  a refusal is an answer to a person, not
 def quoted(text: object) -> str:
     """A column's name, a level or a file's name in a sentence, in full and between quotation marks."""
     return f"“{text}”"
+
+
+def whole(given: object, name: str, least: int, do: str) -> int:
+    """`given` as a whole number. Raises Refusal for anything else, and below `least`.
+
+    name: of the keyword it was given for.  do: what to do instead.
+    """
+    if isinstance(given, bool) or not isinstance(given, Integral) or given < least:
+        raise Refusal(f"{name} = {given} is no whole number of {least} or more.", where=name, do=do)
+    return int(given)

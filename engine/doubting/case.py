@@ -62,3 +62,12 @@ def named(names: Iterable[str], joint: str = "and") -> str:
     """Names in a sentence: "a", "a and b", "a, b and c"."""
     every = list(names)
     return every[0] if len(every) == 1 else f"{', '.join(every[:-1])} {joint} {every[-1]}"
+
+
+def per_cent(share: float) -> str:
+    """A share as a figure, never rounded to nothing or to all."""
+    if 0.0 < share < 0.01:
+        return "under 1%"
+    if 0.99 < share < 1.0:
+        return "over 99%"
+    return f"{100.0 * share:.0f}%"

@@ -5,11 +5,12 @@ from __future__ import annotations
 import math
 
 from engine.answering.answer import Caution, Counted, Marginal
-from engine.doubting.case import Case, Found, named
-from engine.order import Direction
+from engine.doubting.case import Case, Found, named, per_cent
+from engine.order import better_levels
 from engine.records.table import SMALL_COUNT
 
 COVERAGE = 0.90
+ENOUGH = 100  # records: among fewer, a share that chance explains is not worth knowing
 DEVIATION = 1.6448536269514722  # the standard normal deviate that leaves 5 % on each side
 
 
@@ -17,7 +18,7 @@ def check(case: Case) -> Found | None:
     """Tell where the counted share of an outcome lies outside the model's interval for the same group.
 
     Weakens when the model's share lies outside the count's own interval too (Wilson 1927), so that chance among so
-    many records is no likely reason; else worth knowing.
+    many records is no likely reason; else worth knowing, of ENOUGH records or more: among fewer the two often part.
     """
     readings = [case.answer[column] for column in case.asked.watch]
     compared = [(reading.column, reading.among, reading.counted) for reading in readings if reading.counted is not None]
@@ -35,25 +36,34 @@ def _caution(case: Case, column: str, among: Marginal, count: Counted) -> list[C
         return []
     at_least, at_most = wilson(held, count.rows)
     said = among.share(levels)
-    rank = "know" if at_least <= said <= at_most else "weakens"
+    by_chance = at_least <= said <= at_most
+    if by_chance and count.rows < ENOUGH:
+        return []
     of_whom = "these" if case.asked.pins else "all"
     text = (
         f"of {of_whom} {count.rows:,} records have {column} = {named(levels, 'or')} when counted; "
-        f"the model says {_per_cent(said)}, between {_per_cent(low)} and {_per_cent(high)}."
+        f"the model says {per_cent(said)}, between {per_cent(low)} and {per_cent(high)}."
     )
     do = "For how things are, go by the count; on the Model page, see whether more links bring the two together."
     figures = {"counted": share, "model": said, "low": low, "high": high, "rows": count.rows}
-    return [Caution(rank, "counted", _counted(held, count.rows), text, do, figures, (column, *case.asked.pins))]
+    return [
+        Caution(
+            "know" if by_chance else "weakens",
+            "counted",
+            _counted(held, count.rows),
+            text,
+            do,
+            figures,
+            (column, *case.asked.pins),
+        )
+    ]
 
 
 def _levels(case: Case, column: str, among: Marginal) -> tuple[str, ...]:
     """The better levels of an outcome, else the commonest level of the group."""
     better = None if case.order is None else case.order.outcomes.get(column)
-    if better is not None and not isinstance(better, Direction):
-        found = tuple(level for level in better if level in among.levels)
-        if found:
-            return found
-    return (max(among.levels, key=lambda level: among.shares[level]),)
+    found = better_levels(better, among.levels, case.network.node(column).has_blank)
+    return found or (max(among.levels, key=lambda level: among.shares[level]),)
 
 
 def wilson(held: int, rows: int) -> tuple[float, float]:
@@ -70,12 +80,4 @@ def _counted(held: int, rows: int) -> str:
         return f"under {SMALL_COUNT}"
     if 0 < rows - held < SMALL_COUNT:
         return "nearly all"
-    return _per_cent(held / rows)
-
-
-def _per_cent(share: float) -> str:
-    if 0.0 < share < 0.01:
-        return "under 1%"
-    if 0.99 < share < 1.0:
-        return "over 99%"
-    return f"{100.0 * share:.0f}%"
+    return per_cent(held / rows)

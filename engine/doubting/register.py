@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from engine.answering.answer import Caution
-from engine.doubting import counted, direction, overlap, thin
+from engine.doubting import blanks, counted, direction, overlap, thin
 from engine.doubting.case import Case, Check
 
 CHECKS: tuple[Check, ...] = (
@@ -11,6 +11,7 @@ CHECKS: tuple[Check, ...] = (
     thin.check,
     direction.check,
     counted.check,
+    blanks.check,
 )
 RANKS = ("blocks", "weakens", "know")
 

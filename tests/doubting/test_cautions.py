@@ -1,5 +1,7 @@
 """Each caution fires in a world made for it, and not in that world's clean twin."""
 
+from dataclasses import replace
+
 import pytest
 
 import engine
@@ -55,7 +57,7 @@ def test_overlap_weakens_where_the_value_is_rare():
 @pytest.mark.parametrize("pins", [None, {"shift": "nights"}, {"mentor": "no"}])
 def test_overlap_is_silent_where_every_stratum_has_the_value(pins):
     answer = offer(school(nights_with_mentor=10), pins)
-    assert answer.cautions == () and answer.checks_made == (3 if pins is None else 4)
+    assert answer.cautions == () and answer.checks_made == (4 if pins is None else 5)
 
 
 def test_overlap_is_silent_where_few_of_the_pinned_are_in_a_thin_stratum():
@@ -237,6 +239,48 @@ def test_a_count_within_chance_of_the_model_is_only_worth_knowing():
     assert only(crossed(matched=118).ask({"a": "x", "b": "x"}), "counted").rank == "know"
 
 
+@pytest.mark.parametrize(("rows", "told"), [(99, []), (100, [("know", "counted")])])
+def test_a_count_within_chance_of_the_model_is_told_of_a_hundred_records_or_more(rows, told):
+    held = rows // 2 + 6  # 57 of 100, where the model says 50 % within a point or two
+    groups = [(held, {"a": "x", "out": "yes"}), (rows - held, {"a": "x", "out": "no"})]
+    others = [(4000 - held, {"a": "y", "out": "yes"}), (4000 - rows + held, {"a": "y", "out": "no"})]
+    model = world(repeated(*groups, *others), [], [("A", ["a"]), ("B", ["out"])], {"out": "yes"})
+    answer = model.ask({"a": "x"})
+    low, high = answer["out"].among.interval("yes")
+    assert not low <= held / rows <= high
+    assert codes_of(answer) == told
+
+
+def marked(better, blank=False):
+    """Records where more and less of a grade, or its blank, part ways with a model that has no link into it."""
+    last = [("z blank", 40)] if blank else []
+    groups = [
+        (times, {"a": a, "out": out})
+        for a, counts in (
+            ("x", [("1 low", 160), ("2 middle", 100), ("3 high", 40)]),
+            ("y", [("1 low", 40), ("2 middle", 100), ("3 high", 160)]),
+        )
+        for out, times in (*counts, *last)
+    ]
+    return world(
+        repeated(*groups),
+        [],
+        [("A", ["a"]), ("B", ["out"])],
+        {"out": better},
+        blanks=["out"] if blank else (),
+        kinds={"out": "grade"},
+    )
+
+
+@pytest.mark.parametrize("blank", [False, True])
+@pytest.mark.parametrize(("better", "level"), [(engine.MORE, "3 high"), (engine.LESS, "1 low")])
+def test_the_count_of_more_or_less_is_that_of_the_levels_the_model_speaks_of(better, level, blank):
+    model = marked(better, blank)
+    caution = only(model.ask({"a": "x"}), "counted")
+    assert f"have out = {level} when counted" in caution.text
+    assert [model.network.node("out").levels[place] for place in model._better("out")] == [level]
+
+
 def test_a_count_that_the_model_agrees_with_is_not_told():
     assert codes_of(crossed(matched=100).ask({"a": "x", "b": "x"})) == []
 
@@ -249,6 +293,62 @@ def test_a_counted_share_does_not_give_a_small_count_away():
     assert caution.text.startswith("of these 40 records have out = yes when counted; the model says")
     model = world(repeated(*groups), [], [("A", ["a"]), ("B", ["out"])], {"out": "no"})
     assert only(model.ask({"a": "x"}), "counted").figure == "nearly all"
+
+
+def attending(blank, where="attends", unknown="unknown"):
+    """A lever that acts through attendance, `blank` of 400 records of one column blank."""
+    groups = [
+        (50 - blank // 8, {"mentor": mentor, "attends": attends, "passed": passed, "town": "b"})
+        for mentor in ("no", "yes")
+        for attends in ("little", "much")
+        for passed in ("no", "yes")
+    ]
+    groups += [(blank // 8, {**group, where: unknown}) for _, group in groups]
+    links = [("mentor", "attends"), ("attends", "passed"), ("passed", "town")]
+    stages = [("Offer", ["mentor"]), ("During", ["attends"]), ("After", ["passed"]), ("Last", ["town"])]
+    return world(repeated(*groups), links, stages, {"passed": "yes"}, ["mentor"], blanks=[where] if blank else [])
+
+
+@pytest.mark.parametrize("where", ["mentor", "attends", "passed"])
+def test_a_blank_in_what_the_question_runs_through_is_worth_knowing(where):
+    model = attending(16, where, unknown="zz")
+    caution = only(model.ask(levers={"mentor": engine.Fix("yes")}), "blanks")
+    assert (caution.rank, caution.figure, caution.columns) == ("know", "4%", (where,))
+    assert caution.text == (
+        f"of {where} is blank and is taken as a level of its own, which can hide part of an influence that runs "
+        "through it."
+    )
+    assert caution.do == "Say on the Records page what a blank means there."
+    twin = attending(0, where).ask(levers={"mentor": engine.Fix("yes")})
+    assert "blanks" not in [code for _, code in codes_of(twin)]
+    codes = model.coded.codes
+    unseen = replace(model, coded=replace(model.coded, codes=codes[(codes < 2).all(axis=1)]))  # a blank without records
+    assert "blanks" not in [code for _, code in codes_of(unseen.ask(levers={"mentor": engine.Fix("yes")}))]
+
+
+def test_a_blank_off_the_path_is_not_told():
+    lever = {"mentor": engine.Fix("yes")}
+    assert "blanks" not in [code for _, code in codes_of(attending(16, "town", "zz").ask(levers=lever))]
+    assert "blanks" in [code for _, code in codes_of(attending(16, "town", "zz").ask(levers=lever, watch=["town"]))]
+    model = attending(16, "attends", "zz")
+    assert "blanks" not in [code for _, code in codes_of(model.ask(watch=["passed"]))]
+    assert "blanks" not in [code for _, code in codes_of(model.ask(levers={"mentor": engine.Fix("yes", 0.0)}))]
+
+
+def test_blanks_of_several_columns_are_told_in_one_caution_the_largest_first():
+    groups = [(300, "yes", "yes"), (50, "zz", "no"), (30, "yes", "zz"), (5, "no", "no"), (15, "no", "zz")]
+    rows = repeated(*[(times, {"mentor": mentor, "passed": passed}) for times, mentor, passed in groups])
+    stages = [("Offer", ["mentor"]), ("After", ["passed"])]
+    model = world(rows, [("mentor", "passed")], stages, {"passed": "yes"}, blanks=["mentor", "passed"])
+    caution = only(model.ask(levers={"mentor": engine.Fix("yes")}), "blanks")
+    assert (caution.figure, caution.columns) == ("12%", ("mentor", "passed"))
+    assert caution.text.startswith("of mentor and 11% of passed are blank, and a blank is taken as a level of its own")
+    assert caution.do == "Say on the Records page what a blank means in each of them."
+
+
+def test_a_share_of_blanks_does_not_give_a_small_count_away():
+    caution = only(attending(8, "attends", "zz").ask(levers={"mentor": engine.Fix("yes")}), "blanks")
+    assert caution.figure == "under 3%"
 
 
 def test_wilson_at_ninety_per_cent():
