@@ -86,5 +86,5 @@ def test_what_was_kept_answers_as_before_to_the_last_digit(stones, tmp_path):
 
 def test_only_what_the_order_marks_may_be_changed(stones):
     assert stones.model().changeable == ("treatment",)
-    with pytest.raises(engine.Refusal, match="size is not marked as changeable"):
+    with pytest.raises(engine.Refusal, match="“size” is not marked as changeable"):
         stones.model().ask(levers={"size": engine.Fix("small")})

@@ -102,31 +102,31 @@ def test_had_is_none_where_nobody_pinned_can_have_the_value(school):
 
 
 def test_unknown_names_are_refused_with_those_that_exist(school):
-    refused("no column regoin", "region, shift, mentor", lambda: school.ask({"regoin": "north"}))
-    refused("no column grade", "region, shift", lambda: school.ask(watch=["grade"]))
-    refused("no column grade", "region, shift", lambda: school.ask(beside=["grade"]))
-    refused("no column 3", "region, shift", lambda: school.ask({3: "north"}))
-    refused("region has no level east", "north, south, west", lambda: school.ask({"region": "east"}))
-    refused("region has no level east", "north, south, west", lambda: school.ask({"region": ["north", "east"]}))
-    refused("mentor has no level maybe", "no, yes", lambda: school.ask(levers={"mentor": engine.Fix("maybe")}))
+    refused("no column “regoin” in", "region, shift, mentor", lambda: school.ask({"regoin": "north"}))
+    refused("no column “grade” in", "region, shift", lambda: school.ask(watch=["grade"]))
+    refused("no column “grade” in", "region, shift", lambda: school.ask(beside=["grade"]))
+    refused("no column “3” in", "region, shift", lambda: school.ask({3: "north"}))
+    refused("“region” has no level “east”", "north, south, west", lambda: school.ask({"region": "east"}))
+    refused("“region” has no level “east”", "north, south, west", lambda: school.ask({"region": ["north", "east"]}))
+    refused("“mentor” has no level “maybe”", "no, yes", lambda: school.ask(levers={"mentor": engine.Fix("maybe")}))
 
 
 def test_a_pin_downstream_of_a_lever_is_refused(school):
     refused(
-        "^attends follows mentor, which you set, so pinning it would mix two worlds",
-        "Take out the pin on attends, or do not set mentor.",
+        "^“attends” follows “mentor”, which you set, so pinning it would mix two worlds",
+        "Take out the pin on “attends”, or do not set “mentor”.",
         lambda: school.ask({"attends": "much"}, {"mentor": engine.Fix("yes")}),
     )
     school.ask({"mentor": "no"}, {"mentor": engine.Fix("yes")})  # a pin on the lever's own column is before it
 
 
 def test_only_a_changeable_column_may_be_set(school):
-    refused("shift is not marked as changeable", "mentor", lambda: school.ask(levers={"shift": engine.Fix("days")}))
+    refused("“shift” is not marked as changeable", "mentor", lambda: school.ask(levers={"shift": engine.Fix("days")}))
 
 
 @pytest.mark.parametrize("reach", [-0.1, 1.1, float("nan"), "half", None, True])
 def test_a_reach_that_is_no_probability_is_refused(school, reach):
-    refused("reach of mentor", "from 0 to 1", lambda: school.ask(levers={"mentor": engine.Fix("yes", reach)}))
+    refused("reach of “mentor”", "from 0 to 1", lambda: school.ask(levers={"mentor": engine.Fix("yes", reach)}))
 
 
 @pytest.mark.parametrize("reach", [np.float32(0.5), np.float64(0.5)])
@@ -137,15 +137,41 @@ def test_a_reach_may_be_any_kind_of_number(school, reach):
 
 
 def test_what_is_no_question_is_refused(school):
-    refused("pinned to no level", "north", lambda: school.ask({"region": []}))
+    refused("“region” is pinned to no level", "north", lambda: school.ask({"region": []}))
     refused("one level only", "no, yes", lambda: school.ask(levers={"mentor": engine.Fix({"no", "yes"})}))
     refused("no lever", "engine.Fix", lambda: school.ask(levers={"mentor": "yes"}))
     refused("one text, not a list", "passed", lambda: school.ask(watch="passed"))
     refused("watches no column", "at least one", lambda: school.ask(watch=[]))
     refused("pins of a question", "region", lambda: school.ask(pins=["region"]))
     refused("never sampled", "Leave exact out", lambda: school.ask(exact=False))
-    refused("draws of a question", "0 or more", lambda: school.ask(draws=-1))
-    refused("seed of a question", "0 or more", lambda: school.ask(seed=1.5))
+    refused("seed = 1.5 is no whole number of 0 or more", "0 or more", lambda: school.ask(seed=1.5))
+
+
+@pytest.mark.parametrize("draws", [-1, 1, 2, 19, 20.5, True, None])
+def test_draws_too_few_for_an_interval_are_refused(school, draws):
+    refused("draw", "Give 0 for points alone, or at least 20", lambda: school.ask(draws=draws))
+    low, high = school.ask(draws=0)["passed"].among.interval("yes")
+    assert low == high
+    assert school.ask(draws=np.int64(20))["passed"].among.draws.shape == (2, 20)
+
+
+@pytest.mark.parametrize("coverage", [90, 0, 1, -0.5, float("nan"), "90", True])
+def test_a_coverage_that_is_no_share_is_refused(school, coverage):
+    answer = school.ask(levers={"mentor": engine.Fix("yes")})
+    known = engine.Model.from_network([engine.Category("a", NO_YES, [], [0.5, 0.5])]).ask()
+    for ask in (
+        lambda: answer["passed"].set.interval("yes", coverage),
+        lambda: answer.change("passed", "yes", coverage),
+        lambda: known["a"].among.interval("yes", coverage),
+    ):
+        refused("An interval cannot cover", "such as 0.90", ask)
+
+
+def test_a_column_that_was_not_asked_for_is_refused(school):
+    answer = school.ask(levers={"mentor": engine.Fix("yes")}, beside=["attends"])
+    for ask in (lambda: answer["unknown"], lambda: answer.change("unknown", "yes"), lambda: answer["region"]):
+        refused("“(unknown|region)” was not asked for", "passed and attends", ask)
+    refused("no level “maybe” here", "no, yes", lambda: answer.change("passed", "maybe"))
 
 
 def test_a_range_pin_must_match_the_bands():
@@ -180,7 +206,7 @@ def test_strength_is_the_largest_change_of_the_better_share():
     # a, averaged over b as recorded, x .3, y .275, z .425: .9 - .9; .6 - .2; .5 - .1
     assert model.strength("a", "c") == pytest.approx(0.275 * 0.4 + 0.425 * 0.4)
     assert model.strength("a", "b") == pytest.approx(0.3)  # z, the commonest: .5 to .2
-    refused("No link leads from c to a", "model.links", lambda: model.strength("c", "a"))
+    refused("No link leads from “c” to “a”", "model.links", lambda: model.strength("c", "a"))
 
 
 def test_strength_speaks_of_the_better_level_of_an_outcome(school):

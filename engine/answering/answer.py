@@ -4,10 +4,12 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass
+from numbers import Real
 
 import numpy as np
 
-from engine.refusal import Refusal
+from engine.records.wording import listing
+from engine.refusal import Refusal, quoted
 
 Wanted = str | Iterable[str]
 
@@ -43,12 +45,21 @@ class Marginal:
         names = [wanted] if isinstance(wanted, str) else list(dict.fromkeys(wanted))
         for name in names:
             if name not in self.levels:
-                raise Refusal(f"There is no level {name} here.", do=f"The levels are {', '.join(self.levels)}.")
+                raise Refusal(f"There is no level {quoted(name)} here.", do=f"The levels are {', '.join(self.levels)}.")
         return [self.levels.index(name) for name in names]
 
 
 def spread(draws: np.ndarray, point: float, coverage: float) -> tuple[float, float]:
-    """Equal-tailed interval of `draws`; (point, point) when there are none."""
+    """Equal-tailed interval of `draws`; (point, point) when there are none.
+
+    Raises Refusal when `coverage` is no share between 0 and 1.
+    """
+    if isinstance(coverage, bool) or not isinstance(coverage, Real) or not 0.0 < coverage < 1.0:
+        raise Refusal(
+            f"An interval cannot cover {quoted(coverage)}.",
+            where="coverage",
+            do="Give a share above 0 and below 1, such as 0.90.",
+        )
     if draws.size == 0:
         return point, point
     tail = (1.0 - coverage) / 2.0
@@ -134,6 +145,13 @@ class Answer:
         return any(caution.rank == "blocks" for caution in self.cautions)
 
     def __getitem__(self, column: str) -> Reading:
+        """The reading of one column. Raises Refusal for a column that was not asked for."""
+        if not isinstance(column, str) or column not in self.readings:
+            raise Refusal(
+                f"The column {quoted(column)} was not asked for.",
+                where=str(column),
+                do=f"Watch it; this answer holds {listing(tuple(self.readings), 12)}.",
+            )
         return self.readings[column]
 
     def __iter__(self) -> Iterator[str]:
@@ -142,9 +160,9 @@ class Answer:
     def change(self, column: str, wanted: Wanted, coverage: float = 0.90) -> tuple[float, float, float]:
         """(change, low, high): share if set minus share among these, over common draws.
 
-        Raises Refusal without levers.
+        Raises Refusal without levers, and for a column that was not asked for.
         """
-        reading = self.readings[column]
+        reading = self[column]
         if reading.set is None:
             raise Refusal("Nothing is set, so nothing changes.", do="Set a lever first.")
         change = reading.set.share(wanted) - reading.among.share(wanted)

@@ -11,7 +11,9 @@ from engine.answering.counting import Records
 from engine.answering.planner import Planner
 from engine.answering.question import Question
 from engine.network.network import Network
-from engine.refusal import Refusal
+from engine.refusal import Refusal, whole
+
+FEWEST_DRAWS = 20  # below these the ends of a 90 % interval are the outermost draws
 
 
 def ask(
@@ -26,15 +28,21 @@ def ask(
 
     draws: parameter draws behind every interval; none are made for a network known exactly.
     exact: True or None; what cannot be summed exactly is refused.
-    Raises Refusal for pins that contradict each other, for a question too wide to sum, and for draws below 0.
+    Raises Refusal for pins that contradict each other, for a question too wide to sum, and for draws that are neither
+    0 nor FEWEST_DRAWS or more.
     """
     if exact is False:
         raise Refusal("Answers are summed exactly here, never sampled.", where="exact", do="Leave exact out.")
-    for name, number in (("draws", draws), ("seed", seed)):
-        if isinstance(number, bool) or not isinstance(number, (int, np.integer)) or number < 0:
-            raise Refusal(f"The {name} of a question are {number}.", where=name, do="Give a whole number, 0 or more.")
+    draws = whole(draws, "draws", 0, f"Give 0 for points alone, or at least {FEWEST_DRAWS}.")
+    seed = whole(seed, "seed", 0, "Give a whole number, 0 or more.")
+    if 0 < draws < FEWEST_DRAWS:
+        raise Refusal(
+            f"From {draws} {'draw' if draws == 1 else 'draws'} no interval can be told.",
+            where="draws",
+            do=f"Give 0 for points alone, or at least {FEWEST_DRAWS}.",
+        )
     started = time.perf_counter()
-    worlds = planner.worlds(asked, int(draws), int(seed))
+    worlds = planner.worlds(asked, draws, seed)
     matching, counted = None, {}
     if records is not None:
         rows = records.matching(asked.pins)

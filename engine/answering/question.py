@@ -9,7 +9,7 @@ from numbers import Real
 from engine.answering.levers import Fix
 from engine.network.network import Category, Network
 from engine.records.bands import level_positions
-from engine.refusal import Refusal
+from engine.refusal import Refusal, quoted
 
 SHOWN = 12  # levels or columns named in a refusal; more are counted
 
@@ -84,7 +84,7 @@ def question(
 def _known(network: Network, column: object) -> Category:
     if not isinstance(column, str) or column not in network.index:
         raise Refusal(
-            f"There is no column {column} in this model.",
+            f"There is no column {quoted(column)} in this model.",
             where=str(column),
             do=f"Its columns are {listed(network.names)}.",
         )
@@ -103,20 +103,26 @@ def _pin(network: Network, column: str, wanted: object) -> frozenset[int]:
         try:
             found = level_positions(node.levels, node.kind, node.cuts, wanted)
         except Refusal as refused:
-            raise Refusal(f"{column}: {refused.message}", where=column, do=refused.do) from None
+            raise Refusal(f"{quoted(column)}: {refused.message}", where=column, do=refused.do) from None
         except (TypeError, ValueError):
             raise Refusal(
-                f"{column} cannot be {wanted}.", where=column, do=f"Its levels are {listed(node.levels)}."
+                f"{quoted(column)} cannot be {quoted(wanted)}.",
+                where=column,
+                do=f"Its levels are {listed(node.levels)}.",
             ) from None
     if not found:
-        raise Refusal(f"{column} is pinned to no level at all.", where=column, do=f"Name one of {listed(node.levels)}.")
+        raise Refusal(
+            f"{quoted(column)} is pinned to no level at all.", where=column, do=f"Name one of {listed(node.levels)}."
+        )
     return found
 
 
 def _position(node: Category, level: str) -> int:
     if level not in node.levels:
         raise Refusal(
-            f"{node.name} has no level {level}.", where=node.name, do=f"Its levels are {listed(node.levels)}."
+            f"{quoted(node.name)} has no level {quoted(level)}.",
+            where=node.name,
+            do=f"Its levels are {listed(node.levels)}.",
         )
     return node.levels.index(level)
 
@@ -125,20 +131,22 @@ def _lever(network: Network, column: str, lever: object, changeable: Collection[
     node = _known(network, column)
     if changeable is not None and column not in changeable:
         do = f"Set one of these: {listed(tuple(changeable))}." if changeable else "Mark it as changeable in the order."
-        raise Refusal(f"{column} is not marked as changeable, so it cannot be set.", where=column, do=do)
+        raise Refusal(f"{quoted(column)} is not marked as changeable, so it cannot be set.", where=column, do=do)
     if not isinstance(lever, Fix):
         raise Refusal(
-            f"{column} is set by something that is no lever.", where=column, do='Write engine.Fix("a level").'
+            f"{quoted(column)} is set by something that is no lever.", where=column, do='Write engine.Fix("a level").'
         )
     if isinstance(lever.reach, bool) or not isinstance(lever.reach, Real) or not 0.0 <= lever.reach <= 1.0:
         raise Refusal(
-            f"The reach of {column} is {lever.reach}, which is no probability.",
+            f"The reach of {quoted(column)} is {lever.reach}, which is no probability.",
             where=column,
             do="Give a reach from 0 to 1.",
         )
     positions = _pin(network, column, lever.value)
     if len(positions) != 1:
-        raise Refusal(f"{column} can be set to one level only.", where=column, do=f"Name one of {listed(node.levels)}.")
+        raise Refusal(
+            f"{quoted(column)} can be set to one level only.", where=column, do=f"Name one of {listed(node.levels)}."
+        )
     (position,) = positions
     return Setting(position, float(lever.reach), node.levels[position])
 
@@ -149,9 +157,9 @@ def _before_the_levers(network: Network, asked: Question) -> None:
         for lever in asked.levers:
             if column in network.descendants([lever]):
                 raise Refusal(
-                    f"{column} follows {lever}, which you set, so pinning it would mix two worlds.",
+                    f"{quoted(column)} follows {quoted(lever)}, which you set, so pinning it would mix two worlds.",
                     where=column,
-                    do=f"Take out the pin on {column}, or do not set {lever}.",
+                    do=f"Take out the pin on {quoted(column)}, or do not set {quoted(lever)}.",
                 )
 
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from math import comb
+from numbers import Integral
 
 import numpy as np
 import pandas as pd
@@ -17,7 +18,7 @@ from engine.learning.search import SizeCurve, check_widths, size_curve
 from engine.order import Direction, Order
 from engine.records.counts import LARGEST, ArrayCounts
 from engine.records.table import Coded, Table
-from engine.refusal import Refusal
+from engine.refusal import Refusal, quoted, whole
 
 FEWEST_ROWS = 30
 MOST_LEVELS = 50
@@ -46,16 +47,26 @@ def learn(
 
     Raises Refusal for records or an order that cannot be learned from.
     """
+    if not isinstance(table, Table):
+        raise Refusal(
+            "What is to be learned from is no table of records.",
+            where="table",
+            do="Make one with engine.read_table(file) or engine.Table.from_frame(frame).",
+        )
+    if not isinstance(order, Order):
+        raise Refusal(
+            "The order is none.", where="order", do="State it as engine.Order([(stage, [column, ...]), ...])."
+        )
     for name in order.columns:
         if name not in table.columns:
             raise Refusal(
-                f"The order names the column “{name}”, which the records do not have.",
+                f"The order names the column {quoted(name)}, which the records do not have.",
                 where=name,
                 do="Take it out of the order.",
             )
         if table.columns[name].kind == "left out":
             raise Refusal(
-                f"The column “{name}” is left out of the records but stands in the order.",
+                f"The column {quoted(name)} is left out of the records but stands in the order.",
                 where=name,
                 do="Take it out of the order, or give it a kind.",
             )
@@ -77,7 +88,7 @@ def learn_coded(
     folds: bool = True,
 ) -> Learned:
     """As `learn`, from the columns of the order as level positions, in the order's own sequence."""
-    _check(coded, order, max_links, max_parents)
+    _check(coded, order, max_links, max_parents, graphs, seed)
     stages = candidates(order, max_parents)
     counts = _counts(coded, seed, folds)
     say = _Saying(progress, counts, stages, max_parents)
@@ -151,19 +162,21 @@ def _curve(found: SizeCurve) -> pd.DataFrame:
     )
 
 
-def _check(coded: Coded, order: Order, max_links: int | None, max_parents: int) -> None:
+def _check(coded: Coded, order: Order, max_links: int | None, max_parents: int, graphs: int, seed: int) -> None:
     if coded.names != order.columns:
         raise AssertionError("the coded columns are not those of the order")
     if not coded.names:
         raise Refusal("The order holds no column.", where="stages", do="Put at least one column into a stage.")
-    if not 1 <= max_parents <= MOST_PARENTS:
+    if isinstance(max_parents, bool) or not isinstance(max_parents, Integral) or not 1 <= max_parents <= MOST_PARENTS:
         raise Refusal(
             f"A column may have at most 1 to {MOST_PARENTS} parents, not {max_parents}.",
             where="max_parents",
             do="The usual number is 3.",
         )
-    if max_links is not None and max_links < 0:
-        raise Refusal("The most links allowed cannot be below 0.", where="max_links", do="Leave it out for no limit.")
+    if max_links is not None:
+        whole(max_links, "max_links", 0, "Leave it out for no limit.")
+    whole(graphs, "graphs", 0, "The usual number is 200.")
+    whole(seed, "seed", 0, "Give a whole number, 0 or more.")
     rows = coded.codes.shape[0]
     if rows < FEWEST_ROWS:
         raise Refusal(
@@ -175,21 +188,28 @@ def _check(coded: Coded, order: Order, max_links: int | None, max_parents: int) 
         codes = coded.codes[:, place]
         if len(levels) < 2 or codes.min() == codes.max():
             raise Refusal(
-                f"Every record has the same value in “{name}”, so nothing can be learned from it.",
+                f"Every record has the same value in {quoted(name)}, so nothing can be learned from it.",
                 where=name,
                 do="Take it out of the order.",
             )
         if len(levels) > MOST_LEVELS:
             raise Refusal(
-                f"The column “{name}” has {len(levels)} levels; at most {MOST_LEVELS} can be learned from.",
+                f"The column {quoted(name)} has {len(levels)} levels; at most {MOST_LEVELS} can be learned from.",
                 where=name,
                 do="Merge rare levels, or leave the column out.",
             )
         better = order.outcomes.get(name, ())
+        if isinstance(better, Direction) and coded.kinds[place] == "category":
+            raise Refusal(
+                f"The outcome {quoted(name)} is a category: its levels have no order, so more of it "
+                "can be neither better nor worse.",
+                where=name,
+                do="Name its better level or levels, or make it a grade with its levels from low to high.",
+            )
         for level in () if isinstance(better, Direction) else better:
             if level not in levels:
                 raise Refusal(
-                    f"The outcome “{name}” has no level “{level}”.",
+                    f"The outcome {quoted(name)} has no level {quoted(level)}.",
                     where=name,
                     do=f"Choose from: {', '.join(levels)}.",
                 )

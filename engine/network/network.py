@@ -9,7 +9,7 @@ from functools import cached_property
 
 import numpy as np
 
-from engine.refusal import Refusal
+from engine.refusal import Refusal, quoted
 
 ROUNDING = 1e-8  # how far a row of a table may be from 1: tables are often written with nine or more digits
 SMALLEST = 1e-300  # a drawn share that rounds to 0 although its cell is possible is taken as this
@@ -39,7 +39,9 @@ class Category:
         for what, given in (("levels", self.levels), ("parents", self.parents)):
             if isinstance(given, str):
                 raise Refusal(
-                    f"The {what} of {self.name} are one text, not a list.", where=self.name, do=f"Write [{given!r}]."
+                    f"The {what} of {quoted(self.name)} are one text, not a list.",
+                    where=self.name,
+                    do=f"Write [{given!r}].",
                 )
         object.__setattr__(self, "levels", tuple(self.levels))
         object.__setattr__(self, "parents", tuple(self.parents))
@@ -47,7 +49,7 @@ class Category:
             table = np.asarray(self.table, dtype=np.float64)
         except (TypeError, ValueError):
             raise Refusal(
-                f"The table of {self.name} is not a regular table of numbers.",
+                f"The table of {quoted(self.name)} is not a regular table of numbers.",
                 where=self.name,
                 do="Give one axis per parent in order, and the column's own levels last.",
             ) from None
@@ -102,16 +104,23 @@ class Network:
 def network(nodes: Iterable[Category]) -> Network:
     """Check `nodes` and sort them, parents before children, otherwise in the order given.
 
-    Raises Refusal for: no columns, a column twice, a level twice, an unknown parent, a parent twice, a table of
-    the wrong shape, an entry that is no probability, a row that does not sum to 1, links that run in a circle.
+    Raises Refusal for: no columns, what is no Category, a name that is no text, a column twice, a level twice, an
+    unknown parent, a parent twice, a table of the wrong shape, an entry that is no probability, a row that does not
+    sum to 1, links that run in a circle.
     """
     given = tuple(nodes)
     if not given:
         raise Refusal("A network needs at least one column.", do="Give a list of engine.Category.")
     by_name: dict[str, Category] = {}
     for node in given:
+        if not isinstance(node, Category):
+            raise Refusal(f"{node!r} is no column of a network.", do="Give a list of engine.Category.")
+        if not isinstance(node.name, str):
+            raise Refusal(f"The column name {node.name!r} is not a text.", do="Name columns with words.")
         if node.name in by_name:
-            raise Refusal(f"The column {node.name} is given twice.", where=node.name, do="Give each column once.")
+            raise Refusal(
+                f"The column {quoted(node.name)} is given twice.", where=node.name, do="Give each column once."
+            )
         by_name[node.name] = node
     for node in given:
         _check_family(node, by_name)
@@ -120,29 +129,33 @@ def network(nodes: Iterable[Category]) -> Network:
 
 def _check_family(node: Category, by_name: dict[str, Category]) -> None:
     if not node.levels or not all(isinstance(level, str) for level in node.levels):
-        raise Refusal(f"{node.name} needs levels, each a text.", where=node.name, do='Give them as ["no", "yes"].')
+        raise Refusal(
+            f"{quoted(node.name)} needs levels, each a text.", where=node.name, do='Give them as ["no", "yes"].'
+        )
     if len(set(node.levels)) < len(node.levels):
-        raise Refusal(f"{node.name} has a level twice.", where=node.name, do="Give each level once.")
+        raise Refusal(f"{quoted(node.name)} has a level twice.", where=node.name, do="Give each level once.")
+    if not all(isinstance(parent, str) for parent in node.parents):
+        raise Refusal(f"A parent of {quoted(node.name)} is not a text.", where=node.name, do="Give columns by name.")
     if len(set(node.parents)) < len(node.parents):
-        raise Refusal(f"{node.name} has a parent twice.", where=node.name, do="Give each parent once.")
+        raise Refusal(f"{quoted(node.name)} has a parent twice.", where=node.name, do="Give each parent once.")
     for parent in node.parents:
         if parent not in by_name:
             raise Refusal(
-                f"{node.name} has the parent {parent}, which is no column of this network.",
+                f"{quoted(node.name)} has the parent {quoted(parent)}, which is no column of this network.",
                 where=node.name,
-                do=f"Add {parent}, or take it out of the parents.",
+                do=f"Add {quoted(parent)}, or take it out of the parents.",
             )
     expected = (*(len(by_name[parent].levels) for parent in node.parents), len(node.levels))
     table = np.asarray(node.table)
     if table.shape != expected:
         raise Refusal(
-            f"The table of {node.name} has the shape {table.shape}; its parents and levels ask for {expected}.",
+            f"The table of {quoted(node.name)} has the shape {table.shape}; its parents and levels ask for {expected}.",
             where=node.name,
             do="Give one axis per parent in order, and the column's own levels last.",
         )
     if not np.all(np.isfinite(table)) or np.any(table < 0.0):
         raise Refusal(
-            f"The table of {node.name} holds an entry that is no probability.",
+            f"The table of {quoted(node.name)} holds an entry that is no probability.",
             where=node.name,
             do="Every entry is 0 or more, and each row sums to 1.",
         )
@@ -150,15 +163,17 @@ def _check_family(node: Category, by_name: dict[str, Category]) -> None:
     if np.any(off > ROUNDING):
         row = np.unravel_index(int(np.argmax(off)), off.shape)
         at = ", ".join(
-            f"{parent} = {by_name[parent].levels[place]}" for parent, place in zip(node.parents, row, strict=True)
+            f"{quoted(parent)} = {quoted(by_name[parent].levels[place])}"
+            for parent, place in zip(node.parents, row, strict=True)
         )
         raise Refusal(
-            f"The table of {node.name} sums to {table[row].sum():.6g} instead of 1{f' where {at}' if at else ''}.",
+            f"The table of {quoted(node.name)} sums to {table[row].sum():.6g} instead of 1"
+            f"{f' where {at}' if at else ''}.",
             where=node.name,
             do="Correct that row; nothing is rescaled here.",
         )
     if node.dirichlet is not None and node.dirichlet.shape != expected:
-        raise Refusal(f"The Dirichlet parameters of {node.name} do not fit its table.", where=node.name)
+        raise Refusal(f"The Dirichlet parameters of {quoted(node.name)} do not fit its table.", where=node.name)
 
 
 def _parents_first(given: tuple[Category, ...], by_name: dict[str, Category]) -> tuple[Category, ...]:
@@ -170,7 +185,7 @@ def _parents_first(given: tuple[Category, ...], by_name: dict[str, Category]) ->
         if ready is None:
             circle = _circle(waiting, {node.name for node in waiting})
             raise Refusal(
-                f"The links run in a circle: {', '.join(circle)} and back to {circle[0]}.",
+                f"The links run in a circle: {', '.join(map(quoted, circle))} and back to {quoted(circle[0])}.",
                 where=circle[0],
                 do="Take out or turn round one of these links.",
             )

@@ -8,12 +8,12 @@ from engine.network.network import Category, network
 
 @st.composite
 def networks(draw, certain=None, most=6, holes=None):
-    """2 to `most` columns of 2 to 4 levels, some cells 0 (`holes`), tables known or with a posterior."""
+    """2 to `most` columns of 1 to 4 levels, some cells 0 (`holes`), tables known or with a posterior."""
     count = draw(st.integers(2, most))
     rng = np.random.default_rng(draw(st.integers(0, 2**32 - 1)))
     known = draw(st.booleans()) if certain is None else certain
     zeros = known and (draw(st.booleans()) if holes is None else holes)
-    sizes = [draw(st.integers(2, 4)) for _ in range(count)]
+    sizes = [draw(st.integers(1, 4)) for _ in range(count)]
     nodes = []
     for place in range(count):
         parents = sorted(draw(st.sets(st.integers(0, place - 1), max_size=3))) if place else []

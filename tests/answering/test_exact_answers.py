@@ -24,10 +24,10 @@ def fixes(levers):
 @given(questions())
 def test_every_world_agrees_with_counting_out_every_case(asked):
     net, pinned, levers = asked
-    tables = net.draws(2, seed=7)
+    tables = net.draws(20, seed=7)
     natural = plainly.cases(net, tables=tables)
     assume(plainly.total(natural, pinned) > 0.0)
-    answer = Model(net).ask(pinned, fixes(levers), watch=net.names, draws=2, seed=7)
+    answer = Model(net).ask(pinned, fixes(levers), watch=net.names, draws=20, seed=7)
     draws = range(3) if net.drawable else range(1)
     for draw in draws:
         natural = plainly.cases(net, draw=draw, tables=tables)
@@ -46,7 +46,7 @@ def test_every_world_agrees_with_counting_out_every_case(asked):
             else:
                 assert reading.had is None
     assert answer.log_evidence == pytest.approx(math.log(plainly.total(plainly.cases(net), pinned)), abs=1e-9)
-    assert len(answer[net.names[0]].among.draws[0]) == (2 if net.drawable else 0)
+    assert len(answer[net.names[0]].among.draws[0]) == (20 if net.drawable else 0)
 
 
 def at(marginal, draw):
@@ -75,7 +75,7 @@ def test_impossible_pins_are_refused_by_their_smallest_contradiction(data):
 def test_columns_that_no_lever_moves_read_as_among_these_to_the_last_digit(asked):
     net, pinned, levers = asked
     assume(levers and plainly.total(plainly.cases(net), pinned) > 0.0)
-    answer = Model(net).ask(pinned, fixes(levers), watch=net.names, draws=2)
+    answer = Model(net).ask(pinned, fixes(levers), watch=net.names, draws=20)
     for column in set(net.names) - net.descendants(levers) - set(levers):
         np.testing.assert_array_equal(answer[column].set.point, answer[column].among.point)
         np.testing.assert_array_equal(answer[column].set.draws, answer[column].among.draws)
@@ -87,7 +87,7 @@ def test_a_lever_that_reaches_nobody_changes_nothing(asked):
     net, pinned, levers = asked
     assume(levers and plainly.total(plainly.cases(net), pinned) > 0.0)
     nobody = {column: engine.Fix(level, reach=0.0) for column, (level, _) in levers.items()}
-    answer = Model(net).ask(pinned, nobody, watch=net.names, draws=2)
+    answer = Model(net).ask(pinned, nobody, watch=net.names, draws=20)
     for column in net.names:
         np.testing.assert_array_equal(answer[column].set.point, answer[column].among.point)
 
@@ -101,7 +101,7 @@ def test_setting_what_is_pinned_equals_among_these(asked, data):
     before = {name: wanted for name, wanted in pinned.items() if name not in net.descendants([column])}
     before[column] = {level}
     assume(plainly.total(plainly.cases(net), before) > 0.0)
-    answer = Model(net).ask(before, {column: engine.Fix(level)}, watch=net.names, draws=2)
+    answer = Model(net).ask(before, {column: engine.Fix(level)}, watch=net.names, draws=20)
     for name in net.names:
         np.testing.assert_allclose(answer[name].set.point, answer[name].among.point, **EXACT)
         np.testing.assert_allclose(answer[name].set.draws, answer[name].among.draws, **EXACT)
@@ -114,8 +114,8 @@ def test_setting_a_column_without_parents_equals_pinning_it(net, data):
     level = data.draw(st.sampled_from(net.node(column).levels))
     model = Model(net)
     assume(plainly.total(plainly.cases(net), {column: {level}}) > 0.0)
-    pinned = model.ask({column: level}, watch=net.names, draws=2)
-    lifted = model.ask({}, {column: engine.Fix(level)}, watch=net.names, draws=2)
+    pinned = model.ask({column: level}, watch=net.names, draws=20)
+    lifted = model.ask({}, {column: engine.Fix(level)}, watch=net.names, draws=20)
     for name in net.names:
         np.testing.assert_allclose(lifted[name].set.point, pinned[name].among.point, **EXACT)
         np.testing.assert_allclose(lifted[name].set.draws, pinned[name].among.draws, **EXACT)
@@ -127,9 +127,9 @@ def test_columns_read_beside_read_the_same_as_watched(asked):
     net, pinned, levers = asked
     assume(plainly.total(plainly.cases(net), pinned) > 0.0)
     model = Model(net)
-    watched = model.ask(pinned, fixes(levers), watch=net.names, draws=2)
-    beside = model.ask(pinned, fixes(levers), watch=net.names[:1], beside=net.names[1:], draws=2)
-    alone = model.ask(pinned, fixes(levers), watch=net.names[-1:], draws=2)
+    watched = model.ask(pinned, fixes(levers), watch=net.names, draws=20)
+    beside = model.ask(pinned, fixes(levers), watch=net.names[:1], beside=net.names[1:], draws=20)
+    alone = model.ask(pinned, fixes(levers), watch=net.names[-1:], draws=20)
     assert list(beside) == list(watched) and list(alone) == [net.names[-1]]
     np.testing.assert_allclose(alone[net.names[-1]].among.point, watched[net.names[-1]].among.point, **EXACT)
     for name in net.names:

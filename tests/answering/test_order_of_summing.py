@@ -52,11 +52,11 @@ def test_an_order_names_every_label_once_and_is_the_same_each_time(net):
 @settings(max_examples=20, deadline=None)
 @given(networks(certain=False))
 def test_chunks_of_draws_join_to_the_same_answer(net):
-    whole = Model(net).ask(watch=net.names, pins={net.names[0]: net.nodes[0].levels[0]}, draws=11)
+    whole = Model(net).ask(watch=net.names, pins={net.names[0]: net.nodes[0].levels[0]}, draws=23)
     kept = planning.CHUNK
     try:
         planning.CHUNK = 1.0
-        chunked = Model(net).ask(watch=net.names, pins={net.names[0]: net.nodes[0].levels[0]}, draws=11)
+        chunked = Model(net).ask(watch=net.names, pins={net.names[0]: net.nodes[0].levels[0]}, draws=23)
     finally:
         planning.CHUNK = kept
     for name in net.names:
@@ -65,7 +65,7 @@ def test_chunks_of_draws_join_to_the_same_answer(net):
 
 
 def test_columns_are_summed_one_by_one_where_all_at_once_is_too_wide(chain_of_forty, monkeypatch):
-    asked = {"watch": ["c20", "c30"], "draws": 4}
+    asked = {"watch": ["c20", "c30"], "draws": 20}
     together = Model(chain_of_forty).ask(**asked)
     monkeypatch.setattr(planning, "LIMIT", together.cost - 1.0)
     apart = Model(chain_of_forty).ask(**asked)
@@ -79,9 +79,9 @@ def test_columns_are_summed_one_by_one_where_all_at_once_is_too_wide(chain_of_fo
 def test_what_was_asked_before_changes_no_digit(net):
     fresh, used = Model(net), Model(net)
     last = net.names[-1]
-    used.ask({last: net.node(last).levels[:1]}, watch=[net.names[0]], draws=5, seed=3) if _can(net, last) else None
-    used.ask(watch=[last], draws=5, seed=2)
-    first, second = fresh.ask(watch=net.names, draws=5, seed=2), used.ask(watch=net.names, draws=5, seed=2)
+    used.ask({last: net.node(last).levels[:1]}, watch=[net.names[0]], draws=20, seed=3) if _can(net, last) else None
+    used.ask(watch=[last], draws=20, seed=2)
+    first, second = fresh.ask(watch=net.names, draws=20, seed=2), used.ask(watch=net.names, draws=20, seed=2)
     for name in net.names:
         np.testing.assert_array_equal(first[name].recorded.draws, second[name].recorded.draws)
 

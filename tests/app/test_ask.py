@@ -208,7 +208,7 @@ def test_a_group_that_leaves_few_out_does_not_give_their_count_away(client, stor
 
 def test_a_pin_after_the_lever_is_refused_with_a_way_out_for_each(ask, client):
     page = ask(f"pin=turned-up.most&{MENTOR}", status=422)
-    assert sentence(page) == "turned up follows mentor, which you set, so pinning it would mix two worlds."
+    assert sentence(page) == "“turned up” follows “mentor”, which you set, so pinning it would mix two worlds."
     acts = re.search(r'<p class="acts">(.*?)</p>', page, re.DOTALL)[1]
     assert [words(act, ">(.*)") for act in acts.split("</a>")[:-1]] == [
         "Take out turned up = most",

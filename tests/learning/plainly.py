@@ -13,11 +13,11 @@ from engine.records.table import Coded
 Graph = tuple[tuple[int, ...], ...]  # the parents of each column
 
 
-def coded_columns(names: Sequence[str], levels: Sequence[int], codes: np.ndarray) -> Coded:
-    """Level positions as learning takes them, all categories."""
+def coded_columns(names: Sequence[str], levels: Sequence[int], codes: np.ndarray, grades: Sequence[str] = ()) -> Coded:
+    """Level positions as learning takes them: categories, and grades where named."""
     return Coded(
         tuple(names),
-        ("category",) * len(names),
+        tuple("grade" if name in grades else "category" for name in names),
         tuple(tuple(f"{name} {level}" for level in range(count)) for name, count in zip(names, levels, strict=True)),
         ((),) * len(names),
         (False,) * len(names),

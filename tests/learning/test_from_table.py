@@ -5,7 +5,7 @@ import pandas as pd
 import pytest
 
 from engine.learning.learn import learn, learn_coded
-from engine.order import Order
+from engine.order import LESS, MORE, Order
 from engine.records.table import Table
 from engine.refusal import Refusal
 
@@ -43,3 +43,41 @@ def test_an_order_with_a_column_that_cannot_be_learned_is_refused(evening_school
     with pytest.raises(Refusal, match=says) as refused:
         learn(evening_school, Order([("Life", ["shift", column])]))
     assert refused.value.where == column and refused.value.do
+
+
+@pytest.mark.parametrize("better", [MORE, LESS])
+def test_more_or_less_of_a_plain_category_is_refused(evening_school, better):
+    stages = [("Life", ["shift", "hours"]), ("Result", ["passed"])]
+    with pytest.raises(Refusal, match="“shift” is a category: its levels have no order") as refused:
+        learn(evening_school, Order(stages, outcomes={"shift": better}))
+    assert refused.value.where == "shift" and "grade" in refused.value.do
+    assert learn(evening_school, Order(stages, outcomes={"hours": better}), folds=False).rows == 300
+
+
+def test_what_is_no_table_or_order_is_refused(evening_school):
+    order = Order([("Life", ["shift", "hours"])])
+    with pytest.raises(Refusal, match="no table of records") as refused:
+        learn(evening_school.frame, order)
+    assert "engine.Table.from_frame" in refused.value.do
+    with pytest.raises(Refusal, match="The order is none") as refused:
+        learn(evening_school, [("Life", ["shift", "hours"])])
+    assert "engine.Order" in refused.value.do
+
+
+@pytest.mark.parametrize(
+    ("limits", "where"),
+    [
+        ({"max_links": 1.5}, "max_links"),
+        ({"max_links": True}, "max_links"),
+        ({"max_parents": 2.5}, "max_parents"),
+        ({"max_parents": "3"}, "max_parents"),
+        ({"seed": -1}, "seed"),
+        ({"seed": 0.5}, "seed"),
+        ({"graphs": -1}, "graphs"),
+        ({"graphs": 10.5}, "graphs"),
+    ],
+)
+def test_limits_that_are_no_whole_numbers_are_refused(evening_school, limits, where):
+    with pytest.raises(Refusal) as refused:
+        learn(evening_school, Order([("Life", ["shift", "hours"])]), **limits)
+    assert refused.value.where == where and refused.value.do

@@ -29,11 +29,11 @@ def school(rows=400, seed=0):
     codes = np.stack([rng.integers(0, count, rows) for count in LEVELS], axis=1)
     codes[:, 2] = rng.random(rows) < np.asarray([0.2, 0.5, 0.7])[codes[:, 0]]
     codes[:, 4] = rng.random(rows) < 0.2 + 0.4 * codes[:, 2] + 0.15 * codes[:, 3]
-    return plainly.coded_columns(NAMES, LEVELS, codes)
+    return plainly.coded_columns(NAMES, LEVELS, codes, grades=["hours"])
 
 
 def with_codes(codes, names=NAMES, levels=LEVELS):
-    return plainly.coded_columns(names, levels, codes)
+    return plainly.coded_columns(names, levels, codes, grades=["hours"])
 
 
 def test_same_records_order_and_seed_save_the_same_bytes(tmp_path):

@@ -47,16 +47,19 @@ def test_a_circle_is_refused_and_told():
     a = Category("a", ["0", "1"], ["c"], [[0.5, 0.5]] * 2)
     b = Category("b", ["0", "1"], ["a"], [[0.5, 0.5]] * 2)
     c = Category("c", ["0", "1"], ["b"], [[0.5, 0.5]] * 2)
-    refused([RAIN, a, b, c], r"run in a circle: (a, b, c and back to a|b, c, a and back to b|c, a, b and back to c)")
-    refused([Category("a", ["0", "1"], ["a"], [[0.5, 0.5]] * 2)], "circle: a and back to a")
+    refused(
+        [RAIN, a, b, c],
+        r"circle: (“a”, “b”, “c” and back to “a”|“b”, “c”, “a” and back to “b”|“c”, “a”, “b” and back to “c”)",
+    )
+    refused([Category("a", ["0", "1"], ["a"], [[0.5, 0.5]] * 2)], "circle: “a” and back to “a”")
 
 
 def test_an_unknown_parent_is_refused():
-    refused([Category("wet", ["no", "yes"], ["rain"], [[0.9, 0.1], [0.2, 0.8]])], "parent rain, which is no column")
+    refused([Category("wet", ["no", "yes"], ["rain"], [[0.9, 0.1], [0.2, 0.8]])], "parent “rain”, which is no column")
 
 
 def test_a_column_a_level_or_a_parent_given_twice_is_refused():
-    refused([RAIN, RAIN], "rain is given twice")
+    refused([RAIN, RAIN], "“rain” is given twice")
     refused([Category("a", ["x", "x"], [], [0.5, 0.5])], "a level twice")
     refused([RAIN, Category("a", ["x", "y"], ["rain", "rain"], np.full((2, 2, 2), 0.5))], "a parent twice")
 
@@ -68,7 +71,7 @@ def test_a_table_of_the_wrong_shape_is_refused(table):
 
 @pytest.mark.parametrize("row", [[0.5, 0.4], [0.5, 0.6], [0.0, 0.0]])
 def test_a_row_that_does_not_sum_to_one_is_refused_where_it_stands(row):
-    refused([RAIN, Category("wet", ["no", "yes"], ["rain"], [[0.9, 0.1], row])], "instead of 1 where rain = yes")
+    refused([RAIN, Category("wet", ["no", "yes"], ["rain"], [[0.9, 0.1], row])], "instead of 1 where “rain” = “yes”")
 
 
 @pytest.mark.parametrize("row", [[1.5, -0.5], [float("nan"), 1.0], [float("inf"), 0.0]])
@@ -79,11 +82,18 @@ def test_an_entry_that_is_no_probability_is_refused(row):
 def test_what_is_no_table_or_no_list_is_refused():
     refused(lambda: [Category("rain", ["no", "yes"], [], [[0.5], [0.5, 0.5]])], "not a regular table")
     refused(lambda: [Category("rain", ["no", "yes"], [], ["a", "b"])], "not a regular table")
-    refused(lambda: [Category("rain", "no", [], [0.5, 0.5])], "levels of rain are one text")
-    refused(lambda: [Category("rain", ["no", "yes"], "sun", [0.5, 0.5])], "parents of rain are one text")
+    refused(lambda: [Category("rain", "no", [], [0.5, 0.5])], "levels of “rain” are one text")
+    refused(lambda: [Category("rain", ["no", "yes"], "sun", [0.5, 0.5])], "parents of “rain” are one text")
     refused([Category("rain", [], [], [])], "needs levels")
     refused([Category("rain", [1, 2], [], [0.5, 0.5])], "needs levels")
     refused([], "at least one column")
+    refused([("rain", ["no", "yes"])], "is no column of a network")
+
+
+@pytest.mark.parametrize("name", [3, None, ("a", "b"), ["a"]])
+def test_a_name_that_is_no_text_is_refused(name):
+    refused([Category(name, ["no", "yes"], [], [0.5, 0.5])], "is not a text")
+    refused([RAIN, Category("wet", ["no", "yes"], [name], [[0.9, 0.1], [0.2, 0.8]])], "parent of “wet” is not a text")
 
 
 def test_draws_follow_the_posterior_and_repeat_with_the_seed():

@@ -204,22 +204,25 @@ def test_chest_clinic_seen(pins, probability, expected):
 
 
 @pytest.mark.parametrize(
-    ("pins", "levers", "expected"),
+    ("pins", "levers", "probability", "expected"),
     [
-        ({}, {"smoke": YES}, {"dysp": 0.552808, "lung": 0.1, "xray": 0.1517048}),
-        ({"smoke": YES}, {"bronc": "no"}, {"dysp": 0.165616, "smoke": 1.0}),
-        ({}, {"either": YES}, {"dysp": 0.79, "xray": 0.98, "tub": 0.0104}),
+        ({}, {"smoke": YES}, 1.0, {"dysp": 0.552808, "lung": 0.1, "xray": 0.1517048}),
+        ({"smoke": YES}, {"bronc": "no"}, 0.5, {"dysp": 0.165616, "smoke": 1.0}),
+        ({}, {"either": YES}, 1.0, {"dysp": 0.79, "xray": 0.98, "tub": 0.0104}),
     ],
 )
-def test_chest_clinic_set(pins, levers, expected):
+def test_chest_clinic_set(pins, levers, probability, expected):
     fixes = {column: engine.Fix(level) for column, level in levers.items()}
     answer = chest_clinic().ask(pins, fixes, watch=list(expected))
+    assert evidence(answer) == pytest.approx(probability, rel=1e-6)
     for column, value in expected.items():
         assert share(answer, "set", column, YES) == pytest.approx(value, abs=1e-9)
 
 
 def test_chest_clinic_refuses_what_cannot_be():
-    with pytest.raises(engine.Refusal, match="No record in this model can have lung = yes and either = no together"):
+    with pytest.raises(
+        engine.Refusal, match="No record in this model can have “lung” = “yes” and “either” = “no” together"
+    ):
         chest_clinic().ask({"lung": YES, "either": "no", "smoke": YES}, watch=["dysp"])
 
 
@@ -252,7 +255,7 @@ def test_wet_grass_seen_and_set(pins, levers, world, probability, expected):
 
 
 def test_wet_grass_refuses_what_cannot_be():
-    with pytest.raises(engine.Refusal, match="can have wet = yes, rain = no and sprinkler = no together"):
+    with pytest.raises(engine.Refusal, match="can have “wet” = “yes”, “rain” = “no” and “sprinkler” = “no” together"):
         wet_grass().ask({"wet": YES, "rain": "no", "sprinkler": "no"}, watch=["cloudy"])
 
 
