@@ -2,13 +2,14 @@
 
 import json
 from itertools import combinations
-from math import exp, prod
+from math import exp, log, prod
 from pathlib import Path
 
 import numpy as np
 import pytest
 
 from engine.learning.families import candidates
+from engine.learning.layers import Layers
 from engine.learning.learn import learn_coded
 from engine.learning.posterior import posterior
 from engine.learning.scores import set_scores
@@ -122,6 +123,14 @@ def test_one_stage_allows_every_labelled_network(columns):
     order = Order([("All", [f"c{place}" for place in range(columns)])])
     count = sum(1 for _ in plainly.graphs(order, columns))
     assert count == figure("every-network", f"labelled networks on {columns} columns")
+
+
+@pytest.mark.parametrize("columns", range(1, 9))
+def test_layers_count_every_labelled_network_once(columns):
+    sets = np.arange(1 << columns)
+    own = sets[None, :] >> np.arange(columns)[:, None] & 1  # a column is no parent of its own
+    found = Layers(np.where(own == 1, -np.inf, 0.0)).log_sum
+    assert found == pytest.approx(log(figure("every-network", f"labelled networks on {columns} columns")), abs=1e-10)
 
 
 @pytest.mark.parametrize(
