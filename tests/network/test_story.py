@@ -6,7 +6,7 @@ from hypothesis import given, settings
 
 import engine
 from engine.network.said import in_hundred
-from engine.network.story import APART, MOST, parts, sentences
+from engine.network.story import APART, MOST, parts, rules
 from tests.answering.generated import networks
 from tests.plainly import cases, total
 
@@ -268,13 +268,13 @@ def test_a_range_is_only_told_of_what_differs_by_more_than_ten_points():
 
 def test_parts_of_a_sentence_know_names_and_figures_from_words():
     found = model(SHIFT, engine.Category("passed", NO_YES, ["shift"], yes(0.7, 0.3, 0.3))).account("passed")
-    names = [part.text for sentence in found.sentences for part in sentence if part.style == "name"]
-    figures = [part.text for sentence in found.sentences for part in sentence if part.style == "figure"]
+    every = [*found.touches, *found.rules.lead, *(part for clause in found.rules.clauses for part in clause)]
+    names = [part.text for part in every if part.style == "name"]
+    figures = [part.text for part in every if part.style == "figure"]
     assert names == ["shift", "yes", "shift", "days", "shift", "nights", "mixed"]
     assert figures == ["70 in 100", "30 in 100"]
 
 
 def test_better_levels_are_told_whatever_the_kind():
     network = engine.Model.from_network([SCHOOL]).network
-    told = sentences(network, "school", np.ones(()), [0], ())
-    assert "".join(part.text for part in told[1]) == "It is primary for 30 in 100."
+    assert rules(network, "school", np.ones(()), [0]).text == "It is primary for 30 in 100."
