@@ -67,9 +67,9 @@ def test_counted_is_straight_from_the_matching_records(school):
 def test_counts_under_the_limit_are_not_given():
     rows = repeated((9, {"a": "x", "b": "u"}), (10, {"a": "y", "b": "u"}), (30, {"a": "z", "b": "v"}))
     model = world(rows, [("a", "b")], [("All", ["a"]), ("Then", ["b"])])
-    few, enough = model.ask({"a": "x"}, watch=["b"]), model.ask({"a": "y"}, watch=["b"])
+    few, enough = model.ask({"a": "x"}, watch=["b"]), model.ask({"a": "z"}, watch=["b"])
     assert few.matching == 9 and few["b"].counted is None
-    assert enough["b"].counted.counts == {"u": 10, "v": 0}
+    assert enough["b"].counted.counts == {"u": 0, "v": 30}
 
 
 def test_change_is_set_minus_among_over_common_draws(school):

@@ -8,6 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from app.wording.amounts import count, listing, number, people, share
+from engine.records.small_counts import hidden_levels
 from engine.records.table import Column
 
 SHOWN_LEVELS = 6
@@ -29,15 +30,10 @@ class Shown:
 
 def shown(counts: Sequence[int], small: int) -> Shown:
     """Hide counts under `small`, and as many of the next smallest as it takes so that none can be worked out."""
-    rising = sorted((place for place in range(len(counts)) if counts[place] > 0), key=lambda place: counts[place])
-    under = [place for place in rising if counts[place] < small]
-    hidden = list(under)
-    for place in rising[len(under) :]:
-        if not under or (len(hidden) > 1 and sum(counts[i] for i in hidden) >= small):
-            break
-        hidden.append(place)
+    hidden = hidden_levels(counts, small)
+    under = tuple(place for place in hidden if counts[place] < small)
     kept = tuple(None if place in hidden else int(each) for place, each in enumerate(counts))
-    return Shown(kept, tuple(sorted(hidden)), int(sum(counts[place] for place in hidden)), tuple(sorted(under)))
+    return Shown(kept, hidden, int(sum(counts[place] for place in hidden)), under)
 
 
 def level_counts(column: Column) -> list[int]:

@@ -69,14 +69,23 @@ def spread(draws: np.ndarray, point: float, coverage: float) -> tuple[float, flo
 
 @dataclass(frozen=True)
 class Counted:
-    """Straight from the records: `rows` that match every pin, and how many of them hold each level."""
+    """Straight from the records: `rows` that match every pin, and how many of them hold each level.
+
+    hidden: levels that are told together or not at all, for their counts one by one would give a small one away.
+    """
 
     rows: int
     counts: Mapping[str, int]
+    hidden: frozenset[str] = frozenset()
 
     @property
     def shares(self) -> dict[str, float]:
         return {level: count / self.rows for level, count in self.counts.items()}
+
+    def tellable(self, levels: Iterable[str]) -> bool:
+        """Whether the count of these levels together leaves every hidden one hidden."""
+        wanted = frozenset(levels)
+        return not self.hidden & wanted or self.hidden <= wanted
 
 
 @dataclass(frozen=True, eq=False)
@@ -86,7 +95,7 @@ class Reading:
     recorded: no pins.  among: pins.  set: pins and levers, None without levers.
     had: pins and the levers' values as pins, None without levers, where no such record can be, and for columns that
     are only read beside those in question.
-    counted: from the records, None under the small-count limit or without records.
+    counted: from the records, None without them and where the number of those that match is not told.
     """
 
     column: str
@@ -121,6 +130,7 @@ class Answer:
 
     watch: the columns the question is about; cautions concern these.  readings also holds those read beside them.
     matching: records that match every pin, None without records.
+    matching_told: whether that number may be shown; where not, it would give a count under the limit away.
     method: "exact" or "sampled", and by which route.  cost: table cells times draws.  milliseconds: wall time.
     mc_error: largest Monte Carlo standard error, 0 when exact.
     log_evidence: natural log of the pins' probability.
@@ -135,6 +145,7 @@ class Answer:
     milliseconds: float
     log_evidence: float
     matching: int | None = None
+    matching_told: bool = True
     mc_error: float = 0.0
     cautions: tuple[Caution, ...] = ()
     checks_made: int = 0

@@ -43,10 +43,11 @@ def ask(
         )
     started = time.perf_counter()
     worlds = planner.worlds(asked, draws, seed)
-    matching, counted = None, {}
+    matching, told, counted = None, True, {}
     if records is not None:
         rows = records.matching(asked.pins)
-        matching, counted = int(rows.size), records.counted(asked.columns, rows)
+        matching, counted = int(rows.size), records.counted(asked.columns, asked.pins, rows)
+        told = records.tellable(asked.pins, rows)
     readings = {}
     for column in asked.columns:
         readings[column] = Reading(
@@ -69,6 +70,7 @@ def ask(
         milliseconds=(time.perf_counter() - started) * 1000.0,
         log_evidence=worlds.log_evidence,
         matching=matching,
+        matching_told=told,
     )
 
 

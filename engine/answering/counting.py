@@ -8,6 +8,7 @@ from functools import cached_property
 import numpy as np
 
 from engine.answering.answer import Counted
+from engine.records.small_counts import hidden_levels
 from engine.records.table import SMALL_COUNT, Coded
 
 
@@ -25,7 +26,7 @@ class Records:
     @cached_property
     def _all(self) -> Mapping[str, Counted]:
         every = np.arange(self.rows)
-        return {name: self._count(name, every) for name in self.coded.names}
+        return {name: self.count(name, every) for name in self.coded.names}
 
     def codes(self, column: str) -> np.ndarray:
         """(rows,) level positions of a column."""
@@ -43,15 +44,45 @@ class Records:
             found = found[allowed[self.codes(column)[found]]]
         return found
 
-    def counted(self, columns: Iterable[str], matching: np.ndarray) -> dict[str, Counted | None]:
-        """What the matching records hold, column by column; None under the small-count limit."""
-        if matching.size < SMALL_COUNT:
+    def tellable(self, pins: Mapping[str, frozenset[int]], matching: np.ndarray) -> bool:
+        """Whether the number of matching records may be told: neither it nor what it leaves out is a small count.
+
+        Of a column with a small level, a pin takes in all of the levels that are hidden with it, or none: the counts of
+        two questions, one of each kind of level, would otherwise leave the small one.
+        """
+        if 0 < matching.size < SMALL_COUNT or 0 < self.rows - matching.size < SMALL_COUNT:
+            return False
+        return matching.size == 0 or all(self._whole(column, wanted) for column, wanted in pins.items())
+
+    def counted(
+        self, columns: Iterable[str], pins: Mapping[str, frozenset[int]], matching: np.ndarray
+    ) -> dict[str, Counted | None]:
+        """What the matching records hold, column by column; None where none match or their number is not told."""
+        if matching.size == 0 or not self.tellable(pins, matching):
             return dict.fromkeys(columns)
         if matching.size == self.rows:
             return {column: self._all[column] for column in columns}
-        return {column: self._count(column, matching) for column in columns}
+        return {column: self.count(column, matching) for column in columns}
 
-    def _count(self, column: str, rows: np.ndarray) -> Counted:
+    @cached_property
+    def _hidden(self) -> dict[str, frozenset[int]]:
+        """column -> positions of its levels whose counts over all records are hidden."""
+        return {
+            name: frozenset(hidden_levels(np.bincount(self.codes(name), minlength=len(self.levels(name))).tolist()))
+            for name in self.coded.names
+        }
+
+    def _whole(self, column: str, wanted: frozenset[int]) -> bool:
+        """Whether these levels hold all hidden levels of the column, or none."""
+        hidden = self._hidden[column]
+        return not hidden & wanted or hidden <= wanted
+
+    def count(self, column: str, rows: np.ndarray) -> Counted:
+        """What some of the records hold, whether or not it may be told."""
         levels = self.levels(column)
         counts = np.bincount(self.codes(column)[rows], minlength=len(levels))
-        return Counted(int(rows.size), {level: int(count) for level, count in zip(levels, counts, strict=True)})
+        return Counted(
+            int(rows.size),
+            {level: int(count) for level, count in zip(levels, counts, strict=True)},
+            frozenset(levels[place] for place in self._hidden[column]),
+        )

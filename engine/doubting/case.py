@@ -8,7 +8,7 @@ from functools import cached_property
 
 import numpy as np
 
-from engine.answering.answer import Answer, Caution
+from engine.answering.answer import Answer, Caution, Counted
 from engine.answering.counting import Records
 from engine.answering.question import Question, Setting
 from engine.network.network import Network
@@ -17,6 +17,7 @@ from engine.records.table import SMALL_COUNT
 
 Found = tuple[Caution, ...]
 Check = Callable[["Case"], Found | None]  # None: this check cannot be made of this question
+MANY = 100  # records: among so many every whole per cent can occur, so that none of them tells their number
 
 
 @dataclass(frozen=True, eq=False)
@@ -36,6 +37,32 @@ class Case:
     def matching(self) -> np.ndarray:
         """(rows that match,) positions of the records that match every pin; empty without records."""
         return np.empty(0, dtype=np.intp) if self.records is None else self.records.matching(self.asked.pins)
+
+    @property
+    def these(self) -> str:
+        """The matching records after "of", with their number where it may be told: these 412 records."""
+        if not self.asked.pins:
+            return f"all {self.matching.size:,} records"
+        if self.answer.matching_told:
+            return f"these {self.matching.size:,} records"
+        rows = 0 if self.records is None else self.records.rows
+        return "nearly all records" if 0 < rows - self.matching.size < SMALL_COUNT else "these records"
+
+    def out_of_these(self, part: int) -> str:
+        """So many of the matching records as a figure, which "records" follows."""
+        rows = self.matching.size
+        if self.answer.matching_told:
+            return out_of(part, rows)
+        if part == rows:
+            return "all"
+        return "nearly all" if rows - part < SMALL_COUNT <= rows else "most" if 2 * part > rows else "some"
+
+    def count(self, column: str) -> Counted | None:
+        """What the matching records hold, for their shares: also where only their number may not be told."""
+        told = self.answer[column].counted
+        if told is None and self.records is not None and self.matching.size >= MANY:
+            return self.records.count(column, self.matching)
+        return told
 
     @cached_property
     def levers(self) -> dict[str, Setting]:

@@ -21,7 +21,8 @@ def check(case: Case) -> Found | None:
     many records is no likely reason; else worth knowing, of ENOUGH records or more: among fewer the two often part.
     """
     readings = [case.answer[column] for column in case.asked.watch]
-    compared = [(reading.column, reading.among, reading.counted) for reading in readings if reading.counted is not None]
+    counts = [(reading.column, reading.among, case.count(reading.column)) for reading in readings]
+    compared = [(column, among, count) for column, among, count in counts if count is not None]
     if not compared or not case.network.drawable:
         return None
     return tuple(caution for column, among, count in compared for caution in _caution(case, column, among, count))
@@ -39,9 +40,8 @@ def _caution(case: Case, column: str, among: Marginal, count: Counted) -> list[C
     by_chance = at_least <= said <= at_most
     if by_chance and count.rows < ENOUGH:
         return []
-    of_whom = "these" if case.asked.pins else "all"
     text = (
-        f"of {of_whom} {count.rows:,} records have {column} = {named(levels, 'or')} when counted; "
+        f"of {case.these} have {column} = {named(levels, 'or')} when counted; "
         f"the model says {per_cent(said)}, between {per_cent(low)} and {per_cent(high)}."
     )
     do = "For how things are, go by the count; on the Model page, see whether more links bring the two together."

@@ -9,7 +9,7 @@ import numpy as np
 from engine.answering.answer import Caution
 from engine.answering.counting import Records
 from engine.answering.question import Setting
-from engine.doubting.case import Case, Found, named, out_of
+from engine.doubting.case import Case, Found, named
 from engine.network.network import Category
 from engine.records.table import SMALL_COUNT
 
@@ -34,7 +34,7 @@ def check(case: Case) -> Found | None:
         for column, setting in case.levers.items():
             parents = case.network.node(column).parents
             alike = _records_alike(case.records, {column: setting}, parents)[case.matching]
-            found += _caution(column, setting, parents, alike)
+            found += _caution(case, column, setting, parents, alike)
         together = _combined(case, case.records)
         if not found or (together and together[0].rank == "blocks" and found[0].rank != "blocks"):
             found = [*together, *found]
@@ -68,13 +68,13 @@ def _as_set(case: Case, records: Records, node: Category, moved: frozenset[str])
     columns = (*values, *others, node.name)
     if none > BLOCKS_OVER * rows:
         text = f"records asked about {like} no record with {both}, on which {node.name} depends."
-        return [Caution("blocks", "overlap", out_of(none, rows), text, do, figures, columns)]
+        return [Caution("blocks", "overlap", case.out_of_these(none), text, do, figures, columns)]
     if thin >= WEAKENS_FROM * rows:
         text = (
             f"records asked about {like} fewer than {SMALL_COUNT} records with {both}, on which {node.name} depends. "
             "Where records are this thin the model fills in."
         )
-        return [Caution("weakens", "overlap", out_of(thin, rows), text, do, figures, columns)]
+        return [Caution("weakens", "overlap", case.out_of_these(thin), text, do, figures, columns)]
     return []
 
 
@@ -97,7 +97,7 @@ def _records_alike(records: Records, values: Mapping[str, Setting], parents: tup
     return np.bincount(stratum, weights=held)[stratum]
 
 
-def _caution(column: str, setting: Setting, parents: tuple[str, ...], alike: np.ndarray) -> list[Caution]:
+def _caution(case: Case, column: str, setting: Setting, parents: tuple[str, ...], alike: np.ndarray) -> list[Caution]:
     rows, none, thin = alike.size, int((alike == 0).sum()), int((alike < SMALL_COUNT).sum())
     value = f"{column} = {setting.level}"
     figures = {"rows": rows, "share thin": thin / rows, "share without": none / rows}
@@ -108,7 +108,7 @@ def _caution(column: str, setting: Setting, parents: tuple[str, ...], alike: np.
             else f"records asked about have nothing to be compared with: no record has {value}."
         )
         do = f"Ask about a group in which {value} was recorded, or set {column} to another level."
-        return [Caution("blocks", "overlap", out_of(none, rows), text, do, figures, (column, *parents))]
+        return [Caution("blocks", "overlap", case.out_of_these(none), text, do, figures, (column, *parents))]
     if thin >= WEAKENS_FROM * rows:
         like = f"are alike in {named(parents)} to" if parents else "are compared with"
         text = (
@@ -116,5 +116,5 @@ def _caution(column: str, setting: Setting, parents: tuple[str, ...], alike: np.
             "Where records are this thin the model fills in."
         )
         do = f"Ask about a wider group, or record more of {value} there first."
-        return [Caution("weakens", "overlap", out_of(thin, rows), text, do, figures, (column, *parents))]
+        return [Caution("weakens", "overlap", case.out_of_these(thin), text, do, figures, (column, *parents))]
     return []

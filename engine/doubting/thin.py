@@ -32,5 +32,6 @@ def check(case: Case) -> Found | None:
         return (Caution("weakens", "thin", f"under {SMALL_COUNT}", text, do, figures, columns),)
     if rows < FEW:
         text = f"records have {values}; for so few the answer leans mostly on the model."
-        return (Caution("know", "thin", f"{rows}", text, do, figures, columns),)
+        figure = f"{rows}" if case.answer.matching_told else f"under {FEW}"
+        return (Caution("know", "thin", figure, text, do, figures, columns),)
     return ()

@@ -389,3 +389,46 @@ def test_a_network_given_as_it_is_has_no_records_to_doubt():
 def test_the_standing_words_say_what_an_estimate_cannot_replace():
     assert STANDING.startswith("An estimate from records.") and "does not replace a trial" in STANDING
     assert UNSEEN == "They cannot see what was not recorded."
+
+
+def hidden_beside(nights_with_mentor, outcome=None):
+    """A school where five learners on early shifts hide how many there are on nights."""
+    model = school(nights_with_mentor)
+    groups = [(5, {"shift": "early", "mentor": "no", "passed": "no"})]
+    for row in zip(*(model.coded.codes[:, place] for place in range(3)), strict=True):
+        levels = (model.coded.levels[place][code] for place, code in enumerate(row))
+        groups.append((1, dict(zip(model.coded.names, levels, strict=True))))
+    return world(repeated(*groups), LINKS, STAGES, outcome or {"passed": "yes"}, ["mentor"])
+
+
+@pytest.mark.parametrize(("with_mentor", "figure"), [(0, "all"), (8, "all"), (100, None)])
+def test_cautions_of_a_group_whose_number_is_not_told_have_no_total(with_mentor, figure):
+    answer = offer(hidden_beside(with_mentor), {"shift": "nights"})
+    assert not answer.matching_told
+    found = [caution.figure for caution in answer.cautions if caution.code == "overlap"]
+    assert found == ([] if figure is None else [figure])
+    assert not any("200" in f"{caution.figure} {caution.text}" for caution in answer.cautions)
+
+
+def test_a_count_whose_total_is_not_told_is_compared_by_its_share_alone():
+    groups = [(5, {"a": "z", "out": "yes"}), (150, {"a": "x", "out": "yes"}), (50, {"a": "x", "out": "no"})]
+    rows = repeated(*groups, (250, {"a": "y", "out": "no"}), (150, {"a": "y", "out": "yes"}))
+    model = world(rows, [], [("A", ["a"]), ("B", ["out"])], {"out": "yes"})
+    caution = only(model.ask({"a": "x"}), "counted")
+    assert caution.figure == "75%" and caution.text.startswith("of these records have out = yes when counted")
+    nearly = world(rows, [], [("A", ["a"]), ("B", ["out"])], {"out": "yes"}).ask({"a": {"x", "y"}})
+    assert not nearly.matching_told
+    assert all("600" not in caution.text for caution in nearly.cautions)
+
+
+def test_a_group_that_is_nearly_all_is_called_so():
+    groups = [(5, {"a": "x", "out": "yes"}), (200, {"a": "y", "out": "no"})]
+    model = world(repeated(*groups), [], [("A", ["a"]), ("B", ["out"])], {"out": "yes"}, prior=40.0)
+    caution = only(model.ask({"a": "y"}), "counted")
+    assert caution.text.startswith("of nearly all records have out = yes when counted")
+
+
+def test_few_records_whose_number_is_not_told_are_called_few():
+    groups = [(5, {"a": "z", "out": "yes"}), (12, {"a": "x", "out": "yes"}), (300, {"a": "y", "out": "no"})]
+    model = world(repeated(*groups), [("a", "out")], [("A", ["a"]), ("B", ["out"])])
+    assert only(model.ask({"a": "x"}, watch=["out"]), "thin").figure == "under 30"
