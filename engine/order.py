@@ -28,12 +28,12 @@ Better = Direction | tuple[str, ...]
 def better_levels(better: Better | None, levels: Sequence[str], has_blank: bool) -> tuple[str, ...]:
     """The levels whose share says how well an outcome does; none for a column that is no outcome.
 
-    MORE: the highest level, LESS: the lowest; a blank, which stands last, is neither.
+    In the sequence of `levels`. MORE: the highest, LESS: the lowest; a blank, which stands last, is neither.
     """
     if isinstance(better, Direction):
         last = len(levels) - 1 - int(has_blank and len(levels) > 1)
         return (levels[last if better is Direction.MORE else 0],)
-    return tuple(level for level in better or () if level in levels)
+    return tuple(level for level in levels if level in (better or ()))
 
 
 @dataclass(frozen=True)

@@ -4,7 +4,7 @@ import pickle
 
 import pytest
 
-from engine.order import LESS, Order
+from engine.order import LESS, MORE, Order, better_levels
 from engine.refusal import Refusal
 
 STAGES = [("Background", ["age", "region"]), ("Programme", ["mentor", "hours"]), ("Outcome", ["passed"])]
@@ -96,3 +96,13 @@ def test_what_is_no_stage_is_refused(stage):
 def test_a_name_outside_the_order_is_refused():
     with pytest.raises(Refusal, match="no column “weather”"):
         Order(STAGES).may_lead("weather", "passed")
+
+
+def test_more_and_less_are_the_ends_of_the_levels_but_never_a_blank():
+    levels = ("low", "middle", "high", "blank")
+    assert better_levels(MORE, levels, has_blank=True) == ("high",)
+    assert better_levels(MORE, levels, has_blank=False) == ("blank",)
+    assert better_levels(LESS, levels, has_blank=True) == better_levels(LESS, levels, has_blank=False) == ("low",)
+    assert better_levels(MORE, ("blank",), has_blank=True) == ("blank",)
+    assert better_levels(("high", "low", "none"), levels, has_blank=True) == ("low", "high")
+    assert better_levels(None, levels, has_blank=True) == ()

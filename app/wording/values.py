@@ -6,7 +6,7 @@ from collections.abc import Sequence
 
 from app.wording.parts import Clause, Part, name
 from engine.network.network import Category
-from engine.order import Better, Direction
+from engine.order import Better, better_levels
 
 Words = list[Part | Clause]
 YES = ("yes",)
@@ -45,13 +45,8 @@ def in_question(node: Category, better: Better | None, recorded: Sequence[float]
     The better levels of an outcome; else yes, where the column has it; else the level most often recorded.
     better: of the outcome, None for another column.  recorded: (levels,) shares as recorded.
     """
-    if isinstance(better, Direction):
-        last = len(node.levels) - 1 - int(node.has_blank and len(node.levels) > 1)
-        return (node.levels[last if better is Direction.MORE else 0],)
-    if better is not None:
-        found = tuple(level for level in node.levels if level in better)
-        if found:
-            return found
+    if found := better_levels(better, node.levels, node.has_blank):
+        return found
     yes = yes_level(node)
     return (node.levels[max(range(len(recorded)), key=lambda place: recorded[place])] if yes is None else yes,)
 
