@@ -7,11 +7,13 @@ All terms are positive; they are kept as logs because scores differ by thousands
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
 
+from engine.learning.lattice import subset_totals
 from engine.learning.scores import Floats, Ints
 
 WIDEST_LAYERED = 10  # columns in a stage that this sum can take: 4 to the power of its columns
@@ -22,10 +24,11 @@ class Layers:
     """Graphs of a stage of `width` columns.
 
     weights: (width, 2^width) natural log of the summed scores of a column's families with these parents in the stage,
-    -inf where not allowed. Sets are bits.
+    -inf where not allowed. Sets are bits.  still is called often; raising inside it cancels.
     """
 
     weights: Floats
+    still: Callable[[], None] = lambda: None
 
     @property
     def width(self) -> int:
@@ -38,7 +41,7 @@ class Layers:
     @cached_property
     def totals(self) -> Floats:
         """(width, sets) natural log of the sum over all parent sets within a set."""
-        return subset_totals(self.weights)
+        return subset_totals(self.weights, self.still)
 
     @cached_property
     def forward(self) -> Floats:
@@ -49,6 +52,7 @@ class Layers:
         every = np.arange(1, size)
         forward[every, every] = sources[1:]
         for done in self._by_size():
+            self.still()
             last, following, step = self._step(done)
             reached = log_sum_of(forward[done, last][:, None] + step, axis=0)
             forward[done | following, following] = np.logaddexp(forward[done | following, following], reached)
@@ -66,6 +70,7 @@ class Layers:
         backward[self.everything] = 0.0
         found = np.zeros((self.width, size))
         for done in reversed(self._by_size()):
+            self.still()
             last, following, step = self._step(done)
             onward = step + backward[done | following, following][None, :]
             backward[done, last] = log_sum_of(onward, axis=1)
@@ -133,16 +138,6 @@ class Layers:
         touch = (within[:, None] & last[None, :]) != 0
         terms = np.where(touch, self.weights[column, within][:, None] + share[None, :], -np.inf)
         found[within] += np.exp(terms).sum(axis=1)
-
-
-def subset_totals(weights: Floats) -> Floats:
-    """(columns, sets) natural log of the sum of e^weights over all subsets of each set."""
-    totals = weights.copy()
-    columns, size = totals.shape
-    for place in range(size.bit_length() - 1):
-        halves = totals.reshape(columns, -1, 2, 1 << place)
-        np.logaddexp(halves[:, :, 1], halves[:, :, 0], out=halves[:, :, 1])
-    return totals
 
 
 def submasks(whole: int) -> Ints:

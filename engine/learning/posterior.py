@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
+from functools import partial
 
 import numpy as np
 from numpy.typing import NDArray
@@ -51,12 +52,17 @@ def posterior(
     drawn = np.zeros((graphs, columns, columns), dtype=np.bool_)
     logs = np.zeros(graphs)
     for number, stage in enumerate(stages):
-        here = _Stage(stage, scores, max_parents)
+        here = _Stage(stage, scores, max_parents, partial(tick, number / len(stages)))
         here.add_support(support)
         tick((number + 0.7) / len(stages))
-        inside = [here.graphs.draw(rng) for _ in range(graphs)]
+        still = partial(tick, (number + 0.7) / len(stages))
+        inside = [here.draw(rng, still) for _ in range(graphs)]
         if isinstance(here.graphs, Sinks):
-            orders = {chosen: linear_extensions(chosen) for chosen in set(inside)}
+            orders: dict[tuple[int, ...], int] = {}
+            for chosen in inside:
+                if chosen not in orders:
+                    orders[chosen] = linear_extensions(chosen)
+                    still()
             logs -= np.asarray([np.log(float(orders[chosen])) for chosen in inside])
         for graph, chosen in zip(drawn, inside, strict=True):
             for who, parents in zip(stage, here.with_earlier(chosen, rng), strict=True):
@@ -69,15 +75,25 @@ def posterior(
 class _Stage:
     """One stage: its graphs, and the parents from earlier stages that go with each set of parents inside."""
 
-    def __init__(self, stage: Sequence[Candidates], scores: SetScores, max_parents: int) -> None:
+    def __init__(
+        self, stage: Sequence[Candidates], scores: SetScores, max_parents: int, still: Callable[[], None]
+    ) -> None:
         self.stage = stage
         self.width = len(stage)
-        self.families = [Families(who, scores, 0, max_parents).by_mates() for who in stage]
+        self.families = []
+        for who in stage:
+            self.families.append(Families(who, scores, 0, max_parents).by_mates())
+            still()
         weights = np.full((self.width, 1 << self.width), -np.inf)
         for place, family in enumerate(self.families):
             for own, (_, logs) in family.items():
                 weights[place, self._stage_bits(place, own)] = np.logaddexp.reduce(logs)
-        self.graphs = Layers(weights) if self.width <= WIDEST_LAYERED else Sinks(weights)
+        self.graphs = Layers(weights, still) if self.width <= WIDEST_LAYERED else Sinks(weights, still)
+
+    def draw(self, rng: np.random.Generator, still: Callable[[], None]) -> tuple[int, ...]:
+        """Parents within the stage, as sets, of one drawn graph."""
+        still()
+        return self.graphs.draw(rng)
 
     def _stage_bits(self, place: int, own: tuple[int, ...]) -> int:
         return sum(1 << (mate - self.stage[place].first) for mate in own)

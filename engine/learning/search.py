@@ -14,6 +14,7 @@ from engine.learning.scores import Floats, SetScores
 from engine.refusal import Refusal
 
 WIDEST = 18  # columns in a stage that the exact search can take
+_SETS = 1_024  # sets of a stage filled in together, few enough to stay in the processor's cache
 
 Parents = tuple[tuple[int, ...], ...]  # one entry a column: positions of its parents
 
@@ -116,22 +117,30 @@ class StageSearch:
         done = 0
         for count in range(1, self.width + 1):
             layer = sets[members == count]
-            reach = (count - 1) * self.cap + 1
-            filled = np.full((layer.size, count * self.cap + 1), -np.inf)
-            for last in range(self.width):
-                holds = np.flatnonzero(layer >> last & 1)
-                before = layer[holds] ^ (1 << last)
-                earlier = table[before, :reach]
-                best = self.best[last][:, _without(before, last)]
-                mine = filled[holds]
-                for links in range(self.cap + 1):
-                    reached = mine[:, links : links + reach]
-                    np.maximum(reached, earlier + best[links][:, None], out=reached)
-                filled[holds] = mine
-                done += holds.size
+            for low in range(0, layer.size, _SETS):
+                some = layer[low : low + _SETS]
+                table[some, : count * self.cap + 1] = self._layer(table, some, count)
+                done += some.size * count
                 tick(0.3 + 0.7 * done / (self.width << (self.width - 1)))
-            table[layer, : count * self.cap + 1] = filled
         return table
+
+    def _layer(self, table: Floats, sets: NDArray[np.int64], count: int) -> Floats:
+        """(sets, links + 1) best scores of sets of `count` columns, from those of `count` - 1."""
+        reach = (count - 1) * self.cap + 1
+        filled = np.full((sets.size, count * self.cap + 1), -np.inf)
+        sums = np.empty((sets.size, reach))
+        for last in range(self.width):
+            holds = np.flatnonzero(sets >> last & 1)
+            before = sets[holds] ^ (1 << last)
+            earlier = table[before, :reach]
+            best = self.best[last][:, _without(before, last)]
+            mine = filled[holds]
+            for links in range(self.cap + 1):
+                reached = mine[:, links : links + reach]
+                np.add(earlier, best[links][:, None], out=sums[: holds.size])
+                np.maximum(reached, sums[: holds.size], out=reached)
+            filled[holds] = mine
+        return filled
 
     def parents(self, links: int) -> list[tuple[int, ...]]:
         """The parents of each column of the stage in its best choice of that many links, found by re-evaluation."""

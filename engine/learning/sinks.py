@@ -6,20 +6,27 @@ orders counts that often; draws are put right by 1 / (its number of linear exten
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cached_property
+from math import comb
 
 import numpy as np
 
-from engine.learning.layers import log_sum_of, pick, subset_totals
+from engine.learning.lattice import subset_totals, superset_shares
+from engine.learning.layers import log_sum_of, pick
 from engine.learning.scores import Floats, Ints
 
 
 @dataclass(frozen=True, eq=False)
 class Sinks:
-    """Orders and graphs of a stage of `width` columns; `weights` as in engine.learning.layers.Layers."""
+    """Orders and graphs of a stage of `width` columns; `weights` as in engine.learning.layers.Layers.
+
+    still is called often; raising inside it cancels.
+    """
 
     weights: Floats
+    still: Callable[[], None] = lambda: None
 
     @property
     def width(self) -> int:
@@ -31,7 +38,7 @@ class Sinks:
 
     @cached_property
     def totals(self) -> Floats:
-        return subset_totals(self.weights)
+        return subset_totals(self.weights, self.still)
 
     @cached_property
     def forward(self) -> Floats:
@@ -45,6 +52,7 @@ class Sinks:
                 before = layer[holds] ^ (1 << column)
                 terms[column, holds] = forward[before] + self.totals[column, before]
             forward[layer] = log_sum_of(terms, axis=0)
+            self.still()
         return forward
 
     @cached_property
@@ -58,6 +66,7 @@ class Sinks:
                 lacks = np.flatnonzero((layer >> column & 1) == 0)
                 terms[column, lacks] = self.totals[column, layer[lacks]] + backward[layer[lacks] | 1 << column]
             backward[layer] = log_sum_of(terms, axis=0)
+            self.still()
         return backward
 
     @property
@@ -69,11 +78,11 @@ class Sinks:
         sets = np.arange(1 << self.width)
         found = np.zeros(self.weights.shape)
         for column in range(self.width):
-            before = np.where(sets >> column & 1, -np.inf, self.forward + self.backward[sets | 1 << column])
-            for place in range(self.width):  # sum over every set of earlier columns that holds the parents
-                halves = before.reshape(-1, 2, 1 << place)
-                np.logaddexp(halves[:, 0], halves[:, 1], out=halves[:, 0])
-            found[column] = np.exp(self.weights[column] + before - self.log_sum)
+            outside = np.flatnonzero((sets >> column & 1) == 0)
+            around = np.full(sets.size, -np.inf)
+            around[outside] = self.forward[outside] + self.backward[outside | 1 << column] - self.log_sum
+            found[column] = superset_shares(self.weights[column], around, self.totals[column])
+            self.still()
         return found
 
     def draw(self, rng: np.random.Generator) -> tuple[int, ...]:
@@ -96,18 +105,47 @@ class Sinks:
 
     def _layers(self) -> list[Ints]:
         sets = np.arange(1 << self.width, dtype=np.int64)
-        sizes = np.asarray([int(each).bit_count() for each in sets])
+        sizes = np.zeros(sets.size, dtype=np.int64)
+        for place in range(self.width):
+            sizes += sets >> place & 1
         return [sets[sizes == size] for size in range(self.width + 1)]
 
 
 def linear_extensions(parents: tuple[int, ...]) -> int:
-    """In how many orders every column comes after its parents."""
-    ways = {0: 1}
-    for _ in parents:
-        longer: dict[int, int] = {}
-        for placed, count in ways.items():
-            for column, own in enumerate(parents):
-                if not placed >> column & 1 and not own & ~placed:
-                    longer[placed | 1 << column] = longer.get(placed | 1 << column, 0) + count
-        ways = longer
-    return ways[(1 << len(parents)) - 1]
+    """In how many orders every column comes after its parents.
+
+    Unconnected parts are interleaved freely; a lone source or sink of a part has its place given; otherwise each
+    source in turn goes first.
+    """
+    children = [
+        sum(1 << child for child, own in enumerate(parents) if own >> column & 1) for column in range(len(parents))
+    ]
+    known: dict[int, int] = {0: 1}
+
+    def ways(left: int) -> int:
+        if left not in known:
+            part = _connected(left, parents, children)
+            if part != left:
+                apart = comb(left.bit_count(), part.bit_count())
+                known[left] = apart * ways(part) * ways(left ^ part)
+            else:
+                columns = [column for column in range(len(parents)) if left >> column & 1]
+                sources = [1 << column for column in columns if not parents[column] & left]
+                sinks = [1 << column for column in columns if not children[column] & left]
+                given = sources if len(sources) <= len(sinks) else sinks
+                known[left] = sum(ways(left ^ end) for end in given)
+        return known[left]
+
+    return ways((1 << len(parents)) - 1)
+
+
+def _connected(left: int, parents: tuple[int, ...], children: list[int]) -> int:
+    """The columns of `left` that are connected to its lowest one by links inside it."""
+    part = new = left & -left
+    while new:
+        column = (new & -new).bit_length() - 1
+        new &= new - 1
+        more = (parents[column] | children[column]) & left & ~part
+        part |= more
+        new |= more
+    return part
