@@ -28,6 +28,7 @@ from engine.order import Order, better_levels
 from engine.records.table import Coded, Table
 from engine.refusal import Refusal, quoted
 
+JOINTS = 16e6  # bytes of joint shares of a few columns each that a model keeps
 MODELS = 4  # models of one study kept, each with its drawn tables
 
 
@@ -106,7 +107,7 @@ class Model:
         others = tuple(parent for parent in node.parents if parent != source)
         shares = np.moveaxis(better, node.parents.index(source), 0)
         if others:
-            shares = (shares * self._planner.joint(others)).reshape(len(shares), -1).sum(axis=1)
+            shares = (shares * self._joint(others)).reshape(len(shares), -1).sum(axis=1)
         return float(shares.max() - shares.min())
 
     def story(self, column: str) -> str:
@@ -125,7 +126,7 @@ class Model:
             raise Refusal(
                 f"This model has no column {quoted(column)}.", where=column, do="Ask for one of model.network.names."
             )
-        common = self._planner.joint(self.network.node(column).parents)
+        common = self._joint(self.network.node(column).parents)
         better = self._better(column) if self.order is not None and column in self.order.outcomes else None
         rows = conditional.rows(self.network, column, common, most)
         told = rules(self.network, column, common, better)
@@ -144,7 +145,15 @@ class Model:
         node = self.network.node(column)
         better = None if self.order is None else self.order.outcomes.get(column)
         found = better_levels(better, node.levels, node.has_blank)
-        return [node.levels.index(level) for level in found] or [int(np.argmax(self._planner.joint((column,))))]
+        return [node.levels.index(level) for level in found] or [int(np.argmax(self._joint((column,))))]
+
+    def _joint(self, columns: tuple[str, ...]) -> np.ndarray:
+        """(levels of each column...) joint shares as recorded; kept, for a page asks for the same ones again."""
+        return self._joints.get(columns, lambda: self._planner.joint(columns))
+
+    @cached_property
+    def _joints(self) -> Kept[tuple[str, ...], np.ndarray]:
+        return Kept(JOINTS, lambda shares: shares.nbytes)
 
     @cached_property
     def _planner(self) -> Planner:
