@@ -15,7 +15,7 @@ from app.wording.amounts import listing
 from app.wording.answers import WITHIN
 from app.wording.computed import method, size
 from app.wording.estimates import Estimate
-from app.wording.figures import counted, gives_away, records, share, signed_span
+from app.wording.figures import counted, records, share, signed_span
 from app.wording.parts import plain
 from app.wording.values import either, value
 from engine.answering.answer import Caution
@@ -66,7 +66,7 @@ def numbers(asked: Asked) -> list[Line]:
     exact = exact if question.levers else found.gap.decimals if question.pins else 0
     lines = [_line(f"{WORDS['recorded']}{all_records}", found.recorded, "recorded", exact)]
     if question.pins:
-        these = f", {records(matching, SMALL_COUNT, spine.records)}" if matching is not None else ""
+        these = "" if matching is None else f", {_these(asked, matching)}"
         lines.append(_line(f"{WORDS['among']}{these}", found.among, "among", exact))
     if asked.blocked:
         lines.append(Line(WORDS["set"], "withheld", "", "set"))
@@ -78,7 +78,7 @@ def numbers(asked: Asked) -> list[Line]:
         known = "" if change.known else signed_span(100 * change.low, 100 * change.high, change.decimals)
         lines.append(Line(words, change.difference.split()[0], known, look="sum"))
     count = asked.answer[asked.watch].counted
-    if count is not None and not gives_away(count.rows, spine.records, SMALL_COUNT):
+    if count is not None and count.tellable(asked.wanted(asked.watch)):
         held = sum(count.counts[level] for level in asked.wanted(asked.watch))
         whom = ", among these" if question.pins else ""
         lines.append(Line(f"Counted in the records{whom}", counted(held, count.rows, SMALL_COUNT), "", look="after"))
@@ -176,7 +176,7 @@ def data(asked: Asked, study: Study, table: Table) -> list[tuple[str, str]]:
     blanks = [f"{column.name} {share(column.blanks / rows)}" for column in used if column.blanks >= SMALL_COUNT]
     lines = [("records", f"{kept}; each taken as a separate case")]
     if asked.question.pins and asked.answer.matching is not None:
-        lines.append(("among these", records(asked.answer.matching, SMALL_COUNT, asked.spine.records)))
+        lines.append(("among these", _these(asked, asked.answer.matching)))
     lines += [
         ("columns", f"{len(used)} used of {len(table.columns)}" + (f"; left out: {listing(out, 12)}" if out else "")),
         ("blanks", f"{listing(blanks, 12)}; a level of their own, unless their rows are left out" if blanks else "few"),
@@ -184,6 +184,10 @@ def data(asked: Asked, study: Study, table: Table) -> list[tuple[str, str]]:
         ("file", f"{study.source}; with what was chosen for its columns sha256 {_short(study.digest)}"),
     ]
     return lines
+
+
+def _these(asked: Asked, matching: int) -> str:
+    return records(matching, SMALL_COUNT, asked.spine.records, asked.answer.matching_told)
 
 
 def _short(digest: str) -> str:

@@ -12,7 +12,7 @@ from app.drawing.bars import bars
 from app.pages.asking import Asked
 from app.question import Question, per_cent, query
 from app.wording.estimates import Estimate, level_estimates
-from app.wording.figures import column_figure, counted
+from app.wording.figures import column_figure, matching_of
 from app.wording.questions import reach_words
 from app.wording.values import either
 from engine.network.network import Category
@@ -177,7 +177,7 @@ def _pinned_words(asked: Asked, levels: Sequence[str]) -> str:
     matching = asked.answer.matching
     if matching is None or len(asked.question.pins) > 1 or asked.refusal is not None:
         return words
-    return f"{words} · {counted(matching, asked.spine.records, SMALL_COUNT)} records"
+    return f"{words} · {matching_of(matching, asked.spine.records, SMALL_COUNT, asked.answer.matching_told)}"
 
 
 def _set_words(asked: Asked, level: str, reach: float) -> str:

@@ -127,8 +127,8 @@ def colophon(asked: Asked, study: Study) -> str:
     """How the answer was computed."""
     links = len(asked.spine.model.links)
     words = [method(asked.answer), f"{size(links, study.links is not None)}; {intervals(DRAWS)}; seed {SEED}."]
-    for lever in asked.question.levers:
-        if asked.watch != lever and asked.watch not in asked.spine.model.network.descendants([lever]):
+    if len(asked.apart) < len(asked.question.levers):  # else the answer says so
+        for lever in asked.spine.names.ordered(asked.apart):
             words.append(f"In this model no link leads from {lever} to {asked.watch}, nor any chain of them.")
     return " ".join(words)
 

@@ -21,6 +21,7 @@ from engine.order import Order
 from engine.refusal import Refusal
 
 DRAWS, SEED = 200, 0
+MOST = 0.5  # share of the records asked about
 
 
 class Spine:
@@ -114,6 +115,22 @@ class Asked:
     def shows_set(self) -> bool:
         return bool(self.question.levers) and not self.blocked and self.refusal is None
 
+    @property
+    def thin(self) -> bool:
+        """Whether, for more than half of the records asked about, the model fills in what the levers would do."""
+        found = [caution.figures["share thin"] for caution in self.answer.cautions if caution.code == "overlap"]
+        return bool(self.question.levers) and any(share > MOST for share in found)
+
+    @property
+    def apart(self) -> frozenset[str]:
+        """Levers from which nothing in the model leads to the column of the answer sentence."""
+        network = self.spine.model.network
+        return frozenset(
+            lever
+            for lever in self.question.levers
+            if lever != self.watch and self.watch not in network.descendants([lever])
+        )
+
     def wanted(self, column: str) -> tuple[str, ...]:
         """The levels of a column whose share answers the question."""
         recorded = [float(part) for part in self.answer[column].recorded.point]
@@ -144,6 +161,8 @@ class Asked:
             self.spine.nodes,
             self.spine.records or None,
             self.blocked,
+            self.thin,
+            self.apart,
         )
 
 

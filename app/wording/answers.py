@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Collection
 from dataclasses import dataclass
 
 from app.question import Question, per_cent
@@ -35,16 +36,21 @@ def answer_sentence(
     nodes: Nodes,
     records: int | None = None,
     blocked: bool = False,
+    thin: bool = False,
+    apart: Collection[str] = (),
 ) -> Said:
     """The sentence that is the page.
 
     wanted: the levels of `watch` in question.  records: all of them, None when the model came without.
-    blocked: a caution withholds what the levers would do.
+    blocked: a caution withholds what the levers would do.  thin: for most of the group the model fills in.
+    apart: levers from which nothing leads to `watch`.
     """
     if question.levers and blocked:
         return _withheld(question, watch, wanted, found, nodes, records)
+    if question.levers and all(column in apart or not reach for column, (_, reach) in question.levers.items()):
+        return _unmoved(question, watch, wanted, found, nodes, apart)
     if question.levers:
-        return _moved(question, watch, wanted, found, nodes)
+        return _moved(question, watch, wanted, found, nodes, thin)
     if question.pins:
         recorded, here = found.gap.ends
         group, what = _capital(among(question, nodes)), is_at(nodes[watch], wanted)
@@ -74,18 +80,22 @@ def counted_sentence(
     small: int,
     records: int,
 ) -> Words:
-    """What the records hold, counted; without a number where they, or the others, are under the small-count limit.
+    """What the records hold, counted; without a number where it would give one under the small-count limit away.
 
-    matching: of all `records`, those that match every pin.
+    count: None where nothing may be counted.  matching: of all `records`, those that match every pin.
     """
     if count is None or gives_away(matching, records, small):
         these = "this value" if len(question.pins) == 1 else "all of these values"
+        if matching >= small and not gives_away(matching, records, small):
+            return say(f"How many records have {these} is not shown: it would give a count under {small} away.")
         which = f"Under {small} records have" if matching else "No record has"
         if matching >= small:
             which = f"All but under {small} records have"
         return say(f"{which} {these}, so nothing is counted; the figures come from the model.")
-    held = sum(count.counts[level] for level in wanted)
     have = say("have ", value(nodes[watch], wanted))
+    if not count.tellable(wanted):
+        return say("How many records ", have, f" is not shown: it would give a count under {small} away.")
+    held = sum(count.counts[level] for level in wanted)
     return say("Counted in the records: ", Part(counted(held, count.rows, small), "recorded"), " ", have, ".")
 
 
@@ -97,6 +107,8 @@ def also_sentence(
     if question.levers and not blocked:
         assert found.change is not None
         start, end = found.change.ends
+        if found.change.still:
+            return what, say(" stays at ", Part(end, "set"))
         from_to = say(" from ", Part(start, "among" if question.pins else "recorded"), " to ", Part(end, "set"))
         return what, say(from_to, f" {bracket(found.change)}")
     if question.pins:
@@ -112,14 +124,41 @@ def bracket(change: Change) -> str:
     return f"({change.difference}, {WITHIN} {change.interval})"
 
 
-def _moved(question: Question, watch: str, wanted: tuple[str, ...], found: Estimates, nodes: Nodes) -> Said:
+def _moved(question: Question, watch: str, wanted: tuple[str, ...], found: Estimates, nodes: Nodes, thin: bool) -> Said:
     assert found.change is not None
     what = subject(nodes[watch], wanted)
     start, end = found.change.ends
     from_to = say("from ", Part(start, "among" if question.pins else "recorded"), " to ", Part(end, "set"))
-    opening = say("By this estimate, ", _group(question, nodes), "setting ", _settings(question, nodes))
+    estimate = "By this estimate, as far as the model fills in, " if thin else "By this estimate, "
+    opening = say(estimate, _group(question, nodes), "setting ", _settings(question, nodes))
     moving = (" would move ", what, " ") if found.change.moves else (" may not move ", what, ": ")
     return _said(say(opening, *moving, from_to), f"{bracket(found.change)}.")
+
+
+def _unmoved(
+    question: Question,
+    watch: str,
+    wanted: tuple[str, ...],
+    found: Estimates,
+    nodes: Nodes,
+    apart: Collection[str],
+) -> Said:
+    """What no lever can move: nothing leads there from those that reach anyone."""
+    settings = series([say(name(column), " to ", name(level)) for column, (level, _) in question.levers.items()])
+    opening = _capital(say(_group(question, nodes), "setting ", settings))
+    away = [name(column) for column in question.levers if column in apart]
+    idle = [name(column) for column in question.levers if column not in apart]
+    whom = "them" if question.pins else "all records"
+    if not away:
+        why = say(f"for 0% of {whom} nothing changes")
+    elif len(question.levers) == 1:
+        why = say("nothing in this model leads from one to the other")
+    else:
+        why = say("nothing in this model leads from ", series(away, " or "), " to it")
+    if away and idle:
+        why = say(why, ", and ", series(idle), f" {'is' if len(idle) == 1 else 'are'} set for 0% of {whom}")
+    still = say("(", subject(nodes[watch], wanted), " stays at ", Part(share(found.among.share), "set"), ")")
+    return _said(say(opening, " would not move ", name(watch), ": ", why, "."), still)
 
 
 def _withheld(

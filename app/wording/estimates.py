@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from app.wording.figures import Change
+from app.wording.figures import CERTAIN, Change
 from engine.answering.answer import Marginal, Reading, spread
 
 COVERAGE = 0.90
@@ -68,7 +68,12 @@ def _estimate(marginal: Marginal, levels: tuple[str, ...]) -> Estimate:
 
 
 def _change(start: Marginal, end: Marginal, levels: tuple[str, ...]) -> Change:
-    """Draws of both worlds are common, so that their difference is the change in each draw."""
+    """Draws of both worlds are common, so that their difference is the change in each draw.
+
+    A change that is as small as the rounding of sums in every draw is none.
+    """
     before, after = start.share(levels), end.share(levels)
     difference = end.share_draws(levels) - start.share_draws(levels)
+    if max(abs(after - before), np.abs(difference).max(initial=0.0)) <= CERTAIN:
+        return Change(before, before, 0.0, 0.0)
     return Change(before, after, *spread(difference, after - before, COVERAGE))

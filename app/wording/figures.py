@@ -71,6 +71,11 @@ class Change:
         return self.low > 0 or self.high < 0
 
     @property
+    def still(self) -> bool:
+        """Whether nothing changes, in this model and beyond doubt."""
+        return self.known and self.start == self.end
+
+    @property
     def known(self) -> bool:
         """Whether the change is a point, known without doubt in this model."""
         return self.low == self.high
@@ -116,10 +121,22 @@ def gives_away(part: int, whole: int, small: int) -> bool:
     return 0 < part < small or 0 < whole - part < small
 
 
-def records(number: int, small: int, whole: int = 0) -> str:
-    """A number of records: 412 records, 1 record, under 10 records; of a known whole all but under 10 records."""
+def matching_of(number: int, whole: int, small: int, told: bool = True) -> str:
+    """The records that match, of all: 412 of 1,847 records. told: whether their number may be."""
+    if not told and not gives_away(number, whole, small):
+        return "number not shown"
+    return f"{counted(number, whole, small)} records"
+
+
+def records(number: int, small: int, whole: int = 0, told: bool = True) -> str:
+    """A number of records: 412 records, 1 record, under 10 records; of a known whole all but under 10 records.
+
+    told: whether the number may be, where it is not small itself.
+    """
     if 0 < whole - number < small:
         return f"all but under {small} records"
+    if not told and number >= small:
+        return "number not shown"
     said = f"under {small}" if 0 < number < small else f"{number:,}"
     return f"{said} {'record' if number == 1 and small <= 1 else 'records'}"
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import html
+import itertools
 import re
 from collections.abc import Iterator
 from datetime import UTC, datetime
@@ -204,6 +205,54 @@ def test_a_group_that_leaves_few_out_does_not_give_their_count_away(client, stor
         text = client.get(f"/study/{few.key}/{page}?{query}").text
         assert hidden in text
         assert "593" not in re.sub(r"<svg.*?</svg>", "", text, flags=re.DOTALL)
+
+
+def test_pins_that_together_give_a_small_count_away_are_not_counted(client, store):
+    towns = ["A"] * 196 + ["B"] * 197 + ["C"] * 7
+    frame = evening(400)[["passed"]].assign(town=towns)
+    plan = Plan((("Before", ("town",)), ("After", ("passed",))), outcomes={"passed": ("yes",)})
+    study = keep_a_model(store, store.bring("Towns", frame, "towns.csv", Choices(), plan))
+    get = {}
+    for page, pins in itertools.product(("ask", "answer"), ("a", "b", "a.c", "b.c")):
+        text = client.get(f"/study/{study.key}/{page}?pin=town.{pins}").text
+        get[page, pins] = re.sub(r"<svg.*?</svg>", "", text, flags=re.DOTALL)
+    assert "at B · 197 of 400 records" in get["ask", "b"] and "among these, 197 records" in get["answer", "b"]
+    assert "at A or C · 203 of 400 records" in get["ask", "a.c"]
+    for pins, count in (("a", "196"), ("b.c", "204")):
+        assert "number not shown" in get["ask", pins] and "it would give a count under 10 away" in get["ask", pins]
+        assert "among these, number not shown" in get["answer", pins]
+        assert "Counted in the records" not in get["answer", pins]
+        for page in ("ask", "answer"):
+            assert not re.search(rf"\b{count}\b", get[page, pins])
+
+
+def test_a_lever_from_which_nothing_leads_there_is_said_not_to_move_it(ask):
+    page = ask(f"{MENTOR}&watch=tutor")
+    assert sentence(page).startswith(
+        "Setting mentor to yes would not move tutor: nothing in this model leads from one to the other. (tutor = tutor "
+    )
+    beam = re.search(r'<svg class="beam".*?</svg>\s*<p', page, re.DOTALL)[0]
+    assert "if set" in beam and "#D55E00" in beam
+    page = ask(f"{MENTOR}&reach=mentor.0")
+    assert sentence(page).startswith(
+        "Setting mentor to yes would not move passed: for 0% of all records nothing changes. (passed stays at "
+    )
+
+
+def test_an_answer_that_the_model_mostly_fills_in_says_so(client, store):
+    rows = 300
+    frame = evening(rows)[["shift work", "passed"]].assign(mentor=["yes"] * 8 + ["no"] * (rows - 8))
+    plan = Plan(
+        (("Before", ("shift work",)), ("Offered", ("mentor",)), ("After", ("passed",))),
+        (("shift work", "mentor"), ("mentor", "passed")),
+        (),
+        ("mentor",),
+        {"passed": ("yes",)},
+    )
+    study = keep_a_model(store, store.bring("Thin", frame, "thin.csv", Choices(), plan))
+    page = client.get(f"/study/{study.key}/ask?{MENTOR}").text
+    assert sentence(page).startswith("By this estimate, as far as the model fills in, setting mentor to yes ")
+    assert "as far as" not in sentence(client.get(f"/study/{study.key}/ask?set=mentor.no").text)
 
 
 def test_a_pin_after_the_lever_is_refused_with_a_way_out_for_each(ask, client):

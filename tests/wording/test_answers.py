@@ -144,6 +144,80 @@ def test_a_blank_is_no_range():
     assert "with travel time = blank," in said(Question({"travel time": ("blank",)}), found())
 
 
+def test_where_most_are_thin_the_model_is_said_to_fill_in():
+    figures = found(after=0.63, low=0.01, high=0.17)
+    assert said(Question(NIGHTS, MENTOR), figures, thin=True).startswith(
+        "By this estimate, as far as the model fills in, among records with shift work = nights, setting mentor to yes "
+        "would move passed from 54% to 63%"
+    )
+    assert said(Question({}, MENTOR), found(after=0.55, low=-0.03, high=0.05), thin=True).startswith(
+        "By this estimate, as far as the model fills in, setting mentor to yes may not move passed: from 54% to 55%"
+    )
+
+
+def still(share=0.54):
+    """Estimates of what no lever moves; if set, sums are rounded another way."""
+    after = fixed(share + 1e-16, [share - 0.02 + 1e-17, share + 0.02 - 2e-17])
+    return estimates(
+        Reading("passed", fixed(0.61, [0.6, 0.62]), fixed(share, [share - 0.02, share + 0.02]), after), YES
+    )
+
+
+@pytest.mark.parametrize(
+    ("pins", "levers", "apart", "words"),
+    [
+        (
+            {},
+            MENTOR,
+            {"mentor"},
+            "Setting mentor to yes would not move passed: nothing in this model leads from one to the other.",
+        ),
+        (
+            NIGHTS,
+            {"mentor": ("yes", 0.5)},
+            {"mentor"},
+            "Among records with shift work = nights, setting mentor to yes would not move passed: "
+            "nothing in this model leads from one to the other.",
+        ),
+        (
+            {},
+            {"mentor": ("yes", 1.0), "study group": ("no", 1.0)},
+            {"mentor", "study group"},
+            "Setting mentor to yes and study group to no would not move passed: "
+            "nothing in this model leads from mentor or study group to it.",
+        ),
+        (
+            NIGHTS,
+            {"mentor": ("yes", 0.0)},
+            set(),
+            "Among records with shift work = nights, setting mentor to yes would not move passed: "
+            "for 0% of them nothing changes.",
+        ),
+        (
+            {},
+            {"mentor": ("yes", 1.0), "study group": ("no", 0.0)},
+            {"mentor"},
+            "Setting mentor to yes and study group to no would not move passed: nothing in this model leads from "
+            "mentor to it, and study group is set for 0% of all records.",
+        ),
+    ],
+)
+def test_a_lever_that_cannot_reach_the_column_would_not_move_it(pins, levers, apart, words):
+    assert said(Question(pins, levers), still(), apart=apart) == f"{words} (passed stays at 54%)"
+
+
+def test_one_lever_that_leads_there_makes_it_move():
+    levers = {"mentor": ("yes", 1.0), "study group": ("no", 0.0)}
+    assert "would move passed" in said(
+        Question({}, levers), found(after=0.63, low=0.01, high=0.17), apart={"study group"}
+    )
+
+
+def test_what_else_is_watched_and_cannot_move_stays():
+    what, figures = also_sentence(Question({}, MENTOR), "passed", YES, still(), NODES, False)
+    assert plain(what) + plain(figures) == "passed stays at 54%"
+
+
 def test_those_who_had_it_anyway_are_kept_apart():
     question, figures = Question(NIGHTS, MENTOR), found(after=0.63, low=0.01, high=0.17, had=0.48)
     assert (
@@ -205,6 +279,18 @@ def test_an_answer_about_other_levels_names_them():
             Counted(1840, {"no": 713, "yes": 1127}),
             1840,
             "All but under 10 records have this value, so nothing is counted; the figures come from the model.",
+        ),
+        (
+            NIGHTS,
+            None,
+            978,
+            "How many records have this value is not shown: it would give a count under 10 away.",
+        ),
+        (
+            {},
+            Counted(1847, {"no": 713, "yes": 1127, "blank": 7}, frozenset({"yes", "blank"})),
+            1847,
+            "How many records have passed = yes is not shown: it would give a count under 10 away.",
         ),
         (
             NIGHTS,
