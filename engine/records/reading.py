@@ -23,6 +23,7 @@ Source = str | os.PathLike[str] | IO[bytes] | IO[str]
 TEXTS = (".csv", ".tsv", ".tab", ".txt")
 SHEETS = (".xlsx", ".xlsm")
 ENDINGS = (*TEXTS, *SHEETS, ".parquet")
+MOST_COLUMNS = 500  # more than anybody puts in order by hand, or looks through on a page
 
 
 def read_table(
@@ -126,6 +127,12 @@ def _parquet(content: bytes, name: str) -> Columns:
 def _check(frame: pd.DataFrame, name: str) -> None:
     if len(frame.columns) < 2:
         raise one_column(name)
+    if len(frame.columns) > MOST_COLUMNS:
+        raise Refusal(
+            f"{quoted(name)} has {len(frame.columns):,} columns, more than the {MOST_COLUMNS} that can be brought.",
+            where=name,
+            do="Keep the columns that the question is about and bring the table again.",
+        )
     if frame.empty or frame.isna().all(axis=None):
         what = "a header but no records" if frame.empty else "names of columns but every cell under them is blank"
         raise Refusal(f"{quoted(name)} has {what}.", where=name, do="Bring a table with one row for each record.")

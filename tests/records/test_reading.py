@@ -54,6 +54,18 @@ def test_an_ending_that_does_not_fit_is_said(content, name, said):
     assert said in refused(content, name).message
 
 
+@pytest.mark.parametrize("ending", [".csv", ".parquet"])
+def test_a_table_of_more_columns_than_anybody_puts_in_order_is_refused(ending):
+    def table(columns):
+        frame = pd.DataFrame({f"c{place}": ["x", "y"] for place in range(columns)})
+        content = io.BytesIO()
+        frame.to_csv(content, index=False) if ending == ".csv" else frame.to_parquet(content)
+        return content.getvalue()
+
+    assert "has 501 columns, more than the 500 that can be brought" in refused(table(501), f"wide{ending}").message
+    assert read_frame(io.BytesIO(table(500)), f"wide{ending}")[0].shape == (2, 500)
+
+
 def test_a_path_that_leads_nowhere_is_said(tmp_path):
     with pytest.raises(Refusal, match="There is no file"):
         read_frame(tmp_path / "t.csv")
