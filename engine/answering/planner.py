@@ -59,6 +59,7 @@ class Planner:
         self.network = network
         self._plans: Kept[Hashable, Tree] = Kept(PLANS)
         self._worlds: Kept[Hashable, tuple[World, Tree]] = Kept(PLANS)
+        self._grouped: Kept[int, list[dict[str, None]]] = Kept(DRAWS)
         self._recorded: Kept[tuple[int, int, tuple[str, ...]], tuple[Mapping[str, np.ndarray], Work]] = Kept(
             DRAWS * (1 + len(network.nodes))
         )
@@ -113,7 +114,7 @@ class Planner:
         """The world without pins: all columns in one tree where that can be, so that no digit hangs on what was asked
         before; those that need the same heavy tables in one of their own; else each column by itself."""
         found: dict[str, np.ndarray] = {}
-        for group in self._groups(count):
+        for group in self._grouped.get(count, lambda: self._groups(count)):
             asked = [column for column in columns if column in group]
             if not asked:
                 continue
