@@ -17,6 +17,7 @@ COLOURS = {"recorded": LINE, "among": "#0072B2", "set": "#D55E00"}
 INKS = {"recorded": INK, "among": "#005F96", "set": "#A34700"}
 WIDE = 0.23  # of the width that the longest label takes on a wide page
 NARROW = {"recorded": 0.46, "among": 0.46, "set": 0.27}  # and on 360 px
+FIGURE = 0.18  # of 360 px that the figure alone takes
 
 
 @dataclass(frozen=True)
@@ -116,37 +117,45 @@ def _shape(mark: Mark, y: int) -> Markup:
 
 
 def _label(mark: Mark, y: int, stems: Sequence[float]) -> Markup:
-    """Past the whisker, where it does not run over an end or across the stem of a mark above.
+    """Past the whisker, where it does not run over an end; past the stem of a mark above where one would cross it.
 
-    Where a wide page and 360 px need different places both are drawn, and the stylesheet shows one.
+    Where a wide page and 360 px need different places both are drawn, and the stylesheet shows one; where 360 px are
+    too tight for the words they get the figure alone.
     stems: shares of the marks above, whose stems pass this row.
     """
     right, left = max(mark.high, mark.share), min(mark.low, mark.share)
-    wide = _side(left, right, WIDE, stems)
-    narrow = NARROW[mark.world]
-    if right + narrow <= 1 or left - narrow >= 0:
-        slim, words = ("right" if right + narrow <= 1 else "left"), "narrow"
-    else:
-        slim, words = ("right" if 1 - right > left else "left"), "slim"
+    wide = _place(left, right, WIDE, stems)
+    slim, words = _place(left, right, NARROW[mark.world], stems), "narrow"
+    if slim is None:
+        slim, words = _place(left, right, FIGURE, stems), "slim"
+    rest = ("right", right) if 1 - right > left else ("left", left)
+    wide, slim = wide or rest, slim or rest
     if wide == slim and words == "narrow":
-        return _words(mark, y, right if wide == "right" else left, wide)
-    sides = (("wide", wide), (words, slim))
-    return join([_words(mark, y, right if side == "right" else left, side, shown) for shown, side in sides])
+        return _words(mark, y, *wide)
+    return join([_words(mark, y, *place, shown) for shown, place in (("wide", wide), (words, slim))])
 
 
-def _side(left: float, right: float, width: float, stems: Sequence[float]) -> str:
-    fits = {"right": right + width <= 1, "left": left - width >= 0}
-    crossed = {
-        "right": any(right < stem < right + width for stem in stems),
-        "left": any(left - width < stem < left for stem in stems),
-    }
-    for side in ("right", "left"):
-        if fits[side] and not crossed[side]:
-            return side
-    return "right" if fits["right"] else "left"
+def _place(left: float, right: float, width: float, stems: Sequence[float]) -> tuple[str, float] | None:
+    """Side and share where a label of this width starts clear of every stem; None where it fits on no side.
+
+    Beside the whisker where that is clear on either side, the right one first; else past the stems, on the side where
+    it stands nearer.
+    """
+    found = []
+    for side, edge, sign in (("right", right, 1.0), ("left", left, -1.0)):
+        start = edge
+        for stem in sorted(stems, reverse=sign < 0):
+            if 0.0 <= sign * (stem - start) < width:
+                start = stem
+        if (start + width <= 1.0) if sign > 0 else (start - width >= 0.0):
+            found.append((abs(start - edge), side, start))
+    if not found:
+        return None
+    _, side, start = min(found, key=lambda place: place[0])
+    return side, start
 
 
-def _words(mark: Mark, y: int, at: float, side: str, shown: str | None = None) -> Markup:
+def _words(mark: Mark, y: int, side: str, at: float, shown: str | None = None) -> Markup:
     figure = tag("tspan", mark.figure, font_weight=700, fill=INKS[mark.world])
     words = [] if shown == "slim" else [mark.words, " "]
     text = tag(

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from xml.etree import ElementTree
 
 import pytest
@@ -63,6 +64,44 @@ def test_a_label_keeps_clear_of_the_stem_of_a_mark_above():
     assert wide == [("62.00%", "right"), ("44.00%", "left")]
     free = Mark("recorded", "as recorded", "80%", 0.8, 0.79, 0.81)
     assert ("46.00%", "right") in [place[1:3] for place in labels(beam(free, under))]
+
+
+def test_a_label_crossed_on_both_sides_starts_past_the_nearer_stem_with_room():
+    marks = [
+        Mark("recorded", "as recorded", "61%", 0.61, 0.6, 0.62),
+        Mark("among", "among these", "45%", 0.45, 0.43, 0.47),
+        Mark("set", "if set", "52%", 0.52, 0.5, 0.54),
+    ]
+    assert ("45.00%", "left") in [place[1:3] for place in labels(beam(*marks)) if "if set" in place[0]]
+    far = [Mark("recorded", "as recorded", "56%", 0.56, 0.55, 0.57), *marks[1:]]
+    assert [place[1:3] for place in labels(beam(*far)) if "if set" in place[0] and place[3] != "slim"] == [
+        ("56.00%", "right")
+    ]
+
+
+@given(st.lists(st.tuples(st.floats(0, 1), st.floats(0, 0.2)), min_size=3, max_size=3))
+def test_no_label_is_struck_through_where_a_side_has_room(ends):
+    marks = [
+        Mark(world, world, "1%", share, max(0.0, share - half), min(1.0, share + half))
+        for world, (share, half) in zip(("recorded", "among", "set"), ends, strict=True)
+    ]
+    for row, mark in enumerate(marks):
+        stems = [round(100 * other.share, 2) for other in marks[:row]]
+        for words, place, side, shown in labels(beam(*marks)):
+            if not words.startswith(mark.world) or shown == "slim":
+                continue
+            at, sign = float(place.removesuffix("%")), 1 if side == "right" else -1
+            edge = 100 * (mark.high if sign > 0 else mark.low)
+            struck = any(0.01 < sign * (stem - at) < 22.9 for stem in stems)
+            assert not struck or (abs(at - edge) < 0.01 and no_room(mark, stems))
+
+
+def no_room(mark, stems):
+    """Whether neither side has 23 % free of stems and ends, past the whisker."""
+    free = [0.0, *sorted(stems), 100.0]
+    gaps = [(max(low, 100 * mark.high), high) for low, high in itertools.pairwise(free)]
+    gaps += [(low, min(high, 100 * mark.low)) for low, high in itertools.pairwise(free)]
+    return all(high - low < 23.1 for low, high in gaps)
 
 
 def test_where_a_narrow_page_is_too_tight_it_gets_the_figure_alone():
