@@ -73,7 +73,8 @@ class Misread(Refusal):
 
     def __init__(self, refusals: Sequence[Refusal], rest: Question) -> None:
         first = refusals[0]
-        super().__init__(" ".join(refusal.message for refusal in refusals), where=first.where, do=first.do)
+        messages = dict.fromkeys(refusal.message for refusal in refusals)
+        super().__init__(" ".join(messages), where=first.where, do=first.do)
         self.rest = rest
 
 
@@ -106,6 +107,8 @@ class Names:
 
     def column(self, slug: str) -> str:
         """Raises Refusal when no column has that name."""
+        if not slug:
+            raise Refusal("The address names no column.", where=slug, do="Pick a column on the page.")
         if slug not in self._named:
             raise Refusal(
                 f"There is no column “{slug}” in this model.",

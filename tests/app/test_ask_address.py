@@ -98,7 +98,8 @@ def test_the_form_of_a_card_sends_a_reach_as_people_type_it(typed, reach):
         (("reach.mentor", "nan"), "“nan”"),
         (("reach.mentor", "<b>"), "“<b>”"),
         (("reach", "passed.50"), "passed, which is not set"),
-        (("watch", ""), "no column “”"),
+        (("watch", ""), "names no column."),
+        (("pin", ""), "names no column."),
         (("show", "everything"), "“everything”"),
         (("drop", "table"), "“drop”"),
         (("pin", "shift-work.days"), "twice"),
@@ -111,6 +112,15 @@ def test_what_cannot_be_read_is_said_and_the_rest_is_kept(pair, says):
     assert says in misread.value.message and misread.value.do
     assert misread.value.rest.pins == {"shift work": ("nights",)}
     assert misread.value.rest.levers == {"mentor": ("yes", 1.0)}
+
+
+def test_the_same_complaint_is_made_once():
+    with pytest.raises(Misread) as misread:
+        parse([("pin", "shoe.43"), ("drop", "a"), ("pin", "shoe.44"), ("drop", "b"), ("watch", ""), ("set", "")], NAMES)
+    assert misread.value.message == (
+        "There is no column “shoe” in this model. The address holds “drop”, which means nothing here. "
+        "The address names no column."
+    )
 
 
 def test_every_change_of_a_question_leaves_the_rest_alone():
