@@ -7,6 +7,7 @@ from contextlib import asynccontextmanager
 
 from fastapi import FastAPI
 from fastapi.exceptions import RequestValidationError
+from fastapi.routing import APIRoute
 from starlette.exceptions import HTTPException
 
 from app import assets
@@ -29,6 +30,9 @@ def create_app(settings: Settings) -> FastAPI:
 
     app.add_middleware(Guard, settings=settings)
     for page in (shelf, records, order, model, ask, answer):
+        for route in page.router.routes:
+            if isinstance(route, APIRoute) and route.methods and "GET" in route.methods:
+                route.methods.add("HEAD")  # as every other route answers it
         app.include_router(page.router)
     app.mount("/static", assets.Static(), name="static")
 

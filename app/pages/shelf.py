@@ -21,6 +21,13 @@ def show(request: Request) -> Response:
     return _page(request)
 
 
+@router.get("/study/{key}")
+def open_study(request: Request, key: str) -> Response:
+    """Where the study's next step is taken; a step that changes something waits there for a click."""
+    study = request.app.state.store.study(key)
+    return RedirectResponse(shelf_view.next_page(study, request.app.state.jobs.state(key)), status_code=303)
+
+
 @router.post("/bring")
 def bring(
     request: Request,

@@ -57,6 +57,12 @@ def entry(study: Study, state: JobState | None) -> Entry:
     )
 
 
+def next_page(study: Study, state: JobState | None) -> str:
+    """The page of the study's next step; a step that starts something waits on the Model page for a click."""
+    _, address, starts = _next_step(study, state is not None and state.state == "running")
+    return f"/study/{study.key}/model" if starts else address
+
+
 def headline(studies: int) -> tuple[str, str]:
     """The number in bold and the words after it."""
     if studies == 0:

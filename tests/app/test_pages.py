@@ -361,3 +361,26 @@ def test_learning_shows_progress_and_can_be_cancelled(client: TestClient, app: F
 def test_no_address_of_these_pages_moves_anything_when_it_is_only_read(client: TestClient, learned: Study) -> None:
     for place in ("learn/cancel", "budget", "learn/forget"):
         assert client.get(f"/study/{learned.key}/{place}").status_code == 405
+
+
+def test_a_study_opens_at_its_next_step(client: TestClient, shelf: Store, learned: Study, visits: pd.DataFrame) -> None:
+    def opens(study: Study) -> tuple[int, str]:
+        answer = client.get(f"/study/{study.key}", follow_redirects=False)
+        return answer.status_code, answer.headers.get("location", "")
+
+    unordered = shelf.bring("Unordered", visits, "visits.csv")
+    ordered = shelf.bring("Ordered", visits, "visits.csv", plan=learned.plan)
+    assert opens(unordered) == (303, f"/study/{unordered.key}/order")
+    assert opens(ordered) == (303, f"/study/{ordered.key}/model")
+    assert opens(learned) == (303, f"/study/{learned.key}/ask")
+    shelf.note_question(learned.key, "pin=shift.nights", "Among records.", ())
+    assert opens(learned) == (303, f"/study/{learned.key}/ask?pin=shift.nights")
+    assert client.get("/study/nowhere").status_code == 404
+
+
+@pytest.mark.parametrize(
+    "place", ["", "study/{key}/records", "study/{key}/order", "study/{key}/model", "study/{key}/ask"]
+)
+def test_the_head_of_a_page_is_answered_as_the_page_is(client: TestClient, study: Study, place: str) -> None:
+    address = "/" + place.format(key=study.key)
+    assert client.head(address).status_code == client.get(address).status_code == 200
