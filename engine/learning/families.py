@@ -12,6 +12,7 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
+from engine.learning.lattice import over_subsets
 from engine.learning.scores import Floats, Ints, SetScores
 from engine.order import Order
 from engine.refusal import Refusal
@@ -75,7 +76,7 @@ def candidates(order: Order, max_parents: int) -> tuple[tuple[Candidates, ...], 
     return tuple(found)
 
 
-class _Group(NamedTuple):
+class Group(NamedTuple):
     """Families of equally many mates and equally many earlier columns.
 
     own: sets of mates, a row each; sets: the same as bits.  earlier: sets of earlier columns, a row each.
@@ -105,39 +106,28 @@ class Families:
     def best(self) -> Floats:
         """(parents + 1, sets of the stage's other columns): best score with so many parents, mates from that set."""
         best = np.full((self.max_parents + 1, 1 << (self.who.width - 1)), -np.inf)
-        for group in self._groups():
+        for group in self.groups():
             row = best[group.parents]
             row[group.sets] = np.maximum(row[group.sets], group.scores.max(axis=1))
-        for place in range(self.who.width - 1):
-            halves = best.reshape(self.max_parents + 1, -1, 2, 1 << place)
-            np.maximum(halves[:, :, 1], halves[:, :, 0], out=halves[:, :, 1])
+        for row in best:
+            row[:] = over_subsets(row, np.maximum)
         return best
 
     def parents(self, count: int, within: int, score: float) -> tuple[int, ...]:
         """The first family of `count` parents that has `score`, its mates all in `within`."""
-        for group in self._groups(count):
+        for group in self.groups(count):
             inside = np.flatnonzero((group.sets & ~within) == 0)
             own, earlier = np.nonzero(group.scores[inside] == score)
             if own.size:
                 return tuple(int(c) for c in (*group.earlier[earlier[0]], *group.own[inside[own[0]]]))
         raise AssertionError("a score without a family")
 
-    def by_mates(self) -> dict[tuple[int, ...], tuple[tuple[Ints, Ints], Floats]]:
-        """The families by their parents in the stage: (earlier parents, the family each belongs to), and the scores."""
-        found: dict[tuple[int, ...], list[_Group]] = {}
-        rows: dict[tuple[int, ...], list[int]] = {}
-        for group in self._groups():
-            for row, own in enumerate(group.own):
-                mates = tuple(int(column) for column in own)
-                found.setdefault(mates, []).append(group)
-                rows.setdefault(mates, []).append(row)
-        return {mates: _gathered(groups, rows[mates]) for mates, groups in found.items()}
-
     def left_out(self) -> int:
         """Families too large to count."""
-        return sum(int(np.isneginf(group.scores).sum()) for group in self._groups())
+        return sum(int(np.isneginf(group.scores).sum()) for group in self.groups())
 
-    def _groups(self, only: int | None = None) -> Iterator[_Group]:
+    def groups(self, only: int | None = None) -> Iterator[Group]:
+        """All families, or those of `only` parents."""
         who = self.who
         for inner in range(self.max_parents + 1):
             own = _choices(who.mates, inner, who.insisted & set(who.mates))
@@ -149,7 +139,7 @@ class Families:
                     continue
                 earlier = _choices(who.earlier, outer, who.insisted & set(who.earlier))
                 if own.shape[0] and earlier.shape[0]:
-                    yield _Group(inner + outer, own, earlier, sets, self._scores(own, earlier))
+                    yield Group(inner + outer, own, earlier, sets, self._scores(own, earlier))
 
     def _scores(self, own: Ints, earlier: Ints) -> Floats:
         child = self.who.child
@@ -162,13 +152,6 @@ class Families:
         base = self.scores.by_size[count][self.part][before[None, :] + without[:, None]]
         family = self.scores.by_size[count + 1][self.part][before[None, :] + with_child[:, None]]
         return np.where(np.isneginf(family), -np.inf, family - np.where(np.isneginf(base), 0.0, base))
-
-
-def _gathered(groups: list[_Group], rows: list[int]) -> tuple[tuple[Ints, Ints], Floats]:
-    scores = [group.scores[row] for group, row in zip(groups, rows, strict=True)]
-    sizes = np.repeat([group.earlier.shape[1] for group in groups], [len(each) for each in scores])
-    columns = np.concatenate([group.earlier.reshape(-1) for group in groups])
-    return (columns, np.repeat(np.arange(sizes.size), sizes)), np.concatenate(scores)
 
 
 def _choices(columns: tuple[int, ...], count: int, insisted: frozenset[int] | set[int]) -> Ints:

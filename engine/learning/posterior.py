@@ -9,10 +9,12 @@ from functools import partial
 import numpy as np
 from numpy.typing import NDArray
 
-from engine.learning.families import Candidates, Families
-from engine.learning.layers import WIDEST_LAYERED, Layers, pick
-from engine.learning.scores import Floats, SetScores
+from engine.learning.families import Candidates, Families, Group
+from engine.learning.layers import WIDEST_LAYERED, Layers, log_sum_of
+from engine.learning.scores import Floats, Ints, SetScores
 from engine.learning.sinks import Sinks, linear_extensions
+
+_UNLIKELY = 50.0  # nats below the sum of all at which a set of parents would not be drawn in 10^20 graphs
 
 
 @dataclass(frozen=True, eq=False)
@@ -80,39 +82,53 @@ class _Stage:
     ) -> None:
         self.stage = stage
         self.width = len(stage)
-        self.families = []
-        for who in stage:
-            self.families.append(Families(who, scores, 0, max_parents).by_mates())
+        self.groups: list[list[tuple[Group, Ints]]] = []  # with the mates as sets of the stage, themselves included
+        self.weights = np.full((self.width, 1 << self.width), -np.inf)
+        for who, row in zip(stage, self.weights, strict=True):
+            groups = []
+            for group in Families(who, scores, 0, max_parents).groups():
+                bits = np.asarray(np.sum(1 << (group.own - who.first), axis=1, dtype=np.int64))
+                row[bits] = np.logaddexp(row[bits], log_sum_of(group.scores, axis=1))
+                groups.append((group, bits))
+            self.groups.append(groups)
             still()
-        weights = np.full((self.width, 1 << self.width), -np.inf)
-        for place, family in enumerate(self.families):
-            for own, (_, logs) in family.items():
-                weights[place, self._stage_bits(place, own)] = np.logaddexp.reduce(logs)
-        self.graphs = Layers(weights, still) if self.width <= WIDEST_LAYERED else Sinks(weights, still)
+        self._known: dict[tuple[int, int], tuple[list[list[int]], Floats]] = {}
+        self.graphs = Layers(self.weights, still) if self.width <= WIDEST_LAYERED else Sinks(self.weights, still)
 
     def draw(self, rng: np.random.Generator, still: Callable[[], None]) -> tuple[int, ...]:
         """Parents within the stage, as sets, of one drawn graph."""
         still()
         return self.graphs.draw(rng)
 
-    def _stage_bits(self, place: int, own: tuple[int, ...]) -> int:
-        return sum(1 << (mate - self.stage[place].first) for mate in own)
-
     def add_support(self, support: Floats) -> None:
         held = self.graphs.parents()
-        for place, (who, family) in enumerate(zip(self.stage, self.families, strict=True)):
-            for own, (earlier, logs) in family.items():
-                share = held[place, self._stage_bits(place, own)]
-                if share <= 0.0:
-                    continue
-                for mate in own:
-                    support[mate, who.child] += share
-                each = share * np.exp(logs - np.logaddexp.reduce(logs))
-                np.add.at(support[:, who.child], earlier[0], each[earlier[1]])
+        columns = support.shape[0]
+        for place, (who, groups) in enumerate(zip(self.stage, self.groups, strict=True)):
+            for group, bits in groups:
+                kept = np.flatnonzero(held[place, bits] > 0.0)
+                each = np.exp(group.scores[kept] - self.weights[place, bits[kept], None])
+                each *= held[place, bits[kept], None]
+                for sets, share in ((group.own[kept], each.sum(axis=1)), (group.earlier, each.sum(axis=0))):
+                    parents, shares = sets.reshape(-1), np.repeat(share, sets.shape[1])
+                    support[:, who.child] += np.bincount(parents, shares, minlength=columns)
 
     def with_earlier(self, chosen: tuple[int, ...], rng: np.random.Generator) -> Iterator[list[int]]:
         """The parents of each column: those in the stage, chosen as sets, and a draw of those from earlier stages."""
-        for who, family, own in zip(self.stage, self.families, chosen, strict=True):
-            mates = tuple(who.first + bit for bit in range(self.width) if own >> bit & 1)
-            (columns, belongs), logs = family[mates]
-            yield [*mates, *columns[belongs == pick(logs, rng)].tolist()]
+        for place, own in enumerate(chosen):
+            if (place, own) not in self._known:
+                self._known[place, own] = self._alternatives(place, own)
+            parents, shares = self._known[place, own]
+            yield parents[int(np.searchsorted(shares, rng.random() * shares[-1], side="right"))]
+
+    def _alternatives(self, place: int, own: int) -> tuple[list[list[int]], Floats]:
+        """Every set of parents of a column with these mates, and the running sum of how likely each is."""
+        first = self.stage[place].first
+        mates = [first + bit for bit in range(self.width) if own >> bit & 1]
+        parents: list[list[int]] = []
+        logs = []
+        for group, bits in self.groups[place]:
+            for row in np.flatnonzero(bits == own):
+                likely = np.flatnonzero(group.scores[row] > self.weights[place, own] - _UNLIKELY)
+                parents += [[*mates, *earlier] for earlier in group.earlier[likely].tolist()]
+                logs.append(group.scores[row, likely])
+        return parents, np.cumsum(np.exp(np.concatenate(logs) - self.weights[place, own]))

@@ -94,8 +94,8 @@ class _Terms:
 
     def rows_for(self, cells: Ints) -> NDArray[np.int64]:
         """Where the row of each number of joint levels begins in `table`."""
-        distinct, place = np.unique(cells, return_inverse=True)
-        new = [int(q) for q in distinct if int(q) not in self.known]
+        distinct = set(cells.tolist())
+        new = sorted(distinct - self.known.keys())
         if new:
             counts = np.arange(self.width)
             rows = [gammaln(counts + self.ess / q) - gammaln(self.ess / q) for q in new]
@@ -103,8 +103,7 @@ class _Terms:
                 self.known[q] = len(self.joint) * self.width
                 self.joint.append(q)
             self.table = np.concatenate([self.table, *rows])
-        begins = np.asarray([self.known[int(q)] for q in distinct], dtype=np.int64)
-        return begins[place.reshape(-1)]
+        return np.asarray([self.known[q] for q in cells.tolist()], dtype=np.int64)
 
     def beyond(self, counts: NDArray[np.int32], row: Ints, lengths: Ints) -> Floats:
         """As the look-up, for counts that may lie outside the table."""

@@ -79,9 +79,9 @@ class Sinks:
         found = np.zeros(self.weights.shape)
         for column in range(self.width):
             outside = np.flatnonzero((sets >> column & 1) == 0)
-            around = np.full(sets.size, -np.inf)
-            around[outside] = self.forward[outside] + self.backward[outside | 1 << column] - self.log_sum
-            found[column] = superset_shares(self.weights[column], around, self.totals[column])
+            around = self.forward[outside] + self.backward[outside | 1 << column] - self.log_sum
+            shares = superset_shares(self.weights[column, outside], around, self.totals[column, outside])
+            found[column, outside] = shares
             self.still()
         return found
 

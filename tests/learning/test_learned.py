@@ -2,6 +2,7 @@
 
 import threading
 import time
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -168,13 +169,19 @@ def test_raising_in_progress_cancels(at):
     assert threading.active_count() == before
 
 
-def test_a_chance_to_cancel_comes_often():
+@pytest.mark.parametrize(
+    ("rows", "columns", "stages", "parents"),
+    [(2_000, 13, 1, 3), (2_000, 20, 2, 2), (60_000, 12, 4, 3), (300, 15, 1, 2)],
+)
+def test_a_chance_to_cancel_comes_often(rows, columns, stages, parents):
     rng = np.random.default_rng(0)
-    names = tuple(f"c{place}" for place in range(13))
-    coded = with_codes(rng.integers(0, 3, (2_000, 13)), names, (3,) * 13)
-    times = [time.perf_counter()]
-    learn_coded(coded, Order([("All", names)]), progress=lambda fraction, words: times.append(time.perf_counter()))
-    assert np.quantile(np.diff(times), 0.99) < 0.2
+    names = tuple(f"c{place}" for place in range(columns))
+    coded = with_codes(rng.integers(0, 3, (rows, columns)), names, (3,) * columns)
+    order = Order([(f"stage {stage}", names[stage::stages]) for stage in range(stages)])
+    coded = replace(coded, names=order.columns)
+    times = [time.process_time()]
+    learn_coded(coded, order, max_parents=parents, progress=lambda fraction, words: times.append(time.process_time()))
+    assert np.diff(times).max() < 0.2
 
 
 def test_a_wide_stage_is_refused_by_name():

@@ -6,7 +6,9 @@ from itertools import permutations
 import numpy as np
 import pytest
 from hypothesis import given, settings
+from hypothesis import strategies as st
 
+from engine.learning import lattice
 from engine.learning.families import candidates
 from engine.learning.layers import Layers
 from engine.learning.posterior import posterior
@@ -58,12 +60,43 @@ def test_layers_count_every_graph_once(width, spread):
     assert layers.parents() == pytest.approx(weighed(weights, graphs)[1], abs=1e-10)
 
 
+@pytest.mark.parametrize("spread", [3.0, 400.0, 4000.0])
 @pytest.mark.parametrize("width", [1, 2, 3, 4])
-def test_orders_count_a_graph_as_often_as_it_fits_them(width):
-    weights = weights_of(width, 3.0, seed=width)
+def test_orders_count_a_graph_as_often_as_it_fits_them(width, spread):
+    weights = weights_of(width, spread, seed=width)
     graphs = every_graph(width)
     times = [linear_extensions(graph) for graph in graphs]
     assert Sinks(weights).parents() == pytest.approx(weighed(weights, graphs, times)[1], abs=1e-10)
+
+
+@pytest.mark.parametrize("windows", [0, 3, 10**6])
+@pytest.mark.parametrize("spread", [1.0, 300.0, 30_000.0])
+def test_sums_over_subsets_are_those_of_plain_sums_whatever_the_spread(monkeypatch, windows, spread):
+    monkeypatch.setattr(lattice, "MOST_WINDOWS", windows)
+    rng = np.random.default_rng(3)
+    weights = np.where(rng.random((2, 32)) < 0.7, rng.normal(size=(2, 32)) * spread, -np.inf)
+    for row in weights:
+        totals = lattice.subset_total(row)
+        told = [np.logaddexp.reduce([row[own] for own in range(32) if not own & ~whole]) for whole in range(32)]
+        assert totals == pytest.approx(told, rel=1e-13, abs=1e-12)
+        shares = rng.dirichlet(np.ones(32))
+        seen = np.isfinite(totals)
+        around = np.where(seen, np.log(shares) - np.where(seen, totals, 0.0), -np.inf)
+        told = [sum(np.exp(row[own] + around[whole]) for whole in range(32) if not own & ~whole) for own in range(32)]
+        assert lattice.superset_shares(row, around, totals) == pytest.approx(told, abs=1e-12 + 2e-15 * spread)
+
+
+@settings(max_examples=60, deadline=None)
+@given(st.integers(1, 8), st.floats(0.0, 0.7), st.integers(0, 2**32 - 1))
+def test_linear_extensions_are_counted_as_by_placing_one_column_after_another(width, share, seed):
+    linked = np.random.default_rng(seed).random((width, width)) < share
+    graph = tuple(sum(1 << other for other in range(column) if linked[column, other]) for column in range(width))
+    ways = {0: 1}
+    for placed in range(1 << width):
+        for column in range(width):
+            if placed in ways and not placed >> column & 1 and not graph[column] & ~placed:
+                ways[placed | 1 << column] = ways.get(placed | 1 << column, 0) + ways[placed]
+    assert linear_extensions(graph) == ways[(1 << width) - 1]
 
 
 def test_linear_extensions_are_the_orders_that_fit():
