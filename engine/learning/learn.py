@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from math import comb
 from numbers import Integral
 
 import numpy as np
@@ -241,9 +240,9 @@ class _Saying:
         size = min(max_parents + 1, columns)
         parts = counts.folds if counts.folds > 1 else 0
         thousands = max(1.0, counts.rows / 1_000)
-        counting = comb(columns, size) * (2e-6 * thousands + 1e-6) * (1.5 if parts else 1.0)
+        counting = counts.seconds(size) * (2.0 if parts else 1.5)
         searching = sum(len(stage) * 2.0 ** len(stage) * columns * 2e-8 for stage in stages) + 0.02 * columns / 10
-        scoring = 0.002 * columns * max_parents + 1e-5 * columns * thousands
+        scoring = 0.001 * columns * max_parents + 1.5e-4 * columns * thousands
         weighing = sum(len(stage) * (4.0 ** min(len(stage), 10)) * 2e-7 for stage in stages) + 0.003 * columns
         self.steps = [counting, searching, weighing, *[searching + scoring] * parts]
         self.at = -1

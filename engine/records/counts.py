@@ -73,12 +73,20 @@ class ArrayCounts:
             yield from way(self.codes, self.levels, self.fold, self.folds, size, tick or (lambda part: None)).blocks()
 
     def _covering_is_cheaper(self, size: int) -> bool:
+        covering, walking = self._seconds(size)
+        return covering < walking
+
+    def seconds(self, size: int) -> float:
+        """Roughly how long `blocks` takes, for telling progress."""
+        return min(self._seconds(min(size, len(self.levels))))
+
+    def _seconds(self, size: int) -> tuple[float, float]:
+        """Of covering and of walking."""
         columns = len(self.levels)
-        if columns > MOST_COLUMNS:
-            return False
         fits = np.log(BLOCK_CELLS) / float(np.mean(np.log(np.maximum(self.levels, 2))))  # columns of a block
         covering = covering_seconds(self.rows, columns, size, fits, self.folds)
-        return covering < walking_seconds(self.rows, columns, size, sum(self.levels), self.folds)
+        walking = walking_seconds(self.rows, columns, size, sum(self.levels), self.folds)
+        return covering if columns <= MOST_COLUMNS else np.inf, walking
 
 
 # Rough seconds of either way, as measured from 10 to 37 columns and from 10,000 to 400,000 rows. They only choose.
