@@ -42,8 +42,13 @@ class Account:
 
 
 def accounts(model: Model, picked: str | None) -> tuple[Account, ...]:
-    """Every column of the model, parents before children, the picked one first."""
-    return tuple(_account(model, name, picked) for name in sorted(model.network.names, key=lambda name: name != picked))
+    """Every column: the picked one, outcomes, those that may be changed, and the others, parents before children."""
+    outcomes = () if model.order is None else tuple(model.order.outcomes)
+
+    def rank(name: str) -> tuple[bool, bool, bool]:
+        return name != picked, name not in outcomes, model.order is not None and name not in model.changeable
+
+    return tuple(_account(model, name, picked) for name in sorted(model.network.names, key=rank))
 
 
 def _account(model: Model, name: str, picked: str | None) -> Account:

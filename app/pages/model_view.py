@@ -20,6 +20,7 @@ from engine.model import Learned, Model
 
 SHOWN_LINKS = 30  # rows of the links table before those with less support are folded
 SUREST = 1.0  # where every support shown as "over 99%" stands in the table
+SHOWN_COLUMNS = 15  # columns told before the others are folded
 EXACT = 1e-6  # nats by which a bound may exceed the score it bounds, for rounding
 
 
@@ -90,6 +91,14 @@ class ModelView:
     @property
     def more_rows(self) -> tuple[LinkRow, ...]:
         return tuple(row for place, row in enumerate(self.rows) if place >= SHOWN_LINKS and not row.picked)
+
+    @property
+    def first_accounts(self) -> tuple[Account, ...]:
+        return self.accounts[:SHOWN_COLUMNS]
+
+    @property
+    def more_accounts(self) -> tuple[Account, ...]:
+        return self.accounts[SHOWN_COLUMNS:]
 
     @property
     def is_in_use(self) -> bool:

@@ -106,13 +106,12 @@ def _block(node: Category, network: Network) -> str:
         *_list("parents", [repr(parent) for parent in node.parents]),
         "    shares=[",
     ]
-    parents = [network.node(parent) for parent in node.parents]
+    if node.parents:
+        lines.append(f"        # each row: {', '.join(_remark(parent) for parent in node.parents)}")
     rows = np.asarray(node.table).reshape(-1, len(node.levels))
-    for row, levels in zip(rows, product(*(parent.levels for parent in parents)), strict=True):
-        told = ", ".join(
-            f"{_remark(parent.name)}: {_remark(level)}" for parent, level in zip(parents, levels, strict=True)
-        )
-        lines.append(f"        [{', '.join(map(_share, row))}],{f'  # {told}' if told else ''}")
+    for row, levels in zip(rows, product(*(network.node(parent).levels for parent in node.parents)), strict=True):
+        given = f"  # {', '.join(_remark(level) for level in levels)}" if levels else ""
+        lines.append(f"        [{', '.join(map(_share, row))}],{given}")
     return "\n".join([*lines, "    ],", ")", ""])
 
 

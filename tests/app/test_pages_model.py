@@ -104,9 +104,24 @@ def test_a_long_table_shows_its_commonest_rows_and_levels_and_says_what_it_leave
     assert kind.note == "Not shown: six rarer combinations and two rarer levels; the program holds them."
 
 
-def test_the_picked_column_is_told_first(app: FastAPI, study: Study) -> None:
-    told = model_accounts.accounts(app.state.store.model(study.key), "passed")
-    assert [account.name for account in told if account.picked] == [told[0].name] == ["passed"]
+def test_the_picked_column_is_told_first_then_outcomes_then_what_may_be_changed(app: FastAPI, study: Study) -> None:
+    model = app.state.store.model(study.key)
+    assert [account.name for account in model_accounts.accounts(model, None)][:2] == ["passed", "mentor"]
+    told = model_accounts.accounts(model, "age")
+    assert [account.name for account in told][:3] == ["age", "passed", "mentor"]
+    assert [account.name for account in told if account.picked] == ["age"]
+
+
+def test_the_columns_of_a_large_model_are_folded_but_all_told(client: TestClient, app: FastAPI) -> None:
+    rng = np.random.default_rng(6)
+    frame = pd.DataFrame({f"c{place}": rng.choice(["no", "yes"], 60) for place in range(17)})
+    stages = tuple((f"Stage {place}", (f"c{place}",)) for place in range(17))
+    study = app.state.store.bring("Many", frame, "many.csv", plan=Plan(stages=stages))
+    keep_a_model(app.state.store, study)
+    page = client.get(f"/study/{study.key}/model").text
+    before, after = page.split("<summary>2 more columns</summary>")
+    assert before.count("Shares and intervals") == model_view.SHOWN_COLUMNS == 15
+    assert after.count("Shares and intervals") == 2
 
 
 def test_a_wide_stage_is_said_beside_the_links(client: TestClient, app: FastAPI) -> None:

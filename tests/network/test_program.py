@@ -134,8 +134,9 @@ category(
     levels=['low', 'high'],
     parents=['band'],
     shares=[
-        [0.9000, 0.1000],  # band: under 20
-        [0, 1.0000],  # band: 20 and over
+        # each row: band
+        [0.9000, 0.1000],  # under 20
+        [0, 1.0000],  # 20 and over
     ],
 )
 
