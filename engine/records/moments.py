@@ -99,9 +99,11 @@ class _Piece:
 
     columns: tuple[int, ...]
     number: NDArray[np.int32]  # (joint levels,) which occupied configuration each is
+    held: NDArray[np.int32] | None  # (rows,) the same for each record, kept when all rows are one block
     low: int
     high: int
     whole: bool
+    last: bool
 
 
 class ArrayMoments:
@@ -143,19 +145,20 @@ class ArrayMoments:
         pairs = [size - count >= 2 for count in range(len(sets))]
         costs = [len(each) * (1 + _terms(numbers, wide)) for each, wide in zip(sets, pairs, strict=True)]
         for count, (chosen, wide) in enumerate(zip(sets, pairs, strict=True)):
-            before, per_piece = sum(costs[:count]), costs[count] / max(len(chosen), 1)
+            before, per_set = sum(costs[:count]), costs[count] / max(len(chosen), 1)
             waiting: list[_Piece] = []
-            held = done = 0
+            held, begun = 0, before / sum(costs)
+            at = begun
             for piece in self._pieces(chosen, wide):
                 more = (piece.high - piece.low) * self.folds * _terms(numbers, wide)
                 if waiting and held + more > _HELD:
-                    yield self._summed(waiting, wide, lambda: hear((before + done * per_piece) / sum(costs)))  # noqa: B023
-                    waiting, held = [], 0
+                    yield self._summed(waiting, wide, hear, begun, at)
+                    waiting, held, begun = [], 0, at
                 waiting.append(piece)
                 held += more
-                done += piece.high == piece.number.max(initial=-1) + 1
+                at += per_set / sum(costs) if piece.last else 0.0
             if waiting:
-                yield self._summed(waiting, wide, lambda: hear((before + done * per_piece) / sum(costs)))  # noqa: B023
+                yield self._summed(waiting, wide, hear, begun, at)
         hear(1.0)
 
     def family(self, categories: Sequence[int], numbers: Sequence[int], child: int) -> FamilySums:
@@ -181,7 +184,7 @@ class ArrayMoments:
         """(rows low to high,) the joint level of `columns`."""
         code = np.zeros(high - low, dtype=np.int32)
         for column in columns:
-            code *= self.levels[column]
+            code *= np.int32(self.levels[column])
             code += self.codes[low:high, column]
         return code
 
@@ -192,16 +195,21 @@ class ArrayMoments:
             if joint > LARGEST:
                 continue
             seen = np.zeros(joint, dtype=np.bool_)
+            code = np.empty(0, dtype=np.int32)
             for low in range(0, self.rows, _ROWS):
-                seen[self._joint(columns, low, min(low + _ROWS, self.rows))] = True
+                code = self._joint(columns, low, min(low + _ROWS, self.rows))
+                seen[code] = True
             number = np.cumsum(seen, dtype=np.int32) - np.int32(1)
-            occupied = int(seen.sum())
+            occupied = int(number[-1]) + 1
+            held = number[code] if self.rows <= _ROWS else None
             for low in range(0, occupied, most):
                 high = min(low + most, occupied)
-                yield _Piece(columns, number, low, high, occupied <= most)
+                yield _Piece(columns, number, held, low, high, occupied <= most, high == occupied)
 
-    def _summed(self, pieces: Sequence[_Piece], pairs: bool, tick: Callable[[], None]) -> Sums:
-        """One pass over the rows for all `pieces`."""
+    def _summed(
+        self, pieces: Sequence[_Piece], pairs: bool, hear: Callable[[float], None], begun: float, at: float
+    ) -> Sums:
+        """One pass over the rows for all `pieces`; `hear` is told of fractions from `begun` to `at`."""
         numbers = len(self.numbers.columns)
         sizes = [piece.high - piece.low for piece in pieces]
         starts = np.concatenate([[0], np.cumsum(sizes)])
@@ -212,7 +220,7 @@ class ArrayMoments:
             for first, last in _together(sizes, self.folds * sums.shape[1]):
                 begin, end = int(starts[first]) * self.folds, int(starts[last]) * self.folds
                 sums[begin:end] += self._placed(pieces[first:last], low, high, end - begin) @ laid
-                tick()
+                hear(min(begun + (at - begun) * (low + (high - low) * last / len(pieces)) / self.rows, 1.0))
         by_term = np.ascontiguousarray(sums.reshape(-1, self.folds, sums.shape[1]).transpose(2, 1, 0))
         sets = np.asarray([piece.columns for piece in pieces], dtype=np.int64).reshape(len(pieces), -1)
         return Sums(
@@ -226,13 +234,12 @@ class ArrayMoments:
         weights = np.repeat(self.weights[low:high], len(pieces)).reshape(rows, len(pieces))
         before = 0
         for place, piece in enumerate(pieces):
-            number = piece.number[self._joint(piece.columns, low, high)]
+            number = piece.number[self._joint(piece.columns, low, high)] if piece.held is None else piece.held
             if not piece.whole:
                 outside = (number < piece.low) | (number >= piece.high)
                 weights[outside, place] = 0.0
                 number = np.where(outside, 0, number - piece.low).astype(np.int32)
-            number += before
-            number *= self.folds
+            number = (number + np.int32(before)) * np.int32(self.folds)
             number += self.fold[low:high]
             where[:, place] = number
             before += piece.high - piece.low

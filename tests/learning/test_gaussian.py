@@ -9,7 +9,9 @@ from hypothesis import strategies as st
 from scipy.integrate import quad
 from scipy.stats import gamma, multivariate_normal
 
+from engine.learning.families import Families, candidates
 from engine.learning.gaussian import coarsened, number_scores
+from engine.order import Order
 from engine.records import moments as moments_room
 from engine.records.counts import rank
 from engine.records.moments import ArrayMoments, Numbers
@@ -229,3 +231,30 @@ def test_scoring_says_how_far_it_is():
     heard = []
     number_scores(plainly.moments(codes, values, places), 4, tick=heard.append)
     assert heard == sorted(heard) and heard[-1] == 1.0 and len(heard) > 3
+
+
+def test_families_of_numbers_are_taken_up_as_those_of_categories():
+    codes, values, places = plainly.mixed(120, [2, 3, 2], 3, seed=14)
+    found = number_scores(plainly.moments(codes, values, places), 4)
+    names = [f"c{place}" for place in range(6)]
+    order = Order([("First", names[:2]), ("Then", names[2:])], rule_out=[(names[0], names[5])])
+    for who in (each for stage in candidates(order, 3) for each in stage if each.child in places):
+        best = Families(who, found, 0, 3).best()
+        leads = (*who.mates, *who.earlier)
+        for count in range(min(3, len(leads)) + 1):
+            told = max(family(found, who.child, parents) for parents in combinations(leads, count))
+            assert best[count, -1] == told
+            parents = Families(who, found, 0, 3).parents(count, (1 << who.width) - 1, told)
+            assert family(found, who.child, parents) == told
+
+
+def test_a_link_that_is_there_gains_and_one_that_is_not_loses():
+    rng = np.random.default_rng(15)
+    group = rng.integers(0, 3, 1_000)
+    cause, idle = rng.normal(size=1_000), rng.normal(size=1_000)
+    effect = 2.0 * cause + group + rng.normal(size=1_000)
+    codes = np.column_stack([group, np.zeros((1_000, 3))])
+    found = number_scores(plainly.moments(codes, np.column_stack([cause, idle, effect]), (1, 2, 3)), 4)
+    assert family(found, 3, (1,)) > family(found, 3, ()) + 100
+    assert family(found, 3, (0, 1)) > family(found, 3, (1,)) + 100
+    assert family(found, 3, (0, 1)) > family(found, 3, (0, 1, 2)) + 1
