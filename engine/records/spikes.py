@@ -17,6 +17,7 @@ from engine.refusal import Refusal, quoted
 
 SPIKE = 0.1  # share of the records in one value from which a number is no smooth amount
 CONSTANT = 10  # records of one value throughout a configuration from which its density has no limit
+PROBED = 20_000  # records that are looked at before all are
 EXACT = 1e-6  # of the standard deviation: what rounding to float leaves of an exact sum
 
 Floats = NDArray[np.float64]
@@ -56,9 +57,10 @@ def refuse_collinear(columns: Sequence[Column], size: int) -> None:
     numbers = Numbers.standardised(range(len(held)), values)
     if len(numbers.values) <= 2 * size:
         return
+    alike = numbers.values.T @ numbers.values / len(values)
     basis: list[int] = []
     for place in range(len(held)):
-        sources = _sources(numbers, place, basis, size - 1)
+        sources = _sources(numbers, alike, place, basis, size - 1)
         if sources is None:
             basis.append(place)
             continue
@@ -95,6 +97,9 @@ def _constant_inside(columns: Sequence[Column], bands: set[str], fresh: set[str]
     still = [column for column in columns if column.kind == "number" and column.name not in bands]
     still = [column for column in still if _most_alike(column) >= CONSTANT]
     found: dict[str, str] = {}
+    rows = np.arange(columns[0].codes.size)
+    some = np.random.default_rng(0).permutation(rows)[:PROBED]
+    probes = (rows, some, some[::-1], some[::3])
     for count in range(1, size + 1):
         for chosen in combinations(categories, count):
             if not still:
@@ -107,21 +112,35 @@ def _constant_inside(columns: Sequence[Column], bands: set[str], fresh: set[str]
             code = np.zeros(chosen[0].codes.size, dtype=np.int64)
             for column in chosen:
                 code = code * len(column.levels) + column.codes
-            found.update(_constant_in(code, joint, chosen, still))
+            found.update(_constant_in(code, joint, chosen, still, probes))
             still = [column for column in still if column.name not in found]
     return found
 
 
 def _constant_in(
-    code: NDArray[np.int64], joint: int, chosen: Sequence[Column], numbers: Sequence[Column]
+    code: NDArray[np.int64],
+    joint: int,
+    chosen: Sequence[Column],
+    numbers: Sequence[Column],
+    probes: Sequence[NDArray[np.int64]],
 ) -> dict[str, str]:
+    """Those of `numbers` that are constant in a configuration, and why.
+
+    probes: records of which each configuration's last is compared first; the first of them holds all records.
+    """
     records = np.bincount(code, minlength=joint)
     large = records >= CONSTANT
     last = np.zeros(joint, dtype=np.int64)
-    last[code] = np.arange(code.size)  # one record of each configuration
+    held = np.empty((len(probes), joint), dtype=np.int64)  # a few records of each configuration
+    for place, rows in enumerate(probes):
+        last[code[rows]] = rows
+        held[place] = last
     found = {}
     for column in numbers:
         values = np.asarray(column.values)
+        probed = values[held[:, large]]
+        if not (probed == probed[0]).all(axis=0).any():
+            continue
         different = values != values[last[code]]
         constant = np.flatnonzero(large & (np.bincount(code[different], minlength=joint) == 0))
         if constant.size:
@@ -137,14 +156,17 @@ def _constant_in(
     return found
 
 
-def _sources(numbers: Numbers, place: int, basis: Sequence[int], most: int) -> list[int] | None:
-    """The fewest of `basis`, at most `most`, that the number at `place` is a linear sum of."""
+def _sources(numbers: Numbers, alike: Floats, place: int, basis: Sequence[int], most: int) -> list[int] | None:
+    """The fewest of `basis`, at most `most`, that the number at `place` is a linear sum of.
+
+    alike: (numbers, numbers) correlations. They rule out nearly every number before any record is looked at.
+    """
     if not basis:
         return None
     child = numbers.values[:, place]
-    every = numbers.values[:, basis]
-    slopes = np.linalg.lstsq(every, child, rcond=None)[0]
-    if not _follows(numbers, place, list(basis), slopes):
+    ridge = EXACT**2 * np.eye(len(basis))
+    slopes = np.linalg.solve(alike[np.ix_(basis, basis)] + ridge, alike[basis, place])
+    if 1.0 - slopes @ alike[basis, place] > 2.0 * _rounding(numbers, place, basis, slopes) ** 2 + 1e-9:
         return None
     strongest = [basis[at] for at in np.argsort(-np.abs(slopes), kind="stable")]
     for count in range(1, min(most, len(basis)) + 1):
@@ -158,6 +180,10 @@ def _sources(numbers: Numbers, place: int, basis: Sequence[int], most: int) -> l
 def _follows(numbers: Numbers, place: int, sources: Sequence[int], slopes: NDArray[np.floating]) -> bool:
     """Whether no record is further from the sum than rounding of the columns to their steps explains."""
     away = np.abs(numbers.values[:, place] - numbers.values[:, list(sources)] @ slopes).max()
+    return bool(away <= max(EXACT, 1.01 * _rounding(numbers, place, sources, slopes)))
+
+
+def _rounding(numbers: Numbers, place: int, sources: Sequence[int], slopes: NDArray[np.floating]) -> float:
+    """The furthest that rounding of all columns to their steps takes a record from an exact sum, standardised."""
     steps = numbers.step / numbers.scale
-    rounding = 0.5 * (steps[place] + np.abs(slopes) @ steps[list(sources)])
-    return bool(away <= max(EXACT, 1.01 * rounding))
+    return float(0.5 * (steps[place] + np.abs(slopes) @ steps[list(sources)]))

@@ -6,6 +6,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
+from engine.records import spikes
 from engine.records.spikes import refuse_collinear, taken_as_bands
 from engine.records.steps import recording_step
 from engine.records.table import Table
@@ -39,7 +40,9 @@ def test_one_value_throughout_a_configuration_of_ten_makes_bands(rng, records, b
     assert found == ({"pay": told} if bands else {})
 
 
-def test_a_constant_is_found_where_only_two_categories_together_show_it(rng):
+@pytest.mark.parametrize("probed", [5, 20_000])
+def test_a_constant_is_found_where_only_two_categories_together_show_it(monkeypatch, rng, probed):
+    monkeypatch.setattr(spikes, "PROBED", probed)
     a, b = rng.integers(0, 2, 300), rng.integers(0, 2, 300)
     a[-12:], b[-12:], a[:-12], b[:50] = 1, 1, rng.integers(0, 2, 288), 0
     b[:-12][a[:-12] == 1] = 0
