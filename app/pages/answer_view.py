@@ -6,6 +6,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from datetime import date
 from importlib import metadata
+from itertools import combinations
 
 from app.drawing.answer_beam import World
 from app.pages.ask_view import RANKS, WORDS
@@ -16,6 +17,7 @@ from app.wording.answers import WITHIN
 from app.wording.computed import method, size
 from app.wording.estimates import Estimate
 from app.wording.figures import counted, records, share, signed_span
+from app.wording.links import SETTLED
 from app.wording.parts import plain
 from app.wording.values import either, value
 from engine.answering.answer import Caution
@@ -126,7 +128,7 @@ def links(asked: Asked) -> tuple[list[Link], list[Link]]:
 def _through(asked: Asked) -> set[tuple[str, str]]:
     """With levers: links from the levers, from the pins and from what leads to a lever, on to the watched column.
 
-    With pins alone, what is seen tells both ways: links on any path between the columns in question, among these and
+    With pins, what is seen tells both ways: links on any path between the columns in question, among these and
     what comes before them. Where nothing is asked: the links that meet the watched column.
     """
     question, every = asked.question, asked.spine.model.links
@@ -136,14 +138,17 @@ def _through(asked: Asked) -> set[tuple[str, str]]:
         start = {*question.levers, *question.pins, *(source for source, _ in parents)}
         ahead = _reached(start, kept)
         behind = _reached({asked.watch}, [(target, source) for source, target in kept])
-        return parents | {(source, target) for source, target in kept if source in ahead and target in behind}
-    columns = [*question.pins, asked.watch]
-    near = [link for link in every if set(link) <= _reached(set(columns), [(end, start) for start, end in every])]
-    found: set[tuple[str, str]] = set()
-    for place, one in enumerate(columns):
-        for other in columns[place + 1 :]:
-            found |= between(near, one, other) if one != other else set()
-    return found if question.pins else {link for link in every if asked.watch in link}
+        moving = {(source, target) for source, target in kept if source in ahead and target in behind}
+        return parents | moving | _seen(asked, [link for link in every if link not in parents])
+    return _seen(asked, every) if question.pins else {link for link in every if asked.watch in link}
+
+
+def _seen(asked: Asked, links: Sequence[tuple[str, str]]) -> set[tuple[str, str]]:
+    """Links on any path between the pins and the watched column, among these and what comes before them."""
+    columns = list(dict.fromkeys((*asked.question.pins, asked.watch)))
+    before = _reached(set(columns), [(target, source) for source, target in links])
+    near = [link for link in links if before.issuperset(link)]
+    return {link for one, other in combinations(columns, 2) for link in between(near, one, other)}
 
 
 def _reached(start: set[str], links: Sequence[tuple[str, str]]) -> set[str]:
@@ -163,7 +168,7 @@ def _told(asked: Asked, source: str, target: str) -> Link:
     strength = 100 * spine.model.strength(source, target)
     words = "under 1 point" if strength < 1 else f"{strength:.0f} {'point' if round(strength) == 1 else 'points'}"
     settled = spine.settled_by(source, target)
-    return Link(source, "goes with" if settled == "nobody" else "leads to", target, words, settled)
+    return Link(source, "goes with" if settled == "nobody" else "leads to", target, words, SETTLED[settled])
 
 
 def data(asked: Asked, study: Study, table: Table) -> list[tuple[str, str]]:

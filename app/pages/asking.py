@@ -35,7 +35,7 @@ class Spine:
         self.stages = tuple((stage.name, stage.columns) for stage in self.order.stages if stage.columns)
         self.columns = tuple(column for _, columns in self.stages for column in columns)
         self.names = Names([(column, self.nodes[column].levels) for column in self.columns])
-        self.unsettled = unsettled_links(model.links, self.order.may_lead)
+        self.unsettled = model.unsettled | unsettled_links(model.links, self.order.may_lead)
         self.outcomes = tuple(column for column in self.columns if column in self.order.outcomes)
         self.changeable = frozenset(model.changeable)
 
