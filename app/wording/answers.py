@@ -47,7 +47,10 @@ def answer_sentence(
     """
     if question.levers and blocked:
         return _withheld(question, watch, wanted, found, nodes, records)
-    if question.levers and all(column in apart or not reach for column, (_, reach) in question.levers.items()):
+    if question.levers and all(
+        column in apart or not reach or question.pins.get(column) == (level,)
+        for column, (level, reach) in question.levers.items()
+    ):
         return _unmoved(question, watch, wanted, found, nodes, apart)
     if question.levers:
         return _moved(question, watch, wanted, found, nodes, thin)
@@ -143,18 +146,27 @@ def _unmoved(
     nodes: Nodes,
     apart: Collection[str],
 ) -> Said:
-    """What no lever can move: nothing leads there from those that reach anyone."""
+    """What no lever can move: nothing leads there from those that reach anyone who has not the value already."""
     settings = series([say(name(column), " to ", name(level)) for column, (level, _) in question.levers.items()])
     opening = _capital(say(_group(question, nodes), "setting ", settings))
     away = [name(column) for column in question.levers if column in apart]
-    idle = [name(column) for column in question.levers if column not in apart]
+    idle = [name(column) for column, (_, reach) in question.levers.items() if column not in apart and not reach]
+    kept = [column for column, (_, reach) in question.levers.items() if column not in apart and reach]
     whom = "them" if question.pins else "all records"
-    if not away:
+    if kept and not away and not idle:
+        have = series([value(nodes[column], question.pins[column]) for column in kept])
+        why = say("all of them have ", have, " already")
+    elif not away and not kept:
         why = say(f"for 0% of {whom} nothing changes")
+    elif not away:
+        why = say("it changes none of these records")
     elif len(question.levers) == 1:
         why = say("nothing in this model leads from one to the other")
     else:
         why = say("nothing in this model leads from ", series(away, " or "), " to it")
+    if away and kept:
+        have = series([value(nodes[column], question.pins[column]) for column in kept])
+        why = say(why, ", and all of them have ", have, " already")
     if away and idle:
         why = say(why, ", and ", series(idle), f" {'is' if len(idle) == 1 else 'are'} set for 0% of {whom}")
     still = say("(", subject(nodes[watch], wanted), " stays at ", Part(share(found.among.share), "set"), ")")

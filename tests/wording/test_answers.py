@@ -200,6 +200,27 @@ def still(share=0.54):
             "Setting mentor to yes and study group to no would not move passed: nothing in this model leads from "
             "mentor to it, and study group is set for 0% of all records.",
         ),
+        (
+            {"mentor": ("yes",)},
+            MENTOR,
+            set(),
+            "Among records with mentor = yes, setting mentor to yes would not move passed: "
+            "all of them have mentor = yes already.",
+        ),
+        (
+            {"mentor": ("yes",)},
+            {"mentor": ("yes", 0.5), "study group": ("no", 0.0)},
+            set(),
+            "Among records with mentor = yes, setting mentor to yes and study group to no would not move passed: "
+            "it changes none of these records.",
+        ),
+        (
+            {"mentor": ("yes",)},
+            {"mentor": ("yes", 1.0), "study group": ("no", 1.0)},
+            {"study group"},
+            "Among records with mentor = yes, setting mentor to yes and study group to no would not move passed: "
+            "nothing in this model leads from study group to it, and all of them have mentor = yes already.",
+        ),
     ],
 )
 def test_a_lever_that_cannot_reach_the_column_would_not_move_it(pins, levers, apart, words):
