@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator, Sequence
+from collections.abc import Collection, Iterable, Iterator, Sequence
 from itertools import pairwise
 
 from app.store.values import StagePlan
@@ -16,14 +16,14 @@ def write(stages: Iterable[StagePlan]) -> str:
     return "\n".join(f"{_quoted(name)}: {', '.join(map(_quoted, columns))}".rstrip() for name, columns in stages)
 
 
-def read(text: str, columns: Sequence[str]) -> tuple[StagePlan, ...]:
-    """The stages that `text` states for a table with `columns`.
+def read(text: str, columns: Sequence[str], left_out: Collection[str] = ()) -> tuple[StagePlan, ...]:
+    """The stages that `text` states for a table with `columns`, not counting those that are left out.
 
     Case and spaces do not matter where they leave no doubt. Raises Refusal for a line without a name, and for a
     column that the table does not have or that no line names.
     """
     stages: list[StagePlan] = []
-    wanted = _Columns(columns)
+    wanted = _Columns(columns, left_out)
     for number, line in enumerate(_lines(text), start=1):
         if not line.strip():
             continue
@@ -48,8 +48,9 @@ def read(text: str, columns: Sequence[str]) -> tuple[StagePlan, ...]:
 class _Columns:
     """Finds a column by its name, else by its name without regard to case and spaces."""
 
-    def __init__(self, columns: Sequence[str]) -> None:
+    def __init__(self, columns: Sequence[str], left_out: Collection[str]) -> None:
         self._columns = columns
+        self._left_out = {_plain(column) for column in left_out}
         self._alike: dict[str, list[str]] = {}
         for column in columns:
             self._alike.setdefault(_plain(column), []).append(column)
@@ -60,6 +61,12 @@ class _Columns:
         alike = self._alike.get(_plain(name), [])
         if len(alike) == 1:
             return alike[0]
+        if not alike and _plain(name) in self._left_out:
+            raise Refusal(
+                f"{where.capitalize()} names “{name}”, which is left out, so no stage can hold it.",
+                where=where,
+                do="Take it out of the line, or choose another kind for it on the Records page.",
+            )
         raise Refusal(
             f"{where.capitalize()} names “{name}”, which is no column of these records.",
             where=where,

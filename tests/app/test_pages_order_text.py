@@ -52,6 +52,13 @@ def test_what_is_wrong_is_said_by_line(text: str, where: str, words: str) -> Non
     assert refused.value.do
 
 
+def test_a_column_that_is_left_out_is_said_to_be() -> None:
+    with pytest.raises(Refusal) as refused:
+        order_text.read("Who: age, Visit Date", ["age"], ["visit date"])
+    assert refused.value.message == "Line 1 names “Visit Date”, which is left out, so no stage can hold it."
+    assert "Records page" in refused.value.do
+
+
 def test_two_columns_that_differ_by_case_are_told_apart() -> None:
     assert order_text.read("A: Age, age", ["age", "Age"]) == (("A", ("Age", "age")),)
     with pytest.raises(Refusal):
