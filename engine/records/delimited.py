@@ -220,7 +220,9 @@ def _stays_open(text: str, began: int, mark: str) -> bool:
 def _misfit(misfits: list[tuple[int, int]], rows: list[list[str]], mark: str, name: str) -> Refusal:
     width = len(rows[0])
     named = [f"line {line:,} has {cells} {'cell' if cells == 1 else 'cells'}" for line, cells in misfits[:LISTED]]
-    more = f" and {len(misfits) - LISTED:,} more lines do not fit" if len(misfits) > LISTED else ""
+    left = len(misfits) - LISTED
+    more = f" and {left:,} more {'line does' if left == 1 else 'lines do'} not fit" if left > 0 else ""
+    fit = "does not fit" if len(misfits) == 1 else "do not fit"
     do = (
         f"Most often one of the {SEPARATORS.get(mark, 'separators')} stands inside a text without quotation marks. "
         "Correct these lines and bring the file again; nothing was stored."
@@ -228,7 +230,7 @@ def _misfit(misfits: list[tuple[int, int]], rows: list[list[str]], mark: str, na
     if len(misfits) > len(rows) / 2:
         do = "See whether the first line holds the names of the columns, with no title above; nothing was stored."
     return Refusal(
-        f"{quoted(name)} was not read: {len(misfits):,} of {len(rows):,} lines do not fit its own header, which names "
+        f"{quoted(name)} was not read: {len(misfits):,} of {len(rows):,} lines {fit} its own header, which names "
         f"{width} {'column' if width == 1 else 'columns'}: {', '.join(named)}{more}.",
         where=f"line {misfits[0][0]:,}",
         do=do,

@@ -58,6 +58,15 @@ def test_ragged_lines_are_named_as_an_editor_counts_them(ends):
     assert "line 4 has 3 cells, line 5 has 1 cell" in refused.value.message and refused.value.where == "line 4"
 
 
+@pytest.mark.parametrize(
+    ("right", "wrong", "says"),
+    [(8, 1, "1 of 10 lines does not fit"), (6, 6, "6 of 13 lines do not fit .* and 1 more line does not fit")],
+)
+def test_one_ragged_line_is_told_in_the_singular(right, wrong, says):
+    with pytest.raises(Refusal, match=says):
+        read(delimited([["a", "b"], *[["1", "2"]] * right, *[["1", "2", "3"]] * wrong]))
+
+
 def test_a_file_that_is_not_there_is_refused(tmp_path):
     with pytest.raises(Refusal, match=r"no file .*gone\.csv") as refused:
         read_frame(tmp_path / "gone.csv")
