@@ -86,7 +86,7 @@ class Model:
         wanted = self._outcomes() if watch is None else watch
         asked = question(self.network, pins, levers, wanted, beside, self.changeable)
         answer = ask(self._planner, self._records, asked, draws, seed, exact)
-        found, made = cautions(Case(self.network, self.order, self._records, asked, answer))
+        found, made = cautions(Case(self.network, self.order, self._records, asked, answer, self.unsettled))
         return replace(answer, cautions=found, checks_made=made)
 
     def strength(self, source: str, target: str) -> float:

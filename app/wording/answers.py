@@ -132,7 +132,7 @@ def _moved(question: Question, watch: str, wanted: tuple[str, ...], found: Estim
     what = subject(nodes[watch], wanted)
     start, end = found.change.ends
     from_to = say("from ", Part(start, "among" if question.pins else "recorded"), " to ", Part(end, "set"))
-    estimate = "By this estimate, as far as the model fills in, " if thin else "By this estimate, "
+    estimate = "By this estimate, most of it filled in by the model, " if thin else "By this estimate, "
     opening = say(estimate, _group(question, nodes), "setting ", _settings(question, nodes))
     moving = (" would move ", what, " ") if found.change.moves else (" may not move ", what, ": ")
     return _said(say(opening, *moving, from_to), f"{bracket(found.change)}.")

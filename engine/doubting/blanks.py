@@ -15,7 +15,7 @@ SHOWN = 3
 
 
 def check(case: Case) -> Found | None:
-    """Tell of blanks in the levers, in the columns in question, and in those on a directed path between them.
+    """Tell of blanks in the levers, the columns in question, those on a directed path between, and the levers' causes.
 
     Records that are alike but for a value nobody wrote down share a level, so that what runs through the column is
     seen only in part (missing data as a category: Greenland & Finkle 1995).
@@ -33,7 +33,7 @@ def check(case: Case) -> Found | None:
         shown.append(f"part of {len(told) - SHOWN} more")
     text = (
         f"of {named(shown)} {'are blank, and a blank' if others else 'is blank and'} is taken as a level of its own, "
-        "which can hide part of an influence that runs through it."
+        f"which can hide part of {'their' if others else 'its'} influence."
     )
     do = f"Say on the Records page what a blank means {'in each of them' if others else 'there'}."
     figures = {"share blank": held[first] / rows, "columns": len(told)}
@@ -42,9 +42,12 @@ def check(case: Case) -> Found | None:
 
 def _concerned(case: Case) -> tuple[str, ...]:
     watch = set(case.asked.watch)
+    if case.asked.working:  # what no lever moves is not what the question is about
+        watch &= case.network.descendants(case.levers)
     moved = case.network.descendants(case.levers)
     between = {column for column in moved if case.network.descendants([column]) & watch}
-    wanted = watch | between | case.levers.keys()
+    causes = {parent for lever in case.levers for parent in case.network.node(lever).parents}
+    wanted = watch | between | causes | case.levers.keys()
     return tuple(column for column in case.network.names if column in wanted)
 
 

@@ -24,7 +24,7 @@ MANY = 100  # records: among so many every whole per cent can occur, so that non
 class Case:
     """A question that was asked of a model, and its answer.
 
-    order and records are None for a network given as it is.
+    order and records are None for a network given as it is.  unsettled: links whose direction the support leaves open.
     """
 
     network: Network
@@ -32,6 +32,7 @@ class Case:
     records: Records | None
     asked: Question
     answer: Answer
+    unsettled: frozenset[tuple[str, str]] = frozenset()
 
     @cached_property
     def matching(self) -> np.ndarray:

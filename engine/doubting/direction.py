@@ -23,7 +23,7 @@ def check(case: Case) -> Found | None:
     if case.order is None or not levers or not watch:
         return None
     links = case.network.links
-    unsettled = unsettled_links(links, case.order.may_lead)
+    unsettled = case.unsettled | unsettled_links(links, case.order.may_lead)
     forward = _bearing([(target, source) for source, target in links], {link[::-1] for link in unsettled}, {*levers})
     watch = tuple(column for column in watch if column in forward)  # whatever is turned, no lever moves the others
     bearing = _bearing(links, unsettled, {*levers, *watch, *case.asked.pins})

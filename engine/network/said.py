@@ -59,7 +59,7 @@ def in_hundred(share: float) -> str:
 
 
 def these(node: Category, positions: Sequence[int]) -> Words:
-    """One or several levels of a column: nights or days; at least upper; 20 and over; anything but nights."""
+    """One or several levels of a column: nights or days; upper or above; 20 and over; anything but nights."""
     last = len(node.levels) - 1
     real = [place for place in positions if not (node.has_blank and place == last)]
     blank = [[name(node.levels[last])]] if len(real) < len(positions) else []
@@ -86,4 +86,4 @@ def _run(node: Category, real: Sequence[int], graded: int) -> Words | None:
         return (name(band_levels(ends)[1 if low else 0]),)
     if low and high < graded - 1:
         return (Said("from "), name(node.levels[low]), Said(" to "), name(node.levels[high]))
-    return (Said("at least " if low else "at most "), name(node.levels[low if low else high]))
+    return (name(node.levels[low if low else high]), Said(" or above" if low else " or below"))

@@ -251,7 +251,7 @@ def test_an_answer_that_the_model_mostly_fills_in_says_so(client, store):
     )
     study = keep_a_model(store, store.bring("Thin", frame, "thin.csv", Choices(), plan))
     page = client.get(f"/study/{study.key}/ask?{MENTOR}").text
-    assert sentence(page).startswith("By this estimate, as far as the model fills in, setting mentor to yes ")
+    assert sentence(page).startswith("By this estimate, most of it filled in by the model, setting mentor to yes ")
     assert "as far as" not in sentence(client.get(f"/study/{study.key}/ask?set=mentor.no").text)
 
 

@@ -209,6 +209,15 @@ def test_a_direction_is_not_told_of_a_column_that_no_lever_could_move():
     assert "direction" in [code for _, code in codes_of(twin.ask(levers={"x": engine.Fix("a")}, watch=["y"]))]
 
 
+def test_a_direction_with_little_support_is_told_although_no_equivalent_model_turns_it():
+    # x -> m <- z with m -> y: the meeting of two arrows settles every direction, as far as the graph goes.
+    model = settling([("x", "m"), ("z", "m"), ("m", "y")])
+    lever = {"x": engine.Fix("a")}
+    assert "direction" not in [code for _, code in codes_of(model.ask(levers=lever))]
+    doubtful = replace(model, unsettled=frozenset([("x", "m")]))
+    assert only(doubtful.ask(levers=lever), "direction").columns == ("x", "m")
+
+
 def test_an_order_that_settles_every_direction_leaves_nothing_to_tell():
     stages = [("1", ["z"]), ("2", ["x"]), ("3", ["m"]), ("4", ["y"])]
     model = settling([("x", "m"), ("m", "y")], stages)
@@ -315,8 +324,7 @@ def test_a_blank_in_what_the_question_runs_through_is_worth_knowing(where):
     caution = only(model.ask(levers={"mentor": engine.Fix("yes")}), "blanks")
     assert (caution.rank, caution.figure, caution.columns) == ("know", "4%", (where,))
     assert caution.text == (
-        f"of {where} is blank and is taken as a level of its own, which can hide part of an influence that runs "
-        "through it."
+        f"of {where} is blank and is taken as a level of its own, which can hide part of its influence."
     )
     assert caution.do == "Say on the Records page what a blank means there."
     twin = attending(0, where).ask(levers={"mentor": engine.Fix("yes")})
@@ -333,6 +341,20 @@ def test_a_blank_off_the_path_is_not_told():
     model = attending(16, "attends", "zz")
     assert "blanks" not in [code for _, code in codes_of(model.ask(watch=["passed"]))]
     assert "blanks" not in [code for _, code in codes_of(model.ask(levers={"mentor": engine.Fix("yes", 0.0)}))]
+
+
+def test_a_blank_in_a_cause_of_the_lever_is_told_and_in_what_no_lever_moves_is_not():
+    groups = [(100, {"need": need, "mentor": need, "passed": "yes", "other": "a"}) for need in ("no", "yes")]
+    groups += [(20, {"need": "zz", "mentor": "yes", "passed": "no", "other": "zz"})]
+    model = world(
+        repeated(*groups),
+        [("need", "mentor"), ("need", "passed"), ("mentor", "passed")],
+        [("Before", ["need", "other"]), ("Offer", ["mentor"]), ("After", ["passed"])],
+        {"passed": "yes", "other": "a"},
+        ["mentor"],
+        blanks=["need", "other"],
+    )
+    assert only(model.ask(levers={"mentor": engine.Fix("yes")}), "blanks").columns == ("need",)
 
 
 def test_blanks_of_several_columns_are_told_in_one_caution_the_largest_first():

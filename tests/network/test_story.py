@@ -87,7 +87,7 @@ def test_grades_are_told_by_the_threshold_that_parts_them_most_evenly():
     table = [[0.1, 0.2, 0.7], [0.8, 0.1, 0.1], [0.8, 0.1, 0.1]]
     grade = engine.Category("mark", ["low", "middle", "high"], ["shift"], table, kind="grade")
     assert model(SHIFT, grade).story("mark") == (
-        "comes from shift. It is at least middle for 90 in 100 where shift is days; "
+        "comes from shift. It is middle or above for 90 in 100 where shift is days; "
         "for 20 in 100 where shift is nights or mixed."
     )
 
@@ -96,7 +96,7 @@ def test_graded_parents_are_parted_at_a_threshold_and_never_by_odd_levels():
     four = engine.Category("level", ["a", "b", "c", "d"], [], [0.25] * 4, kind="grade")
     told = model(four, engine.Category("passed", NO_YES, ["level"], yes(0.2, 0.2, 0.6, 0.6))).story("passed")
     assert told == (
-        "comes from level. It is yes for 60 in 100 where level is at least c; for 20 in 100 where level is at most b."
+        "comes from level. It is yes for 60 in 100 where level is c or above; for 20 in 100 where level is b or below."
     )
     told = model(four, engine.Category("passed", NO_YES, ["level"], yes(0.2, 0.6, 0.6, 0.2))).story("passed")
     assert told == (

@@ -147,11 +147,12 @@ def test_a_blank_is_no_range():
 def test_where_most_are_thin_the_model_is_said_to_fill_in():
     figures = found(after=0.63, low=0.01, high=0.17)
     assert said(Question(NIGHTS, MENTOR), figures, thin=True).startswith(
-        "By this estimate, as far as the model fills in, among records with shift work = nights, setting mentor to yes "
-        "would move passed from 54% to 63%"
+        "By this estimate, most of it filled in by the model, among records with shift work = nights, "
+        "setting mentor to yes would move passed from 54% to 63%"
     )
     assert said(Question({}, MENTOR), found(after=0.55, low=-0.03, high=0.05), thin=True).startswith(
-        "By this estimate, as far as the model fills in, setting mentor to yes may not move passed: from 54% to 55%"
+        "By this estimate, most of it filled in by the model, setting mentor to yes "
+        "may not move passed: from 54% to 55%"
     )
 
 
