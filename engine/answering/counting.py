@@ -48,11 +48,18 @@ class Records:
         """Whether the number of matching records may be told: neither it nor what it leaves out is a small count.
 
         Of a column with a small level, a pin takes in all of the levels that are hidden with it, or none: the counts of
-        two questions, one of each kind of level, would otherwise leave the small one.
+        two questions, one of each kind of level, would otherwise leave the small one. That is looked at over all
+        records, and again among those that match the other pins.
         """
         if 0 < matching.size < SMALL_COUNT or 0 < self.rows - matching.size < SMALL_COUNT:
             return False
-        return matching.size == 0 or all(self._whole(column, wanted) for column, wanted in pins.items())
+        if matching.size == 0:
+            return True
+        for column, wanted in pins.items():
+            among = self._hidden_among(column, self.matching({name: pins[name] for name in pins if name != column}))
+            if not _whole(self._hidden[column], wanted) or not _whole(among, wanted):
+                return False
+        return True
 
     def counted(
         self, columns: Iterable[str], pins: Mapping[str, frozenset[int]], matching: np.ndarray
@@ -67,15 +74,11 @@ class Records:
     @cached_property
     def _hidden(self) -> dict[str, frozenset[int]]:
         """column -> positions of its levels whose counts over all records are hidden."""
-        return {
-            name: frozenset(hidden_levels(np.bincount(self.codes(name), minlength=len(self.levels(name))).tolist()))
-            for name in self.coded.names
-        }
+        return {name: self._hidden_among(name, np.arange(self.rows)) for name in self.coded.names}
 
-    def _whole(self, column: str, wanted: frozenset[int]) -> bool:
-        """Whether these levels hold all hidden levels of the column, or none."""
-        hidden = self._hidden[column]
-        return not hidden & wanted or hidden <= wanted
+    def _hidden_among(self, column: str, rows: np.ndarray) -> frozenset[int]:
+        counts = np.bincount(self.codes(column)[rows], minlength=len(self.levels(column)))
+        return frozenset(hidden_levels(counts.tolist()))
 
     def count(self, column: str, rows: np.ndarray) -> Counted:
         """What some of the records hold, whether or not it may be told."""
@@ -84,5 +87,10 @@ class Records:
         return Counted(
             int(rows.size),
             {level: int(count) for level, count in zip(levels, counts, strict=True)},
-            frozenset(levels[place] for place in self._hidden[column]),
+            frozenset(levels[place] for place in self._hidden[column] | frozenset(hidden_levels(counts.tolist()))),
         )
+
+
+def _whole(hidden: frozenset[int], wanted: frozenset[int]) -> bool:
+    """Whether these levels hold all hidden levels, or none."""
+    return not hidden & wanted or hidden <= wanted

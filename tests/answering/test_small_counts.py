@@ -40,6 +40,20 @@ def test_the_level_of_a_watched_column_is_counted_by_the_same_rule(towns):
     assert [count.tellable(levels) for levels in ("A", "B", "AC", "AB")] == [False, True, True, False]
 
 
+@pytest.mark.parametrize(
+    ("shifts", "told"), [(["mixed"], False), (["mixed", "nights"], True), (["days", "mixed"], False), (["days"], True)]
+)
+def test_a_level_that_is_small_among_the_other_pins_is_hidden_there_too(shifts, told):
+    rows = repeated(
+        (826, {"group": "yes", "shift": "days"}),
+        (185, {"group": "yes", "shift": "mixed"}),
+        (8, {"group": "yes", "shift": "nights"}),
+        *[(500, {"group": "no", "shift": shift}) for shift in ("days", "mixed", "nights")],
+    )
+    model = world(rows, [("shift", "group")], [("All", ["shift", "group"])])
+    assert model.ask({"group": "yes", "shift": set(shifts)}, watch=["group"]).matching_told == told
+
+
 def test_no_record_at_all_is_told():
     rows = repeated((20, {"a": "x", "b": "u"}), (20, {"a": "y", "b": "v"}), (5, {"a": "y", "b": "w"}))
     answer = world(rows, [("a", "b")], [("All", ["a", "b"])]).ask({"a": "x", "b": "v"}, watch=["a"])
