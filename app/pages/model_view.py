@@ -14,7 +14,7 @@ from app.drawing.curve import Point, figure_words
 from app.pages.model_accounts import Account, accounts
 from app.store import Study
 from app.wording.amounts import plural
-from app.wording.links import SETTLED, strength, support, wide_stages
+from app.wording.links import SETTLED, doubted, strength, support, wide_stages
 from engine.learning.layers import WIDEST_LAYERED
 from engine.model import Learned, Model
 
@@ -57,7 +57,7 @@ class ModelView:
     links: the budget shown.  recommended, best: the sizes that the held-out records point to; best None without them.
     fewer, more: addresses of the budgets beside it, None at an end.  picked: the column picked out, or None.
     unpicked: the address with nothing picked out.  program: the address of the model as a program.
-    wide: what to know of support where a stage holds many columns.
+    wide: what to know of support where a stage holds many columns.  doubted: of links with little, None without any.
     """
 
     links: int
@@ -75,6 +75,7 @@ class ModelView:
     arc_key: list[tuple[Markup, str]]
     rows: tuple[LinkRow, ...]
     wide: str | None
+    doubted: str | None
     accounts: tuple[Account, ...]
     addresses: dict[str, str]
     picked: str | None
@@ -137,6 +138,7 @@ def view(study: Study, learned: Learned, links: int | None = None, picked: str |
         arc_key=arcs.key(),
         rows=_rows(learned, model, settled, picked),
         wide=_wide(learned),
+        doubted=_doubted(learned, model),
         accounts=accounts(model, picked),
         addresses=addresses,
         picked=picked,
@@ -252,6 +254,11 @@ def _rows(
         )
         for source, target in ordered
     )
+
+
+def _doubted(learned: Learned, model: Model) -> str | None:
+    few = sum(learned.support_of(*link) < 0.5 for link in model.links if link not in learned.order.insist)
+    return doubted(few) if few else None
 
 
 def _wide(learned: Learned) -> str | None:

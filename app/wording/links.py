@@ -27,6 +27,16 @@ def wide_stages(stages: Sequence[str], widest: int, drawn: int, effective: float
     return said
 
 
+def doubted(links: int) -> str:
+    """What to know of the links of a model that have support under half: they predict, but may not be there."""
+    if links == 1:
+        return "1 of these links has support under 50%: it helps to predict, but most plausible models do without it."
+    return (
+        f"{count(links)} of these links have support under 50%: they help to predict, but most plausible models do "
+        "without them."
+    )
+
+
 def support(likely: float) -> str:
     """A posterior probability in per cent; what records say is never quite sure."""
     return share(min(max(likely, 1e-6), 1 - 1e-6))

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import pytest
 
-from app.wording.links import strength, support, wide_stages
+from app.wording.links import doubted, strength, support, wide_stages
 
 
 def test_strength_is_in_points() -> None:
@@ -27,3 +27,10 @@ def test_a_wide_stage_says_how_its_support_was_found_and_what_the_drawn_models_a
     )
     assert wide_stages(["Early", "Late"], 10, 0, 0.0).startswith("In the stages Early and Late, of more than ten")
     assert "drawn" not in wide_stages(["Early"], 10, 0, 0.0)
+
+
+def test_links_that_most_models_do_without_are_told():
+    assert doubted(1) == (
+        "1 of these links has support under 50%: it helps to predict, but most plausible models do without it."
+    )
+    assert doubted(3).startswith("3 of these links have support under 50%: they help to predict")
