@@ -7,41 +7,20 @@ All terms are positive; they are kept as logs because scores differ by thousands
 
 from __future__ import annotations
 
-from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
 
-from engine.learning.lattice import subset_totals
 from engine.learning.scores import Floats, Ints
+from engine.learning.stage_weights import StageWeights
 
 WIDEST_LAYERED = 10  # columns in a stage that this sum can take: 4 to the power of its columns
 
 
 @dataclass(frozen=True, eq=False)
-class Layers:
-    """Graphs of a stage of `width` columns.
-
-    weights: (width, 2^width) natural log of the summed scores of a column's families with these parents in the stage,
-    -inf where not allowed. Sets are bits.  still is called often; raising inside it cancels.
-    """
-
-    weights: Floats
-    still: Callable[[], None] = lambda: None
-
-    @property
-    def width(self) -> int:
-        return int(self.weights.shape[0])
-
-    @property
-    def everything(self) -> int:
-        return (1 << self.width) - 1
-
-    @cached_property
-    def totals(self) -> Floats:
-        """(width, sets) natural log of the sum over all parent sets within a set."""
-        return subset_totals(self.weights, self.still)
+class Layers(StageWeights):
+    """Graphs of a stage."""
 
     @cached_property
     def forward(self) -> Floats:
@@ -98,15 +77,11 @@ class Layers:
                 step += self._gain(column, before, last)
             under = int(last[pick(step, rng)])
             for column in columns:
-                sets = self._families[column]
+                sets = self.families[column]
                 fits = sets[((sets & ~before) == 0) & ((sets & under) != 0)]
                 chosen[column] = int(fits[pick(self.weights[column, fits], rng)])
             done, layer = before, under
         return tuple(chosen)
-
-    @cached_property
-    def _families(self) -> tuple[Ints, ...]:
-        return tuple(np.flatnonzero(np.isfinite(row)) for row in self.weights)
 
     def _by_size(self) -> list[int]:
         """Every set but the empty and the full one, small ones first."""
@@ -133,7 +108,7 @@ class Layers:
         if not kept.any():
             return
         last, share = last[kept], np.log(joins[kept]) - self._gain(column, done, last[kept])
-        sets = self._families[column]
+        sets = self.families[column]
         within = sets[(sets & ~done) == 0]
         touch = (within[:, None] & last[None, :]) != 0
         terms = np.where(touch, self.weights[column, within][:, None] + share[None, :], -np.inf)

@@ -6,39 +6,21 @@ orders counts that often; draws are put right by 1 / (its number of linear exten
 
 from __future__ import annotations
 
-from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cached_property
 from math import comb
 
 import numpy as np
 
-from engine.learning.lattice import subset_totals, superset_shares
+from engine.learning.lattice import superset_shares
 from engine.learning.layers import log_sum_of, pick
 from engine.learning.scores import Floats, Ints
+from engine.learning.stage_weights import StageWeights
 
 
 @dataclass(frozen=True, eq=False)
-class Sinks:
-    """Orders and graphs of a stage of `width` columns; `weights` as in engine.learning.layers.Layers.
-
-    still is called often; raising inside it cancels.
-    """
-
-    weights: Floats
-    still: Callable[[], None] = lambda: None
-
-    @property
-    def width(self) -> int:
-        return int(self.weights.shape[0])
-
-    @property
-    def everything(self) -> int:
-        return (1 << self.width) - 1
-
-    @cached_property
-    def totals(self) -> Floats:
-        return subset_totals(self.weights, self.still)
+class Sinks(StageWeights):
+    """Orders and graphs of a stage."""
 
     @cached_property
     def forward(self) -> Floats:
@@ -94,14 +76,10 @@ class Sinks:
             logs = [self.forward[left ^ (1 << c)] + self.totals[c, left ^ (1 << c)] for c in columns]
             column = columns[pick(np.asarray(logs), rng)]
             left ^= 1 << column
-            sets = self._families[column]
+            sets = self.families[column]
             fits = sets[(sets & ~left) == 0]
             chosen[column] = int(fits[pick(self.weights[column, fits], rng)])
         return tuple(chosen)
-
-    @cached_property
-    def _families(self) -> tuple[Ints, ...]:
-        return tuple(np.flatnonzero(np.isfinite(row)) for row in self.weights)
 
     def _layers(self) -> list[Ints]:
         sets = np.arange(1 << self.width, dtype=np.int64)

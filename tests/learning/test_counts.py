@@ -52,7 +52,7 @@ def grouped(codes, fold, folds, chosen):
     return sorted(tuple(int(count) for count in row) for row in seen.to_numpy())
 
 
-@settings(max_examples=25, deadline=None)
+@settings(max_examples=14, deadline=None)
 @given(
     st.integers(0, 2**32 - 1),
     st.integers(30, 90),
