@@ -6,7 +6,7 @@ from collections.abc import Iterable
 
 from markupsafe import Markup, escape
 
-INK, QUIET, LINE, FAR, RULE, PAPER, TINT = "#1B1E22", "#50555C", "#6B7077", "#8A8F96", "#D3CFC4", "#FBFAF6", "#F3F1EA"
+INK, LINE, FAR, RULE, PAPER, TINT = "#1B1E22", "#6B7077", "#8A8F96", "#D3CFC4", "#FBFAF6", "#F3F1EA"
 
 
 def tag(name: str, *children: object, **attributes: object) -> Markup:

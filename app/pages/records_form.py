@@ -6,12 +6,12 @@ import math
 import re
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
-from itertools import pairwise
 from typing import TypeVar
 
 from app.pages.records_view import KINDS, Typed, grade_levels, saved
 from app.store import Choices, Plan, Study
 from engine.order import Better, Direction
+from engine.records.bands import checked_cuts
 from engine.records.table import Column
 from engine.refusal import Refusal
 
@@ -82,14 +82,7 @@ def read_cuts(text: str, name: str) -> tuple[float, ...]:
                 do="Type the cuts as numbers with commas between them, such as 20, 45.",
             )
         cuts.append(cut)
-    for before, after in pairwise(cuts):
-        if after <= before:
-            raise Refusal(
-                f"The cuts of “{name}” do not rise: {after:g} comes after {before:g}.",
-                where=name,
-                do="Type each cut once, the smallest first.",
-            )
-    return tuple(cuts)
+    return checked_cuts(name, cuts)
 
 
 def read_grades(text: str, column: Column) -> tuple[str, ...]:

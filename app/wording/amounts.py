@@ -4,6 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
+from engine.records import wording as in_words
+from engine.records.wording import people as people  # pages write counts as the records' own sentences do
+
 WORDS = ("no", "one", "two", "three", "four", "five", "six", "seven", "eight", "nine", "ten")
 
 
@@ -15,11 +18,6 @@ def count(number: int) -> str:
 def small_word(number: int) -> str:
     """Up to ten in words, above in figures."""
     return WORDS[number] if 0 <= number < len(WORDS) else count(number)
-
-
-def people(number: int, small: int) -> str:
-    """A count of records; under the small-count limit only "under 10" is said."""
-    return count(number) if number == 0 or number >= small else f"under {small}"
 
 
 def plural(number: int, word: str, words: str | None = None) -> str:
@@ -40,11 +38,7 @@ def share(part: float) -> str:
 
 def listing(names: Sequence[str], most: int | None = None) -> str:
     """a, b and c; after `most` names "and 3 more"."""
-    if most is not None and len(names) > most:
-        return f"{', '.join(names[:most])} and {len(names) - most} more"
-    if len(names) < 2:
-        return "".join(names)
-    return f"{', '.join(names[:-1])} and {names[-1]}"
+    return in_words.listing(names, most)
 
 
 def number(value: float) -> str:

@@ -14,6 +14,7 @@ from engine.answering.question import Question, Setting
 from engine.network.network import Network
 from engine.order import Order
 from engine.records.table import SMALL_COUNT
+from engine.records.wording import listing
 
 Found = tuple[Caution, ...]
 Check = Callable[["Case"], Found | None]  # None: this check cannot be made of this question
@@ -88,8 +89,7 @@ def out_of(part: int, whole: int) -> str:
 
 def named(names: Iterable[str], joint: str = "and") -> str:
     """Names in a sentence: "a", "a and b", "a, b and c"."""
-    every = list(names)
-    return every[0] if len(every) == 1 else f"{', '.join(every[:-1])} {joint} {every[-1]}"
+    return listing(list(names), None, joint)
 
 
 def per_cent(share: float) -> str:

@@ -33,11 +33,11 @@ def people(count: int, small: int) -> str:
     return f"{count:,}" if count == 0 or count >= small else f"under {small}"
 
 
-def listing(names: Sequence[str], most: int = 4) -> str:
-    """a, b and c; after `most` names "and 3 more"."""
-    if len(names) > most:
+def listing(names: Sequence[str], most: int | None = 4, joint: str = "and") -> str:
+    """a, b and c; after `most` names "and 3 more". most: None for every name.  joint: the word before the last."""
+    if most is not None and len(names) > most:
         return f"{', '.join(names[:most])} and {len(names) - most:,} more"
-    return "".join(names) if len(names) < 2 else f"{', '.join(names[:-1])} and {names[-1]}"
+    return "".join(names) if len(names) < 2 else f"{', '.join(names[:-1])} {joint} {names[-1]}"
 
 
 def cited(text: str) -> str:
