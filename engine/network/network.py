@@ -3,57 +3,20 @@
 from __future__ import annotations
 
 import zlib
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable
 from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
 
+from engine.network.nodes import Category
 from engine.refusal import Refusal, quoted
+
+__all__ = ["Category", "Network", "drawn_table", "network"]
 
 ROUNDING = 1e-8  # how far a row of a table may be from 1: tables are often written with nine or more digits
 SMALLEST = 1e-300  # a drawn share that rounds to 0 although its cell is possible is taken as this
 AT_ONCE = 1_000_000  # cells times draws that are drawn at once; a larger table is drawn in parts
-
-
-@dataclass(frozen=True, eq=False)
-class Category:
-    """A category (or grade, or a number taken as bands) with a table per configuration of its parents.
-
-    table: float64, one axis per parent in order, own levels last; each row sums to 1.
-    dirichlet: posterior Dirichlet parameters, same shape as `table`; None when the table is known exactly.
-    kind, cuts, has_blank: as in engine.records.Column (a number here acts through its bands).
-    Raises Refusal when the table is not an array of numbers.
-    """
-
-    name: str
-    levels: tuple[str, ...]
-    parents: tuple[str, ...] = ()
-    table: np.ndarray | Sequence[object] = ()
-    dirichlet: np.ndarray | None = None
-    kind: str = "category"
-    cuts: tuple[float, ...] = ()
-    has_blank: bool = False
-
-    def __post_init__(self) -> None:
-        for what, given in (("levels", self.levels), ("parents", self.parents)):
-            if isinstance(given, str):
-                raise Refusal(
-                    f"The {what} of {quoted(self.name)} are one text, not a list.",
-                    where=self.name,
-                    do=f"Write [{given!r}].",
-                )
-        object.__setattr__(self, "levels", tuple(self.levels))
-        object.__setattr__(self, "parents", tuple(self.parents))
-        try:
-            table = np.asarray(self.table, dtype=np.float64)
-        except (TypeError, ValueError):
-            raise Refusal(
-                f"The table of {quoted(self.name)} is not a regular table of numbers.",
-                where=self.name,
-                do="Give one axis per parent in order, and the column's own levels last.",
-            ) from None
-        object.__setattr__(self, "table", table)
 
 
 @dataclass(frozen=True, eq=False)

@@ -50,6 +50,8 @@ class Coded:
     codes: (rows, columns) int32, Fortran order.  weights: (rows,) float64.
     kinds, levels, cuts: one entry per column, as in `Column`.
     has_blank: whether the last level of the column is its blank.
+    numbers: positions of the columns learned as numbers, ascending; the codes of these are their bands.
+    values: (rows, numbers) float64 in their own units, finite.
     """
 
     names: tuple[str, ...]
@@ -59,3 +61,5 @@ class Coded:
     has_blank: tuple[bool, ...]
     codes: np.ndarray
     weights: np.ndarray
+    numbers: tuple[int, ...] = ()
+    values: np.ndarray = field(default_factory=lambda: np.empty((0, 0)))
