@@ -47,11 +47,12 @@ class Column:
 class Coded:
     """The columns that a model is learned from, as level positions: all that learning and counting need.
 
-    codes: (rows, columns) int32, Fortran order.  weights: (rows,) float64.
+    codes: (rows, columns) int32, Fortran order.  weights: (rows,) float64, what each record counts for in learning.
     kinds, levels, cuts: one entry per column, as in `Column`.
     has_blank: whether the last level of the column is its blank.
     numbers: positions of the columns learned as numbers, ascending; the codes of these are their bands.
     values: (rows, numbers) float64 in their own units, finite.
+    group: (rows,) int32, which rows belong together; None when each record is a case by itself.
     """
 
     names: tuple[str, ...]
@@ -63,3 +64,4 @@ class Coded:
     weights: np.ndarray
     numbers: tuple[int, ...] = ()
     values: np.ndarray = field(default_factory=lambda: np.empty((0, 0)))
+    group: np.ndarray | None = None
