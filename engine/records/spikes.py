@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from itertools import combinations
 from math import prod
 
@@ -23,32 +23,33 @@ EXACT = 1e-6  # of the standard deviation: what rounding to float leaves of an e
 Floats = NDArray[np.float64]
 
 
-def taken_as_bands(columns: Sequence[Column], size: int) -> dict[str, str]:
+def taken_as_bands(columns: Sequence[Column], size: int, still: Callable[[], None] = lambda: None) -> dict[str, str]:
     """The numbers among `columns` that are learned from as bands, and why, in a sentence each.
 
     A density has no limit where a number does not vary: such a number would outweigh everything else. So bands are
     taken for one with SPIKE of its records or more in one value, and for one that holds a single value throughout
     a configuration of CONSTANT records or more of up to `size` categories (bands included); and for one with blanks
-    that are a level of their own, since no number stands for a blank.
+    that are a level of their own, since no number stands for a blank.  still: called often, a chance to cancel.
     """
     found: dict[str, str] = {}
     for column in columns:
+        still()
         why = _own_reason(column) if column.kind == "number" else None
         if why is not None:
             found[column.name] = why
     fresh = {column.name for column in columns if column.kind != "number" or column.name in found}
     while fresh:
-        constant = _constant_inside(columns, set(found), fresh, size)
+        constant = _constant_inside(columns, set(found), fresh, size, still)
         found.update(constant)
         fresh = set(constant)
     return {column.name: found[column.name] for column in columns if column.name in found}
 
 
-def refuse_collinear(columns: Sequence[Column], size: int) -> None:
+def refuse_collinear(columns: Sequence[Column], size: int, still: Callable[[], None] = lambda: None) -> None:
     """Raises Refusal naming numbers of which one follows from the others in every record, up to rounding.
 
     columns: all are taken as numbers.  size: columns in the largest set that is scored; a sum of more columns than
-    that is never scored as a whole and does no harm.
+    that is never scored as a whole and does no harm.  still: called often, a chance to cancel.
     """
     held = [column for column in columns if column.kind == "number" and column.values is not None]
     if not held:
@@ -60,6 +61,7 @@ def refuse_collinear(columns: Sequence[Column], size: int) -> None:
     alike = numbers.values.T @ numbers.values / len(values)
     basis: list[int] = []
     for place in range(len(held)):
+        still()
         sources = _sources(numbers, alike, place, basis, size - 1)
         if sources is None:
             basis.append(place)
@@ -77,7 +79,7 @@ def _own_reason(column: Column) -> str | None:
     values = np.asarray(column.values)
     blank = np.isnan(values)
     name = quoted(column.name)
-    if blank.any():
+    if blank.any() or column.has_blank:
         return f"{name} is taken as bands: a blank is a level of its own here, which only bands can have."
     distinct, counts = np.unique(values, return_counts=True)
     common = int(counts.argmax())
@@ -91,29 +93,32 @@ def _most_alike(column: Column) -> int:
     return int(np.unique(np.asarray(column.values), return_counts=True)[1].max())
 
 
-def _constant_inside(columns: Sequence[Column], bands: set[str], fresh: set[str], size: int) -> dict[str, str]:
+def _constant_inside(
+    columns: Sequence[Column], bands: set[str], fresh: set[str], size: int, still: Callable[[], None]
+) -> dict[str, str]:
     """Numbers that are constant in a configuration of categories of which at least one is `fresh`."""
     categories = [column for column in columns if column.kind != "number" or column.name in bands]
-    still = [column for column in columns if column.kind == "number" and column.name not in bands]
-    still = [column for column in still if _most_alike(column) >= CONSTANT]
+    left = [column for column in columns if column.kind == "number" and column.name not in bands]
+    left = [column for column in left if _most_alike(column) >= CONSTANT]
     found: dict[str, str] = {}
     rows = np.arange(columns[0].codes.size)
     some = np.random.default_rng(0).permutation(rows)[:PROBED]
     probes = (rows, some, some[::-1], some[::3])
     for count in range(1, size + 1):
         for chosen in combinations(categories, count):
-            if not still:
+            if not left:
                 return found
             if not fresh.intersection(column.name for column in chosen):
                 continue
             joint = prod(len(column.levels) for column in chosen)
             if joint > LARGEST:
                 continue
+            still()
             code = np.zeros(chosen[0].codes.size, dtype=np.int64)
             for column in chosen:
                 code = code * len(column.levels) + column.codes
-            found.update(_constant_in(code, joint, chosen, still, probes))
-            still = [column for column in still if column.name not in found]
+            found.update(_constant_in(code, joint, chosen, left, probes))
+            left = [column for column in left if column.name not in found]
     return found
 
 

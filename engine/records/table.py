@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import hashlib
 import json
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -112,9 +112,16 @@ class Table:
         positions = level_positions(made.levels, made.kind, made.cuts, wanted, column)
         return np.isin(made.codes, list(positions))
 
-    def coded(self, names: Sequence[str]) -> Coded:
-        """Those columns as level positions. Raises Refusal for an unknown column and one that is left out."""
+    def coded(self, names: Sequence[str], numbers: Collection[str] = ()) -> Coded:
+        """Those columns as level positions, and the values of those in `numbers`, which no record leaves blank.
+
+        Raises Refusal for an unknown column and one that is left out.
+        """
         made = [self._used(name) for name in names]
+        held = [place for place, name in enumerate(names) if name in numbers]
+        values = np.empty((self.rows, len(held)), order="F")
+        for at, place in enumerate(held):
+            values[:, at] = made[place].values
         codes = np.empty((self.rows, len(made)), dtype=np.int32, order="F")
         for place, column in enumerate(made):
             codes[:, place] = column.codes
@@ -126,6 +133,8 @@ class Table:
             has_blank=tuple(column.has_blank for column in made),
             codes=codes,
             weights=self.weights,
+            numbers=tuple(held),
+            values=values,
         )
 
     def _used(self, name: str) -> Column:
