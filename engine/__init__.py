@@ -6,7 +6,7 @@ These names are the way in for scripts, tests and the app.
 from engine.answering.answer import Answer, Caution, Counted, Marginal, Reading
 from engine.answering.levers import Fix
 from engine.model import Learned, Model, learn, open_learned
-from engine.network.network import Category
+from engine.network.nodes import Category, Number
 from engine.order import LESS, MORE, Order, Stage
 from engine.records.reading import read_frame, read_table
 from engine.records.table import Table
@@ -23,6 +23,7 @@ __all__ = [
     "Learned",
     "Marginal",
     "Model",
+    "Number",
     "Order",
     "Reading",
     "Refusal",

@@ -15,7 +15,7 @@ from app.wording.estimates import Estimate, level_estimates
 from app.wording.figures import column_figure, matching_of
 from app.wording.questions import reach_words
 from app.wording.values import either
-from engine.network.network import Category
+from engine.network.nodes import Node
 from engine.order import Direction
 from engine.records.table import SMALL_COUNT
 
@@ -127,7 +127,7 @@ def _rows(asked: Asked, address: Address, column: str, shown: Sequence[str]) -> 
 def _row(
     asked: Asked,
     address: Address,
-    node: Category,
+    node: Node,
     level: str,
     recorded: float,
     among: Estimate | None,

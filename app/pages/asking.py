@@ -16,7 +16,7 @@ from engine.answering.answer import Answer
 from engine.answering.levers import Fix
 from engine.model import Model
 from engine.network.equivalence import unsettled_links
-from engine.network.network import Category
+from engine.network.nodes import Node
 from engine.order import Order
 from engine.refusal import Refusal
 
@@ -31,7 +31,7 @@ class Spine:
         assert model.order is not None
         self.model = model
         self.order: Order = model.order
-        self.nodes: Mapping[str, Category] = {node.name: node for node in model.network.nodes}
+        self.nodes: Mapping[str, Node] = {node.name: node for node in model.network.nodes}
         self.stages = tuple((stage.name, stage.columns) for stage in self.order.stages if stage.columns)
         self.columns = tuple(column for _, columns in self.stages for column in columns)
         self.names = Names([(column, self.nodes[column].levels) for column in self.columns])

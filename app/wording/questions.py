@@ -7,9 +7,9 @@ from collections.abc import Mapping
 from app.question import Lever, Question, per_cent
 from app.wording.parts import Clause, Part, name, say, series
 from app.wording.values import Words, subject, value
-from engine.network.network import Category
+from engine.network.nodes import Node
 
-Nodes = Mapping[str, Category]
+Nodes = Mapping[str, Node]
 
 
 def question_sentence(question: Question, watch: str, wanted: tuple[str, ...], nodes: Nodes) -> Words:

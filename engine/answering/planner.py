@@ -185,18 +185,21 @@ class Planner:
 
     def _cells_drawn(self, families: Iterable[int], count: int) -> float:
         """Cells times draws of the tables of these families that are uncertain."""
-        nodes = [self.network.nodes[family] for family in families]
+        nodes = [self._category(family) for family in families]
         return float(sum(node.dirichlet.size for node in nodes if node.dirichlet is not None) * count)
 
     def _tables(self, here: World, count: int, seed: int) -> dict[int, np.ndarray]:
         """The tables that a world needs, by family; another question finds them kept."""
         found = {}
         for family in here.families:
-            node = self.network.nodes[family]
+            node = self._category(family)
             make = partial(drawn_table, node, count, seed)
             uncertain = node.dirichlet is not None and count > 0
             found[family] = _DRAWN.get((node, count, seed), make) if uncertain else make()
         return found
+
+    def _category(self, family: int) -> Category:
+        return self.network.category(self.network.names[family])
 
     def _planned(
         self, pins: Mapping[str, frozenset[int]], levers: Mapping[str, Setting], columns: Iterable[str]

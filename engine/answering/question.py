@@ -3,45 +3,53 @@
 from __future__ import annotations
 
 from collections.abc import Collection, Iterable, Mapping
-from dataclasses import dataclass
-from numbers import Real
+from dataclasses import dataclass, field
 
-from engine.answering.levers import Fix
-from engine.network.network import Category, Network
-from engine.records.bands import level_positions
+from engine.answering.levers import Lever
+from engine.answering.naming import known, listed
+from engine.answering.pins import Pins, checked_pins
+from engine.answering.settings import AnySetting, Setting, checked_setting, refuse_circles
+from engine.network.network import Network
 from engine.refusal import Refusal, quoted
 
-SHOWN = 12  # levels or columns named in a refusal; more are counted
-
-
-@dataclass(frozen=True)
-class Setting:
-    """A lever as places: the level's position, the probability that it takes, and the level's name."""
-
-    position: int
-    reach: float
-    level: str
+__all__ = ["Pins", "Question", "Setting", "listed", "question"]
 
 
 @dataclass(frozen=True)
 class Question:
     """What is asked of a network.
 
-    pins: column -> positions of the levels it is pinned to, before any lever.  levers: column -> Setting.
+    pins, values, ranges: as in `Pins`, what is seen before any lever.  levers: column -> its setting.
     watch: columns the question is about.  beside: further columns to read.
+    against: the levers of a second world to compare with, None without one.
+    after: pins on what is seen after the levers, in the worlds where something is set.
     """
 
     pins: Mapping[str, frozenset[int]]
-    levers: Mapping[str, Setting]
+    levers: Mapping[str, AnySetting]
     watch: tuple[str, ...]
     beside: tuple[str, ...] = ()
+    values: Mapping[str, float] = field(default_factory=dict)
+    ranges: Mapping[str, tuple[float, float]] = field(default_factory=dict)
+    against: Mapping[str, AnySetting] | None = None
+    after: Pins = field(default_factory=Pins)
 
     @property
     def columns(self) -> tuple[str, ...]:
         return tuple(dict.fromkeys((*self.watch, *self.beside)))
 
     @property
-    def working(self) -> dict[str, Setting]:
+    def before(self) -> Pins:
+        """All that is seen before any lever."""
+        return Pins(self.pins, self.values, self.ranges)
+
+    @property
+    def pinned(self) -> tuple[str, ...]:
+        """Columns seen before any lever."""
+        return (*self.pins, *self.values, *self.ranges)
+
+    @property
+    def working(self) -> dict[str, AnySetting]:
         """The levers that reach anyone."""
         return {column: setting for column, setting in self.levers.items() if setting.reach > 0.0}
 
@@ -49,122 +57,80 @@ class Question:
 def question(
     network: Network,
     pins: Mapping[str, object] | None,
-    levers: Mapping[str, Fix] | None,
+    levers: Mapping[str, Lever] | None,
     watch: Iterable[str],
     beside: Iterable[str] = (),
     changeable: Collection[str] | None = None,
+    against: Mapping[str, Lever] | None = None,
+    pins_after: Mapping[str, object] | None = None,
 ) -> Question:
     """Check a question against `network`. changeable: columns that may get a lever; None: every column.
 
-    Raises Refusal for an unknown column or level, an empty pin, a range that does not match the bands, a lever that
-    is not changeable or whose reach lies outside 0 to 1, a pin downstream of a lever, nothing to watch.
+    Raises Refusal for an unknown column or level, what is no pin or no lever, a lever that is not changeable, rules in
+    a circle, a pin downstream of a lever, one for after the levers that no lever moves, nothing to watch.
     """
-    for what, given in (("pins", pins), ("levers", levers)):
+    example = 'Write {"region": "north"}.'
+    for what, given in (("pins", pins), ("levers", levers), ("levers against", against), ("pins after", pins_after)):
         if given is not None and not isinstance(given, Mapping):
-            raise Refusal(
-                f"The {what} of a question are a dictionary, column to value.", do='Write {"region": "north"}.'
-            )
+            raise Refusal(f"The {what} of a question are a dictionary, column to value.", do=example)
     for what, names in (("watch", watch), ("beside", beside)):
         if isinstance(names, str):
             raise Refusal(f"The columns to {what} are one text, not a list.", where=what, do=f"Write [{names!r}].")
-    found_pins = {column: _pin(network, column, wanted) for column, wanted in (pins or {}).items()}
-    found_levers = {column: _lever(network, column, lever, changeable) for column, lever in (levers or {}).items()}
+    before = checked_pins(network, pins)
     found = Question(
-        pins=found_pins,
-        levers=found_levers,
-        watch=tuple(_known(network, column).name for column in dict.fromkeys(watch)),
-        beside=tuple(_known(network, column).name for column in dict.fromkeys(beside)),
+        pins=before.positions,
+        levers=_settings(network, levers, changeable),
+        watch=tuple(known(network, column).name for column in dict.fromkeys(watch)),
+        beside=tuple(known(network, column).name for column in dict.fromkeys(beside)),
+        values=before.values,
+        ranges=before.ranges,
+        against=_settings(network, against, changeable) if against else None,
+        after=checked_pins(network, pins_after),
     )
     if not found.columns:
         raise Refusal("The question watches no column.", do="Name at least one column to watch.")
+    if found.against is not None and not found.levers:
+        raise Refusal("There is nothing to hold against: no lever is set.", where="against", do="Set a lever first.")
     _before_the_levers(network, found)
+    _after_the_levers(network, found)
     return found
 
 
-def _known(network: Network, column: object) -> Category:
-    if not isinstance(column, str) or column not in network.index:
-        raise Refusal(
-            f"There is no column {quoted(column)} in this model.",
-            where=str(column),
-            do=f"Its columns are {listed(network.names)}.",
-        )
-    return network.node(column)
-
-
-def _pin(network: Network, column: str, wanted: object) -> frozenset[int]:
-    node = _known(network, column)
-    if isinstance(wanted, str):
-        return frozenset([_position(node, wanted)])
-    several = list(wanted) if isinstance(wanted, Iterable) else [wanted]
-    levels = [level for level in several if isinstance(level, str)]
-    if len(levels) == len(several):
-        found = frozenset(_position(node, level) for level in levels)
-    else:
-        try:
-            found = level_positions(node.levels, node.kind, node.cuts, wanted)
-        except Refusal as refused:
-            raise Refusal(f"{quoted(column)}: {refused.message}", where=column, do=refused.do) from None
-        except (TypeError, ValueError):
-            raise Refusal(
-                f"{quoted(column)} cannot be {quoted(wanted)}.",
-                where=column,
-                do=f"Its levels are {listed(node.levels)}.",
-            ) from None
-    if not found:
-        raise Refusal(
-            f"{quoted(column)} is pinned to no level at all.", where=column, do=f"Name one of {listed(node.levels)}."
-        )
+def _settings(
+    network: Network, levers: Mapping[str, Lever] | None, changeable: Collection[str] | None
+) -> dict[str, AnySetting]:
+    found = {column: checked_setting(network, column, lever, changeable) for column, lever in (levers or {}).items()}
+    refuse_circles(network, found)
     return found
-
-
-def _position(node: Category, level: str) -> int:
-    if level not in node.levels:
-        raise Refusal(
-            f"{quoted(node.name)} has no level {quoted(level)}.",
-            where=node.name,
-            do=f"Its levels are {listed(node.levels)}.",
-        )
-    return node.levels.index(level)
-
-
-def _lever(network: Network, column: str, lever: object, changeable: Collection[str] | None) -> Setting:
-    node = _known(network, column)
-    if changeable is not None and column not in changeable:
-        do = f"Set one of these: {listed(tuple(changeable))}." if changeable else "Mark it as changeable in the order."
-        raise Refusal(f"{quoted(column)} is not marked as changeable, so it cannot be set.", where=column, do=do)
-    if not isinstance(lever, Fix):
-        raise Refusal(
-            f"{quoted(column)} is set by something that is no lever.", where=column, do='Write engine.Fix("a level").'
-        )
-    if isinstance(lever.reach, bool) or not isinstance(lever.reach, Real) or not 0.0 <= lever.reach <= 1.0:
-        raise Refusal(
-            f"The reach of {quoted(column)} is {lever.reach}, which is no probability.",
-            where=column,
-            do="Give a reach from 0 to 1.",
-        )
-    positions = _pin(network, column, lever.value)
-    if len(positions) != 1:
-        raise Refusal(
-            f"{quoted(column)} can be set to one level only.", where=column, do=f"Name one of {listed(node.levels)}."
-        )
-    (position,) = positions
-    return Setting(position, float(lever.reach), node.levels[position])
 
 
 def _before_the_levers(network: Network, asked: Question) -> None:
     """Pins describe the case before any lever: refuse one that a lever would move."""
-    for column in asked.pins:
-        for lever in asked.levers:
-            if column in network.descendants([lever]):
+    moved = {lever: network.descendants([lever]) for lever in (*asked.levers, *(asked.against or ()))}
+    for column in asked.pinned:
+        for lever, below in moved.items():
+            if column in below:
                 raise Refusal(
                     f"{quoted(column)} follows {quoted(lever)}, which you set, so pinning it would mix two worlds.",
                     where=column,
-                    do=f"Take out the pin on {quoted(column)}, or do not set {quoted(lever)}.",
+                    do=f"Take out the pin on {quoted(column)}, or do not set {quoted(lever)}. To ask about those who "
+                    "would show it after the lever, give it in pins_after.",
                 )
 
 
-def listed(names: Iterable[str]) -> str:
-    """Names in a row for a sentence: the first dozen, the others counted."""
-    every = list(names)
-    shown = ", ".join(every[:SHOWN])
-    return shown if len(every) <= SHOWN else f"{shown} and {len(every) - SHOWN} more"
+def _after_the_levers(network: Network, asked: Question) -> None:
+    """Pins for after the levers are on what a lever sets or moves; others hold before it as well."""
+    if not asked.after.columns:
+        return
+    if not asked.levers:
+        raise Refusal(
+            "There is no lever for a pin to come after.", where="pins_after", do="Set a lever, or give it in pins."
+        )
+    moved = network.descendants(asked.levers) | asked.levers.keys()
+    for column in asked.after.columns:
+        if column not in moved:
+            raise Refusal(
+                f"No lever moves {quoted(column)}, so it is the same before and after.",
+                where=column,
+                do="Give it in pins instead.",
+            )

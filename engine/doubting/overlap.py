@@ -10,7 +10,7 @@ from engine.answering.answer import Caution
 from engine.answering.counting import Records
 from engine.answering.question import Setting
 from engine.doubting.case import Case, Found, named
-from engine.network.network import Category
+from engine.network.nodes import Node
 from engine.records.table import SMALL_COUNT
 
 WEAKENS_FROM = 0.05  # share of the pinned records in thin strata; below one in twenty it cannot move the answer far
@@ -52,7 +52,7 @@ def _combined(case: Case, records: Records) -> list[Caution]:
     return worst
 
 
-def _as_set(case: Case, records: Records, node: Category, moved: frozenset[str]) -> list[Caution]:
+def _as_set(case: Case, records: Records, node: Node, moved: frozenset[str]) -> list[Caution]:
     """Parents that a lever moves without setting them are not compared: they would not stay as they were recorded."""
     values = {parent: case.levers[parent] for parent in node.parents if parent in case.levers}
     others = tuple(parent for parent in node.parents if parent not in values and parent not in moved)

@@ -1,29 +1,27 @@
-"""A network as a value: nodes in an order that puts parents first, their tables, and draws of those tables."""
+"""A network as a value: nodes in an order that puts parents first, and draws of their parameters."""
 
 from __future__ import annotations
 
-import zlib
 from collections.abc import Iterable
 from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
 
-from engine.network.nodes import Category
+from engine.network.drawn import drawn, drawn_table
+from engine.network.family import category_parents, check_family, number_parents
+from engine.network.nodes import Category, Node, Number
+from engine.network.regression import Coefficients
 from engine.refusal import Refusal, quoted
 
-__all__ = ["Category", "Network", "drawn_table", "network"]
-
-ROUNDING = 1e-8  # how far a row of a table may be from 1: tables are often written with nine or more digits
-SMALLEST = 1e-300  # a drawn share that rounds to 0 although its cell is possible is taken as this
-AT_ONCE = 1_000_000  # cells times draws that are drawn at once; a larger table is drawn in parts
+__all__ = ["Category", "Network", "Node", "Number", "drawn_table", "network"]
 
 
 @dataclass(frozen=True, eq=False)
 class Network:
     """Nodes, parents before children. Made by `network(nodes)`, which checks and sorts them."""
 
-    nodes: tuple[Category, ...]
+    nodes: tuple[Node, ...]
 
     @cached_property
     def index(self) -> dict[str, int]:
@@ -33,8 +31,33 @@ class Network:
     def names(self) -> tuple[str, ...]:
         return tuple(node.name for node in self.nodes)
 
-    def node(self, name: str) -> Category:
+    @cached_property
+    def numbers(self) -> tuple[str, ...]:
+        """Columns that are numbers with a regression; a number taken as bands is none of them."""
+        return tuple(node.name for node in self.nodes if isinstance(node, Number))
+
+    def node(self, name: str) -> Node:
         return self.nodes[self.index[name]]
+
+    def category(self, name: str) -> Category:
+        """The node of a column that is known to be a category."""
+        node = self.node(name)
+        assert isinstance(node, Category), f"{name!r} is a number"
+        return node
+
+    def number(self, name: str) -> Number:
+        """The node of a column that is known to be a number."""
+        node = self.node(name)
+        assert isinstance(node, Number), f"{name!r} is a category"
+        return node
+
+    def category_parents(self, name: str) -> tuple[str, ...]:
+        """The parents of a column that are categories, in order."""
+        return category_parents(self.node(name), self._by_name)
+
+    def number_parents(self, name: str) -> tuple[str, ...]:
+        """The parents of a column that are numbers, in order."""
+        return number_parents(self.node(name), self._by_name)
 
     @cached_property
     def links(self) -> tuple[tuple[str, str], ...]:
@@ -42,8 +65,8 @@ class Network:
 
     @property
     def drawable(self) -> bool:
-        """Whether any table is uncertain, so that draws differ from the posterior mean."""
-        return any(node.dirichlet is not None for node in self.nodes)
+        """Whether any parameter is uncertain, so that draws differ from the posterior mean."""
+        return any(uncertain(node) for node in self.nodes)
 
     def descendants(self, names: Iterable[str]) -> frozenset[str]:
         """Columns strictly downstream of any of `names` (a name itself only when it follows another of them)."""
@@ -55,29 +78,37 @@ class Network:
                 reached.add(node.name)
         return frozenset(reached)
 
-    def draws(self, count: int, seed: int) -> tuple[np.ndarray, ...]:
-        """Tables with the draws on the last axis: (parent levels..., own levels, 1 + count).
+    def draws(self, count: int, seed: int) -> tuple[np.ndarray | Coefficients, ...]:
+        """Parameters of every node, as engine.network.drawn.drawn gives them."""
+        return tuple(drawn(node, count, seed) for node in self.nodes)
 
-        The first draw is the posterior mean. A family (column and parents) draws the same numbers in every
-        network that holds it, so that answers from different networks are compared on common draws.
-        """
-        return tuple(drawn_table(node, count, seed) for node in self.nodes)
+    @cached_property
+    def _by_name(self) -> dict[str, Node]:
+        return {node.name: node for node in self.nodes}
 
 
-def network(nodes: Iterable[Category]) -> Network:
+def uncertain(node: Node) -> bool:
+    """Whether the parameters of a column have a posterior, and so differ from draw to draw."""
+    return (node.dirichlet if isinstance(node, Category) else node.regression) is not None
+
+
+def network(nodes: Iterable[Node]) -> Network:
     """Check `nodes` and sort them, parents before children, otherwise in the order given.
 
-    Raises Refusal for: no columns, what is no Category, a name that is no text, a column twice, a level twice, an
-    unknown parent, a parent twice, a table of the wrong shape, an entry that is no probability, a row that does not
-    sum to 1, links that run in a circle.
+    Raises Refusal for: no columns, what is no column, a name that is no text, a column twice, a level twice, an
+    unknown parent, a parent twice, parameters of the wrong shape, an entry that is no probability, a row that does
+    not sum to 1, coefficients that are not finite, a variance below 0, a number without bands that leads to a
+    category, links that run in a circle.
     """
     given = tuple(nodes)
     if not given:
-        raise Refusal("A network needs at least one column.", do="Give a list of engine.Category.")
-    by_name: dict[str, Category] = {}
+        raise Refusal("A network needs at least one column.", do="Give a list of engine.Category and engine.Number.")
+    by_name: dict[str, Node] = {}
     for node in given:
-        if not isinstance(node, Category):
-            raise Refusal(f"{node!r} is no column of a network.", do="Give a list of engine.Category.")
+        if not isinstance(node, Category | Number):
+            raise Refusal(
+                f"{node!r} is no column of a network.", do="Give a list of engine.Category and engine.Number."
+            )
         if not isinstance(node.name, str):
             raise Refusal(f"The column name {node.name!r} is not a text.", do="Name columns with words.")
         if node.name in by_name:
@@ -86,62 +117,13 @@ def network(nodes: Iterable[Category]) -> Network:
             )
         by_name[node.name] = node
     for node in given:
-        _check_family(node, by_name)
+        check_family(node, by_name)
     return Network(_parents_first(given, by_name))
 
 
-def _check_family(node: Category, by_name: dict[str, Category]) -> None:
-    if not node.levels or not all(isinstance(level, str) for level in node.levels):
-        raise Refusal(
-            f"{quoted(node.name)} needs levels, each a text.", where=node.name, do='Give them as ["no", "yes"].'
-        )
-    if len(set(node.levels)) < len(node.levels):
-        raise Refusal(f"{quoted(node.name)} has a level twice.", where=node.name, do="Give each level once.")
-    if not all(isinstance(parent, str) for parent in node.parents):
-        raise Refusal(f"A parent of {quoted(node.name)} is not a text.", where=node.name, do="Give columns by name.")
-    if len(set(node.parents)) < len(node.parents):
-        raise Refusal(f"{quoted(node.name)} has a parent twice.", where=node.name, do="Give each parent once.")
-    for parent in node.parents:
-        if parent not in by_name:
-            raise Refusal(
-                f"{quoted(node.name)} has the parent {quoted(parent)}, which is no column of this network.",
-                where=node.name,
-                do=f"Add {quoted(parent)}, or take it out of the parents.",
-            )
-    expected = (*(len(by_name[parent].levels) for parent in node.parents), len(node.levels))
-    table = np.asarray(node.table)
-    if table.shape != expected:
-        raise Refusal(
-            f"The table of {quoted(node.name)} has the shape {table.shape}; its parents and levels ask for {expected}.",
-            where=node.name,
-            do="Give one axis per parent in order, and the column's own levels last.",
-        )
-    if not np.all(np.isfinite(table)) or np.any(table < 0.0):
-        raise Refusal(
-            f"The table of {quoted(node.name)} holds an entry that is no probability.",
-            where=node.name,
-            do="Every entry is 0 or more, and each row sums to 1.",
-        )
-    off = np.abs(table.sum(axis=-1) - 1.0)
-    if np.any(off > ROUNDING):
-        row = np.unravel_index(int(np.argmax(off)), off.shape)
-        at = ", ".join(
-            f"{quoted(parent)} = {quoted(by_name[parent].levels[place])}"
-            for parent, place in zip(node.parents, row, strict=True)
-        )
-        raise Refusal(
-            f"The table of {quoted(node.name)} sums to {table[row].sum():.6g} instead of 1"
-            f"{f' where {at}' if at else ''}.",
-            where=node.name,
-            do="Correct that row; nothing is rescaled here.",
-        )
-    if node.dirichlet is not None and node.dirichlet.shape != expected:
-        raise Refusal(f"The Dirichlet parameters of {quoted(node.name)} do not fit its table.", where=node.name)
-
-
-def _parents_first(given: tuple[Category, ...], by_name: dict[str, Category]) -> tuple[Category, ...]:
+def _parents_first(given: tuple[Node, ...], by_name: dict[str, Node]) -> tuple[Node, ...]:
     """Topological order, stable in the order given (Kahn 1962)."""
-    done: dict[str, Category] = {}
+    done: dict[str, Node] = {}
     waiting = list(given)
     while waiting:
         ready = next((node for node in waiting if all(parent in done for parent in node.parents)), None)
@@ -157,7 +139,7 @@ def _parents_first(given: tuple[Category, ...], by_name: dict[str, Category]) ->
     return tuple(done.values())
 
 
-def _circle(waiting: list[Category], left: set[str]) -> list[str]:
+def _circle(waiting: list[Node], left: set[str]) -> list[str]:
     """One circle among columns that each have a parent among them, told parent first."""
     by_name = {node.name: node for node in waiting}
     walk = [waiting[0].name]
@@ -166,34 +148,3 @@ def _circle(waiting: list[Category], left: set[str]) -> list[str]:
         if parent in walk:
             return walk[walk.index(parent) :][::-1]
         walk.append(parent)
-
-
-def drawn_table(node: Category, count: int, seed: int) -> np.ndarray:
-    """One family's part of `Network.draws`, read-only: (parent levels..., own levels, 1 + count).
-
-    A table known exactly is the same in every draw and takes no more room than once.
-    """
-    mean = np.asarray(node.table)[..., None]
-    if node.dirichlet is None or count == 0:
-        return np.broadcast_to(mean, (*mean.shape[:-1], 1 + count))
-    key = zlib.crc32("\x1f".join((node.name, *node.parents)).encode())
-    rng = np.random.default_rng([seed, key])
-    # ln Gamma(a) draws through Gamma(a + 1) and a uniform: a prior cell of 0.001 would underflow to 0 otherwise.
-    alpha = node.dirichlet.reshape(-1, node.dirichlet.shape[-1], 1)  # (configurations, own levels, 1)
-    drawn = np.empty((*alpha.shape[:2], 1 + count))
-    drawn[..., :1] = mean.reshape(alpha.shape)
-    rows = max(1, AT_ONCE // (alpha.shape[1] * count))
-    parts = [slice(start, start + rows) for start in range(0, len(alpha), rows)]
-    for part in parts:
-        shape = (*alpha[part].shape[:2], count)
-        drawn[part, :, 1:] = rng.standard_gamma(np.broadcast_to(alpha[part] + 1.0, shape))
-    with np.errstate(divide="ignore"):  # a parameter of 0 is a level that cannot be: its share is 0 in every draw
-        for part in parts:
-            shape = (*alpha[part].shape[:2], count)
-            log_gamma = np.log(drawn[part, :, 1:]) - rng.standard_exponential(shape) / alpha[part]
-            log_gamma -= log_gamma.max(axis=-2, keepdims=True)
-            shares = np.exp(log_gamma, out=log_gamma)
-            shares /= shares.sum(axis=-2, keepdims=True)
-            drawn[part, :, 1:] = np.where(alpha[part] > 0.0, np.maximum(shares, SMALLEST), 0.0)
-    drawn.flags.writeable = False
-    return drawn.reshape(*node.dirichlet.shape, 1 + count)

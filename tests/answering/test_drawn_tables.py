@@ -10,7 +10,7 @@ import engine
 from engine.answering import planner as planning
 from engine.answering.kept import Kept
 from engine.model import Model
-from engine.network import network as networking
+from engine.network import drawn as drawing
 from engine.network.network import Category, network
 from tests.answering.generated import networks
 
@@ -69,13 +69,13 @@ def test_a_table_too_large_to_draw_is_refused_before_it_is_drawn():
 @settings(max_examples=20, deadline=None)
 @given(networks(certain=False))
 def test_tables_drawn_in_parts_hold_the_same_digits(net):
-    whole, kept = net.draws(30, 5), networking.AT_ONCE
+    whole, kept = net.draws(30, 5), drawing.AT_ONCE
     try:
-        networking.AT_ONCE = 70
+        drawing.AT_ONCE = 70
         for one, other in zip(whole, net.draws(30, 5), strict=True):
             np.testing.assert_array_equal(one, other)
     finally:
-        networking.AT_ONCE = kept
+        drawing.AT_ONCE = kept
 
 
 @settings(max_examples=30, deadline=None)
@@ -112,7 +112,7 @@ def test_drawn_tables_are_kept_for_the_next_question_within_their_bytes(monkeypa
     drawn = []
     monkeypatch.setattr(planning, "_DRAWN", Kept(limit, lambda table: table.nbytes))
     monkeypatch.setattr(
-        planning, "drawn_table", lambda node, *rest: drawn.append(node.name) or networking.drawn_table(node, *rest)
+        planning, "drawn_table", lambda node, *rest: drawn.append(node.name) or drawing.drawn_table(node, *rest)
     )
     light, _ = wide(children=0)
     model = Model(network(light))
