@@ -1,0 +1,249 @@
+"""The slow truth of worlds with numbers: every configuration of the categories, one dense normal for the numbers.
+
+Numbers that act through bands, or lie in a range, are integrated by Gauss-Legendre quadrature in short panels, good to
+about 1e-12; all else is closed. Nothing here knows of trees, messages or the order of links.
+"""
+
+import itertools
+from dataclasses import dataclass
+
+import numpy as np
+from scipy.stats import norm
+
+from engine.network.nodes import Category, Number
+
+NODES, WEIGHTS = np.polynomial.legendre.leggauss(24)
+FAR = 12.0  # standard deviations beyond which a normal is taken to be nowhere
+STEPS = np.array([-7.0, -4.0, -2.0, -1.0, 0.0, 1.0, 2.0, 4.0, 7.0])  # panels around a step of a smooth curve
+TINY = 1e-12  # a standard deviation, against the largest coefficient, that is taken as none
+
+
+@dataclass(frozen=True)
+class Truth:
+    """What reading a world must give, for one draw.
+
+    shares: name -> (levels or bands,).  parts: number -> (weights, means, sds) of normals, as many as quadrature made.
+    """
+
+    log_evidence: float
+    shares: dict
+    parts: dict
+
+    def mean(self, name):
+        weights, means, _ = self.parts[name]
+        return float(weights @ means)
+
+    def sd(self, name):
+        weights, means, sds = self.parts[name]
+        return float(np.sqrt(weights @ (sds**2 + (means - self.mean(name)) ** 2)))
+
+    def below(self, name, value):
+        weights, means, sds = self.parts[name]
+        return float(weights @ _below(value, means, sds))
+
+    def density(self, name, value):
+        weights, means, sds = self.parts[name]
+        return float(weights @ norm.pdf(value, means, sds))
+
+
+def truth(world, drawn=None, draw=0):
+    """Read `world` by brute force. drawn: as for the routes; None: the nodes' own tables and coefficients."""
+    nodes = world.nodes
+    by_name = {node.name: node for node in nodes}
+    categories = [node for node in nodes if isinstance(node, Category)]
+    numbers = [node for node in nodes if isinstance(node, Number)]
+    acting = {parent for node in categories for parent in node.parents if isinstance(by_name[parent], Number)}
+    boxed = [
+        node.name
+        for node in numbers
+        if node.name not in world.values
+        and (node.name in acting or node.name in world.ranges or node.name in world.pins)
+    ]
+    found = []  # log weight, level of each category and band of each boxed number, parts of each watched number
+    for levels in itertools.product(*(_open(world, node) for node in categories)):
+        at = {node.name: level for node, level in zip(categories, levels, strict=True)}
+        offset, spread = _numbers(numbers, by_name, at, drawn, draw)
+        log_density, offset, spread = _given(world.values, numbers, offset, spread)
+        for bands in itertools.product(*(range(len(by_name[name].bands) + 1) for name in boxed)):
+            inside = {name: _box(world, by_name[name], band) for name, band in zip(boxed, bands, strict=True)}
+            if any(low >= high for low, high in inside.values()):
+                continue
+            full = at | dict(zip(boxed, bands, strict=True))
+            full |= {name: band_of(by_name[name], value) for name, value in world.values.items()}
+            chance = np.prod([_row(node, full, drawn, draw)[full[node.name]] for node in categories])
+            if chance <= 0.0 or log_density == -np.inf:
+                continue
+            places = [place for place, node in enumerate(numbers) if node.name in inside]
+            sides = [inside[numbers[place].name] for place in places]
+            points, weights = _points(offset[places], spread[places], sides)
+            if not weights.sum() > 0.0:
+                continue
+            parts = {
+                numbers[place].name: _through(offset, spread, places, points, place)
+                for place, node in enumerate(numbers)
+                if node.name in world.watch
+            }
+            found.append((log_density + np.log(chance), weights, full, parts))
+    if not found:
+        return Truth(-np.inf, {}, {})
+    largest = max(log for log, *_ in found)
+    weights = [np.exp(log - largest) * inner for log, inner, *_ in found]
+    total = sum(inner.sum() for inner in weights)
+    shares, mixtures = {}, {}
+    for name in world.watch:
+        node = by_name[name]
+        if isinstance(node, Category):
+            shares[name] = np.zeros(len(node.levels))
+            for inner, (_, _, full, _) in zip(weights, found, strict=True):
+                shares[name][full[name]] += inner.sum() / total
+            continue
+        mixtures[name] = tuple(
+            np.concatenate(pieces)
+            for pieces in zip(
+                *((inner / total, *parts[name]) for inner, (_, _, _, parts) in zip(weights, found, strict=True)),
+                strict=True,
+            )
+        )
+        shares[name] = _bands(node, world, mixtures[name])
+    return Truth(float(largest + np.log(total)), shares, mixtures)
+
+
+def band_of(node, value):
+    return int(np.searchsorted(node.bands, value, side="right"))
+
+
+def _bands(node, world, parts):
+    """Shares of a number's bands; quadrature points on a number in a box never lie on its ends."""
+    weights, means, sds = parts
+    ends = [np.zeros_like(weights), *(_below(cut, means, sds) for cut in node.bands), np.ones_like(weights)]
+    return np.array([weights @ (high - low) for low, high in itertools.pairwise(ends)])
+
+
+def _below(value, means, sds):
+    """P(x < value)."""
+    certain = sds == 0.0
+    return np.where(certain, means < value, norm.cdf((value - means) / np.where(certain, 1.0, sds)))
+
+
+def _open(world, node):
+    return sorted(world.pins.get(node.name, range(len(node.levels))))
+
+
+def _box(world, node, band):
+    """(low, high) of a band of a number, cut to its range and pins; low >= high when nothing is left."""
+    low, high = world.ranges.get(node.name, (-np.inf, np.inf))
+    if node.name in world.pins and band not in world.pins[node.name]:
+        return 0.0, 0.0
+    return max((-np.inf, *node.bands)[band], low), min((*node.bands, np.inf)[band], high)
+
+
+def _row(node, at, drawn, draw):
+    """(levels,) of a category where `at` says the level or band of every column."""
+    table = node.table if drawn is None else drawn[node.name][..., min(draw, drawn[node.name].shape[-1] - 1)]
+    return table[tuple(at[parent] for parent in node.parents)]
+
+
+def _coefficients(node, drawn, draw):
+    if drawn is None:
+        return node.intercept, node.slopes, node.variance
+    found = drawn[node.name]
+    return tuple(
+        np.asarray(array)[..., min(draw, np.shape(array)[-1] - 1)]
+        for array in (found.intercept, found.slopes, found.variance)
+    )
+
+
+def _numbers(numbers, by_name, at, drawn, draw):
+    """(numbers,) means and (numbers, numbers) coefficients on independent standard normals, one for each number."""
+    place = {node.name: position for position, node in enumerate(numbers)}
+    offset, spread = np.zeros(len(numbers)), np.zeros((len(numbers), len(numbers)))
+    for own, node in enumerate(numbers):
+        intercept, slopes, variance = _coefficients(node, drawn, draw)
+        where = tuple(at[parent] for parent in node.parents if isinstance(by_name[parent], Category))
+        leading = [place[parent] for parent in node.parents if parent in place]
+        offset[own] = intercept[where] + slopes[where] @ offset[leading]
+        spread[own] = slopes[where] @ spread[leading]
+        spread[own, own] = np.sqrt(variance[where])
+    return offset, spread
+
+
+def _given(values, numbers, offset, spread):
+    """Log density of the values, and the numbers' normal given them."""
+    seen = [place for place, node in enumerate(numbers) if node.name in values]
+    if not seen:
+        return 0.0, offset, spread
+    away = np.array([values[numbers[place].name] for place in seen]) - offset[seen]
+    left, sizes, right = np.linalg.svd(spread[seen])
+    sizes, right = np.where(sizes > TINY * np.abs(spread).max(), sizes, 0.0), right[: len(seen)]
+    in_noise = left.T @ away
+    if np.any(np.abs(in_noise[sizes == 0.0]) > 1e-9 * (1.0 + np.abs(away).max())):
+        return -np.inf, offset, spread
+    kept = sizes > 0.0
+    noise = in_noise[kept] / sizes[kept]
+    log_density = norm.logpdf(noise).sum() - np.log(sizes[kept]).sum()
+    offset = offset + spread @ (right[kept].T @ noise)
+    spread = spread - spread @ right[kept].T @ right[kept]
+    for place in seen:
+        offset[place], spread[place] = values[numbers[place].name], 0.0
+    return float(log_density), offset, spread
+
+
+def _conditional(offset, spread, given, place):
+    """Number `place` given those in `given`: (constant, (given,) slopes, sd), by least squares in the noise."""
+    slopes = np.linalg.lstsq(spread[given].T, spread[place], rcond=1e-11)[0] if given else np.zeros(0)
+    left = np.linalg.norm(spread[place] - slopes @ spread[given])
+    sd = left if left > TINY * np.abs(spread).max() else 0.0
+    return offset[place] - slopes @ offset[given], slopes, sd
+
+
+def _points(offset, spread, sides):
+    """(points, numbers) and (points,) weights that sum to the probability of the box; numbers one after another."""
+    points, weights = np.zeros((1, 0)), np.ones(1)
+    for place, (low, high) in enumerate(sides):
+        constant, slopes, sd = _conditional(offset, spread, list(range(place)), place)
+        longer, heavier = [], []
+        for point, weight in zip(points, weights, strict=True):
+            centre = constant + slopes @ point
+            if sd == 0.0:
+                own, shares = np.array([centre]), np.array([1.0 if low <= centre < high else 0.0])
+            else:
+                own, shares = _panels(centre, sd, low, high, _steps(offset, spread, sides, place, point))
+            longer.append(np.column_stack([np.tile(point, (own.size, 1)), own]))
+            heavier.append(weight * shares)
+        points, weights = np.concatenate(longer), np.concatenate(heavier)
+        points, weights = points[weights > 0.0], weights[weights > 0.0]
+        if not weights.size:
+            return np.zeros((0, len(sides))), weights
+    return points, weights
+
+
+def _panels(centre, sd, low, high, steps):
+    """Points and weights that integrate over a normal between low and high."""
+    start, end = max(low, centre - FAR * sd), min(high, centre + FAR * sd)
+    if not start < end:  # all of it lies in a tail
+        start, end = (low, min(high, low + sd)) if low > centre else (max(low, high - sd), high)
+    edges = np.concatenate([np.linspace(start, end, 13), steps])
+    edges = np.unique(edges[(edges >= start) & (edges <= end)])
+    middle, half = (edges[1:] + edges[:-1]) / 2.0, np.diff(edges) / 2.0
+    own = (middle[:, None] + half[:, None] * NODES).ravel()
+    return own, (half[:, None] * WEIGHTS).ravel() * norm.pdf(own, centre, sd)
+
+
+def _steps(offset, spread, sides, place, point):
+    """Where the chance that a later number lies in its box rises or falls, as this one moves."""
+    found = [np.zeros(0)]
+    for later in range(place + 1, len(sides)):
+        constant, slopes, sd = _conditional(offset, spread, list(range(place + 1)), later)
+        if abs(slopes[-1]) > 0.0:
+            ends = np.array([end for end in sides[later] if np.isfinite(end)])
+            crossing = (ends - constant - slopes[:-1] @ point) / slopes[-1]
+            found.append((crossing[:, None] + STEPS * sd / abs(slopes[-1])).ravel())
+    return np.concatenate(found)
+
+
+def _through(offset, spread, given, points, place):
+    """(means, sds) of a number at each point."""
+    if place in given:
+        return points[:, given.index(place)], np.zeros(len(points))
+    constant, slopes, sd = _conditional(offset, spread, given, place)
+    return constant + points @ slopes, np.full(len(points), sd)
