@@ -13,7 +13,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from engine.learning.lattice import over_subsets
-from engine.learning.scores import Floats, Ints, SetScores
+from engine.learning.mixed import FamilyScores
+from engine.learning.scores import Floats, Ints
 from engine.order import Order
 from engine.refusal import Refusal
 
@@ -97,9 +98,9 @@ class Families:
     ascending set, so a set's rank is the sum of a part for either side, and a group is one indexed subtraction.
     """
 
-    def __init__(self, who: Candidates, scores: SetScores, part: int, max_parents: int) -> None:
+    def __init__(self, who: Candidates, scores: FamilyScores, part: int, max_parents: int) -> None:
         self.who = who
-        self.scores = scores
+        self.scores = scores.of(who.child)
         self.part = part
         self.max_parents = min(max_parents, scores.size - 1)
 

@@ -4,14 +4,19 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 
+from engine.learning.evidence import FamilyMoments
 from engine.learning.scores import Floats
 from engine.learning.search import Parents
 from engine.network.parameters import dirichlet_posterior, predictive
+from engine.network.regression import Regression
 from engine.records.counts import ArrayCounts
+from engine.records.moments import ArrayMoments
+from engine.records.table import Coded
 
 FOLDS = 5
 _ROWS = 16_384  # rows scored at once, few enough to stay in the processor's cache
@@ -47,12 +52,13 @@ def folds(rows: int, seed: int) -> Ints:
 class Scoring:
     """Gathers the scores of held-out records fold by fold; keeps sums only, whatever the number of records.
 
-    codes: (rows, columns) level positions.  counts: of the same records, by fold.  links: sizes to score, ascending.
+    counts, moments: of the records, by fold; moments None without numbers.  links: sizes to score, ascending.
     """
 
-    def __init__(self, codes: NDArray[np.integer], counts: ArrayCounts, links: tuple[int, ...]) -> None:
-        self.codes = codes
+    def __init__(self, coded: Coded, counts: ArrayCounts, moments: ArrayMoments | None, links: tuple[int, ...]) -> None:
+        self.coded = coded
         self.counts = counts
+        self.moments = None if moments is None else FamilyMoments(moments)
         self.links = links
         self.rows = 0
         self.base = 0.0  # sum of the scores at the first size
@@ -65,16 +71,19 @@ class Scoring:
         for place, size in enumerate(self.links):
             for child, parents in enumerate(models[size]):
                 families.setdefault((child, parents), []).append(place)
-        tables = []
+        predicting = []
         for (child, parents), places in families.items():
-            tables.append(((*parents, child), places, self._log_shares(held, child, parents)))
+            predicting.append((self._predictive(held, child, parents), places))
             still()
         rows = np.flatnonzero(self.counts.fold == held)
         for low in range(0, rows.size, _ROWS):
-            codes = self.codes[rows[low : low + _ROWS]]
-            scores = np.zeros((len(self.links), codes.shape[0]))
-            for columns, places, logs in tables:
-                scores[places] += logs[tuple(codes[:, column] for column in columns)]
+            some = rows[low : low + _ROWS]
+            codes = self.coded.codes[some]
+            values = self.coded.values[some] if self.coded.numbers else np.empty((some.size, 0))
+            scores = np.zeros((len(self.links), some.size))
+            for logs, places in predicting:
+                scores[places] += logs(codes, values)
+                still()
             self._add(scores)
             still()
 
@@ -94,6 +103,38 @@ class Scoring:
         self.sums += scores.sum(axis=1)
         self.products += scores @ scores.T
 
-    def _log_shares(self, held: int, child: int, parents: tuple[int, ...]) -> Floats:
+    def _predictive(self, held: int, child: int, parents: tuple[int, ...]) -> LogPredictive:
+        if self.moments is not None and child in self.coded.numbers:
+            categories, numbers = self.moments.split(parents)
+            places = [self.coded.numbers.index(number) for number in (*numbers, child)]
+            return NumberPredictive(self.moments.regression(child, parents, 1 + held), categories, places)
         by_fold = self.counts.family(parents, child)
-        return np.asarray(np.log(predictive(dirichlet_posterior(by_fold.sum(axis=0) - by_fold[held]))))
+        shares = predictive(dirichlet_posterior(by_fold.sum(axis=0) - by_fold[held]))
+        return CategoryPredictive(np.log(shares), (*parents, child))
+
+
+class CategoryPredictive(NamedTuple):
+    """Log shares of a category: (parent levels..., own levels).  columns: its parents, then itself."""
+
+    logs: Floats
+    columns: tuple[int, ...]
+
+    def __call__(self, codes: NDArray[np.integer], values: Floats) -> Floats:
+        """(rows,) log probability of each record's level."""
+        return np.asarray(self.logs[tuple(codes[:, column] for column in self.columns)])
+
+
+class NumberPredictive(NamedTuple):
+    """Student t of a number.  categories: its category parents.  places: its number parents, then itself, in values."""
+
+    regression: Regression
+    categories: list[int]
+    places: list[int]
+
+    def __call__(self, codes: NDArray[np.integer], values: Floats) -> Floats:
+        """(rows,) log density of each record's value, in the column's own unit."""
+        own = values[:, self.places]
+        return self.regression.log_density(codes[:, self.categories], own[:, :-1], own[:, -1])
+
+
+LogPredictive = CategoryPredictive | NumberPredictive

@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 import os
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
-from functools import cached_property
+from functools import cached_property, lru_cache, partial
 from math import prod
 from typing import Self
 
@@ -13,18 +13,19 @@ import numpy as np
 import pandas as pd
 
 from engine.learning import archive
+from engine.learning.evidence import FamilyMoments, counts_of, family_node, moments_of
 from engine.learning.posterior import Posterior
 from engine.learning.search import Parents
 from engine.network.equivalence import unsettled_links
-from engine.network.network import Category, Network
-from engine.network.parameters import dirichlet_posterior, predictive
+from engine.network.network import Network
+from engine.network.nodes import Node
 from engine.order import Order
-from engine.records.counts import ArrayCounts
 from engine.records.table import Coded
 from engine.refusal import Refusal
 
 FORMAT = "steelyard learned"
 VERSION = 2
+_FAMILIES = 2_048  # kept with their posterior
 SURE = 0.9  # support from which a direction counts as settled by the data; common practice, no source
 _CURVE = ("links", "score", "bound", "held_out", "held_out_se")
 
@@ -71,26 +72,25 @@ class Learned:
         }
 
     def network(self, links: int | None = None) -> Network:
-        """That model as a network, with posterior Dirichlet counts. Raises Refusal as `parents_at`."""
-        chosen = self._chosen(links)
-        coded = self.coded
-        counts = ArrayCounts(coded.codes, [len(levels) for levels in coded.levels])
-        nodes = []
-        for child in _parents_first(chosen):
-            posterior = dirichlet_posterior(counts.family(chosen[child], child)[0])
-            nodes.append(
-                Category(
-                    coded.names[child],
-                    coded.levels[child],
-                    tuple(coded.names[parent] for parent in chosen[child]),
-                    predictive(posterior),
-                    posterior,
-                    coded.kinds[child],
-                    coded.cuts[child],
-                    coded.has_blank[child],
-                )
-            )
-        return Network(tuple(nodes))
+        """That model as a network, with the posterior of its parameters. Raises Refusal as `parents_at`."""
+        return self.network_of(self._chosen(links))
+
+    def network_of(self, chosen: Parents) -> Network:
+        """Any graph without a circle as a network.  chosen: for each column of `coded` the positions of its parents."""
+        return Network(tuple(self.family(child, chosen[child]) for child in _parents_first(chosen)))
+
+    def family(self, child: int, parents: tuple[int, ...]) -> Node:
+        """One column with the posterior of its parameters given any parents; positions in `coded`.
+
+        The latest families are kept, so that graphs that share them do not count again.
+        """
+        return self._family(child, tuple(int(parent) for parent in parents))
+
+    @cached_property
+    def _family(self) -> Callable[[int, tuple[int, ...]], Node]:
+        counts, moments = counts_of(self.coded), moments_of(self.coded)
+        sums = None if moments is None else FamilyMoments(moments)
+        return lru_cache(maxsize=_FAMILIES)(partial(family_node, self.coded, counts, sums))
 
     @cached_property
     def support(self) -> pd.DataFrame:
@@ -128,18 +128,21 @@ class Learned:
         """Each link of that model and who settled its direction: source, target, settled.
 
         settled: "your order"; "the data", when every equivalent graph that the order allows agrees and the support is
-        over SURE; else "nobody".
+        over SURE; else "nobody". Between a category and a number of one stage it is always "nobody": there the shape
+        of the number decides, not the data.
         """
         names = self.coded.names
         pairs = [(parent, child) for child, parents in self.parents_at(links).items() for parent in parents]
         pairs.sort(key=lambda link: (names.index(link[0]), names.index(link[1])))
         open_links = unsettled_links(pairs, self.order.may_lead)
+        numbers = self.coded.numbers
         rows = []
         for source, target in pairs:
             if not self.order.may_lead(target, source):
                 settled = "your order"
             else:
-                sure = (source, target) not in open_links and self.support_of(source, target) > SURE
+                alike = (names.index(source) in numbers) == (names.index(target) in numbers)
+                sure = alike and (source, target) not in open_links and self.support_of(source, target) > SURE
                 settled = "the data" if sure else "nobody"
             rows.append((source, target, settled))
         return pd.DataFrame(rows, columns=["source", "target", "settled"])

@@ -11,7 +11,8 @@ from numpy.typing import NDArray
 
 from engine.learning.families import Candidates, Families, Group
 from engine.learning.layers import WIDEST_LAYERED, Layers, log_sum_of
-from engine.learning.scores import Floats, Ints, SetScores
+from engine.learning.mixed import FamilyScores
+from engine.learning.scores import Floats, Ints
 from engine.learning.sinks import Sinks, linear_extensions
 
 _UNLIKELY = 50.0  # nats below the sum of all at which a set of parents would not be drawn in 10^20 graphs
@@ -38,7 +39,7 @@ class Posterior:
 
 def posterior(
     stages: Sequence[Sequence[Candidates]],
-    scores: SetScores,
+    scores: FamilyScores,
     max_parents: int,
     graphs: int,
     rng: np.random.Generator,
@@ -78,7 +79,7 @@ class _Stage:
     """One stage: its graphs, and the parents from earlier stages that go with each set of parents inside."""
 
     def __init__(
-        self, stage: Sequence[Candidates], scores: SetScores, max_parents: int, still: Callable[[], None]
+        self, stage: Sequence[Candidates], scores: FamilyScores, max_parents: int, still: Callable[[], None]
     ) -> None:
         self.stage = stage
         self.width = len(stage)

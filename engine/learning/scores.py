@@ -38,6 +38,10 @@ class SetScores:
     def size(self) -> int:
         return len(self.by_size) - 1
 
+    def of(self, child: int) -> SetScores:
+        """Whose differences are the scores of the families of that column: of any column, these."""
+        return self
+
 
 def set_scores(counts: Counts, size: int, ess: float = 1.0, tick: Callable[[float], None] | None = None) -> SetScores:
     """Dirichlet marginal likelihood with the BDeu prior (Heckerman, Geiger & Chickering 1995) of every set of columns.

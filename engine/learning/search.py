@@ -10,7 +10,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from engine.learning.families import Candidates, Families
-from engine.learning.scores import Floats, SetScores
+from engine.learning.mixed import FamilyScores
+from engine.learning.scores import Floats
 from engine.refusal import Refusal
 
 WIDEST = 18  # columns in a stage that the exact search can take
@@ -43,7 +44,7 @@ def check_widths(stages: Sequence[tuple[str, int]]) -> None:
 
 def size_curve(
     stages: tuple[tuple[Candidates, ...], ...],
-    scores: SetScores,
+    scores: FamilyScores,
     part: int,
     max_parents: int,
     max_links: int | None = None,
@@ -89,7 +90,7 @@ class StageSearch:
     def __init__(
         self,
         stage: tuple[Candidates, ...],
-        scores: SetScores,
+        scores: FamilyScores,
         part: int,
         max_parents: int,
         tick: Callable[[float], None],

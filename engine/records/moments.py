@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
 from itertools import combinations
-from math import prod
+from math import comb, prod
 
 import numpy as np
 from numpy.typing import NDArray
@@ -160,6 +160,19 @@ class ArrayMoments:
             if waiting:
                 yield self._summed(waiting, wide, hear, begun, at)
         hear(1.0)
+
+    def seconds(self, size: int) -> float:
+        """Roughly how long `blocks` and the scores of its sums take, for telling progress."""
+        numbers, typical = len(self.numbers.columns), 1.0
+        if self.categories:
+            typical = float(np.exp(np.mean(np.log([self.levels[column] for column in self.categories]))))
+        products, cells = 0.0, 0.0
+        for count in range(min(size - 1, len(self.categories)) + 1):
+            sets = comb(len(self.categories), count)
+            products += sets * (1 + _terms(numbers, size - count >= 2))
+            subsets = sum(comb(numbers, held) for held in range(1, size - count + 1))
+            cells += sets * subsets * min(typical**count, float(self.rows))
+        return 1.3e-9 * self.rows * products + 4e-8 * cells * (1 + self.folds)
 
     def family(self, categories: Sequence[int], numbers: Sequence[int], child: int) -> FamilySums:
         """Sums of the number column `child` and its parents; all three as positions among all columns."""

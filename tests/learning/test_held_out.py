@@ -89,7 +89,8 @@ def test_a_level_seen_only_in_the_held_out_fold_scores_finitely():
     codes[7, 1] = 2
     codes[8, 1] = 1
     fold = np.arange(40) % FOLDS
-    scoring = Scoring(codes, ArrayCounts(codes, (2, 3), fold, FOLDS), (0, 1))
+    coded = plainly.coded_columns(("a", "b"), (2, 3), codes)
+    scoring = Scoring(coded, ArrayCounts(codes, (2, 3), fold, FOLDS), None, (0, 1))
     for held in range(FOLDS):
         scoring.take(held, {0: ((), ()), 1: ((), (0,))})
     assert np.isfinite(scoring.result().mean).all()

@@ -1,0 +1,156 @@
+"""What cannot be learned from: records, orders and limits that are refused before any work is done."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from numbers import Integral
+
+import numpy as np
+
+from engine.learning.search import check_widths
+from engine.order import Direction, Order
+from engine.records.spikes import refuse_collinear, taken_as_bands
+from engine.records.table import Coded, Column, Table
+from engine.refusal import Refusal, quoted, whole
+
+FEWEST_ROWS = 30
+MOST_LEVELS = 50
+MOST_PARENTS = 5
+
+
+def check_table(table: Table, order: Order) -> None:
+    """Raises Refusal for what is no table or no order, and for an order that the table's columns do not fit."""
+    if not isinstance(table, Table):
+        raise Refusal(
+            "What is to be learned from is no table of records.",
+            where="table",
+            do="Make one with engine.read_table(file) or engine.Table.from_frame(frame).",
+        )
+    if not isinstance(order, Order):
+        raise Refusal(
+            "The order is none.", where="order", do="State it as engine.Order([(stage, [column, ...]), ...])."
+        )
+    for name in order.columns:
+        if name not in table.columns:
+            raise Refusal(
+                f"The order names the column {quoted(name)}, which the records do not have.",
+                where=name,
+                do="Take it out of the order.",
+            )
+        if table.columns[name].kind == "left out":
+            raise Refusal(
+                f"The column {quoted(name)} is left out of the records but stands in the order.",
+                where=name,
+                do="Take it out of the order, or give it a kind.",
+            )
+
+
+def check_limits(max_links: int | None, max_parents: int, graphs: int, seed: int) -> None:
+    """Raises Refusal for limits that are no whole numbers or out of range."""
+    if isinstance(max_parents, bool) or not isinstance(max_parents, Integral) or not 1 <= max_parents <= MOST_PARENTS:
+        raise Refusal(
+            f"A column may have at most 1 to {MOST_PARENTS} parents, not {max_parents}.",
+            where="max_parents",
+            do="The usual number is 3.",
+        )
+    if max_links is not None:
+        whole(max_links, "max_links", 0, "Leave it out for no limit.")
+    whole(graphs, "graphs", 0, "The usual number is 200.")
+    whole(seed, "seed", 0, "Give a whole number, 0 or more.")
+
+
+def check_rows(rows: int) -> None:
+    """Raises Refusal for fewer records than FEWEST_ROWS."""
+    if rows < FEWEST_ROWS:
+        raise Refusal(
+            f"There are {rows} records to learn from; at least {FEWEST_ROWS} are needed.",
+            where="records",
+            do="Bring more records, or keep those that blanks have dropped.",
+        )
+
+
+def check_coded(coded: Coded, order: Order) -> None:
+    """Raises Refusal for columns that hold one value or too many levels, unfit outcomes, and stages too wide."""
+    if coded.names != order.columns:
+        raise AssertionError("the coded columns are not those of the order")
+    if not coded.names:
+        raise Refusal("The order holds no column.", where="stages", do="Put at least one column into a stage.")
+    check_rows(coded.codes.shape[0])
+    for place, (name, levels) in enumerate(zip(coded.names, coded.levels, strict=True)):
+        if place in coded.numbers:
+            _check_values(name, coded.values[:, coded.numbers.index(place)])
+        else:
+            _check_levels(name, levels, coded.codes[:, place])
+        better = order.outcomes.get(name, ())
+        if isinstance(better, Direction) and coded.kinds[place] == "category":
+            raise Refusal(
+                f"The outcome {quoted(name)} is a category: its levels have no order, so more of it "
+                "can be neither better nor worse.",
+                where=name,
+                do="Name its better level or levels, or make it a grade with its levels from low to high.",
+            )
+        for level in () if isinstance(better, Direction) else better:
+            if level not in levels:
+                raise Refusal(
+                    f"The outcome {quoted(name)} has no level {quoted(level)}.",
+                    where=name,
+                    do=f"Choose from: {', '.join(levels)}.",
+                )
+    check_widths([(stage.name, len(stage.columns)) for stage in order.stages])
+
+
+def numbers_to_learn(
+    table: Table, order: Order, max_parents: int, still: Callable[[], None] = lambda: None
+) -> tuple[tuple[str, ...], tuple[str, ...]]:
+    """The columns learned as numbers, and a sentence for each number that is taken as bands instead.
+
+    still: called often, a chance to cancel.
+    Raises Refusal for infinite values, and for numbers of which one follows exactly from others.
+    """
+    columns = [table.columns[name] for name in order.columns]
+    for column in columns:
+        if column.values is not None:
+            _check_finite(column)
+    if not any(column.kind == "number" for column in columns):
+        return (), ()
+    bands = taken_as_bands(columns, max_parents, still)
+    kept = [column for column in columns if column.kind == "number" and column.name not in bands]
+    refuse_collinear(kept, max_parents + 1, still)
+    return tuple(column.name for column in kept), tuple(bands.values())
+
+
+def _check_finite(column: Column) -> None:
+    infinite = np.isinf(np.asarray(column.values))
+    if infinite.any():
+        rows = int(infinite.sum())
+        raise Refusal(
+            f"{quoted(column.name)} is infinite in {rows:,} {'record' if rows == 1 else 'records'}.",
+            where=column.name,
+            do="Write a number there, leave the cell blank, or take the column out of the order.",
+        )
+
+
+def _check_values(name: str, values: np.ndarray) -> None:
+    if not np.isfinite(values).all():
+        raise AssertionError("a number that is blank or infinite in a record is not learned as a number")
+    if values.min() == values.max():
+        _refuse_one_value(name)
+
+
+def _check_levels(name: str, levels: tuple[str, ...], codes: np.ndarray) -> None:
+    if len(levels) < 2 or codes.min() == codes.max():
+        _refuse_one_value(name)
+    if len(levels) > MOST_LEVELS:
+        raise Refusal(
+            f"The column {quoted(name)} has {len(levels)} levels; at most {MOST_LEVELS} can be learned from.",
+            where=name,
+            do="Merge rare levels, or leave the column out.",
+        )
+
+
+def _refuse_one_value(name: str) -> None:
+    raise Refusal(
+        f"Every record has the same value in {quoted(name)}, so nothing can be learned from it.",
+        where=name,
+        do="Take it out of the order.",
+    )

@@ -1,0 +1,63 @@
+"""How far learning is: a fraction by a rough estimate of the seconds of each step, and words."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+
+from engine.learning.families import Candidates
+from engine.records.counts import ArrayCounts
+from engine.records.moments import ArrayMoments
+
+Progress = Callable[[float, str], None]
+
+
+class Saying:
+    """Tells `progress` of every step; raising in there cancels.
+
+    counts, moments: what is learned from; they tell their own cost.
+    """
+
+    def __init__(
+        self,
+        progress: Progress | None,
+        counts: ArrayCounts,
+        moments: ArrayMoments | None,
+        stages: Sequence[Sequence[Candidates]],
+        max_parents: int,
+    ) -> None:
+        self.progress = progress
+        columns = len(counts.levels)
+        size = min(max_parents + 1, columns)
+        parts = counts.folds if counts.folds > 1 else 0
+        thousands = max(1.0, counts.rows / 1_000)
+        counting = counts.seconds(size) * (2.0 if parts else 1.5)
+        summing = [] if moments is None else [moments.seconds(size)]
+        searching = sum(len(stage) * 2.0 ** len(stage) * columns * 2e-8 for stage in stages) + 0.02 * columns / 10
+        scoring = 0.001 * columns * max_parents + 1.5e-4 * columns * thousands
+        if moments is not None:
+            scoring += len(moments.numbers.columns) * max_parents * (0.02 + 0.001 * thousands)
+        weighing = sum(len(stage) * (4.0 ** min(len(stage), 10)) * 2e-7 for stage in stages) + 0.003 * columns
+        self.steps = [counting, *summing, searching, weighing, *[searching + scoring] * parts]
+        self.at = -1
+        self.words = ""
+        self.fraction = 0.0
+
+    def begin(self, words: str) -> None:
+        self.at += 1
+        self.words = words
+        self.within(0.0)
+
+    def within(self, part: float) -> None:
+        """`part` of the present step is done."""
+        done = sum(self.steps[: self.at]) + min(part, 1.0) * self.steps[self.at]
+        self.fraction = min(max(done / sum(self.steps), self.fraction), 1.0)
+        self.still()
+
+    def still(self) -> None:
+        """No further yet, but a chance to cancel."""
+        if self.progress is not None:
+            self.progress(self.fraction, self.words)
+
+    def finish(self) -> None:
+        self.fraction, self.words = 1.0, "Done"
+        self.still()
