@@ -7,7 +7,7 @@ from typing import Literal
 
 import numpy as np
 
-Kind = Literal["category", "grade", "number", "left out"]
+Kind = Literal["category", "grade", "number", "left out", "weight", "group"]
 BLANK = "blank"  # the name of the level that stands for a blank; longer when a real level is called so
 SMALL_COUNT = 10  # counts of records under this are shown as "under 10" only; common practice, no source
 
@@ -16,13 +16,16 @@ SMALL_COUNT = 10  # counts of records under this are shown as "under 10" only; c
 class Column:
     """One column as it will be learned.
 
-    name: as in the file.  kind: category, grade (ordered category), number, or left out.
+    name: as in the file.  kind: category, grade (ordered category) or number; left out; weight (what each record
+    counts for) or group (which records belong together), neither of which is learned from.
     why: one sentence: why it is taken as this kind.
-    levels: grades low to high, bands of a number in words, the blank level last; empty when left out.
-    codes: (rows,) positions in `levels` for the kept rows, int32; empty when left out.
+    levels: grades low to high, bands of a number in words, the blank level last; empty when not learned from.
+    codes: (rows,) positions in `levels` for the kept rows, int32; of a group, which one each row is in, from 0; else
+    empty when not learned from.
     cuts: inner cuts of a number's bands, ascending; band i holds cuts[i-1] <= x < cuts[i].
-    values: (rows,) float64 for a number, nan where blank; None otherwise.
-    blank: what a blank means, "level" or "drop row".  blanks: blank cells among the rows read.
+    values: (rows,) float64 for a number, nan where blank, and for a weight, over 0; None otherwise.
+    blank: what a blank means, "level" (in a group: a case by itself) or "drop row".
+    blanks: blank cells among the rows read.
     warnings: sentences for the Records page.
     """
 
@@ -36,6 +39,11 @@ class Column:
     blank: Literal["level", "drop row"] = "level"
     blanks: int = 0
     warnings: tuple[str, ...] = ()
+
+    @property
+    def used(self) -> bool:
+        """Whether a model can be learned from it and it can stand in the order."""
+        return self.kind in ("category", "grade", "number")
 
     @property
     def has_blank(self) -> bool:

@@ -13,11 +13,11 @@ from engine.records.bands import band_codes, band_levels, checked_cuts, equal_co
 from engine.records.cells import Cells, as_numbers, level_text
 from engine.records.column import BLANK, Column, Kind
 from engine.records.kinds import MOST_LEVELS, Guess, category_levels, grade_levels, guess
+from engine.records.standing import groups_of, weights_of
 from engine.records.wording import cited, listing
 from engine.refusal import Refusal, quoted
 
-KINDS: tuple[Kind, ...] = ("category", "grade", "number", "left out")
-LATER_KINDS = ("weight", "group")
+KINDS: tuple[Kind, ...] = ("category", "grade", "number", "left out", "weight", "group")
 BLANKS = ("level", "drop row")
 MUCH_BLANK = 0.05  # share of blank cells from which the page asks what a blank means; common practice, no source
 
@@ -67,6 +67,12 @@ def column_of(taken: Taken, kept: NDArray[np.bool_]) -> Column:
     name, cells = taken.name, taken.cells
     if taken.kind == "left out":
         return Column(name, "left out", taken.why, blank=taken.blank, blanks=cells.blanks, warnings=taken.warnings)
+    if taken.kind == "weight":
+        values = weights_of(name, cells, kept)
+        return Column(name, "weight", taken.why, values=values, blank=taken.blank, blanks=cells.blanks)
+    if taken.kind == "group":
+        groups = groups_of(name, cells, kept)
+        return Column(name, "group", taken.why, codes=groups, blank=taken.blank, blanks=cells.blanks)
     codes = cells.codes if kept.all() else cells.codes[kept]
     if not (codes >= 0).any():
         raise Refusal(
@@ -78,10 +84,10 @@ def column_of(taken: Taken, kept: NDArray[np.bool_]) -> Column:
     if cells.blanks >= MUCH_BLANK * kept.size:
         warnings.append(f"{round(100 * cells.blanks / kept.size)}% are blank. Say what a blank means here.")
     cuts: tuple[float, ...] = ()
-    values = None
+    numbers = None
     if taken.kind == "number":
-        values, cuts = _banded(taken, kept)
-        codes, levels = band_codes(values, cuts), band_levels(cuts)
+        numbers, cuts = _banded(taken, kept)
+        codes, levels = band_codes(numbers, cuts), band_levels(cuts)
     else:
         levels, places, said = _levels(taken, codes)
         codes = places[codes]
@@ -90,7 +96,7 @@ def column_of(taken: Taken, kept: NDArray[np.bool_]) -> Column:
         warnings.append("Every record that is kept has the same value.")
     if cells.blanks and taken.blank == "level":
         codes, levels = _with_blank(codes, levels)
-    return Column(name, taken.kind, taken.why, levels, codes, cuts, values, taken.blank, cells.blanks, tuple(warnings))
+    return Column(name, taken.kind, taken.why, levels, codes, cuts, numbers, taken.blank, cells.blanks, tuple(warnings))
 
 
 def _kind(name: str, choice: Choice, guessed: Guess) -> Kind:
@@ -109,12 +115,6 @@ def _kind(name: str, choice: Choice, guessed: Guess) -> Kind:
             f"{quoted(name)} is to be a {choice.kind} but comes with {what} has.",
             where=name,
             do=f"Make it a {implied}, or take them away.",
-        )
-    if choice.kind in LATER_KINDS:
-        raise Refusal(
-            f"{quoted(name)} cannot be taken as a {choice.kind} yet.",
-            where=name,
-            do="Take it as another kind, or leave it out.",
         )
     for kind in KINDS:
         if choice.kind == kind:

@@ -16,6 +16,7 @@ from engine.records.bands import is_range, level_positions, range_ends
 from engine.records.cells import Cells, cells
 from engine.records.column import SMALL_COUNT, Coded, Column, Kind
 from engine.records.columns import Choice, column_of, take
+from engine.records.standing import standing
 from engine.records.wording import listing, people
 from engine.refusal import Refusal, quoted
 
@@ -28,7 +29,9 @@ class Table:
 
     frame: every row and column as read.  kept: (rows read,) True where no column made the row drop.
     columns: name -> Column, in file order.  dropped: column -> rows that are blank there and so were dropped.
-    rows: rows kept.  weights: (rows,) float64.  warnings: sentences about the table as a whole.
+    rows: rows kept.  warnings: sentences about the table as a whole.
+    weights: (rows,) float64, what each record counts for in learning: they sum to the effective number of records, and
+    are 1 without a weight and a group.  group: (rows,) int32 from 0, which rows belong together, or None.
     """
 
     name: str
@@ -38,6 +41,7 @@ class Table:
     dropped: Mapping[str, int]
     weights: NDArray[np.float64]
     warnings: tuple[str, ...] = ()
+    group: NDArray[np.int32] | None = None
 
     @classmethod
     def from_frame(
@@ -52,10 +56,11 @@ class Table:
     ) -> Table:
         """Decide every column's kind: as given, else guessed from its cells.
 
-        kinds: column -> "category", "grade", "number" or "left out".  bands: column -> inner cuts, ascending.
+        kinds: column -> "category", "grade", "number" or "left out"; of one column each "weight", what every record
+        counts for, and "group", which records belong together.  bands: column -> inner cuts, ascending.
         grades: column -> levels, low to high.  blanks: column -> "level" or "drop row".
-        Raises Refusal for a choice about an unknown column, one that its cells do not bear, and fewer than two
-        rows or columns left.
+        Raises Refusal for a choice about an unknown column, one that its cells do not bear, a second weight or group,
+        and fewer than two rows or columns left.
         """
         kinds, bands, grades, blanks = kinds or {}, bands or {}, grades or {}, blanks or {}
         _check(frame, {"kinds": kinds, "bands": bands, "grades": grades, "blanks": blanks})
@@ -77,8 +82,9 @@ class Table:
                 do="Let blanks be a level of their own in some columns.",
             )
         columns = {column: column_of(each, kept) for column, each in taken.items()}
-        said = (*warnings, *_rows_left_out(kept, dropped))
-        return cls(name, frame.copy(deep=False), columns, kept, dropped, np.ones(rows), said)
+        counting = standing(columns, rows)
+        said = (*warnings, *_rows_left_out(kept, dropped), *counting.said)
+        return cls(name, frame.copy(deep=False), columns, kept, dropped, counting.weights, said, group=counting.group)
 
     @property
     def rows(self) -> int:
@@ -91,7 +97,7 @@ class Table:
         for column in self.columns.values():
             taken = [column.name, column.kind, column.levels, column.cuts, column.blank, column.blanks]
             found.update(json.dumps(taken).encode())
-            if column.kind == "left out":
+            if column.kind in ("left out", "group"):
                 _add_cells(found, cells(column.name, self.frame[column.name]))
             else:
                 found.update(np.asarray(column.codes, dtype="<i4").tobytes())
@@ -133,6 +139,7 @@ class Table:
             has_blank=tuple(column.has_blank for column in made),
             codes=codes,
             weights=self.weights,
+            group=self.group,
             numbers=tuple(held),
             values=values,
         )
@@ -146,6 +153,12 @@ class Table:
             )
         if self.columns[name].kind == "left out":
             raise Refusal(f"The column {quoted(name)} is left out.", where=name, do="Give it a kind first.")
+        if not self.columns[name].used:
+            raise Refusal(
+                f"The column {quoted(name)} is taken as the {self.columns[name].kind}, which is not learned from.",
+                where=name,
+                do="Take it out of the order, or give it another kind.",
+            )
         return self.columns[name]
 
 

@@ -177,8 +177,8 @@ def test_a_choice_is_named_as_the_reason():
 REFUSED = [
     ({"kinds": {"Age": "number"}}, "no column “Age”, which is named among the kinds"),
     ({"kinds": {"age": "amount"}}, "not a kind of column"),
-    ({"kinds": {"age": "weight"}}, "weight yet"),
-    ({"kinds": {"age": "group"}}, "group yet"),
+    ({"kinds": {"age": "weight"}}, "blank in record 4"),
+    ({"kinds": {"town": "weight"}}, "record 1 holds “a”"),
     ({"blanks": {"age": "fill"}}, "filled in yet"),
     ({"blanks": {"age": "zero"}}, "not a meaning of a blank"),
     ({"kinds": {"town": "number"}}, "record 1 holds “a”"),
