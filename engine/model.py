@@ -8,6 +8,7 @@ from dataclasses import dataclass, fields, replace
 from functools import cached_property
 
 import numpy as np
+import pandas as pd
 
 from engine.answering.answer import Answer
 from engine.answering.asking import ask
@@ -21,8 +22,11 @@ from engine.doubting.register import cautions
 from engine.learning import learn as learning
 from engine.learning import learned as learnt
 from engine.network import conditional
-from engine.network.network import Category, Network, network
+from engine.network.network import Network, network
+from engine.network.nodes import Node
 from engine.network.program import program
+from engine.network.sampling import sample
+from engine.network.scoring import log_score
 from engine.network.story import Story, rules, touches
 from engine.order import Order, better_levels
 from engine.records.table import Coded, Table
@@ -46,8 +50,8 @@ class Model:
     unsettled: frozenset[tuple[str, str]] = frozenset()
 
     @classmethod
-    def from_network(cls, nodes: Iterable[Category]) -> Model:
-        """A model of tables known exactly: every column may be changed, intervals are points.
+    def from_network(cls, nodes: Iterable[Node]) -> Model:
+        """A model of parameters known exactly: every column may be changed, intervals are points.
 
         Raises Refusal as engine.network.network.network does.
         """
@@ -102,7 +106,7 @@ class Model:
                 where=target,
                 do="Ask for one of model.links.",
             )
-        node = self.network.node(target)
+        node = self.network.category(target)
         better = np.asarray(node.table)[..., self._better(target)].sum(axis=-1)
         others = tuple(parent for parent in node.parents if parent != source)
         shares = np.moveaxis(better, node.parents.index(source), 0)
@@ -131,6 +135,23 @@ class Model:
         rows = conditional.rows(self.network, column, common, most)
         told = rules(self.network, column, common, better)
         return Story(touches(self.network, column, self.unsettled), told, rows, common.size - len(rows))
+
+    def log_score(self, frame: pd.DataFrame) -> np.ndarray:
+        """(rows,) natural log of the probability or density of each row, by the posterior predictive; -inf where it
+        cannot be.
+
+        frame: every column of the model; levels as texts, numbers as numbers, a number taken as bands as either a
+        number or the name of a band.
+        Raises Refusal for a missing or unknown column, an unknown level, and a blank that no level stands for.
+        """
+        return log_score(self.network, frame)
+
+    def sample(self, rows: int, seed: int) -> pd.DataFrame:
+        """Invented rows at the posterior means: levels as texts, numbers as floats; the same for the same seed.
+
+        Raises Refusal unless rows is 1 or more and seed 0 or more.
+        """
+        return sample(self.network, rows, seed)
 
     def program(self) -> str:
         """The model as a short, readable Python text that draws invented records; it needs numpy alone."""

@@ -1,0 +1,161 @@
+"""How likely a row is: against the row-by-row truth, against sums and integrals, and what is refused."""
+
+import time
+
+import numpy as np
+import pandas as pd
+import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+from scipy.integrate import quad
+from scipy.stats import norm
+
+import engine
+from engine.network.drawn import drawn
+from engine.network.scoring import log_score
+from engine.refusal import Refusal
+from tests.network import mixed_plainly as plainly
+from tests.network.mixed_made import mixed_networks, school
+from tests.network.test_mixed_networks import DEPTH, FLOW, RAIN, WET
+
+MODEL = engine.Model.from_network([RAIN, FLOW, WET, DEPTH])
+ROWS = pd.DataFrame(
+    {"rain": ["no", "yes", "yes"], "flow": [0.5, 4.0, 1.99], "wet": ["no", "yes", "no"], "depth": [2.0, 13.0, 7.5]}
+)
+
+
+@settings(max_examples=60, deadline=None)
+@given(mixed_networks(), st.integers(0, 99))
+def test_every_row_scores_as_by_hand(net, seed):
+    frame = engine.Model(net).sample(20, seed)
+    moved = frame.copy()
+    for name in net.numbers:
+        moved[name] += 0.25
+    for rows in (frame, moved):
+        expected = [plainly.log_score(net, row) for row in rows.to_dict("records")]
+        np.testing.assert_allclose(log_score(net, rows), expected, rtol=1e-10, atol=1e-10)
+
+
+def test_a_learned_number_scores_by_students_t_and_a_category_by_its_posterior_mean():
+    frame, net = school()
+    found = engine.Model(net).log_score(frame)
+    expected = [plainly.log_score(net, row) for row in frame.to_dict("records")]
+    np.testing.assert_allclose(found, expected, rtol=1e-10, atol=1e-10)
+
+
+def test_the_score_of_a_learned_number_is_its_density_averaged_over_the_posterior():
+    frame, net = school(rows=200)
+    draws = drawn(net.node("score"), 20_000, 1)
+    row = frame.iloc[[0]].copy()
+    site = ["north", "south", "west"].index(row["site"].iloc[0])
+    mean = draws.intercept[site] + draws.slopes[site, 0] * row["hours"].iloc[0]
+    others = {name: frame[name].iloc[0] for name in frame if name != "score"}
+    for away in (-15.0, 0.0, 15.0):
+        row["score"] = mean[0] + away
+        averaged = norm.pdf(mean[0] + away, mean[1:], np.sqrt(draws.variance[site, 1:])).mean()
+        rest = sum(
+            plainly.log_factor(net, net.node(name), others | {"score": float(mean[0] + away)}) for name in others
+        )
+        assert np.exp(log_score(net, row)[0] - rest) == pytest.approx(averaged, rel=0.05)
+
+
+def test_probabilities_and_densities_of_all_rows_sum_to_one():
+    def density(flow, wet, rain):
+        row = pd.DataFrame({"rain": [rain], "flow": [flow], "wet": [wet]})
+        return np.exp(log_score(engine.Model.from_network([RAIN, FLOW, WET]).network, row)[0])
+
+    total = sum(
+        quad(density, low, high, args=(wet, rain))[0]
+        for rain in ("no", "yes")
+        for wet in ("no", "yes")
+        for low, high in ((-12.0, 2.0), (2.0, 4.0), (4.0, 20.0))
+    )
+    assert total == pytest.approx(1.0, abs=1e-7)
+
+
+def test_a_number_that_follows_exactly_counts_one_where_it_is_as_it_must_be_and_none_elsewhere():
+    rows = ROWS.iloc[[1, 1]].copy()  # rain: depth is 1 + 3 x flow, without any variance
+    rows["depth"] = [13.0, 13.1]
+    scores = MODEL.log_score(rows)
+    rest = MODEL.from_network([RAIN, FLOW, WET]).log_score(rows.drop(columns="depth"))
+    assert scores[0] == pytest.approx(rest[0]) and scores[1] == -np.inf
+
+
+def test_a_level_that_cannot_be_scores_minus_infinity():
+    never = engine.Category("wet", ["no", "yes"], ["rain"], [[1.0, 0.0], [0.5, 0.5]])
+    found = engine.Model.from_network([RAIN, never]).log_score(pd.DataFrame({"rain": ["no"] * 2, "wet": ["no", "yes"]}))
+    assert found[0] == pytest.approx(np.log(0.8)) and found[1] == -np.inf
+
+
+BANDED = engine.Category(
+    "hours", ["under 5", "5 and over", "blank"], [], [0.3, 0.6, 0.1], kind="number", cuts=(5.0,), has_blank=True
+)
+
+
+@pytest.mark.parametrize(
+    "cells",
+    [
+        [4.999, 5.0, np.nan],
+        ["under 5", "5 and over", None],
+        ["−3", "17", "  "],
+        ["under 5", 7.0, "blank"],
+        pd.Categorical(["under 5", "5 and over", None]),
+    ],
+)
+def test_a_number_taken_as_bands_is_a_number_or_the_name_of_a_band(cells):
+    found = engine.Model.from_network([BANDED]).log_score(pd.DataFrame({"hours": cells}))
+    np.testing.assert_allclose(np.exp(found), [0.3, 0.6, 0.1])
+
+
+def test_levels_that_look_like_numbers_are_found_whatever_holds_them():
+    model = engine.Model.from_network([engine.Category("room", ["1", "2.5"], [], [0.25, 0.75])])
+    for cells in ([1, 2.5], ["1", "2.5"]):
+        np.testing.assert_allclose(np.exp(model.log_score(pd.DataFrame({"room": cells}))), [0.25, 0.75])
+    yes = engine.Model.from_network([engine.Category("new", ["False", "True"], [], [0.25, 0.75])])
+    np.testing.assert_allclose(np.exp(yes.log_score(pd.DataFrame({"new": [False, True]}))), [0.25, 0.75])
+
+
+@pytest.mark.parametrize(
+    ("change", "message", "where"),
+    [
+        (lambda rows: rows.drop(columns="flow"), "The rows have no column “flow”", "flow"),
+        (lambda rows: rows.assign(snow=1), "This model has no column “snow”", "snow"),
+        (lambda rows: pd.concat([rows, rows["wet"]], axis=1), "have the column “wet” twice", "wet"),
+        (lambda rows: rows.assign(rain=["no", "hail", "sleet"]), "holds “hail” and “sleet” in rows 2 and 3", "rain"),
+        (lambda rows: rows.assign(rain=["no", None, "no"]), "“rain” is blank in row 2", "rain"),
+        (lambda rows: rows.assign(flow=[1.0, np.nan, np.nan]), "“flow” is blank in rows 2 and 3", "flow"),
+        (lambda rows: rows.assign(flow=["1", "fast", "2"]), "cannot be a number: record 2 holds “fast”", "flow"),
+        (lambda rows: rows.assign(flow=[1.0, np.inf, 2.0]), "“flow” holds a number that is infinite", "flow"),
+        (lambda rows: rows.to_dict("list"), "no DataFrame", "rows"),
+    ],
+)
+def test_rows_that_cannot_be_read_are_refused_where_they_stand(change, message, where):
+    with pytest.raises(Refusal, match=message) as refusal:
+        MODEL.log_score(change(ROWS))
+    assert refusal.value.where == where and refusal.value.do
+
+
+def test_a_refusal_names_the_first_few_rows_and_counts_the_others():
+    many = pd.concat([ROWS.assign(rain="hail")] * 400)
+    with pytest.raises(Refusal, match="in rows 1, 2, 3, 4, 5 and 1,195 more;"):
+        MODEL.log_score(many)
+
+
+def test_no_rows_have_no_scores():
+    assert MODEL.log_score(ROWS.iloc[:0]).shape == (0,)
+
+
+@pytest.mark.benchmark
+def test_rows_are_scored_many_at_once():
+    net = school(rows=2_000)[1]
+    rows = engine.Model(net).sample(20_000, 1)
+
+    def seconds(score):
+        start = time.perf_counter()
+        score()
+        return time.perf_counter() - start
+
+    at_once = min(seconds(lambda: log_score(net, rows)) for _ in range(3))
+    few = rows.to_dict("records")[:100]
+    by_hand = seconds(lambda: [plainly.log_score(net, row) for row in few]) * len(rows) / len(few)
+    assert at_once < by_hand / 50
