@@ -103,12 +103,18 @@ def coded_described(coded: Coded) -> Described:
         "levels": coded.levels,
         "cuts": coded.cuts,
         "has_blank": coded.has_blank,
+        "numbers": coded.numbers,
     }
 
 
 def coded_arrays(coded: Coded) -> dict[str, np.ndarray]:
     """codes as bytes: a column that can be learned has at most 50 levels."""
-    return {"codes": coded.codes.astype(np.uint8), "weights": coded.weights}
+    arrays = {"codes": coded.codes.astype(np.uint8), "weights": coded.weights}
+    if coded.numbers:
+        arrays["values"] = np.asfortranarray(coded.values)
+    if coded.group is not None:
+        arrays["group"] = coded.group
+    return arrays
 
 
 def coded_from(described: Described, arrays: Mapping[str, np.ndarray]) -> Coded:
@@ -120,4 +126,7 @@ def coded_from(described: Described, arrays: Mapping[str, np.ndarray]) -> Coded:
         has_blank=tuple(described["has_blank"]),
         codes=np.asfortranarray(arrays["codes"], dtype=np.int32),
         weights=arrays["weights"],
+        numbers=tuple(described["numbers"]),
+        values=arrays.get("values", np.empty((len(arrays["codes"]), 0))),
+        group=arrays.get("group"),
     )

@@ -24,7 +24,7 @@ from engine.records.table import Coded
 from engine.refusal import Refusal
 
 FORMAT = "steelyard learned"
-VERSION = 2
+VERSION = 3
 _FAMILIES = 2_048  # kept with their posterior
 SURE = 0.9  # support from which a direction counts as settled by the data; common practice, no source
 _CURVE = ("links", "score", "bound", "held_out", "held_out_se")

@@ -39,7 +39,7 @@ class Numbers:
     @classmethod
     def standardised(cls, columns: Sequence[int], values: Floats) -> Numbers:
         """(rows, numbers) `values` in their own units, finite, each column of more than one value."""
-        values = np.asarray(values, dtype=np.float64).reshape(-1, len(columns))
+        values = np.asfortranarray(np.asarray(values, dtype=np.float64).reshape(-1, len(columns)))
         if not np.isfinite(values).all():
             raise AssertionError("a number with blanks is taken as bands before it comes here")
         centre, scale = values.mean(axis=0), values.std(axis=0)
