@@ -13,10 +13,11 @@ import pandas as pd
 from engine.answering.answer import Answer
 from engine.answering.asking import ask
 from engine.answering.counting import Records
+from engine.answering.doubt import Plausible, doubtable, held, plausible
 from engine.answering.kept import Kept
 from engine.answering.levers import Fix
 from engine.answering.planner import Planner
-from engine.answering.question import question
+from engine.answering.question import Question, question
 from engine.doubting.case import Case
 from engine.doubting.register import cautions
 from engine.learning import learn as learning
@@ -33,6 +34,7 @@ from engine.records.table import Coded, Table
 from engine.refusal import Refusal, quoted
 
 JOINTS = 16e6  # bytes of joint shares of a few columns each that a model keeps
+SAMPLED = 2  # numbers of sampled graphs whose plans are kept
 MODELS = 4  # models of one study kept, each with its drawn tables
 
 
@@ -42,12 +44,14 @@ class Model:
 
     network: tables and their posterior.  order: as stated, None for a network given as it is.
     coded: the records it was learned from, None without.  unsettled: links whose direction nobody settled.
+    plausible: so many graphs drawn from the posterior, to ask the same of; None without.
     """
 
     network: Network
     order: Order | None = None
     coded: Coded | None = None
     unsettled: frozenset[tuple[str, str]] = frozenset()
+    plausible: Callable[[int], Plausible] | None = None
 
     @classmethod
     def from_network(cls, nodes: Iterable[Node]) -> Model:
@@ -88,10 +92,20 @@ class Model:
         changeable, pins that contradict each other, and a question too wide to sum exactly.
         """
         wanted = self._outcomes() if watch is None else watch
-        asked = question(self.network, pins, levers, wanted, beside, self.changeable)
+        pins, levers, wanted, beside = (held(each) for each in (pins, levers, wanted, beside))
+
+        def question_in(network: Network) -> Question:
+            return question(network, pins, levers, wanted, beside, self.changeable)
+
+        def checked(answer: Answer) -> Answer:
+            found, made = cautions(Case(self.network, self.order, self._records, asked, answer, self.unsettled))
+            return replace(answer, cautions=found, checks_made=made)
+
+        asked = question_in(self.network)
         answer = ask(self._planner, self._records, asked, draws, seed, exact)
-        found, made = cautions(Case(self.network, self.order, self._records, asked, answer, self.unsettled))
-        return replace(answer, cautions=found, checks_made=made)
+        if self.plausible is None:
+            return checked(answer)
+        return doubtable(answer, self.plausible, question_in, seed, exact, checked)
 
     def strength(self, source: str, target: str) -> float:
         """How much a link moves its child: 0 to 1.
@@ -201,7 +215,15 @@ class Learned(learnt.Learned):
         found = self.settled(links)
         pairs = zip(found["source"], found["target"], found["settled"], strict=True)
         unsettled = frozenset((source, target) for source, target, by in pairs if by == "nobody")
-        return Model(self.network(links), self.order, self.coded, unsettled)
+        return Model(self.network(links), self.order, self.coded, unsettled, self._plausible)
+
+    def _plausible(self, graphs: int) -> Plausible:
+        """The same for every model of this study."""
+        return self._sampled.get(graphs, lambda: plausible(self, graphs))
+
+    @cached_property
+    def _sampled(self) -> Kept[int, Plausible]:
+        return Kept(SAMPLED)
 
     @cached_property
     def _models(self) -> Kept[int, Model]:

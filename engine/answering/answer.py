@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator, Mapping
-from dataclasses import dataclass
+from collections.abc import Callable, Iterable, Iterator, Mapping
+from dataclasses import dataclass, field
 from numbers import Real
 
 import numpy as np
@@ -124,6 +124,22 @@ class Caution:
     columns: tuple[str, ...]
 
 
+@dataclass(frozen=True)
+class Doubt:
+    """The plausible graphs that an answer's draws were pooled over.
+
+    graphs: drawn from the posterior; different: of these, how many are not the same; effective: how many independent
+    draws they are worth.  left_out: of the graphs, those in which the question could not be asked, and why the first
+    of them refused it.
+    """
+
+    graphs: int
+    different: int
+    effective: float
+    left_out: int = 0
+    why: str | None = None
+
+
 @dataclass(frozen=True, eq=False)
 class Answer:
     """Readings of every column asked for, and how they were come by.
@@ -136,6 +152,8 @@ class Answer:
     log_evidence: natural log of the pins' probability.
     cautions: those that block first, then those that weaken, then those worth knowing.
     checks_made: how many checks for cautions could be made of this question.
+    doubt: what graphs the draws were pooled over, None while they are those of one model.  again: how to ask it with
+    (graphs, draws), None where there are no graphs to ask.
     """
 
     watch: tuple[str, ...]
@@ -149,6 +167,21 @@ class Answer:
     mc_error: float = 0.0
     cautions: tuple[Caution, ...] = ()
     checks_made: int = 0
+    doubt: Doubt | None = None
+    again: Callable[[int, int], Answer] | None = field(default=None, repr=False)
+
+    @property
+    def doubted(self) -> bool:
+        """Whether the intervals are over plausible models; else they are within the one model."""
+        return self.doubt is not None and self.doubt.left_out < self.doubt.graphs
+
+    def with_doubt(self, graphs: int = 50, draws: int = 20) -> Answer:
+        """The same answer, its intervals over sampled graphs as well: `draws` of the parameters in each of `graphs`.
+
+        The points stay those of this model. An answer of a network given as it is has no doubt to add: it is returned
+        as it is. Raises Refusal for numbers of graphs or draws from which no interval can be told.
+        """
+        return self if self.again is None else self.again(graphs, draws)
 
     @property
     def blocked(self) -> bool:

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from engine.answering.answer import Caution
-from engine.doubting import blanks, counted, direction, overlap, thin
+from engine.doubting import blanks, counted, direction, models, overlap, thin
 from engine.doubting.case import Case, Check
 
 CHECKS: tuple[Check, ...] = (
     overlap.check,
     thin.check,
     direction.check,
+    models.check,
     counted.check,
     blanks.check,
 )
