@@ -1,0 +1,149 @@
+"""Weighted sums over particles, draw by draw, and the standard errors of their ratios."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from engine.answering.mixture import Mixture
+
+Floats = NDArray[np.float64]
+
+CELLS = 256  # normals that the particles of a number are put together into, in each draw
+_CLASSES = 4  # classes of sds, apart so that a narrow and a wide normal at one place stay two
+
+
+class Tally:
+    """What the weighted mean of some figures needs: figures (places,) in every draw.
+
+    plain: sum of w f.  square: of w^2 f.  squares: of w^2 f^2; each (draws, places).
+    """
+
+    def __init__(self, draws: int, places: int) -> None:
+        self.plain = np.zeros((draws, places))
+        self.square = np.zeros((draws, places))
+        self.squares = np.zeros((draws, places))
+
+    def rescale(self, slots: slice, factor: Floats) -> None:
+        """Weights of (draws of the slots,) are from now on told in another unit."""
+        self.plain[slots] *= factor[:, None]
+        self.square[slots] *= factor[:, None] ** 2
+        self.squares[slots] *= factor[:, None] ** 2
+
+    def add(self, slots: slice, weight: Floats, square: Floats, figures: Floats) -> None:
+        """weight, square: (draws, elements) sums of weights, of squares; figures: (draws, elements, places)."""
+        self.plain[slots] += np.einsum("de,dep->dp", weight, figures)
+        self.square[slots] += np.einsum("de,dep->dp", square, figures)
+        self.squares[slots] += np.einsum("de,dep->dp", square, figures * figures)
+
+    def means(self, weight: Floats) -> Floats:
+        """(draws, places), given the (draws,) sums of weights."""
+        return np.asarray(self.plain / weight[:, None])
+
+    def variances(self, weight: Floats, square: Floats) -> Floats:
+        """(draws, places) squared standard errors of the means, given the (draws,) sums of weights and their squares.
+
+        The delta method for a ratio of sums (Owen 2013, Monte Carlo theory, chapter 9).
+        """
+        means = self.means(weight)
+        spread = self.squares - 2.0 * means * self.square + means**2 * square[:, None]
+        return np.asarray(np.maximum(spread, 0.0) / weight[:, None] ** 2)
+
+
+class Blend:
+    """Normals of many particles put together into few, draw by draw.
+
+    Those that lie close and are equally wide become one of the same mean and variance, so that the mean and the sd
+    of the whole are kept as they are. The cells are narrow in the middle and wider outwards; they are laid by the
+    first normals added.
+    """
+
+    def __init__(self, draws: int) -> None:
+        self._draws = draws
+        self._laid = False
+        self.centre, self._width = 0.0, 1.0
+        self._edges: Floats = np.zeros(0)
+        self._sums = np.zeros((3, draws, CELLS))  # of w, w d, w (d^2 + sd^2), d from the middle of the cell
+
+    def rescale(self, slots: slice, factor: Floats) -> None:
+        """Weights of (draws of the slots,) are from now on told in another unit."""
+        self._sums[:, slots] *= factor[:, None]
+
+    def add(self, slots: slice, weight: Floats, mean: Floats, sd: Floats) -> None:
+        """All (draws, elements); sd 0 is a single value."""
+        if not self._laid:
+            self._lay(weight, mean, sd)
+        per_class = CELLS // (len(self._edges) + 1)
+        away = (mean - self.centre) / self._width
+        ranked = (0.5 * per_class) * (1.0 + away / (1.0 + np.abs(away)))
+        place = np.clip(ranked.astype(np.intp), 0, per_class - 1)
+        from_middle = mean - self._middles(per_class)[place]
+        cell = np.searchsorted(self._edges, sd, side="right") * per_class + place
+        draws = len(weight)
+        cell = (cell + np.arange(draws)[:, None] * CELLS).ravel()
+        for sums, figures in zip(
+            self._sums, (weight, weight * from_middle, weight * (from_middle**2 + sd**2)), strict=True
+        ):
+            sums[slots] += np.bincount(cell, figures.ravel(), draws * CELLS).reshape(draws, CELLS)
+
+    def mixture(self) -> Mixture:
+        """The parts that hold any weight, in every draw. A draw without any weight is told like the first."""
+        weight, first, second = self._sums
+        used = weight.any(axis=0)
+        if not used.any():
+            nothing = np.full((1, self._draws), np.nan)
+            return Mixture(nothing, nothing, nothing)
+        weight, first, second = weight[:, used], first[:, used], second[:, used]
+        empty = ~weight.any(axis=1)
+        for sums in (weight, first, second):
+            sums[empty] = sums[0]
+        per_class = CELLS // (len(self._edges) + 1)
+        middles = np.tile(self._middles(per_class), CELLS // per_class)
+        middles = np.append(middles, np.zeros(CELLS - len(middles)))[used]
+        with np.errstate(divide="ignore", invalid="ignore"):
+            away = np.where(weight > 0.0, first / weight, 0.0)
+            variance = np.where(weight > 0.0, second / weight - away**2, 0.0)
+        sd = np.sqrt(
+            np.where(variance > 1e-14 * self._width**2, variance, 0.0)
+        )  # what is left of one value is rounding
+        shares = weight / weight.sum(axis=1, keepdims=True)
+        return Mixture(shares.T, (middles + away).T, sd.T)
+
+    def _lay(self, weight: Floats, mean: Floats, sd: Floats) -> None:
+        trusted = weight if weight.any() else np.ones_like(weight)
+        trusted = trusted / trusted.sum()
+        self.centre = float((trusted * mean).sum())
+        width = float(np.sqrt((trusted * ((mean - self.centre) ** 2 + sd**2)).sum()))
+        self._width = width if width > 0.0 else max(abs(self.centre), 1.0)
+        wide = sd[sd > 0.0]
+        edges = []
+        if wide.size:
+            classes = np.quantile(wide, np.linspace(0.0, 1.0, _CLASSES))
+            apart = classes[1:] > 1.2 * classes[:-1]
+            edges = list(np.sqrt(classes[1:] * classes[:-1])[apart])
+            if wide.size < sd.size:
+                edges.insert(0, np.nextafter(0.0, 1.0))
+        self._edges = np.array(edges)
+        self._laid = True
+
+    def _middles(self, per_class: int) -> Floats:
+        """(per_class,) the values in the middle of the cells of one class."""
+        rank = (2.0 * np.arange(per_class) + 1.0) / per_class - 1.0
+        return np.asarray(self.centre + self._width * rank / (1.0 - np.abs(rank)))
+
+
+def calmed(draws: Floats, variances: Floats) -> Floats:
+    """Draws (places, draws) pulled towards their mean, so that the noise of sampling is not counted as doubt.
+
+    variances: (places, draws) squared standard errors of each. Their mean over draws is what noise adds to the
+    variance between draws; the factor, one for all places so that shares go on summing to 1, is the root of the part
+    of the variance that is left: 0 when noise accounts for all of it.
+    """
+    if draws.shape[-1] < 2 or not variances.size:
+        return draws
+    noise = float(variances.mean(axis=-1).sum())
+    between = float(draws.var(axis=-1, ddof=1).sum())
+    if noise <= 0.0 or between <= 0.0:
+        return draws
+    centre = draws.mean(axis=-1, keepdims=True)
+    return np.asarray(centre + np.sqrt(max(1.0 - noise / between, 0.0)) * (draws - centre))
