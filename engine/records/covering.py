@@ -10,7 +10,7 @@ from math import comb, prod
 import numpy as np
 from numpy.typing import NDArray
 
-from engine.records.joint import LARGEST, Block, Ints, numbered, rank, single
+from engine.records.joint import LARGEST, Block, Floats, Ints, Tally, kept, numbered, rank, single, tallied
 
 BLOCK_CELLS = 65_536  # joint levels of the columns in a block
 MOST_COLUMNS = 62  # sets are bits of one integer
@@ -32,10 +32,18 @@ class Cover:
 
     codes: (rows, columns).  levels: of each column.  fold: (rows,) 0 to folds - 1.
     size: of the largest sets, 1 or more.  tick: hears the fraction done.
+    weights: (rows,) what each row counts for, None for one each.
     """
 
     def __init__(
-        self, codes: Ints, levels: Sequence[int], fold: Ints, folds: int, size: int, tick: Callable[[float], None]
+        self,
+        codes: Ints,
+        levels: Sequence[int],
+        fold: Ints,
+        folds: int,
+        size: int,
+        tick: Callable[[float], None],
+        weights: Floats | None = None,
     ) -> None:
         self.levels = tuple(levels)
         self.folds = folds
@@ -43,10 +51,15 @@ class Cover:
         self.tick = tick
         self.total = sum(comb(len(self.levels), each) for each in range(1, size + 1))
         self.done = 0
-        self.columns, self.fold, self.weights = self._compressed(codes, fold)
+        self.columns, self.fold, self.weights = self._compressed(codes, fold, weights)
 
-    def _compressed(self, codes: Ints, fold: Ints) -> tuple[list[NDArray[np.int32]], NDArray[np.int32], Ints | None]:
-        """The columns and the fold of every row, or of every distinct configuration with the rows that have it."""
+    def _compressed(
+        self, codes: Ints, fold: Ints, weights: Floats | None
+    ) -> tuple[list[NDArray[np.int32]], NDArray[np.int32], Ints | Floats | None]:
+        """The columns and the fold of every row, or of every distinct configuration with the rows that have it.
+
+        Last what each of them counts for.
+        """
         number, reach = fold, self.folds
         for column, levels in enumerate(self.levels):
             if reach * levels >= 2**62:
@@ -55,12 +68,17 @@ class Cover:
             number = number * levels + codes[:, column]
             reach *= levels
             self.tick(0.0)
-        _, first, weights = np.unique(number, return_index=True, return_counts=True)
+        together: Ints | Floats
+        if weights is None:
+            _, first, together = np.unique(number, return_index=True, return_counts=True)
+        else:
+            _, first, place = np.unique(number, return_index=True, return_inverse=True)
+            together = np.bincount(place, weights)
         self.tick(0.0)
         few = first.size * _WORTH <= fold.size
-        kept = first if few else slice(None)
-        columns = [codes[kept, column].astype(np.int32) for column in range(len(self.levels))]
-        return columns, fold[kept].astype(np.int32), weights if few else None
+        chosen = first if few else slice(None)
+        columns = [codes[chosen, column].astype(np.int32) for column in range(len(self.levels))]
+        return columns, fold[chosen].astype(np.int32), together if few else weights
 
     def blocks(self) -> Iterator[Block]:
         """Every set of 1 to `size` columns with at most LARGEST joint levels."""
@@ -106,10 +124,10 @@ class Cover:
             cells *= self.levels[best]
             outside &= ~np.int64(1 << best)
 
-    def _coded(self, columns: Sequence[int]) -> Ints:
-        """(joint levels x folds,) rows in every cell; the last column and the fold vary fastest."""
+    def _coded(self, columns: Sequence[int]) -> Ints | Floats:
+        """(joint levels x folds,) what every cell counts; the last column and the fold vary fastest."""
         reach = prod(self.levels[column] for column in columns) * self.folds
-        counts = np.zeros(reach, dtype=np.int64)
+        counts = tallied(np.empty(0, dtype=np.int32), None if self.weights is None else self.weights[:0], reach)
         for low in range(0, self.fold.size, _ROWS):
             part = slice(low, low + _ROWS)
             code = self.columns[columns[0]][part].copy()
@@ -119,17 +137,14 @@ class Cover:
             if self.folds > 1:
                 code *= self.folds
                 code += self.fold[part]
-            if self.weights is None:
-                counts += np.bincount(code, minlength=reach)
-            else:  # whole numbers below 2^53: their sums are exact
-                counts += np.bincount(code, self.weights[part], minlength=reach).astype(np.int64)
+            counts += tallied(code, None if self.weights is None else self.weights[part], reach)
             self.tick(self.done / self.total)
         return counts
 
     def _summed_down(self, columns: tuple[int, ...], sets: list[_Set]) -> Iterator[Block]:
         ordered = sorted(columns, key=lambda column: -self.levels[column])  # the first are summed out first
-        table = self._coded(ordered).astype(np.int32)
-        found: list[tuple[_Set, NDArray[np.int32]]] = []
+        table = kept(self._coded(ordered))
+        found: list[tuple[_Set, Tally]] = []
         self._margins(table.reshape(1, -1, self.folds), ordered, sets, found)
         for size in sorted({len(each.columns) for each, _ in found}):
             members = [(each, counts) for each, counts in found if len(each.columns) == size]
@@ -145,10 +160,10 @@ class Cover:
 
     def _margins(
         self,
-        table: NDArray[np.int32],
+        table: Tally,
         undecided: list[int],
         sets: list[_Set],
-        found: list[tuple[_Set, NDArray[np.int32]]],
+        found: list[tuple[_Set, Tally]],
     ) -> None:
         """Sum columns out one by one.
 
@@ -161,15 +176,15 @@ class Cover:
         column, rest = undecided[0], undecided[1:]
         keep = [each for each in sets if each.mask >> column & 1]
         drop = [each for each in sets if not each.mask >> column & 1]
-        kept, levels = table.shape[0], self.levels[column]
+        above, levels = table.shape[0], self.levels[column]
         if keep:
-            self._margins(table.reshape(kept * levels, -1, self.folds), rest, keep, found)
+            self._margins(table.reshape(above * levels, -1, self.folds), rest, keep, found)
         if drop:
-            parts = table.reshape(kept, levels, -1)
+            parts = table.reshape(above, levels, -1)
             summed = parts[:, 0] + parts[:, 1] if levels > 1 else parts[:, 0]
             for level in range(2, levels):
                 summed += parts[:, level]
-            self._margins(summed.reshape(kept, -1, self.folds), rest, drop, found)
+            self._margins(summed.reshape(above, -1, self.folds), rest, drop, found)
 
     def _alone(self, chosen: _Set) -> Block:
         """A set too large for a block: number its occupied cells and count them."""

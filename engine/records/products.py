@@ -10,7 +10,7 @@ from math import comb
 import numpy as np
 from numpy.typing import NDArray
 
-from engine.records.joint import LARGEST, Block, Ints, numbered, one_set, rank, single
+from engine.records.joint import LARGEST, Block, Floats, Ints, Tally, numbered, one_set, rank, single, tallied
 from engine.records.layouts import Layout, laid_out
 
 _BLOCK = 2_000_000  # counts in a block, so that memory stays flat
@@ -49,22 +49,31 @@ class Walk:
 
     codes: (rows, columns).  levels: of each column.  fold: (rows,) 0 to folds - 1.
     size: of the largest sets, 1 or more.  tick: hears the fraction done.
+    weights: (rows,) what each row counts for, None for one each.
     """
 
     def __init__(
-        self, codes: Ints, levels: Sequence[int], fold: Ints, folds: int, size: int, tick: Callable[[float], None]
+        self,
+        codes: Ints,
+        levels: Sequence[int],
+        fold: Ints,
+        folds: int,
+        size: int,
+        tick: Callable[[float], None],
+        weights: Floats | None = None,
     ) -> None:
         self.codes = codes
         self.fold = fold
         self.folds = folds
         self.size = size
         self.tick = tick
+        self.weights = weights
         self.rows, self.columns = codes.shape
         self.levels = np.asarray(levels, dtype=np.int64)
         self.kept = _within_budget(self.levels, self.rows)
         self.first = np.zeros(self.columns + 1, dtype=np.int64)  # where a column begins in `one_hot`
         self.first[1:] = np.cumsum(np.where(self.kept, self.levels, 0))
-        self.exact = np.float32 if self.rows < 2**24 else np.float64
+        self.exact = np.float32 if self.rows < 2**24 and weights is None else np.float64
         self.one_hot = np.zeros((self.rows, int(self.first[-1])), dtype=np.uint8)
         for column in np.flatnonzero(self.kept):
             self.one_hot[np.arange(self.rows), self.first[column] + codes[:, column]] = 1
@@ -102,8 +111,8 @@ class Walk:
                 yield one_set(lower.prefix, lower.cells, counts)
                 yield from self._below(lower)
 
-    def _lower(self, node: _Node, column: int) -> tuple[_Node, NDArray[np.integer]]:
-        """The node's cells split by one more column, and (folds, occupied cells) the records in them."""
+    def _lower(self, node: _Node, column: int) -> tuple[_Node, NDArray[np.number]]:
+        """The node's cells split by one more column, and (folds, occupied cells) what they count."""
         levels = int(self.levels[column])
         prefix, cells = (*node.prefix, column), node.cells * levels
         if node.products is None or node.layout is None or not node.layout.holds(column):
@@ -112,7 +121,7 @@ class Walk:
             products = None
             if layout is not None and self._holds(layout, seen.size):
                 products = self._multiplied(layout, number, np.arange(self.rows), 0, seen.size)
-            counts = np.bincount(self.fold * seen.size + number, minlength=self.folds * seen.size)
+            counts = tallied(self.fold * seen.size + number, self.weights, self.folds * seen.size)
             return _Node(prefix, number, seen.size, cells, layout, products), counts.reshape(self.folds, -1)
         own = node.layout.own(column)
         every = node.products[:, :, own, own].reshape(self.folds, -1)
@@ -130,7 +139,7 @@ class Walk:
             into = place[node.number[others] * levels + self.other_codes[column]]
             products = self._multiplied(layout, into, others, 0, seen.size)
             self._subtract(products, layout, node.products, node.layout, seen, column)
-        return _Node(prefix, number, seen.size, cells, layout, products), every[:, seen].astype(np.int32)
+        return _Node(prefix, number, seen.size, cells, layout, products), self._tally(every[:, seen])
 
     def _all_dense(self, layout: Layout | None, prefix: tuple[int, ...], cells: int) -> bool:
         return layout is not None and layout.one.columns.shape[1] == self._later(prefix, cells).size
@@ -167,7 +176,7 @@ class Walk:
                         rank(node.prefix) + more.ranks,
                         node.cells * more.levels,
                         more.starts,
-                        np.take(flat, more.entries, axis=2).astype(np.int32),
+                        self._tally(np.take(flat, more.entries, axis=2)),
                     )
 
     def _by_codes(self, node: _Node, column: int, others: Ints, alone: bool) -> Iterator[Block]:
@@ -187,7 +196,11 @@ class Walk:
 
     def _single(self, columns: tuple[int, ...], cells: int, number: Ints, occupied: int) -> Block:
         """One set, from the numbers of its occupied cells."""
-        return single(columns, cells, number, occupied, self.fold, self.folds)
+        return single(columns, cells, number, occupied, self.fold, self.folds, self.weights)
+
+    def _tally(self, products: Products) -> Tally:
+        """Products are floats also where they count whole records."""
+        return products.astype(np.int32) if self.weights is None else products.astype(np.float64, copy=False)
 
     def _multiplied(self, layout: Layout, number: Ints, rows: Ints, low: int, high: int) -> Products:
         """(folds, high - low, one-hot columns, the same) products of the given rows, numbered, in cells low to high."""
@@ -199,16 +212,22 @@ class Walk:
         bounds = np.concatenate([[0], np.cumsum(np.bincount(group, minlength=high * self.folds))])
         begin, end = int(bounds[low * self.folds]), int(bounds[high * self.folds])
         edges = (bounds[low * self.folds : high * self.folds + 1] - begin).tolist()
-        hot = self.one_hot.take(by_group[begin:end], axis=0)[:, layout.used]
+        hot: NDArray[np.number] = self.one_hot.take(by_group[begin:end], axis=0)[:, layout.used]
         whole = hot.size <= _AT_ONCE
         if whole:
             hot = hot.astype(self.exact)
-        twin = hot.copy() if whole and hot.shape[0] < _SHORT * len(edges) else hot
+        twin = hot
+        if whole and self.weights is not None:
+            twin = hot * self.weights[by_group[begin:end], None]
+        elif whole and hot.shape[0] < _SHORT * len(edges):
+            twin = hot.copy()
         for place, (start, stop) in enumerate(pairwise(edges)):
             if start < stop:
                 part, same = hot[start:stop], twin[start:stop]
                 if not whole:
                     part = same = part.astype(self.exact)
+                    if self.weights is not None:
+                        same = part * self.weights[by_group[begin + start : begin + stop], None]
                 np.matmul(part.T, same, out=products[place % self.folds, place // self.folds])
         return products
 
