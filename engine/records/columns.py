@@ -11,10 +11,10 @@ from numpy.typing import NDArray
 
 from engine.records.bands import band_codes, band_levels, checked_cuts, equal_count_cuts
 from engine.records.cells import Cells, as_numbers, level_text
-from engine.records.column import BLANK, Column, Kind
+from engine.records.column import BLANK, SMALL_COUNT, Column, Kind
 from engine.records.kinds import MOST_LEVELS, Guess, category_levels, grade_levels, guess
 from engine.records.standing import groups_of, weights_of
-from engine.records.wording import cited, listing
+from engine.records.wording import cited, listing, per_cent
 from engine.refusal import Refusal, quoted
 
 KINDS: tuple[Kind, ...] = ("category", "grade", "number", "left out", "weight", "group")
@@ -82,7 +82,9 @@ def column_of(taken: Taken, kept: NDArray[np.bool_]) -> Column:
         )
     warnings = list(taken.warnings)
     if cells.blanks >= MUCH_BLANK * kept.size:
-        warnings.append(f"{round(100 * cells.blanks / kept.size)}% are blank. Say what a blank means here.")
+        few = 0 < cells.blanks < SMALL_COUNT
+        amount = f"Under {SMALL_COUNT}" if few else per_cent(cells.blanks / kept.size)
+        warnings.append(f"{amount} are blank. Say what a blank means here.")
     cuts: tuple[float, ...] = ()
     numbers = None
     if taken.kind == "number":

@@ -9,10 +9,10 @@ from math import prod
 import numpy as np
 from numpy.typing import NDArray
 
-from engine.records.column import Column
+from engine.records.column import SMALL_COUNT, Column
 from engine.records.joint import LARGEST
 from engine.records.moments import Numbers
-from engine.records.wording import figure, listing
+from engine.records.wording import figure, listing, per_cent
 from engine.refusal import Refusal, quoted
 
 SPIKE = 0.1  # share of the records in one value from which a number is no smooth amount
@@ -34,9 +34,9 @@ def taken_as_bands(columns: Sequence[Column], size: int, still: Callable[[], Non
     found: dict[str, str] = {}
     for column in columns:
         still()
-        why = _own_reason(column) if column.kind == "number" else None
+        why = own_reason(column) if column.kind == "number" else None
         if why is not None:
-            found[column.name] = why
+            found[column.name] = f"{quoted(column.name)} is taken as bands: {why}"
     fresh = {column.name for column in columns if column.kind != "number" or column.name in found}
     while fresh:
         constant = _constant_inside(columns, set(found), fresh, size, still)
@@ -55,7 +55,7 @@ def refuse_collinear(columns: Sequence[Column], size: int, still: Callable[[], N
     if not held:
         return
     values = np.column_stack([np.asarray(column.values) for column in held])
-    numbers = Numbers.standardised(range(len(held)), values)
+    numbers = Numbers.standardised(range(len(held)), values, still=still)
     if len(numbers.values) <= 2 * size:
         return
     alike = numbers.values.T @ numbers.values / len(values)
@@ -75,18 +75,23 @@ def refuse_collinear(columns: Sequence[Column], size: int, still: Callable[[], N
         )
 
 
-def _own_reason(column: Column) -> str | None:
+def own_reason(column: Column) -> str | None:
+    """Why the number `column` is taken as bands whatever the other columns hold, to follow a colon; None if it is not.
+
+    A count under SMALL_COUNT, or one that leaves as few, is not given away.
+    """
     values = np.asarray(column.values)
-    blank = np.isnan(values)
-    name = quoted(column.name)
-    if blank.any() or column.has_blank:
-        return f"{name} is taken as bands: a blank is a level of its own here, which only bands can have."
+    if np.isnan(values).any() or column.has_blank:
+        return "a blank is a level of its own here, which only bands can have."
     distinct, counts = np.unique(values, return_counts=True)
     common = int(counts.argmax())
-    share = counts[common] / values.size
-    if share < SPIKE:
+    most, rows = int(counts[common]), int(values.size)
+    if most < SPIKE * rows:
         return None
-    return f"{name} is taken as bands: {round(100 * share)}% of its records hold {figure(float(distinct[common]))}."
+    if most < SMALL_COUNT:
+        return f"a single value makes up {per_cent(SPIKE)} of its records or more."
+    share = per_cent(most / rows) if most == rows or rows - most >= SMALL_COUNT else "nearly all"
+    return f"{share} of its records hold {figure(float(distinct[common]))}."
 
 
 def _most_alike(column: Column) -> int:

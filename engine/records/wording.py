@@ -33,6 +33,11 @@ def people(count: int, small: int) -> str:
     return f"{count:,}" if count == 0 or count >= small else f"under {small}"
 
 
+def per_cent(share: float) -> str:
+    """A share, 0 to 1, in whole per cent; halves go up, the hair is for halves that binary numbers miss."""
+    return f"{int(100 * share + 0.5 + 1e-9)}%"
+
+
 def listing(names: Sequence[str], most: int | None = 4, joint: str = "and") -> str:
     """a, b and c; after `most` names "and 3 more". most: None for every name.  joint: the word before the last."""
     if most is not None and len(names) > most:

@@ -7,7 +7,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from engine.records import spikes
-from engine.records.spikes import refuse_collinear, taken_as_bands
+from engine.records.spikes import own_reason, refuse_collinear, taken_as_bands
 from engine.records.steps import recording_step
 from engine.records.table import Table
 from engine.refusal import Refusal
@@ -29,6 +29,22 @@ def test_a_tenth_of_the_records_in_one_value_makes_bands(rng):
     nearly[:19], spiked[:20] = 0.0, 0.0
     found = taken_as_bands(columns(nearly=nearly, spiked=spiked), 3)
     assert found == {"spiked": "“spiked” is taken as bands: 10% of its records hold 0."}
+
+
+@pytest.mark.parametrize(
+    ("rows", "alike", "why"),
+    [
+        (60, 9, "a single value makes up 10% of its records or more."),
+        (200, 190, "95% of its records hold 0."),
+        (200, 191, "nearly all of its records hold 0."),
+        (200, 25, "13% of its records hold 0."),
+        (200, 19, None),
+    ],
+)
+def test_a_reason_gives_no_small_count_away(rng, rows, alike, why):
+    values = rng.normal(size=rows)
+    values[:alike] = 0.0
+    assert own_reason(columns(x=values, y=np.resize(["a", "b"], rows))[0]) == why
 
 
 @pytest.mark.parametrize(("records", "bands"), [(9, False), (10, True)])

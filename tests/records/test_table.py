@@ -163,8 +163,10 @@ def test_levels_that_only_dropped_rows_hold_are_gone():
     assert gone.columns["x"].levels == ("a", "b")
 
 
-def test_a_column_with_many_blanks_asks_what_they_mean():
-    assert "17% are blank. Say what a blank means here." in table(kinds={"age": "number"}).columns["age"].warnings
+def test_a_column_with_many_blanks_asks_what_they_mean_and_few_of_them_are_not_counted():
+    assert "Under 10 are blank. Say what a blank means here." in table(kinds={"age": "number"}).columns["age"].warnings
+    many = pd.DataFrame({"age": [None] * 25 + [20.0, 31] * 87 + [45.0], "town": ["a", "b"] * 100})
+    assert "13% are blank. Say what a blank means here." in Table.from_frame(many).columns["age"].warnings
 
 
 def test_a_choice_is_named_as_the_reason():
