@@ -2,19 +2,28 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.special import ndtr, ndtri
+
+from engine.answering.normal import log_between, log_density, moments_between, standardised
 
 Floats = NDArray[np.float64]
+
+FAR = 40.0  # standard deviations that no quantile lies beyond
+HALVINGS = 200
+AT_ONCE = 2_000_000  # numbers of a grid x parts x draws that are worked on at once
 
 
 @dataclass(frozen=True, eq=False)
 class Gate:
     """Another number X of each part, kept where low <= X < high: X given the value y ~ N(at + slope y, sd^2).
 
-    slope, at, sd: (parts, draws).  low, high: (parts,).  A number cut itself has slope 1, at 0 and sd 0.
+    All (parts, draws), or what broadcasts to it.
     """
 
     slope: Floats
@@ -28,11 +37,111 @@ class Gate:
 class Mixture:
     """Parts of a mixture in every draw.
 
-    weight: (parts, draws), each draw sums to 1.  mean, sd: (parts, draws) of the normal before any cut; sd 0 is a
-    single value.  gate: what cuts it; None when nothing does.
+    weight: (parts, draws), each draw sums to 1, nan where what was seen cannot be.  mean, sd: (parts, draws) of the
+    normal before any cut; sd 0 is a single value.  gate: another number that cuts it; None when none does.
+    low, high: (parts, draws), the interval that the number itself is kept in; None when it is kept in none.
     """
 
     weight: Floats
     mean: Floats
     sd: Floats
     gate: Gate | None = None
+    low: Floats | None = None
+    high: Floats | None = None
+
+    @property
+    def means(self) -> Floats:
+        """(draws,)"""
+        return np.asarray((self.weight * self._moments[0]).sum(axis=0))
+
+    @property
+    def sds(self) -> Floats:
+        """(draws,) standard deviations."""
+        mean, variance = self._moments
+        away = mean - self.means
+        return np.asarray(np.sqrt((self.weight * (variance + away * away)).sum(axis=0)))
+
+    def below(self, grid: Sequence[float] | Floats) -> Floats:
+        """(grid, draws) share below each value."""
+        return self._on(grid, self._parts_below)
+
+    def density(self, grid: Sequence[float] | Floats) -> Floats:
+        """(grid, draws) density at each value, per unit of the number; inf at a single value that has a share."""
+        return self._on(grid, self._parts_density)
+
+    def bands(self, cuts: Sequence[float]) -> Floats:
+        """(bands, draws) shares of the bands that `cuts` make."""
+        below = self.below(np.asarray(cuts, dtype=np.float64))
+        one = np.where(np.isnan(self.weight[:1]), np.nan, 1.0)
+        return np.diff(np.concatenate([0.0 * one, below, one]), axis=0)
+
+    def quantile(self, q: float) -> Floats:
+        """(draws,) the smallest value that a share `q` (above 0, below 1) of the distribution does not exceed.
+
+        By halving and Newton steps, to the last digits; a single value comes out as it is.
+        """
+        z = float(ndtri(q))
+        if len(self.weight) == 1 and self.gate is None and self.low is None:
+            return np.asarray(self.mean[0] + z * self.sd[0] + 0.0 * self.weight[0])
+        low, high = self._bracket(z)
+        for _ in range(HALVINGS):
+            middle = 0.5 * (low + high)
+            going = (low < middle) & (middle < high)  # false too where it is nan
+            if not np.any(going):
+                break
+            under = self._at(middle, self._parts_below) < q
+            low, high = np.where(going & under, middle, low), np.where(going & ~under, middle, high)
+        single = np.where((self.sd == 0.0) & (self.weight > 0.0), self.mean, np.nan)
+        exact = (single >= low) & (single <= high)
+        return np.where(exact.any(axis=0), np.where(exact, single, -np.inf).max(axis=0), high)
+
+    def _bracket(self, z: float) -> tuple[Floats, Floats]:
+        """Values that the quantile lies between in every draw."""
+        live = self.weight > 0.0
+        reach = (z, z) if self.gate is None and self.low is None else (-FAR, FAR)
+        low, high = (self.mean + side * self.sd for side in reach)
+        if self.low is not None and self.high is not None:
+            low, high = np.maximum(low, self.low), np.minimum(high, self.high)
+            low, high = np.minimum(low, self.high), np.maximum(high, self.low)
+        lowest, highest = np.where(live, low, np.inf).min(axis=0), np.where(live, high, -np.inf).max(axis=0)
+        some = live.any(axis=0)
+        margin = 1e-9 * (1.0 + np.where(some, np.maximum(np.abs(lowest), np.abs(highest)), 0.0))
+        return np.where(some, lowest, np.nan) - margin, np.where(some, highest, np.nan) + margin
+
+    def _on(self, grid: Sequence[float] | Floats, parts: Callable[[Floats], Floats]) -> Floats:
+        points = np.asarray(grid, dtype=np.float64)
+        rows = max(1, AT_ONCE // max(self.weight.size, 1))
+        found = [self._at(points[start : start + rows, None, None], parts) for start in range(0, len(points), rows)]
+        return np.concatenate(found) if found else np.zeros((0, self.weight.shape[1]))
+
+    def _at(self, x: Floats, parts: Callable[[Floats], Floats]) -> Floats:
+        """Sum over parts of what `parts` says of x, (..., 1 or parts, 1 or draws)."""
+        live = np.where(self.weight == 0.0, 0.0, parts(x))
+        with np.errstate(invalid="ignore"):
+            return np.asarray((self.weight * live).sum(axis=-2))
+
+    def _parts_below(self, x: Floats) -> Floats:
+        if self.low is None or self.high is None:
+            certain = self.sd == 0.0
+            return np.where(certain, self.mean < x, ndtr((x - self.mean) / np.where(certain, 1.0, self.sd)))
+        start, end = standardised(self.low, self.high, self.mean, self.sd)
+        mass = log_between(start, end)
+        certain = self.sd == 0.0
+        z = np.clip((x - self.mean) / np.where(certain, 1.0, self.sd), start, end)
+        share = np.exp(log_between(start, z) - np.where(mass > -np.inf, mass, 0.0))
+        return np.where(certain, self.mean < x, np.where(x >= self.high, 1.0, np.minimum(share, 1.0)))
+
+    def _parts_density(self, x: Floats) -> Floats:
+        found = log_density(x, self.mean, self.sd)
+        if self.low is not None and self.high is not None:
+            mass = log_between(*standardised(self.low, self.high, self.mean, self.sd))
+            found = np.where((self.low <= x) & (x < self.high), found - np.where(mass > -np.inf, mass, 0.0), -np.inf)
+        return np.exp(found)
+
+    @cached_property
+    def _moments(self) -> tuple[Floats, Floats]:
+        """Mean and variance of each part, (parts, draws)."""
+        if self.low is None or self.high is None:
+            return self.mean, self.sd * self.sd
+        mean, variance = moments_between(*standardised(self.low, self.high, self.mean, self.sd))
+        return self.mean + self.sd * mean, self.sd * self.sd * variance

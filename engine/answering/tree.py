@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import string
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import cached_property
 
 import numpy as np
@@ -38,7 +38,8 @@ class Tree:
     scopes: labels of every table, leaves first, then one per step; those summed out first lead, so that what is
     summed over is outermost in memory.  axes: for each leaf, its axes as given in the order of its scope.
     roots: tables left at the end.
-    reads: label -> the table whose two messages give its marginal.  outward: tables whose outward message is needed.
+    reads: label -> the table whose two messages give its marginal.  wholes: leaves that are read whole.
+    outward: tables whose outward message is needed.
     cells: cells touched per draw, inward and outward.  stored: cells kept at once per draw.
     """
 
@@ -47,6 +48,7 @@ class Tree:
     steps: tuple[Step, ...]
     roots: tuple[int, ...]
     reads: Mapping[int, int]
+    wholes: tuple[int, ...]
     outward: frozenset[int]
     cells: float
     stored: float
@@ -56,10 +58,17 @@ class Tree:
         return Programme(self)
 
 
-def plan(scopes: Scopes, sizes: Mapping[int, int], watched: Sequence[int], keep: Sequence[int] = ()) -> Tree:
+def plan(
+    scopes: Scopes,
+    sizes: Mapping[int, int],
+    watched: Sequence[int],
+    keep: Sequence[int] = (),
+    wholes: Sequence[int] = (),
+) -> Tree:
     """Lay out the tree for tables over `scopes`; `sizes` gives the levels of each label.
 
     watched: labels whose marginals are asked for.  keep: labels left in the root, for one joint table of them.
+    wholes: places in `scopes` of tables whose labels are to be read jointly.
     """
     order = elimination_order(scopes, sizes, keep)
     position = {label: turn for turn, label in enumerate((*order, *keep))}
@@ -101,7 +110,7 @@ def plan(scopes: Scopes, sizes: Mapping[int, int], watched: Sequence[int], keep:
     while kept and len(alive) > 1:
         left, right = sorted(alive, key=by_cells)[:2]
         contract(left, right)
-    return _tree(axes, every, steps, tuple(sorted(alive)), sizes, watched)
+    return _tree(axes, every, steps, tuple(sorted(alive)), sizes, watched, tuple(dict.fromkeys(wholes)))
 
 
 def _tree(
@@ -111,6 +120,7 @@ def _tree(
     roots: tuple[int, ...],
     sizes: Mapping[int, int],
     watched: Sequence[int],
+    wholes: tuple[int, ...],
 ) -> Tree:
     """Choose where each watched label is read, and which outward messages that needs."""
     parent = {table: step for step in steps for table in (step.left, step.right) if table is not None}
@@ -122,7 +132,7 @@ def _tree(
         for side in by_cells:  # the smaller of two sides that hold a label comes last and is kept
             reads.update(dict.fromkeys(wanted.intersection(scopes[side]).difference(scopes[step.out]), side))
     outward: set[int] = set()
-    for table in reads.values():
+    for table in (*reads.values(), *wholes):
         while table not in outward and table in parent:
             outward.add(table)
             table = parent[table].out
@@ -132,7 +142,7 @@ def _tree(
         union = _cells({label for side in sides for label in scopes[side]}, sizes)
         cells += union * (1 + sum(side in outward for side in sides))
     stored = sum(_cells(scope, sizes) for scope in scopes) + sum(_cells(scopes[table], sizes) for table in outward)
-    return Tree(axes, tuple(scopes), tuple(steps), roots, reads, frozenset(outward), cells, stored)
+    return Tree(axes, tuple(scopes), tuple(steps), roots, reads, wholes, frozenset(outward), cells, stored)
 
 
 def _cells(scope: Sequence[int] | set[int], sizes: Mapping[int, int]) -> float:
@@ -149,11 +159,13 @@ class Read:
     log_evidence: (draws,) natural log of the summed total, the probability of the pins; -inf where it is 0.
     marginals: label -> (levels, draws), each draw sums to 1; nan where the pins are impossible.
     joint: (levels of the kept labels in the root's order..., draws), unscaled up to a factor per draw; None without.
+    wholes: leaf -> the joint shares of its labels, (levels in the leaf's order as given..., draws).
     """
 
     log_evidence: np.ndarray
     marginals: Mapping[int, np.ndarray]
     joint: np.ndarray | None = None
+    wholes: Mapping[int, np.ndarray] = field(default_factory=dict)
 
 
 class Programme:
@@ -177,6 +189,14 @@ class Programme:
         self.reads = [
             (label, table, _subscripts([scopes[table], received[table]], (label,)))
             for label, table in tree.reads.items()
+        ]
+        self.wholes = [
+            (
+                table,
+                _subscripts([scopes[table], received.get(table, ())], scopes[table]),
+                (*np.argsort(tree.axes[table]).tolist(), len(scopes[table])),
+            )
+            for table in tree.wholes
         ]
 
     def _inward(self, step: Step) -> str:
@@ -220,12 +240,17 @@ class Programme:
             for label, table, subscripts in self.reads:
                 belief = np.einsum(subscripts, inward[table], outward[table])
                 marginals[label] = belief / belief.sum(axis=0)
+            wholes: dict[int, np.ndarray] = {}
+            for table, subscripts, back in self.wholes:
+                belief = np.einsum(subscripts, inward[table], outward[table])
+                total = belief.reshape(-1, belief.shape[-1]).sum(axis=0)
+                wholes[table] = np.transpose(belief / total, back)
             log_total = log_constant
             for root in tree.roots:
                 total = inward[root]
                 log_total = log_total + np.log(total.reshape(-1, total.shape[-1]).sum(axis=0))
         joint = inward[tree.roots[0]] if len(tree.roots) == 1 else None
-        return Read(np.atleast_1d(np.asarray(log_total, dtype=np.float64)), marginals, joint)
+        return Read(np.atleast_1d(np.asarray(log_total, dtype=np.float64)), marginals, joint, wholes)
 
 
 def _scaled(message: np.ndarray) -> tuple[np.ndarray, np.ndarray]:

@@ -1,0 +1,222 @@
+"""A block of numbers as one factor over the categories and cells that it touches, and a number of it as a mixture."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from engine.answering.layout import Axis, Block, Layout
+from engine.answering.linear import Given, Line, apart, following, given, steady, together
+from engine.answering.mixed import Drawn, MixedWorld
+from engine.answering.mixture import Gate, Mixture
+from engine.answering.normal import log_between, standardised
+from engine.network.nodes import Number
+from engine.network.regression import Coefficients
+
+Floats = NDArray[np.float64]
+
+EXACTLY = 230.0  # natural log that a value counts for where its number could be nothing else: more than any density
+
+
+@dataclass(frozen=True, eq=False)
+class Solved:
+    """A block given its values; arrays broadcast over (categories..., draws).
+
+    affine: number in cells, or watched -> (constant, slope) on its root.
+    """
+
+    block: Block
+    given: Given
+    affine: Mapping[str, tuple[Floats, Floats]]
+
+    def open(self, array: Floats) -> Floats:
+        """The same with an axis of length 1 for every number in several cells."""
+        inner = len(self.block.scope) - self.block.outer
+        shape = (1,) * (self.block.outer + 1 - array.ndim) + array.shape
+        return array.reshape((*shape[:-1], *(1,) * inner, shape[-1]))
+
+    def line(self, name: str) -> tuple[Floats, Floats]:
+        """Mean and standard deviation of a number before any cut."""
+        line = self.given.lines[name]
+        return self.open(line.offset), self.open(steady(line))
+
+
+def solve(block: Block, world: MixedWorld, drawn: Drawn, keep: Sequence[str]) -> Solved:
+    """Add up the numbers of a block, give those with values their values, and keep what `keep` and the cells need."""
+    outer = block.scope[: block.outer]
+    lines: dict[str, Line] = {}
+    exact: dict[str, tuple[Floats, Floats]] = {}
+    nodes = {node.name: node for node in world.nodes}
+    for noise, equation in enumerate(block.equations):
+        found = drawn[equation.name]
+        assert isinstance(found, Coefficients)
+        offset = arranged(found.intercept, equation.axes, outer)
+        slopes = np.moveaxis(np.asarray(found.slopes), -2, 0)
+        terms: list[tuple[Floats, Line]] = []
+        own: tuple[Floats, Floats] | None = None
+        for parent, slope in zip(equation.parents, slopes, strict=True):
+            arranged_slope = arranged(slope, equation.axes, outer)
+            if parent in world.values:
+                offset = offset + arranged_slope * world.values[parent]
+            else:
+                terms.append((arranged_slope, lines[parent]))
+                own = exact[parent]
+        sd = np.sqrt(arranged(found.variance, equation.axes, outer))
+        node = nodes[equation.name]
+        assert isinstance(node, Number)
+        lines[equation.name] = following(offset, terms, noise, sd)
+        if len(terms) == 1 and own is not None and node.regression is None and not np.any(node.variance):
+            exact[equation.name] = offset + terms[0][0] * own[0], terms[0][0] * own[1]
+        else:
+            exact[equation.name] = np.zeros(1), np.ones(1)
+    wanted = {*block.seen, *block.gates, *block.roots, *keep}
+    kept = {name: line for name, line in lines.items() if name in wanted}
+    values = [(name, world.values[name]) for name in block.seen]
+    return Solved(block, given(kept, values), {name: exact[name] for name in kept})
+
+
+def arranged(array: NDArray[np.float64], axes: Sequence[Axis], scope: Sequence[int]) -> Floats:
+    """(parent levels..., draws) as (scope..., draws): the levels left, length 1 where a label is no parent."""
+    found = np.asarray(array)
+    if found.strides[-1] == 0:
+        found = found[..., :1]
+    found, labels = restricted(found, axes)
+    order = sorted(range(len(labels)), key=lambda axis: scope.index(labels[axis]))
+    found = np.transpose(found, (*order, len(labels)))
+    shape = dict(zip((labels[axis] for axis in order), found.shape, strict=False))
+    return found.reshape((*(shape.get(label, 1) for label in scope), found.shape[-1]))
+
+
+def restricted(
+    array: NDArray[np.float64], axes: Sequence[Axis], bands: Mapping[str, int] | None = None
+) -> tuple[Floats, list[int]]:
+    """Take away the levels that pins leave out, and the axes of which one level is left; also the labels that remain.
+
+    bands: band of every number with a value, where one is among the axes.
+    """
+    labels: list[int] = []
+    for axis in axes:
+        if isinstance(axis.left, tuple):
+            if len(axis.left) < array.shape[len(labels)]:
+                array = np.take(array, axis.left, axis=len(labels))
+            assert axis.label is not None
+            labels.append(axis.label)
+        else:
+            position = axis.left if isinstance(axis.left, int) else (bands or {})[axis.left]
+            array = array[(slice(None),) * len(labels) + (position,)]
+    return array, labels
+
+
+def factor(solved: Solved, world: MixedWorld, layout: Layout) -> tuple[Floats, Floats]:
+    """(scope..., draws) of a block, largest cell of every draw at 1, and the natural log of what was divided out."""
+    block = solved.block
+    logs = solved.open(solved.given.log_density) + solved.open(EXACTLY * solved.given.certain.astype(np.float64))
+    if block.roots:
+        logs = logs + _log_mass(solved, _intervals(solved, world, layout))
+    shape = tuple(layout.sizes[label] for label in block.scope)
+    flat = np.broadcast_to(logs, (*shape, logs.shape[-1]))
+    largest = flat.reshape(-1, flat.shape[-1]).max(axis=0)
+    largest = np.where(largest > -np.inf, largest, 0.0)
+    sure = solved.open(solved.given.certain)
+    lifted = EXACTLY * sure.reshape(-1, sure.shape[-1]).max(axis=0)
+    return np.exp(flat - largest), largest - lifted
+
+
+def _intervals(solved: Solved, world: MixedWorld, layout: Layout) -> dict[str | None, tuple[Floats, Floats]]:
+    """What the cells leave of every root: low and high over (scope..., draws). None: of the constants, in or out."""
+    block = solved.block
+    bands = {node.name: node.bands for node in world.nodes if isinstance(node, Number)}
+    found: dict[str | None, tuple[Floats, Floats]] = {}
+    for name, root in block.roots.items():
+        ends = (-np.inf, *bands[name], np.inf)
+        bottom, top = world.ranges.get(name, (-np.inf, np.inf))
+        cells = layout.boxed[name]
+        low = np.maximum([ends[first] for first, _ in cells], bottom)
+        high = np.minimum([ends[last + 1] for _, last in cells], top)
+        shape = [1] * (len(block.scope) + 1)
+        if name in layout.labels:
+            shape[block.scope.index(layout.labels[name])] = len(cells)
+        low, high = low.reshape(shape), high.reshape(shape)
+        if root is None:
+            constant, slope = solved.open(solved.given.lines[name].offset), np.zeros(1)
+        else:
+            constant, slope = (solved.open(array) for array in solved.affine[name])
+        low, high = back(low, high, constant, slope)
+        before = found.get(root, (np.full(1, -np.inf), np.full(1, np.inf)))
+        found[root] = np.maximum(low, before[0]), np.minimum(high, before[1])
+    return found
+
+
+def back(low: Floats, high: Floats, constant: Floats, slope: Floats) -> tuple[Floats, Floats]:
+    """Where x lies when low <= constant + slope x < high; without a slope everywhere or nowhere."""
+    flat = slope == 0.0
+    inside = (low <= constant) & (constant < high)
+    divisor = np.where(flat, 1.0, slope)
+    one, other = (low - constant) / divisor, (high - constant) / divisor
+    down = slope < 0.0
+    start, end = np.where(down, other, one), np.where(down, one, other)
+    return (
+        np.where(flat, np.where(inside, -np.inf, np.inf), start),
+        np.where(flat, np.where(inside, np.inf, -np.inf), end),
+    )
+
+
+def _log_mass(solved: Solved, intervals: Mapping[str | None, tuple[Floats, Floats]]) -> Floats:
+    """Natural log of the probability that every number is in its cell."""
+    total: Floats = np.zeros(1)
+    if None in intervals:
+        low, high = intervals[None]
+        total = np.where(low < high, 0.0, -np.inf)
+    gates = solved.block.gates
+    if len(gates) == 1:
+        mean, sd = solved.line(gates[0])
+        total = total + log_between(*standardised(*intervals[gates[0]], mean, sd))
+    return total
+
+
+def mixture(solved: Solved, name: str, shares: Floats, world: MixedWorld, layout: Layout) -> Mixture:
+    """The distribution of a number: a part for every cell of `shares`, (scope..., draws)."""
+    block = solved.block
+    root = layout.roots[name]
+    mean, sd = solved.line(name)
+    draws = shares.shape[-1]
+
+    def flat(array: Floats) -> Floats:
+        return np.broadcast_to(array, (*shares.shape[:-1], draws)).reshape(-1, draws)
+
+    gate, low, high = None, None, None
+    intervals = _intervals(solved, world, layout) if block.roots else {}
+    for cut in block.gates:
+        start, end = intervals[cut]
+        if cut == root:
+            constant, slope = (solved.open(array) for array in solved.affine[name])
+            low, high = (flat(side) for side in _forward(start, end, constant, slope))
+            continue
+        own, other = solved.given.lines[name], solved.given.lines[cut]
+        variance = solved.open(steady(own)) ** 2
+        still = variance == 0.0
+        lean = np.where(still, 0.0, solved.open(together(own, other)) / np.where(still, 1.0, variance))
+        rest = np.where(still, solved.open(steady(other)), solved.open(apart(other, _closed(solved, lean), own)))
+        at = solved.open(other.offset) - lean * mean
+        gate = Gate(flat(lean), flat(at), flat(rest), flat(start), flat(end))
+    return Mixture(flat(shares), flat(mean), flat(sd), gate, low, high)
+
+
+def _forward(low: Floats, high: Floats, constant: Floats, slope: Floats) -> tuple[Floats, Floats]:
+    """Where constant + slope x lies when low <= x < high; without a slope that leaves it where it is."""
+    flat = slope == 0.0
+    factor = np.where(flat, 1.0, slope)
+    one, other = constant + factor * low, constant + factor * high
+    return (
+        np.where(flat, -np.inf, np.where(slope < 0.0, other, one)),
+        np.where(flat, np.inf, np.where(slope < 0.0, one, other)),
+    )
+
+
+def _closed(solved: Solved, array: Floats) -> Floats:
+    """Without the axes that `open` put in."""
+    shape = array.shape
+    return array.reshape((*shape[: solved.block.outer], shape[-1]))
