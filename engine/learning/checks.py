@@ -7,6 +7,7 @@ from numbers import Integral
 
 import numpy as np
 
+from engine.learning.folds import FOLDS
 from engine.learning.search import check_widths
 from engine.order import Direction, Order
 from engine.records.spikes import refuse_collinear, taken_as_bands
@@ -42,6 +43,13 @@ def check_table(table: Table, order: Order) -> None:
                 f"The column {quoted(name)} is left out of the records but stands in the order.",
                 where=name,
                 do="Take it out of the order, or give it a kind.",
+            )
+        if not table.columns[name].used:
+            raise Refusal(
+                f"The column {quoted(name)} is taken as the {table.columns[name].kind} of the records but stands in "
+                "the order.",
+                where=name,
+                do="Take it out of the order, or give it another kind.",
             )
 
 
@@ -97,6 +105,17 @@ def check_coded(coded: Coded, order: Order) -> None:
                     do=f"Choose from: {', '.join(levels)}.",
                 )
     check_widths([(stage.name, len(stage.columns)) for stage in order.stages])
+
+
+def check_groups(group: np.ndarray | None) -> None:
+    """Raises Refusal for fewer groups than parts that are held out, since a group stays whole."""
+    groups = FOLDS if group is None else int(np.unique(group).size)
+    if groups < FOLDS:
+        raise Refusal(
+            f"The records belong to {groups} groups; at least {FOLDS} are needed to hold out parts of them.",
+            where="group",
+            do="Take another column as the group, or none.",
+        )
 
 
 def numbers_to_learn(

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections import OrderedDict
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 
 import numpy as np
 from numpy.typing import NDArray
@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from engine.network.nodes import Category, Node, Number
 from engine.network.parameters import dirichlet_posterior, predictive
 from engine.network.regression import Regression, family_regression
-from engine.records.counts import ArrayCounts
+from engine.records.counts import ArrayCounts, exactly_summed
 from engine.records.moments import ArrayMoments, FamilySums, Numbers
 from engine.records.table import Coded
 
@@ -20,15 +20,18 @@ _HELD = 4_000_000  # sums of families kept, 32 MB
 
 def counts_of(coded: Coded, fold: NDArray[np.integer] | None = None, folds: int = 1) -> ArrayCounts:
     """Counts of all columns; a number is counted by its bands."""
-    return ArrayCounts(coded.codes, [len(levels) for levels in coded.levels], fold, folds)
+    return ArrayCounts(coded.codes, [len(levels) for levels in coded.levels], fold, folds, coded.weights)
 
 
-def moments_of(coded: Coded, fold: NDArray[np.integer] | None = None, folds: int = 1) -> ArrayMoments | None:
-    """Moments of the numbers; None when there is none."""
+def moments_of(
+    coded: Coded, fold: NDArray[np.integer] | None = None, folds: int = 1, still: Callable[[], None] = lambda: None
+) -> ArrayMoments | None:
+    """Moments of the numbers; None when there is none.  still: called often, a chance to cancel."""
     if not coded.numbers:
         return None
-    numbers = Numbers.standardised(coded.numbers, coded.values)
-    return ArrayMoments(coded.codes, [len(levels) for levels in coded.levels], numbers, fold, folds)
+    weights = exactly_summed(coded.weights)
+    numbers = Numbers.standardised(coded.numbers, coded.values, weights, still)
+    return ArrayMoments(coded.codes, [len(levels) for levels in coded.levels], numbers, fold, folds, weights)
 
 
 class FamilyMoments:

@@ -7,11 +7,13 @@ from collections.abc import Sequence
 import numpy as np
 import pandas as pd
 
-from engine.learning import held_out
-from engine.learning.checks import check_coded, check_limits, check_rows, check_table, numbers_to_learn
+from engine.learning.checks import check_coded, check_groups, check_limits, check_rows, check_table, numbers_to_learn
 from engine.learning.evidence import counts_of, moments_of
 from engine.learning.families import Candidates, Families, candidates
+from engine.learning.folds import FOLDS
+from engine.learning.folds import folds as dealt
 from engine.learning.gaussian import number_scores
+from engine.learning.held_out import Scoring
 from engine.learning.learned import Learned
 from engine.learning.mixed import FamilyScores, MixedScores, mixed_scores
 from engine.learning.posterior import posterior
@@ -79,9 +81,16 @@ def learn_coded(
     """
     check_limits(max_links, max_parents, graphs, seed)
     check_coded(coded, order)
+    if folds:
+        check_groups(coded.group)
     stages = candidates(order, max_parents)
-    fold, parts = (held_out.folds(coded.codes.shape[0], seed), held_out.FOLDS) if folds else (None, 1)
-    counts, moments = counts_of(coded, fold, parts), moments_of(coded, fold, parts)
+    fold, parts = (dealt(coded.codes.shape[0], seed, coded.group), FOLDS) if folds else (None, 1)
+
+    def still() -> None:
+        if progress is not None:
+            progress(0.0, "Looking at how each number varies")
+
+    counts, moments = counts_of(coded, fold, parts), moments_of(coded, fold, parts, still)
     say = Saying(progress, counts, moments, stages, max_parents)
 
     scores = _scores(counts, moments, max_parents + 1, ess, say)
@@ -98,9 +107,9 @@ def learn_coded(
     curve = _curve(found)
     recommended = int(curve["links"].iloc[int(curve["score"].to_numpy().argmax())])
     if folds:
-        scoring = held_out.Scoring(coded, counts, moments, tuple(found.parents))
-        for part in range(held_out.FOLDS):
-            say.begin(f"Scoring part {part + 1} of {held_out.FOLDS} of the records held out")
+        scoring = Scoring(coded, counts, moments, tuple(found.parents))
+        for part in range(FOLDS):
+            say.begin(f"Scoring part {part + 1} of {FOLDS} of the records held out")
             again = size_curve(stages, scores, 1 + part, max_parents, max_links, say.within)
             scoring.take(part, again.parents, say.still)
         judged = scoring.result()

@@ -35,7 +35,7 @@ class Saying:
         searching = sum(len(stage) * 2.0 ** len(stage) * columns * 2e-8 for stage in stages) + 0.02 * columns / 10
         scoring = 0.001 * columns * max_parents + 1.5e-4 * columns * thousands
         if moments is not None:
-            scoring += len(moments.numbers.columns) * max_parents * (0.02 + 0.001 * thousands)
+            scoring += len(moments.numbers.columns) * max_parents * (0.006 + 0.0003 * thousands)
         weighing = sum(len(stage) * (4.0 ** min(len(stage), 10)) * 2e-7 for stage in stages) + 0.003 * columns
         self.steps = [counting, *summing, searching, weighing, *[searching + scoring] * parts]
         self.at = -1

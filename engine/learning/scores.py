@@ -73,11 +73,14 @@ def _block_scores(block: Block, terms: _Terms, parts: int) -> Floats:
     row = terms.rows_for(block.cells)
     offset = np.repeat(row, ends - block.starts)
     table = terms.table
-    whole = block.counts.sum(axis=0, dtype=np.int32) if parts > 1 else block.counts[0]
+    whole = block.counts.sum(axis=0, dtype=block.counts.dtype) if parts > 1 else block.counts[0]
+    weighted = block.counts.dtype.kind == "f"
     scores = np.empty((parts, block.ranks.size))
     for part in range(parts):
         counts = whole if part == 0 else whole - block.counts[part - 1]
-        if terms.all_tabulated:
+        if weighted:
+            values = terms.of_weights(counts, block.cells, ends - block.starts)
+        elif terms.all_tabulated:
             values = table.take((counts + offset).reshape(-1)).reshape(cells, more)
         else:
             values = terms.beyond(counts, row, ends - block.starts)
@@ -108,6 +111,12 @@ class _Terms:
                 self.joint.append(q)
             self.table = np.concatenate([self.table, *rows])
         return np.asarray([self.known[q] for q in cells.tolist()], dtype=np.int64)
+
+    def of_weights(self, counts: NDArray[np.float64], cells: Ints, lengths: Ints) -> Floats:
+        """For sums of weights, which are no whole numbers."""
+        prior = self.ess / cells.astype(np.float64)
+        each = np.repeat(prior, lengths)
+        return np.asarray(gammaln(counts + each) - np.repeat(gammaln(prior), lengths))
 
     def beyond(self, counts: NDArray[np.int32], row: Ints, lengths: Ints) -> Floats:
         """As the look-up, for counts that may lie outside the table."""

@@ -37,16 +37,35 @@ class Numbers:
     step: Floats
 
     @classmethod
-    def standardised(cls, columns: Sequence[int], values: Floats) -> Numbers:
-        """(rows, numbers) `values` in their own units, finite, each column of more than one value."""
+    def standardised(
+        cls,
+        columns: Sequence[int],
+        values: Floats,
+        weights: Floats | None = None,
+        still: Callable[[], None] = lambda: None,
+    ) -> Numbers:
+        """(rows, numbers) `values` in their own units, finite, each column of more than one value.
+
+        weights: (rows,) what each record counts for, None for 1.  still: called often, a chance to cancel.
+        """
         values = np.asfortranarray(np.asarray(values, dtype=np.float64).reshape(-1, len(columns)))
         if not np.isfinite(values).all():
             raise AssertionError("a number with blanks is taken as bands before it comes here")
-        centre, scale = values.mean(axis=0), values.std(axis=0)
+        equal = weights is None or bool((weights == weights[0]).all())
+        standard = np.empty_like(values)
+        centre, scale, step = (np.empty(len(columns)) for _ in range(3))
+        for place in range(len(columns)):
+            column = values[:, place]
+            centre[place] = column.mean() if equal else np.average(column, weights=weights)
+            away = column - centre[place]
+            scale[place] = np.sqrt((away * away).mean() if equal else np.average(away * away, weights=weights))
+            standard[:, place] = away
+            step[place] = recording_step(column, still)
+            still()
         if not (scale > 0.0).all():
             raise AssertionError("a number with a single value is refused before it comes here")
-        step = np.asarray([recording_step(values[:, place]) for place in range(len(columns))])
-        return cls(tuple(columns), (values - centre) / scale, centre, scale, step)
+        standard /= scale
+        return cls(tuple(columns), standard, centre, scale, step)
 
     @property
     def rounding(self) -> Floats:
@@ -150,6 +169,7 @@ class ArrayMoments:
             held, begun = 0, before / sum(costs)
             at = begun
             for piece in self._pieces(chosen, wide):
+                hear(begun)
                 more = (piece.high - piece.low) * self.folds * _terms(numbers, wide)
                 if waiting and held + more > _HELD:
                     yield self._summed(waiting, wide, hear, begun, at)

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -9,11 +11,11 @@ FINE = 1e-4  # of the standard deviation: a smaller step changes no score of few
 _TRIES = 40  # each shortens the step at least by half
 
 
-def recording_step(values: NDArray[np.float64]) -> float:
+def recording_step(values: NDArray[np.float64], still: Callable[[], None] = lambda: None) -> float:
     """The largest step of which all differences between `values` are multiples, in their own unit; 0.0 below FINE.
 
     values: (rows,) finite. Euclid's algorithm on all differences to the smallest value at once, so that the step
-    changes with the unit and not with the origin.
+    changes with the unit and not with the origin.  still: called often, a chance to cancel.
     """
     distinct = np.unique(values)
     spread = float(values.std())
@@ -23,6 +25,7 @@ def recording_step(values: NDArray[np.float64]) -> float:
     exact = 4.0 * float(np.spacing(np.abs(distinct).max()))  # how far a difference may be off
     step, off = float(np.diff(distinct).min()), exact
     for _ in range(_TRIES):
+        still()
         if step < FINE * spread:
             return 0.0
         times = np.rint(rises / step)

@@ -85,7 +85,10 @@ def best_graphs(scores: dict[plainly.Graph, float]) -> dict[int, plainly.Graph]:
 
 
 def log_scores(coded: Coded, learned_from: np.ndarray, scored: np.ndarray, graph: plainly.Graph) -> np.ndarray:
-    """(rows scored,) log score of rows by a graph whose parameters come from other rows; both are positions."""
+    """(rows scored,) log score of rows by a graph whose parameters come from other rows; both are positions.
+
+    Each row counts for its weight.
+    """
     total = np.zeros(len(scored))
     for child, parents in enumerate(graph):
         total += _log_family(coded, learned_from, scored, child, parents)
@@ -100,17 +103,19 @@ def _log_family(
     if child not in coded.numbers:
         counts = np.zeros((*shape, len(coded.levels[child])))
         for row in learned_from:
-            counts[tuple(coded.codes[row, [*categories, child]])] += 1
+            counts[tuple(coded.codes[row, [*categories, child]])] += coded.weights[row]
         shares = dirichlet_posterior(counts)
         shares = shares / shares.sum(axis=-1, keepdims=True)
         return np.asarray([np.log(shares[tuple(coded.codes[row, [*categories, child]])]) for row in scored])
     places = [coded.numbers.index(number) for number in (*(p for p in parents if p not in categories), child)]
-    centre, scale = coded.values.mean(axis=0)[places], coded.values.std(axis=0)[places]
+    share = (coded.weights / coded.weights.sum())[:, None]
+    centre = (share * coded.values[:, places]).sum(axis=0)
+    scale = np.sqrt((share * (coded.values[:, places] - centre) ** 2).sum(axis=0))
     products = np.zeros((int(np.prod(shape)), len(places) + 1, len(places) + 1))
     for row in learned_from:
         terms = np.asarray([1.0, *(coded.values[row, places] - centre) / scale])
         at = np.ravel_multi_index(coded.codes[row, categories], shape) if categories else 0
-        products[at] += np.outer(terms, terms)
+        products[at] += coded.weights[row] * np.outer(terms, terms)
     found = regression(products, shape, centre, scale)
     return found.log_density(
         coded.codes[np.ix_(scored, categories)],

@@ -4,7 +4,8 @@ import numpy as np
 import pytest
 
 from engine.learning import held_out
-from engine.learning.held_out import FOLDS, HeldOut, Scoring, folds
+from engine.learning.folds import FOLDS, folds
+from engine.learning.held_out import HeldOut, Scoring
 from engine.learning.learn import learn_coded
 from engine.network.parameters import prior_weight, smoothed_shares
 from engine.order import Order

@@ -10,7 +10,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from engine.learning import held_out
-from engine.learning.held_out import FOLDS, folds
+from engine.learning.folds import FOLDS, folds
 from engine.learning.learn import learn_coded
 from engine.learning.learned import open_learned
 from engine.network.nodes import Category, Number
@@ -194,7 +194,8 @@ def test_progress_tells_of_numbers_in_plain_words_and_never_runs_back():
     learn_coded(records(), ORDERS[0], progress=lambda fraction, words: heard.append((fraction, words)))
     fractions = [fraction for fraction, _ in heard]
     assert fractions == sorted(fractions) and fractions[0] == 0.0 and fractions[-1] == 1.0
-    assert list(dict.fromkeys(words for _, words in heard))[:3] == [
+    assert list(dict.fromkeys(words for _, words in heard))[:4] == [
+        "Looking at how each number varies",
         "Counting how often levels occur together",
         "Adding up how numbers vary together",
         "Finding the best model of every size",
