@@ -1,14 +1,15 @@
-"""The beam of the answer: a rule from 0 to 100 % with a mark for every world, and the span between the two compared."""
+"""The beam of the answer: a graduated rule with a mark for every world, and the span between the two compared."""
 
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cache
 from typing import Literal
 
 from markupsafe import Markup
 
+from app.drawing.scale import PER_CENT, Scale
 from app.drawing.svg import INK, LINE, PAPER, join, percent, tag
 
 World = Literal["recorded", "among", "set"]
@@ -18,56 +19,70 @@ INKS = {"recorded": INK, "among": "#005F96", "set": "#A34700"}
 WIDE = 0.23  # of the width that the longest label takes on a wide page
 NARROW = {"recorded": 0.46, "among": 0.46, "set": 0.27}  # and on 360 px
 FIGURE = 0.18  # of 360 px that the figure alone takes
+LETTERS, WIDER = 4, (0.011, 0.026)  # of a figure, all told in the above; what each more takes, wide and at 360 px
+ROOM = 80  # letters of figures that stand clear of each other under the rule
 
 
 @dataclass(frozen=True)
 class Mark:
     """One world on the beam.
 
-    words, figure: its label.  share, low, high: 0 to 1.
+    words, figure: its label.  point, low, high: values on the scale.
     """
 
     world: World
     words: str
     figure: str
-    share: float
+    point: float
     low: float
     high: float
 
 
-def answer_beam(marks: Sequence[Mark], told: str, compared: tuple[World, World] | None = None) -> Markup:
+def answer_beam(
+    marks: Sequence[Mark], told: str, compared: tuple[World, World] | None = None, scale: Scale = PER_CENT
+) -> Markup:
     """The beam with its marks, first to last from above.
 
-    told: what a screen reader says.  compared: the two worlds whose difference is shaded.
+    told: what a screen reader says.  compared: the two worlds whose difference is shaded.  scale: of the marks.
     """
+    place = scale.place  # from here on every mark stands between 0 and 1
+    marks = [replace(mark, point=place(mark.point), low=place(mark.low), high=place(mark.high)) for mark in marks]
     rule = FIRST + STEP * (len(marks) - 1) + (24 if len(marks) > 1 else 26)
     places = {mark.world: (mark, FIRST + STEP * row) for row, mark in enumerate(marks)}
     drawn: list[Markup] = []
     if compared is not None:
         drawn.append(_between(places[compared[0]], places[compared[1]], rule))
     for mark, y in places.values():
-        x = percent(mark.share)
+        x = percent(mark.point)
         drawn.append(_line(x, x, y, rule, 1.5, COLOURS[mark.world]))
     above: list[float] = []
     for mark, y in places.values():
         drawn += [_whisker(mark, y), _shape(mark, y), _label(mark, y, above)]
-        above.append(mark.share)
-    drawn += [_line("0", "100%", rule, rule, 3), graduation(rule)]
+        above.append(mark.point)
+    drawn += [_line("0", "100%", rule, rule, 3), graduation(rule, scale)]
     return tag("svg", *drawn, class_="beam", height=rule + BELOW, role="img", aria_label=told)
 
 
 @cache
-def graduation(rule: int) -> Markup:
-    """Ticks at each 1, 5 and 10 points and figures at each 10, under a rule at height `rule`."""
+def graduation(rule: int, scale: Scale = PER_CENT) -> Markup:
+    """Ticks and figures under a rule at height `rule`; every other figure where they would run together."""
     drawn: list[Markup] = []
-    for point in range(101):
-        length, width, narrow = (12, 1.5, "") if point % 10 == 0 else (8, 1.0, "") if point % 5 == 0 else (4, 1.0, "t1")
-        drawn.append(_line(f"{point}%", f"{point}%", rule, rule + length, width, shown=narrow))
-    for point in range(0, 101, 10):
-        anchor = "start" if point == 0 else "end" if point == 100 else "middle"
-        words = f"{point}%" if point in (0, 100) else str(point)
-        classes = "figure t10" if point % 20 else "figure"
-        drawn.append(tag("text", words, class_=classes, x=f"{point}%", y=rule + FIGURES, text_anchor=anchor))
+    ticks = scale.ticks()
+    for tick in ticks:
+        length, width, narrow = ((12, 1.5, ""), (8, 1.0, ""), (4, 1.0, "t1"))[tick.rank]
+        x = f"{100 * tick.place:.6g}%"
+        drawn.append(_line(x, x, rule, rule + length, width, shown=narrow))
+    figures = [tick for tick in ticks if not tick.rank]
+    crowded = sum(len(tick.words) + 1 for tick in figures) > ROOM
+    for place, tick in enumerate(figures):
+        last = len(figures) - 1
+        odd = (last - place) % 2 == 1 and place > 0
+        if odd and crowded:
+            continue
+        anchor = "start" if place == 0 else "end" if place == last else "middle"
+        classes = "figure t10" if odd else "figure"
+        x = f"{100 * tick.place:.6g}%"
+        drawn.append(tag("text", tick.words, class_=classes, x=x, y=rule + FIGURES, text_anchor=anchor))
     return join(drawn)
 
 
@@ -79,7 +94,7 @@ def _line(x1: str, x2: str, y1: float, y2: float, width: float, colour: str = IN
 
 
 def _between(start: tuple[Mark, int], end: tuple[Mark, int], rule: int) -> Markup:
-    low, high = sorted((start[0].share, end[0].share))
+    low, high = sorted((start[0].point, end[0].point))
     y = min(start[1], end[1])
     return tag(
         "rect",
@@ -113,7 +128,7 @@ def _shape(mark: Mark, y: int) -> Markup:
             shape = tag("circle", r=8, fill=COLOURS["among"])
         case _:
             shape = tag("path", d="M0-10 10 0 0 10-10 0Z", fill=COLOURS["set"])
-    return tag("svg", shape, x=percent(mark.share), y=y, overflow="visible")
+    return tag("svg", shape, x=percent(mark.point), y=y, overflow="visible")
 
 
 def _label(mark: Mark, y: int, stems: Sequence[float]) -> Markup:
@@ -121,13 +136,14 @@ def _label(mark: Mark, y: int, stems: Sequence[float]) -> Markup:
 
     Where a wide page and 360 px need different places both are drawn, and the stylesheet shows one; where 360 px are
     too tight for the words they get the figure alone.
-    stems: shares of the marks above, whose stems pass this row.
+    stems: places of the marks above, whose stems pass this row.
     """
-    right, left = max(mark.high, mark.share), min(mark.low, mark.share)
-    wide = _place(left, right, WIDE, stems)
-    slim, words = _place(left, right, NARROW[mark.world], stems), "narrow"
+    right, left = max(mark.high, mark.point), min(mark.low, mark.point)
+    more, narrow_more = (max(len(mark.figure) - LETTERS, 0) * letter for letter in WIDER)
+    wide = _place(left, right, WIDE + more, stems)
+    slim, words = _place(left, right, NARROW[mark.world] + narrow_more, stems), "narrow"
     if slim is None:
-        slim, words = _place(left, right, FIGURE, stems), "slim"
+        slim, words = _place(left, right, FIGURE + narrow_more, stems), "slim"
     rest = ("right", right) if 1 - right > left else ("left", left)
     wide, slim = wide or rest, slim or rest
     if wide == slim and words == "narrow":
@@ -136,7 +152,7 @@ def _label(mark: Mark, y: int, stems: Sequence[float]) -> Markup:
 
 
 def _place(left: float, right: float, width: float, stems: Sequence[float]) -> tuple[str, float] | None:
-    """Side and share where a label of this width starts clear of every stem; None where it fits on no side.
+    """Side and place where a label of this width starts clear of every stem; None where it fits on no side.
 
     Beside the whisker where that is clear on either side, the right one first; else past the stems, on the side where
     it stands nearer.

@@ -21,7 +21,7 @@ class Bar(Protocol):
     """A share with its interval, all 0 to 1."""
 
     @property
-    def share(self) -> float: ...
+    def point(self) -> float: ...
     @property
     def low(self) -> float: ...
     @property
@@ -44,14 +44,14 @@ def bars(recorded: float, among: Bar | None = None, set_to: Bar | None = None) -
 
 def _bar(bar: Bar, y: float, height: int, colour: str, mark: Callable[[float, float], str]) -> str:
     middle = y + height / 2
-    drawn = f'<rect x="0" y="{y:g}" width="{_per_cent(bar.share)}" height="{height}" fill="{colour}"/>'
-    if SURE < bar.share < 1 - SURE:
+    drawn = f'<rect x="0" y="{y:g}" width="{_per_cent(bar.point)}" height="{height}" fill="{colour}"/>'
+    if SURE < bar.point < 1 - SURE:
         if bar.high > bar.low:
             drawn += (
                 f'<line x1="{_per_cent(bar.low)}" x2="{_per_cent(bar.high)}" y1="{middle:g}" y2="{middle:g}" '
                 f'stroke="{INK}" stroke-width="2.5"/>'
             )
-        drawn += mark(bar.share, middle)
+        drawn += mark(bar.point, middle)
     return drawn
 
 

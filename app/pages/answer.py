@@ -4,9 +4,10 @@ from __future__ import annotations
 
 from fastapi import APIRouter, Request, Response
 
+from app.address import Misread, parse
 from app.pages import answer_view, ask_view
 from app.pages.asking import ask, spine_of
-from app.question import Misread, parse, query, url
+from app.question import query, url
 from app.store import Study
 from engine.doubting import STANDING, UNSEEN
 from engine.model import Model

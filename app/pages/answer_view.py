@@ -15,11 +15,12 @@ from app.store import Study
 from app.wording.amounts import listing
 from app.wording.answers import WITHIN
 from app.wording.computed import method, size
-from app.wording.estimates import Estimate
-from app.wording.figures import counted, records, share, signed_span
-from app.wording.links import SETTLED
+from app.wording.estimates import Estimate, Estimates
+from app.wording.figures import counted, records, share
+from app.wording.links import SETTLED, strength
+from app.wording.numbers import amount
 from app.wording.parts import plain
-from app.wording.values import either, value
+from app.wording.values import either, had_before, value
 from engine.answering.answer import Caution
 from engine.doubting.direction import between
 from engine.order import Direction
@@ -56,7 +57,8 @@ def today() -> str:
 
 
 def watched_words(asked: Asked) -> str:
-    return plain(value(asked.spine.nodes[asked.watch], asked.wanted(asked.watch)))
+    wanted = asked.wanted(asked.watch)
+    return plain(value(asked.spine.nodes[asked.watch], wanted)) if wanted else f"{asked.watch}, on average"
 
 
 def numbers(asked: Asked) -> list[Line]:
@@ -64,31 +66,51 @@ def numbers(asked: Asked) -> list[Line]:
     found = asked.estimates(asked.watch)
     spine, question, matching = asked.spine, asked.question, asked.answer.matching
     all_records = f", {records(spine.records, SMALL_COUNT)}" if matching is not None else ""
-    exact = 0 if asked.blocked or found.change is None else found.change.decimals
-    exact = exact if question.levers else found.gap.decimals if question.pins else 0
-    lines = [_line(f"{WORDS['recorded']}{all_records}", found.recorded, "recorded", exact)]
+    exact = _decimals(asked, found)
+    lines = [_line(f"{WORDS['recorded']}{all_records}", found, found.recorded, "recorded", exact)]
     if question.pins:
         these = "" if matching is None else f", {_these(asked, matching)}"
-        lines.append(_line(f"{WORDS['among']}{these}", found.among, "among", exact))
+        lines.append(_line(f"{WORDS['among']}{these}", found, found.among, "among", exact))
     if asked.blocked:
         lines.append(Line(WORDS["set"], "withheld", "", "set"))
     elif found.set is not None:
-        lines.append(_line(WORDS["set"], found.set, "set", exact))
+        lines.append(_line(WORDS["set"], found, found.set, "set", exact))
     change = found.gap if not question.levers else None if asked.blocked else found.change
     if change is not None and question.touched:
-        words = "Change if set, points" if question.levers else "Difference to all records, points"
-        known = "" if change.known else signed_span(100 * change.low, 100 * change.high, change.decimals)
-        lines.append(Line(words, change.difference.split()[0], known, look="sum"))
-    count = asked.answer[asked.watch].counted
-    if count is not None and count.tellable(asked.wanted(asked.watch)):
-        held = sum(count.counts[level] for level in asked.wanted(asked.watch))
-        whom = ", among these" if question.pins else ""
-        lines.append(Line(f"Counted in the records{whom}", counted(held, count.rows, SMALL_COUNT), "", look="after"))
-    if found.had is not None and not asked.blocked:
-        had = [plain(value(spine.nodes[column], (level,))) for column, (level, _) in question.levers.items()]
-        line = _line(f"Those with {listing(had)} anyway; not the effect", found.had, None)
+        words = "Change if set" if question.levers else "Difference to all records"
+        unit = "" if found.of_a_number else ", points"
+        known = "" if change.known else change.interval
+        lines.append(Line(f"{words}{unit}", change.difference.split()[0], known, look="sum"))
+    if told := _counted(asked):
+        lines.append(Line(f"Counted in the records{', among these' if question.pins else ''}", told, "", look="after"))
+    pins = [(column, had_before(setting)) for column, (setting, _) in question.levers.items()]
+    had = [plain(value(spine.nodes[column], pin)) for column, pin in pins if pin is not None]
+    if found.had is not None and had and not asked.blocked:
+        line = _line(f"Those with {listing(had)} anyway; not the effect", found, found.had, None)
         lines.append(Line(line.words, line.figure, line.interval, look="after"))
     return lines
+
+
+def figure_head(asked: Asked) -> str:
+    """What the figures of the table of numbers are."""
+    return "Share" if asked.wanted(asked.watch) else "Mean"
+
+
+def _decimals(asked: Asked, found: Estimates) -> int | None:
+    """Those of the sentence, so that the table agrees with it."""
+    if asked.question.levers and not asked.blocked:
+        return None if found.change is None else found.change.decimals
+    return found.gap.decimals if asked.question.pins else None
+
+
+def _counted(asked: Asked) -> str | None:
+    """What the records hold of the column in question, where it may be told."""
+    count, wanted = asked.answer[asked.watch].counted, asked.wanted(asked.watch)
+    if count is not None and count.mean is not None and not wanted:
+        return f"mean {amount(count.mean, asked.estimates(asked.watch).decimals or 0)} of {count.rows:,}"
+    if count is None or not wanted or not count.tellable(wanted):
+        return None
+    return counted(sum(count.counts[level] for level in wanted), count.rows, SMALL_COUNT)
 
 
 def cautions(asked: Asked) -> list[tuple[str, Caution]]:
@@ -165,8 +187,7 @@ def _reached(start: set[str], links: Sequence[tuple[str, str]]) -> set[str]:
 
 def _told(asked: Asked, source: str, target: str) -> Link:
     spine = asked.spine
-    strength = 100 * spine.model.strength(source, target)
-    words = "under 1 point" if strength < 1 else f"{strength:.0f} {'point' if round(strength) == 1 else 'points'}"
+    words = strength(spine.model.strength(source, target), target in spine.numbers)
     settled = spine.settled_by(source, target)
     return Link(source, "goes with" if settled == "nobody" else "leads to", target, words, SETTLED[settled])
 
@@ -224,6 +245,6 @@ def again(asked: Asked, study: Study) -> list[tuple[str, str]]:
     ]
 
 
-def _line(words: str, estimate: Estimate, world: World | None, decimals: int = 0) -> Line:
-    known = "" if estimate.known else f"{share(estimate.low, decimals)} to {share(estimate.high, decimals)}"
-    return Line(words, share(estimate.share, decimals), known, world)
+def _line(words: str, found: Estimates, estimate: Estimate, world: World | None, decimals: int | None = None) -> Line:
+    known = "" if estimate.known else found.span(estimate, decimals)
+    return Line(words, found.figure(estimate, decimals), known, world)

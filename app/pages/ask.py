@@ -7,11 +7,12 @@ from functools import partial
 from fastapi import APIRouter, Request, Response
 from fastapi.responses import RedirectResponse
 
+from app.address import Misread, from_a_form, parse
 from app.drawing.beam import progress
 from app.pages import ask_lanes, ask_view
 from app.pages.ask_examples import examples
 from app.pages.asking import Asked, Spine, ask, spine_of
-from app.question import Misread, Question, parse, query, url
+from app.question import Question, query, url
 from app.store import Study
 from app.wording.parts import plain
 from engine.doubting import STANDING, UNSEEN
@@ -37,7 +38,7 @@ def ask_page(request: Request, key: str) -> Response:
     except Misread as misread:
         return _misread(request, study, spine, misread)
     canonical = url(key, question, spine.names)
-    if any(name.startswith("reach.") or (name == "find" and not value) for name, value in request.query_params.items()):
+    if from_a_form(request.query_params.multi_items()):
         return RedirectResponse(canonical, 303)  # a form's fields become the address that says the same
     asked = ask(model, question)
     if question.touched and asked.refusal is None:

@@ -9,13 +9,15 @@ from urllib.parse import parse_qsl
 from markupsafe import Markup
 
 from app.drawing.bars import bars
+from app.pages.ask_numbers import NumberPart, number_part
 from app.pages.asking import Asked
-from app.question import Question, per_cent, query
+from app.question import Pin, Question, Setting, Within, query
+from app.typed import per_cent
 from app.wording.estimates import Estimate, level_estimates
 from app.wording.figures import column_figure, matching_of
 from app.wording.questions import reach_words
-from app.wording.values import either
-from engine.network.nodes import Node
+from app.wording.values import either, held, setting_words
+from engine.network.nodes import Node, Number
 from engine.order import Direction
 from engine.records.table import SMALL_COUNT
 
@@ -35,11 +37,11 @@ class Act:
 
 @dataclass(frozen=True)
 class Row:
-    """One level of a card. figures: as recorded, among these, if set; None where there is none."""
+    """One level of a card. figures: as recorded, among these, if set; None where there is none.  bar: of no band."""
 
     level: str
     figures: tuple[str, str | None, str | None]
-    bar: Markup
+    bar: Markup | None
     ring: Act
     also: Act | None
     diamond: Act | None
@@ -57,7 +59,10 @@ class LeverLine:
 
 @dataclass(frozen=True)
 class Card:
-    """An open card. pinned, set_to: what the state line says of them, None when it is not.  told: verb and links."""
+    """An open card. pinned, set_to: what the state line says of them, None when it is not.  told: verb and links.
+
+    number: what it has more for a number.  unpin, unset: take out a range or a lever that no mark of a row stands for.
+    """
 
     name: str
     slug: str
@@ -71,10 +76,14 @@ class Card:
     fold: Act
     watch: Act | None
     lever: LeverLine | None
+    number: NumberPart | None
+    unpin: Act | None
+    unset: Act | None
 
 
 def card_of(asked: Asked, address: Address, column: str) -> Card:
     question, slug = asked.question, asked.spine.names.slugs[column]
+    number = column in asked.spine.numbers
     shown, more = _shown_levels(asked, column)
     pinned, lever = question.pins.get(column), question.levers.get(column)
     whole = replace(question, whole=question.whole | {column})
@@ -92,7 +101,16 @@ def card_of(asked: Asked, address: Address, column: str) -> Card:
         watch=None
         if column == asked.watch
         else Act(f"watch-{slug}", address(question.watching(column)), f"Watch {column}"),
-        lever=None if lever is None else _lever_line(asked, column, lever[1]),
+        lever=None if lever is None or number else _lever_line(asked, column, lever[1]),
+        number=number_part(asked, column) if number else None,
+        unpin=Act(f"unpin-{slug}", address(question.unpinned(column)), f"Pinned at {held(pinned)}, take out", True)
+        if isinstance(pinned, Within)
+        else None,
+        unset=Act(
+            f"unset-{slug}", address(question.without_lever(column)), f"Set {setting_words(lever[0])}, take out", True
+        )
+        if number and lever is not None
+        else None,
     )
 
 
@@ -103,16 +121,19 @@ def _shown_levels(asked: Asked, column: str) -> tuple[list[str], int]:
         return list(levels), 0
     point = asked.answer[column].recorded.point
     often = sorted(range(len(levels)), key=lambda place: -point[place])[:SHOWN_LEVELS]
-    touched = {*question.pins.get(column, ()), *question.levers.get(column, ())[:1]}
+    pin, (setting, _) = question.pins.get(column, ()), question.levers.get(column, (None, 1.0))
+    touched = {*(() if isinstance(pin, Within) else pin), setting}
     shown = [level for place, level in enumerate(levels) if place in often or level in touched]
     return shown, len(levels) - len(shown)
 
 
 def _rows(asked: Asked, address: Address, column: str, shown: Sequence[str]) -> tuple[Row, ...]:
     node, reading = asked.spine.nodes[column], asked.answer[column]
-    untouched = column in asked.question.pins and column not in asked.question.levers  # it comes before every lever
+    if isinstance(node, Number) and not node.bands:
+        return ()  # one row would say that every value is a value
+    shows_set = asked.shows_set and not asked.untouched(column)
     among = level_estimates(reading.among) if asked.shows_among else None
-    after = level_estimates(reading.set) if asked.shows_set and not untouched and reading.set is not None else None
+    after = level_estimates(reading.set) if shows_set and reading.set is not None else None
     return tuple(
         _row(
             *(asked, address, node, level, float(reading.recorded.point[place])),
@@ -135,7 +156,8 @@ def _row(
 ) -> Row:
     question, column, names = asked.question, node.name, asked.spine.names
     place = f"{names.slugs[column]}-{names.level_slugs[column][level]}"
-    pinned = question.pins.get(column, ())
+    pin = question.pins.get(column, ())
+    pinned = () if isinstance(pin, Within) else pin
     ring = Act(f"pin-{place}", address(question.pinned(column, (level,))), f"Pin {level}")
     also = None
     if level in pinned:
@@ -150,10 +172,10 @@ def _row(
         level=level,
         figures=(
             column_figure(recorded),
-            None if among is None else column_figure(among.share),
-            None if after is None else column_figure(after.share),
+            None if among is None else column_figure(among.point),
+            None if after is None else column_figure(after.point),
         ),
-        bar=bars(recorded, among, after),
+        bar=None if isinstance(node, Number) else bars(recorded, among, after),
         ring=ring,
         also=also,
         diamond=diamond,
@@ -162,7 +184,7 @@ def _row(
 
 
 def _diamond(asked: Asked, address: Address, column: str, level: str, place: str) -> Act | None:
-    if column not in asked.spine.changeable:
+    if column not in asked.spine.changeable or column in asked.spine.numbers:
         return None
     question, lever = asked.question, asked.question.levers.get(column)
     if lever is not None and lever[0] == level:
@@ -171,17 +193,17 @@ def _diamond(asked: Asked, address: Address, column: str, level: str, place: str
     return Act(f"set-{place}", address(question.with_lever(column, level, reach)), f"Set to {level}")
 
 
-def _pinned_words(asked: Asked, levels: Sequence[str]) -> str:
+def _pinned_words(asked: Asked, pin: Pin) -> str:
     """The count stands here only for a single pin: with more of them one count could give another away."""
-    words = f"at {either(levels)}"
+    words = f"at {held(pin)}"
     matching = asked.answer.matching
     if matching is None or len(asked.question.pins) > 1 or asked.refusal is not None:
         return words
     return f"{words} · {matching_of(matching, asked.spine.records, SMALL_COUNT, asked.answer.matching_told)}"
 
 
-def _set_words(asked: Asked, level: str, reach: float) -> str:
-    return f"to {level} for {reach_words(reach)}{' · its effect is withheld' if asked.blocked else ''}"
+def _set_words(asked: Asked, setting: Setting, reach: float) -> str:
+    return f"{setting_words(setting)} for {reach_words(reach)}{' · its effect is withheld' if asked.blocked else ''}"
 
 
 def _watch(asked: Asked, address: Address, column: str) -> Act | None:
@@ -208,7 +230,7 @@ def _state(asked: Asked, column: str) -> str:
         words.append("changeable")
     if not words and column not in asked.question.pins and column not in asked.question.levers:
         kind = asked.spine.nodes[column].kind
-        words.append("number, in bands" if kind == "number" else kind)
+        words.append("number, in bands" if kind == "number" and column not in asked.spine.numbers else kind)
     return " · ".join(words)
 
 
@@ -229,6 +251,6 @@ def _told(asked: Asked, address: Address, column: str) -> tuple[tuple[str, tuple
 
 def _lever_line(asked: Asked, column: str, reach: float) -> LeverLine:
     names = asked.spine.names
-    level = asked.question.levers[column][0]
-    rest = query(asked.question.with_lever(column, level), names)
+    setting = asked.question.levers[column][0]
+    rest = query(asked.question.with_lever(column, setting), names)
     return LeverLine(f"reach.{names.slugs[column]}", per_cent(reach), tuple(parse_qsl(rest)))

@@ -8,9 +8,10 @@ from functools import cache
 
 from app.pages.ask_cards import Address
 from app.pages.asking import Asked, Spine
-from app.question import Question
+from app.question import By, Question, Setting, To, Within
 from app.resources import resource
-from app.wording.values import either, yes_level
+from app.wording.parts import plain
+from app.wording.values import setting_words, value, yes_level
 
 SHOWN = 2
 LIKELY = 0.2  # a pin on about one record in five shows a difference and has records behind it
@@ -20,7 +21,7 @@ def examples(asked: Asked, sample: str | None, address: Address) -> list[tuple[s
     """Words and address of each example. sample: the folder of the sample that the study is, if it is one."""
     given = [] if sample is None else [_question(said) for said in _tries(sample)]
     questions = [question for question in given if _fits(asked.spine, question)] or _first_steps(asked)
-    return [(_words(question), address(question)) for question in questions[:SHOWN]]
+    return [(_words(asked.spine, question), address(question)) for question in questions[:SHOWN]]
 
 
 @cache
@@ -37,15 +38,33 @@ def _question(said: Mapping[str, Mapping[str, object]]) -> Question:
         for column, levels in said.get("pins", {}).items()
         if isinstance(levels, list)
     }
-    levers = {column: (str(level), 1.0) for column, level in said.get("levers", {}).items()}
+    levers = {column: (_setting(given), 1.0) for column, given in said.get("levers", {}).items()}
     return Question(pins, levers)
+
+
+def _setting(given: object) -> Setting:
+    """A level by name; {"to": 12} or {"by": 2} for a number."""
+    if not isinstance(given, Mapping):
+        return str(given)
+    return To(float(given["to"])) if "to" in given else By(float(given["by"]))
 
 
 def _fits(spine: Spine, question: Question) -> bool:
     """Whether the study still has these columns and levels, and may set what is to be set."""
-    values = [*question.pins.items(), *((column, (level,)) for column, (level, _) in question.levers.items())]
-    known = all(column in spine.nodes and set(levels) <= set(spine.nodes[column].levels) for column, levels in values)
-    return known and set(question.levers) <= spine.changeable
+    pins = all(
+        column in spine.nodes and not isinstance(pin, Within) and set(pin) <= set(spine.nodes[column].levels)
+        for column, pin in question.pins.items()
+    )
+    levers = all(
+        column in spine.changeable
+        and (column in spine.numbers if not isinstance(setting, str) else _is_level(spine, column, setting))
+        for column, (setting, _) in question.levers.items()
+    )
+    return pins and levers
+
+
+def _is_level(spine: Spine, column: str, level: str) -> bool:
+    return column not in spine.numbers and level in spine.nodes[column].levels
 
 
 def _first_steps(asked: Asked) -> list[Question]:
@@ -59,12 +78,18 @@ def _first_steps(asked: Asked) -> list[Question]:
         found.append(Question({column: (level,)}))
     lever = next((name for name in spine.columns if name in spine.changeable and name != asked.watch), None)
     if lever is not None:
-        node = spine.nodes[lever]
-        found.append(Question({}, {lever: (yes_level(node) or node.levels[0], 1.0)}))
+        found.append(Question({}, {lever: (_first_setting(asked, lever), 1.0)}))
     return found
 
 
-def _words(question: Question) -> str:
-    pins = [f"{column} = {either(levels)}" for column, levels in question.pins.items()]
-    levers = [f"{column} set to {level}" for column, (level, _) in question.levers.items()]
+def _first_setting(asked: Asked, column: str) -> Setting:
+    if column in asked.spine.numbers:
+        return By(asked.usual(column).step)
+    node = asked.spine.nodes[column]
+    return yes_level(node) or node.levels[0]
+
+
+def _words(spine: Spine, question: Question) -> str:
+    pins = [plain(value(spine.nodes[column], pin)) for column, pin in question.pins.items()]
+    levers = [f"{column} set {setting_words(setting)}" for column, (setting, _) in question.levers.items()]
     return ", ".join([*pins, *levers])

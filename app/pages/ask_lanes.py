@@ -6,6 +6,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 from app.pages.ask_cards import Act, Address, Card, card_of
+from app.pages.ask_numbers import means
 from app.pages.asking import Asked
 from app.wording.figures import column_figure, share
 from app.wording.values import yes_level
@@ -13,7 +14,7 @@ from app.wording.values import yes_level
 
 @dataclass(frozen=True)
 class Fold:
-    """A folded card: one line. word: the level that the figures are shares of, empty for yes."""
+    """A folded card: one line. word: the level that the figures are shares of, empty for yes and for means."""
 
     name: str
     changeable: bool
@@ -49,8 +50,12 @@ def is_open(asked: Asked, column: str) -> bool:
 
 
 def has_moved(asked: Asked, column: str) -> bool:
-    """Whether any share of the column, as written, differs from the one as recorded."""
+    """Whether any figure of the column, as written, differs from the one as recorded."""
     reading = asked.answer[column]
+    if column in asked.spine.numbers:
+        recorded, *others = means(asked, column)
+        if any(mean not in (None, recorded) for mean in others):
+            return True
     before = [column_figure(part) for part in reading.recorded.point]
     shown = [reading.among] if asked.shows_among else []
     shown += [reading.set] if asked.shows_set and reading.set is not None else []
@@ -89,18 +94,27 @@ def _lane_told(asked: Asked, columns: Sequence[str]) -> str:
 
 
 def _fold(asked: Asked, address: Address, column: str) -> Fold:
-    node, reading = asked.spine.nodes[column], asked.answer[column]
-    yes = yes_level(node)
-    level = yes or node.levels[int(reading.recorded.point.argmax())]
-    before = share(reading.recorded.share(level))
-    among = share(reading.among.share(level)) if asked.shows_among else before
-    after = share(reading.set.share(level)) if asked.shows_set and reading.set is not None else among
+    word, before, seen, then = _figures(asked, column)
+    among = before if seen is None else seen
+    after = among if then is None else then
     moved = (before, among if among != before else None, after if after != among else None)
     slug = asked.spine.names.slugs[column]
     return Fold(
         name=column,
         changeable=column in asked.spine.changeable,
-        word="" if yes else level,
+        word=word,
         figures=moved,
         open=Act(f"card-{slug}", address(asked.question.opening(column)), f"Open {column}"),
     )
+
+
+def _figures(asked: Asked, column: str) -> tuple[str, str, str | None, str | None]:
+    """The level told of, empty for yes and for a mean; its figure as recorded, among these and if set."""
+    if column in asked.spine.numbers:
+        return "", *means(asked, column)
+    node, reading = asked.spine.nodes[column], asked.answer[column]
+    yes = yes_level(node)
+    level = yes or node.levels[int(reading.recorded.point.argmax())]
+    among = share(reading.among.share(level)) if asked.shows_among else None
+    after = share(reading.set.share(level)) if asked.shows_set and reading.set is not None else None
+    return "" if yes else level, share(reading.recorded.share(level)), among, after

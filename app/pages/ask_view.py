@@ -8,13 +8,13 @@ from urllib.parse import parse_qsl
 from markupsafe import Markup
 
 from app.drawing.answer_beam import Mark, World, answer_beam
+from app.drawing.scale import PER_CENT
 from app.pages.ask_cards import Address
 from app.pages.asking import DRAWS, SEED, Asked
 from app.question import SHOWS, query
 from app.store import Study
 from app.wording.answers import also_sentence, counted_sentence, had_sentence
 from app.wording.computed import intervals, method, size
-from app.wording.figures import share
 from app.wording.parts import plain
 from app.wording.values import Words, either, is_yes, value
 from engine.answering.answer import Caution
@@ -54,16 +54,18 @@ class Also:
 def heading(asked: Asked) -> str:
     """The column in question as the key strip and the beam name it."""
     wanted = asked.wanted(asked.watch)
+    if not wanted:
+        return f"{asked.watch}, on average"
     return asked.watch if is_yes(wanted) else f"{asked.watch}: {either(wanted)}"
 
 
 def keys(asked: Asked) -> list[Key]:
     """The worlds shown, with their figures; they agree with the sentence to the last digit."""
     found = asked.estimates(asked.watch)
-    figures: list[tuple[World, str]] = [("recorded", share(found.recorded.share))]
+    figures: list[tuple[World, str]] = [("recorded", found.figure(found.recorded))]
     if found.change is not None and asked.shows_set:
         start, end = found.change.ends
-        recorded = share(found.recorded.share, found.change.decimals)
+        recorded = found.figure(found.recorded, found.change.decimals)
         figures = [("recorded", recorded), ("among", start)] if asked.shows_among else [("recorded", start)]
         figures.append(("set", end))
     elif asked.shows_among:
@@ -74,19 +76,20 @@ def keys(asked: Asked) -> list[Key]:
 
 
 def beam(asked: Asked) -> Markup:
-    """The shares in question on a rule from 0 to 100 %."""
+    """The shares in question on a rule from 0 to 100 %; means on one over the recorded values."""
     found = asked.estimates(asked.watch)
     worlds = {"recorded": found.recorded, "among": found.among, "set": found.set}
+    scale = asked.scale(asked.watch) if found.of_a_number else PER_CENT
     marks, told = [], []
     for key in keys(asked):
         estimate = worlds[key.world]
         told.append(f"{key.words} {key.figure}")
         if key.figure != "withheld" and estimate is not None:
-            marks.append(Mark(key.world, key.words, key.figure, estimate.share, estimate.low, estimate.high))
+            marks.append(Mark(key.world, key.words, key.figure, estimate.point, estimate.low, estimate.high))
     compared: tuple[World, World] | None = None
     if asked.shows_set:
         compared = ("among" if asked.shows_among else "recorded", "set")
-    return answer_beam(marks, f"{heading(asked)}: {', '.join(told)}.", compared)
+    return answer_beam(marks, f"{heading(asked)}: {', '.join(told)}.", compared, scale)
 
 
 def had(asked: Asked) -> Words:
@@ -104,7 +107,9 @@ def counted(asked: Asked) -> Words:
     wanted, count = asked.wanted(asked.watch), answer[asked.watch].counted
     question = asked.question if asked.refusal is None else replace(asked.question, pins={}, levers={})
     matching, every = answer.matching, asked.spine.records
-    return counted_sentence(question, asked.watch, wanted, count, matching, asked.spine.nodes, SMALL_COUNT, every)
+    decimals = asked.estimates(asked.watch).decimals or 0
+    nodes = asked.spine.nodes
+    return counted_sentence(question, asked.watch, wanted, count, matching, nodes, SMALL_COUNT, every, decimals)
 
 
 def also(asked: Asked, address: Address) -> list[Also]:

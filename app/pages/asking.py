@@ -7,13 +7,16 @@ from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from functools import cached_property
 
-from app.question import Names, Question
+from app.drawing.scale import Scale, rounded_outward
+from app.names import Names
+from app.pages.usual import Usual, usual
+from app.question import By, Pin, Question, Setting, To, Within
 from app.wording.answers import Said, answer_sentence
 from app.wording.estimates import Estimates, estimates
 from app.wording.questions import question_sentence
 from app.wording.values import Words, in_question
-from engine.answering.answer import Answer
-from engine.answering.levers import Fix
+from engine.answering.answer import Answer, Marginal
+from engine.answering.levers import Fix, Shift
 from engine.model import Model
 from engine.network.equivalence import unsettled_links
 from engine.network.nodes import Node
@@ -34,10 +37,18 @@ class Spine:
         self.nodes: Mapping[str, Node] = {node.name: node for node in model.network.nodes}
         self.stages = tuple((stage.name, stage.columns) for stage in self.order.stages if stage.columns)
         self.columns = tuple(column for _, columns in self.stages for column in columns)
-        self.names = Names([(column, self.nodes[column].levels) for column in self.columns])
+        self.numbers = frozenset(model.network.numbers)
+        self.names = Names([(column, self.nodes[column].levels) for column in self.columns], self.numbers)
         self.unsettled = model.unsettled | unsettled_links(model.links, self.order.may_lead)
         self.outcomes = tuple(column for column in self.columns if column in self.order.outcomes)
         self.changeable = frozenset(model.changeable)
+        self._usual: dict[str, Usual] = {}
+
+    def usual(self, column: str, recorded: Marginal) -> Usual:
+        """What is usual of a number. recorded: its marginal as recorded, which tells where there are no records."""
+        if column not in self._usual:
+            self._usual[column] = usual(self.model.coded, column, recorded)
+        return self._usual[column]
 
     @property
     def records(self) -> int:
@@ -131,8 +142,25 @@ class Asked:
             if lever != self.watch and self.watch not in network.descendants([lever])
         )
 
+    def untouched(self, column: str) -> bool:
+        """Whether a column is pinned and not set: it comes before every lever, so that nothing can move it."""
+        return column in self.question.pins and column not in self.question.levers
+
+    def usual(self, column: str) -> Usual:
+        """What is usual of a number in the records."""
+        return self.spine.usual(column, self.answer[column].recorded)
+
+    def scale(self, column: str) -> Scale:
+        """The axis of a number: over what is usual, and on to the means that are shown."""
+        found, usual = self.estimates(column), self.usual(column)
+        shown = [found.recorded, *([found.among] if self.shows_among else ())]
+        shown += [found.set] if self.shows_set and found.set is not None else []
+        return rounded_outward(
+            usual.low, usual.high, [end for each in shown for end in (each.point, each.low, each.high)]
+        )
+
     def wanted(self, column: str) -> tuple[str, ...]:
-        """The levels of a column whose share answers the question."""
+        """The levels of a column whose share answers the question; none where its mean does."""
         recorded = [float(part) for part in self.answer[column].recorded.point]
         return in_question(self.spine.nodes[column], self.spine.order.outcomes.get(column), recorded)
 
@@ -178,6 +206,23 @@ def ask(model: Model, question: Question) -> Asked:
 
 
 def _answer(spine: Spine, question: Question, watched: tuple[str, ...]) -> Answer:
-    levers = {column: Fix(level, reach) for column, (level, reach) in question.levers.items()}
-    pins = {column: frozenset(levels) for column, levels in question.pins.items()}
+    levers = {column: _lever(setting, reach) for column, (setting, reach) in question.levers.items()}
+    pins = {column: _pin(pin) for column, pin in question.pins.items()}
     return spine.model.ask(pins, levers, watch=watched, beside=spine.columns, draws=DRAWS, seed=SEED)
+
+
+def _pin(pin: Pin) -> object:
+    """As the engine takes it: levels, a value, or a range."""
+    if not isinstance(pin, Within):
+        return frozenset(pin)
+    return (pin.low, pin.high) if pin.value is None else pin.value
+
+
+def _lever(setting: Setting, reach: float) -> Fix | Shift:
+    match setting:
+        case To(value):
+            return Fix(value, reach)
+        case By(amount):
+            return Shift(amount, reach)
+        case level:
+            return Fix(level, reach)

@@ -248,7 +248,7 @@ def _rows(
             target=target,
             support=said[source, target],
             bar=arcs.support_bar(supports[source, target]),
-            strength=strength(strengths[source, target]),
+            strength=strength(strengths[source, target], target in model.network.numbers),
             settled=SETTLED[settled[source, target]],
             picked=picked in (source, target),
         )

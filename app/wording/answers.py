@@ -5,13 +5,16 @@ from __future__ import annotations
 from collections.abc import Collection
 from dataclasses import dataclass
 
-from app.question import Question, per_cent
-from app.wording.estimates import Estimate, Estimates
-from app.wording.figures import Change, counted, gives_away, share, span
+from app.question import By, Question, Setting
+from app.typed import per_cent
+from app.wording.estimates import Estimates
+from app.wording.figures import Change, counted, gives_away
+from app.wording.numbers import Move, amount
 from app.wording.parts import Clause, Part, name, plain, say, series
 from app.wording.questions import Nodes, among
-from app.wording.values import Words, is_at, is_yes, subject, value
+from app.wording.values import Words, had_before, is_at, is_yes, set_to, subject, value
 from engine.answering.answer import Counted
+from engine.network.nodes import Node
 
 WITHIN = "within this model"  # of an interval, until the one over sampled models is ready
 
@@ -41,36 +44,36 @@ def answer_sentence(
 ) -> Said:
     """The sentence that is the page.
 
-    wanted: the levels of `watch` in question.  records: all of them, None when the model came without.
+    wanted: the levels of `watch` in question, none for the mean of a number.  records: all of them, None when the
+    model came without.
     blocked: a caution withholds what the levers would do.  thin: for most of the group the model fills in.
     apart: levers from which nothing leads to `watch`.
     """
     if question.levers and blocked:
         return _withheld(question, watch, wanted, found, nodes, records)
     if question.levers and all(
-        column in apart or not reach or question.pins.get(column) == (level,)
-        for column, (level, reach) in question.levers.items()
+        column in apart or not reach or question.pins.get(column, ()) == had_before(setting)
+        for column, (setting, reach) in question.levers.items()
     ):
         return _unmoved(question, watch, wanted, found, nodes, apart)
     if question.levers:
         return _moved(question, watch, wanted, found, nodes, thin)
     if question.pins:
         recorded, here = found.gap.ends
-        group, what = _capital(among(question, nodes)), is_at(nodes[watch], wanted)
-        words = say(group, ", ", what, " for ", Part(here, "among"), f", against {recorded} of all records.")
-        return _said(words, bracket(found.gap))
-    what, here = is_at(nodes[watch], wanted), share(found.recorded.share)
-    return _said(say(f"Across {_all(records)} ", what, " for ", Part(here, "recorded"), "."), _interval(found.recorded))
+        words = say(_capital(among(question, nodes)), ", ", _is(nodes[watch], wanted, Part(here, "among")))
+        return _said(say(words, f", {_against(recorded, found)}."), bracket(found.gap))
+    what = _is(nodes[watch], wanted, Part(found.figure(found.recorded), "recorded"))
+    return _said(say(f"Across {_all(records)} ", what, "."), _interval(found))
 
 
 def had_sentence(question: Question, found: Estimates, nodes: Nodes) -> Words:
     """Those who had the levers' values without being set; empty where nobody is, or nothing is set."""
-    if found.had is None or not question.levers:
+    pins = [(column, had_before(setting)) for column, (setting, _) in question.levers.items()]
+    having = series([value(nodes[column], pin) for column, pin in pins if pin is not None])
+    if found.had is None or not having:
         return []
-    having = series([value(nodes[column], (level,)) for column, (level, _) in question.levers.items()])
-    return say(
-        "Those with ", having, " anyway: ", Part(share(found.had.share), "recorded"), ". That is not the effect."
-    )
+    figure = Part(found.figure(found.had), "recorded")
+    return say("Those with ", having, " anyway: ", figure, f"{_mean(found)}. That is not the effect.")
 
 
 def counted_sentence(
@@ -82,10 +85,12 @@ def counted_sentence(
     nodes: Nodes,
     small: int,
     records: int,
+    decimals: int = 0,
 ) -> Words:
     """What the records hold, counted; without a number where it would give one under the small-count limit away.
 
     count: None where nothing may be counted.  matching: of all `records`, those that match every pin.
+    decimals: of the mean of a number.
     """
     if count is None or gives_away(matching, records, small):
         these = "this value" if len(question.pins) == 1 else "all of these values"
@@ -95,6 +100,10 @@ def counted_sentence(
         if matching >= small:
             which = f"All but under {small} records have"
         return say(f"{which} {these}, so nothing is counted; the figures come from the model.")
+    if not wanted:
+        mean = "" if count.mean is None else amount(count.mean, decimals)
+        told = Part(mean, "recorded")
+        return say("Counted in the records: mean ", told, f" of {count.rows:,}.") if mean else []
     have = say("have ", value(nodes[watch], wanted))
     if not count.tellable(wanted):
         return say("How many records ", have, f" is not shown: it would give a count under {small} away.")
@@ -113,14 +122,14 @@ def also_sentence(
         if found.change.still:
             return what, say(" stays at ", Part(end, "set"))
         from_to = say(" from ", Part(start, "among" if question.pins else "recorded"), " to ", Part(end, "set"))
-        return what, say(from_to, f" {bracket(found.change)}")
+        return what, say(from_to, f"{_mean(found)} {bracket(found.change)}")
     if question.pins:
         recorded, here = found.gap.ends
-        return what, say(" ", Part(here, "among"), f", against {recorded} of all records {bracket(found.gap)}")
-    return what, say(" ", Part(share(found.recorded.share), "recorded"))
+        return what, say(" ", Part(here, "among"), f"{_mean(found)}, {_against(recorded, found)} {bracket(found.gap)}")
+    return what, say(" ", Part(found.figure(found.recorded), "recorded"), _mean(found))
 
 
-def bracket(change: Change) -> str:
+def bracket(change: Change | Move) -> str:
     """(+9 points, within this model +4 to +14)"""
     if change.known:
         return f"({change.difference})"
@@ -133,9 +142,9 @@ def _moved(question: Question, watch: str, wanted: tuple[str, ...], found: Estim
     start, end = found.change.ends
     from_to = say("from ", Part(start, "among" if question.pins else "recorded"), " to ", Part(end, "set"))
     estimate = "By this estimate, most of it filled in by the model, " if thin else "By this estimate, "
-    opening = say(estimate, _group(question, nodes), "setting ", _settings(question, nodes))
+    opening = say(estimate, _group(question, nodes), _settings(question))
     moving = (" would move ", what, " ") if found.change.moves else (" may not move ", what, ": ")
-    return _said(say(opening, *moving, from_to), f"{bracket(found.change)}.")
+    return _said(say(opening, *moving, from_to, _mean(found)), f"{bracket(found.change)}.")
 
 
 def _unmoved(
@@ -147,8 +156,7 @@ def _unmoved(
     apart: Collection[str],
 ) -> Said:
     """What no lever can move: nothing leads there from those that reach anyone who has not the value already."""
-    settings = series([say(name(column), " to ", name(level)) for column, (level, _) in question.levers.items()])
-    opening = _capital(say(_group(question, nodes), "setting ", settings))
+    opening = _capital(say(_group(question, nodes), _settings(question, reaches=False)))
     away = [name(column) for column in question.levers if column in apart]
     idle = [name(column) for column, (_, reach) in question.levers.items() if column not in apart and not reach]
     kept = [column for column, (_, reach) in question.levers.items() if column not in apart and reach]
@@ -169,7 +177,8 @@ def _unmoved(
         why = say(why, ", and all of them have ", have, " already")
     if away and idle:
         why = say(why, ", and ", series(idle), f" {'is' if len(idle) == 1 else 'are'} set for 0% of {whom}")
-    still = say("(", subject(nodes[watch], wanted), " stays at ", Part(share(found.among.share), "set"), ")")
+    stays = say(" stays at ", Part(found.figure(found.among), "set"), _mean(found))
+    still = say("(", subject(nodes[watch], wanted), stays, ")")
     return _said(say(opening, " would not move ", name(watch), ": ", why, "."), still)
 
 
@@ -177,14 +186,15 @@ def _withheld(
     question: Question, watch: str, wanted: tuple[str, ...], found: Estimates, nodes: Nodes, records: int | None
 ) -> Said:
     what = subject(nodes[watch], wanted)
-    words = say("These records cannot say what setting ", _settings(question, nodes), " would do to ", what, ".")
-    it_is = "it is " if is_yes(wanted) else "that is "
+    words = say("These records cannot say what ", _settings(question), " would do to ", what, ".")
+    it_is = "it is " if is_yes(wanted) or found.of_a_number else "that is "
     if question.pins:
         recorded, here = found.gap.ends
         known = say(_capital(among(question, nodes)), f" {it_is}", Part(here, "among"))
-        known = say(known, f", against {recorded} of all records {bracket(found.gap)}.")
+        known = say(known, f"{_mean(found)}, {_against(recorded, found)} {bracket(found.gap)}.")
     else:
-        known = say(f"Across {_all(records)} {it_is}", Part(share(found.recorded.share), "recorded"), ".")
+        here = found.figure(found.recorded)
+        known = say(f"Across {_all(records)} {it_is}", Part(here, "recorded"), f"{_mean(found)}.")
     return _said(words, say(known, " If set: ", Part("withheld", "withheld")))
 
 
@@ -196,18 +206,38 @@ def _group(question: Question, nodes: Nodes) -> Words:
     return say(among(question, nodes), ", ") if question.pins else []
 
 
-def _settings(question: Question, nodes: Nodes) -> Words:
-    """*L* to *l* for 80% of them and *M* to *m*"""
+def _settings(question: Question, reaches: bool = True) -> Words:
+    """setting *L* to *l* for 80% of them and *M* to *m*, raising *N* by *n*: a verb stands once for those it rules."""
     whom = "them" if question.pins else "all records"
-    found: list[Words] = []
-    for column, (level, reach) in question.levers.items():
-        part_of = "" if reach == 1.0 else f" for {per_cent(reach)}% of {whom}"
-        found.append(say(name(column), " to ", name(level), part_of))
-    return series(found)
+    by_verb: dict[str, list[Words]] = {}
+    for column, (setting, reach) in question.levers.items():
+        part_of = "" if reach == 1.0 or not reaches else f" for {per_cent(reach)}% of {whom}"
+        words = say(name(column), " by " if isinstance(setting, By) else " to ", name(set_to(setting)), part_of)
+        by_verb.setdefault(_verb(setting), []).append(words)
+    return series([say(f"{verb} ", series(found)) for verb, found in by_verb.items()])
 
 
-def _interval(estimate: Estimate) -> str:
-    return "" if estimate.known else f"({WITHIN} {span(estimate.low, estimate.high)})"
+def _verb(setting: Setting) -> str:
+    if isinstance(setting, By):
+        return "raising" if setting.amount > 0 else "lowering"
+    return "setting"
+
+
+def _is(node: Node, wanted: tuple[str, ...], here: Part) -> Words:
+    """*Y* is *y* for 61%; *hours* is 12.3 on average"""
+    return say(is_at(node, wanted), " for ", here) if wanted else say(name(node.name), " is ", here, " on average")
+
+
+def _mean(found: Estimates) -> str:
+    return " on average" if found.of_a_number else ""
+
+
+def _against(recorded: str, found: Estimates) -> str:
+    return f"against {recorded} {'across' if found.of_a_number else 'of'} all records"
+
+
+def _interval(found: Estimates) -> str:
+    return "" if found.recorded.known else f"({WITHIN} {found.span(found.recorded)})"
 
 
 def _all(records: int | None) -> str:

@@ -1,4 +1,4 @@
-"""The figures behind a sentence: the share in question in every world, its interval, and the changes between worlds."""
+"""The figures behind a sentence: the share or mean in question in every world, its interval, the changes between."""
 
 from __future__ import annotations
 
@@ -7,7 +7,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from app.wording.figures import CERTAIN, Change
+from app.wording.figures import CERTAIN, Change, share, span
+from app.wording.numbers import CERTAIN as STILL
+from app.wording.numbers import Move, amount, decimals_for
 from engine.answering.answer import Marginal, Reading, spread
 
 COVERAGE = 0.90
@@ -15,9 +17,9 @@ COVERAGE = 0.90
 
 @dataclass(frozen=True)
 class Estimate:
-    """A share with its interval, all 0 to 1; low equals high where the tables are known exactly."""
+    """A share, 0 to 1, or a number's mean, with its interval; low equals high where the model is known exactly."""
 
-    share: float
+    point: float
     low: float
     high: float
 
@@ -28,22 +30,43 @@ class Estimate:
 
 @dataclass(frozen=True)
 class Estimates:
-    """Shares of the levels in question.
+    """Shares of the levels in question; of a number its means.
 
     gap: from as recorded to among these.  change: from among these to if set; None without levers.
+    decimals: of a mean; None for shares.
     """
 
     recorded: Estimate
     among: Estimate
-    gap: Change
+    gap: Change | Move
     set: Estimate | None = None
     had: Estimate | None = None
-    change: Change | None = None
+    change: Change | Move | None = None
+    decimals: int | None = None
+
+    @property
+    def of_a_number(self) -> bool:
+        return self.decimals is not None
+
+    def figure(self, estimate: Estimate, decimals: int | None = None) -> str:
+        """The estimate in words; decimals: others than are usual here."""
+        if self.decimals is None:
+            return share(estimate.point, decimals or 0)
+        return amount(estimate.point, self.decimals if decimals is None else decimals)
+
+    def span(self, estimate: Estimate, decimals: int | None = None) -> str:
+        """Its interval in words."""
+        if self.decimals is None:
+            return span(estimate.low, estimate.high, decimals or 0)
+        told = self.decimals if decimals is None else decimals
+        return f"{amount(estimate.low, told)} to {amount(estimate.high, told)}"
 
 
 def estimates(reading: Reading, wanted: Iterable[str]) -> Estimates:
-    """The share of the `wanted` levels, taken together, in every world of `reading`."""
+    """The share of the `wanted` levels, taken together, in every world of `reading`; of none of them: the mean."""
     levels = tuple(wanted)
+    if not levels:
+        return _means(reading)
     return Estimates(
         recorded=_estimate(reading.recorded, levels),
         among=_estimate(reading.among, levels),
@@ -52,6 +75,37 @@ def estimates(reading: Reading, wanted: Iterable[str]) -> Estimates:
         had=None if reading.had is None else _estimate(reading.had, levels),
         change=None if reading.set is None else _change(reading.among, reading.set, levels),
     )
+
+
+def _means(reading: Reading) -> Estimates:
+    spread_of = reading.recorded.sd
+    recorded, among = _mean(reading.recorded), _mean(reading.among)
+    after = None if reading.set is None else _mean(reading.set)
+    gap = _move(reading.recorded, reading.among, spread_of)
+    change = None if reading.set is None else _move(reading.among, reading.set, spread_of)
+    moved = [move for move in (change, gap) if move is not None and not move.still]
+    base = moved[0].decimals if moved else decimals_for(recorded.high - recorded.low, spread_of)
+    return Estimates(recorded, among, gap, after, None if reading.had is None else _mean(reading.had), change, base)
+
+
+def _mean(marginal: Marginal) -> Estimate:
+    return Estimate(marginal.mean, *marginal.interval(None, COVERAGE))
+
+
+def _draws(marginal: Marginal) -> np.ndarray:
+    """(draws,) the mean of a number in each draw."""
+    assert marginal.mean_draws is not None
+    return marginal.mean_draws
+
+
+def _move(start: Marginal, end: Marginal, spread_of: float) -> Move:
+    """As `_change`, for means. spread_of: the standard deviation of the values as recorded."""
+    before, after = start.mean, end.mean
+    difference = _draws(end) - _draws(start)
+    if max(abs(after - before), np.abs(difference).max(initial=0.0)) <= STILL * max(spread_of, abs(before)):
+        return Move(before, before, 0.0, 0.0, decimals_for(0.0, spread_of))
+    low, high = spread(difference, after - before, COVERAGE)
+    return Move(before, after, low, high, decimals_for(high - low, spread_of))
 
 
 def level_estimates(marginal: Marginal) -> list[Estimate]:

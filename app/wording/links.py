@@ -6,6 +6,7 @@ from collections.abc import Sequence
 
 from app.wording.amounts import count, listing, plural, small_word
 from app.wording.figures import share
+from engine.records.wording import figure
 
 SETTLED = {
     "your order": "your order",
@@ -42,9 +43,11 @@ def support(likely: float) -> str:
     return share(min(max(likely, 1e-6), 1 - 1e-6))
 
 
-def strength(points: float) -> str:
-    """A change in a share, 0 to 1, in points."""
-    if 0 < points < 0.005:
+def strength(moved: float, of_a_number: bool = False) -> str:
+    """How far a link moves its child: a share, 0 to 1, in points; the mean of a number in its own unit."""
+    if of_a_number:
+        return figure(float(f"{moved:.2g}"))
+    if 0 < moved < 0.005:
         return "under 1 point"
-    rounded = round(100 * points)
+    rounded = round(100 * moved)
     return "1 point" if rounded == 1 else f"{rounded} points"

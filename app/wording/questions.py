@@ -4,21 +4,26 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 
-from app.question import Lever, Question, per_cent
+from app.question import By, Lever, Question
+from app.typed import per_cent
 from app.wording.parts import Clause, Part, name, say, series
-from app.wording.values import Words, subject, value
+from app.wording.values import Words, set_to, subject, value
 from engine.network.nodes import Node
 
 Nodes = Mapping[str, Node]
 
 
 def question_sentence(question: Question, watch: str, wanted: tuple[str, ...], nodes: Nodes) -> Words:
-    """What is [watch] among records with [pins], if [levers]? `wanted`: the levels of `watch` that are in question."""
+    """What is [watch] among records with [pins], if [levers]?
+
+    wanted: the levels of `watch` that are in question; none where it is the mean of a number.
+    """
     watched = Clause("watch", watch, _parts(subject(nodes[watch], wanted)))
+    mean = "" if wanted else " on average"
     group = among(question, nodes, clauses=True) or [Part("across all records")]
     if not question.levers:
-        return say("What is ", watched, " ", group, "?")
-    return say("What would ", watched, " be ", group, " if ", _levers(question.levers, nodes), "?")
+        return say("What is ", watched, f"{mean} ", group, "?")
+    return say("What would ", watched, f" be{mean} ", group, " if ", _levers(question.levers, nodes), "?")
 
 
 def among(question: Question, nodes: Nodes, clauses: bool = False) -> Words:
@@ -26,16 +31,17 @@ def among(question: Question, nodes: Nodes, clauses: bool = False) -> Words:
     if not question.pins:
         return []
     found: list[Words] = []
-    for column, levels in question.pins.items():
-        words = value(nodes[column], levels)
+    for column, pin in question.pins.items():
+        words = value(nodes[column], pin)
         found.append([Clause("pin", column, _parts(words))] if clauses else words)
     return say("among records with ", series(found))
 
 
 def _levers(levers: Mapping[str, Lever], nodes: Nodes) -> Words:
     found: list[Words] = []
-    for column, (level, reach) in levers.items():
-        parts = (name(column), Part(" were "), name(level))
+    for column, (setting, reach) in levers.items():
+        verb = f" were {'raised' if setting.amount > 0 else 'lowered'} by " if isinstance(setting, By) else " were "
+        parts = (name(column), Part(verb), name(set_to(setting)))
         found.append(say(Clause("set", column, parts), f" for {reach_words(reach)}"))
     return series(found)
 

@@ -4,19 +4,61 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
+from app.question import By, Pin, Setting, To, Within
 from app.wording.parts import Clause, Part, name
-from engine.network.nodes import Node
+from engine.network.nodes import Node, Number
 from engine.order import Better, better_levels
+from engine.records.wording import figure
 
 Words = list[Part | Clause]
 YES = ("yes",)
 
 
-def value(node: Node, levels: Sequence[str]) -> Words:
-    """The column at these levels."""
-    if _is_range(node, levels):
-        return [name(node.name), Part(f" {either(levels)}")]
-    return [name(f"{node.name} = {either(levels)}")]
+def value(node: Node, pin: Pin) -> Words:
+    """The column at these levels, or in this range."""
+    if pin.value is None if isinstance(pin, Within) else _is_range(node, pin):
+        return [name(node.name), Part(f" {held(pin)}")]
+    return [name(f"{node.name} = {held(pin)}")]
+
+
+def held(pin: Pin) -> str:
+    """What a pin sees: nights or mixed; 5 to under 12; 7."""
+    if not isinstance(pin, Within):
+        return either(pin)
+    if pin.value is not None:
+        return figure(pin.value)
+    if pin.low is None or pin.high is None:
+        return f"{figure(pin.low)} and over" if pin.low is not None else f"under {figure(pin.high or 0.0)}"
+    return f"{figure(pin.low)} to under {figure(pin.high)}"
+
+
+def set_to(setting: Setting) -> str:
+    """What a lever sets: yes; 12; of a shift the amount, without its sign."""
+    match setting:
+        case To(number):
+            return figure(number)
+        case By(amount):
+            return figure(abs(amount))
+        case level:
+            return level
+
+
+def setting_words(setting: Setting) -> str:
+    """A lever after "set": to yes; to 12; 2 higher."""
+    if isinstance(setting, By):
+        return f"{set_to(setting)} {'higher' if setting.amount > 0 else 'lower'}"
+    return f"to {set_to(setting)}"
+
+
+def had_before(setting: Setting) -> Pin | None:
+    """The value that those have who had a lever's setting anyway; None for a shift, which nobody has."""
+    match setting:
+        case To(number):
+            return Within(number, number)
+        case By():
+            return None
+        case level:
+            return (level,)
 
 
 def is_at(node: Node, levels: Sequence[str], verb: str = "is") -> Words:
@@ -26,8 +68,8 @@ def is_at(node: Node, levels: Sequence[str], verb: str = "is") -> Words:
 
 
 def subject(node: Node, levels: Sequence[str]) -> Words:
-    """What moves: the bare column where a share of it can only be its yes, else the column at these levels."""
-    return [name(node.name)] if is_yes(levels) else value(node, levels)
+    """What moves: the bare column where only its yes or its mean can be meant, else the column at these levels."""
+    return [name(node.name)] if is_yes(levels) or not levels else value(node, tuple(levels))
 
 
 def is_yes(levels: Sequence[str]) -> bool:
@@ -40,11 +82,13 @@ def either(levels: Sequence[str]) -> str:
 
 
 def in_question(node: Node, better: Better | None, recorded: Sequence[float]) -> tuple[str, ...]:
-    """The levels whose share answers the question.
+    """The levels whose share answers the question; none for a number, which its mean answers for.
 
     The better levels of an outcome; else yes, where the column has it; else the level most often recorded.
     better: of the outcome, None for another column.  recorded: (levels,) shares as recorded.
     """
+    if isinstance(node, Number):
+        return ()
     if found := better_levels(better, node.levels, node.has_blank):
         return found
     yes = yes_level(node)

@@ -9,7 +9,9 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from app.question import SHOWS, Misread, Names, Question, parse, query, slugs, url
+from app.address import Misread, parse
+from app.names import Names, slugs
+from app.question import SHOWS, Question, query, url
 
 NAMES = Names(
     [

@@ -86,7 +86,7 @@ def test_no_label_is_struck_through_where_a_side_has_room(ends):
         for world, (share, half) in zip(("recorded", "among", "set"), ends, strict=True)
     ]
     for row, mark in enumerate(marks):
-        stems = [round(100 * other.share, 2) for other in marks[:row]]
+        stems = [round(100 * other.point, 2) for other in marks[:row]]
         for words, place, side, shown in labels(beam(*marks)):
             if not words.startswith(mark.world) or shown == "slim":
                 continue

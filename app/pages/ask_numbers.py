@@ -1,0 +1,136 @@
+"""What an open card of Ask has more where its column is a number: the strip, the means, and forms for what is typed."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from urllib.parse import parse_qsl
+
+import numpy as np
+from markupsafe import Markup
+
+from app.drawing.answer_beam import World
+from app.drawing.strip import Curve, places, strip
+from app.pages.asking import Asked
+from app.question import By, Question, To, Within, query
+from app.typed import per_cent, written
+from app.wording.estimates import Estimate
+from app.wording.numbers import round_value
+from engine.answering.answer import Marginal
+
+Hidden = tuple[tuple[str, str], ...]
+
+
+@dataclass(frozen=True)
+class Field:
+    """A field of a form. name: as the address reads it.  says: its label for those who do not see the words around."""
+
+    name: str
+    value: str
+    says: str
+
+
+@dataclass(frozen=True)
+class PinForm:
+    """From where to under where a number is seen. hidden: the rest of the question."""
+
+    low: Field
+    high: Field
+    hidden: Hidden
+
+
+@dataclass(frozen=True)
+class LeverForm:
+    """Set to a value, or shift by an amount, for some of them. on: whether the question has this lever."""
+
+    kind: str
+    typed: Field
+    reach: Field
+    hidden: Hidden
+    on: bool
+
+
+@dataclass(frozen=True)
+class NumberPart:
+    """means: as recorded, among these, if set; None where there is none.  levers: empty where it is not changeable."""
+
+    strip: Markup
+    means: tuple[str, str | None, str | None]
+    pin: PinForm
+    levers: tuple[LeverForm, ...]
+
+
+def number_part(asked: Asked, column: str) -> NumberPart:
+    return NumberPart(
+        strip=_strip(asked, column),
+        means=means(asked, column),
+        pin=_pin_form(asked, column),
+        levers=_lever_forms(asked, column) if column in asked.spine.changeable else (),
+    )
+
+
+def means(asked: Asked, column: str) -> tuple[str, str | None, str | None]:
+    """The mean of a number in every world that is shown."""
+    found = asked.estimates(column)
+    among = found.figure(found.among) if asked.shows_among else None
+    after = found.figure(found.set) if asked.shows_set and found.set is not None else None
+    return found.figure(found.recorded), among, None if asked.untouched(column) else after
+
+
+def _strip(asked: Asked, column: str) -> Markup:
+    reading, found, scale = asked.answer[column], asked.estimates(column), asked.scale(column)
+    worlds: list[tuple[World, Marginal, Estimate]] = [("recorded", reading.recorded, found.recorded)]
+    if asked.shows_among:
+        worlds.append(("among", reading.among, found.among))
+    if asked.shows_set and reading.set is not None and found.set is not None and not asked.untouched(column):
+        worlds.append(("set", reading.set, found.set))
+    grid = places(scale)
+    curves = [_curve(world, marginal, estimate, grid) for world, marginal, estimate in worlds]
+    return strip(curves, asked.spine.nodes[column].cuts, scale)
+
+
+def _curve(world: World, marginal: Marginal, estimate: Estimate, grid: np.ndarray) -> Curve:
+    spikes, density = _drawn(marginal, grid)
+    return Curve(world, density, spikes, estimate.point, estimate.low, estimate.high)
+
+
+def _pin_form(asked: Asked, column: str) -> PinForm:
+    slug, pin = asked.spine.names.slugs[column], asked.question.pins.get(column)
+    low, high = (pin.low, pin.high) if isinstance(pin, Within) and pin.value is None else (None, None)
+    return PinForm(
+        Field(f"from.{slug}", "" if low is None else written(low), f"{column} from"),
+        Field(f"under.{slug}", "" if high is None else written(high), f"{column} to under"),
+        _hidden(asked, asked.question.unpinned(column)),
+    )
+
+
+def _lever_forms(asked: Asked, column: str) -> tuple[LeverForm, ...]:
+    slug, usual = asked.spine.names.slugs[column], asked.usual(column)
+    setting, reach = asked.question.levers.get(column, (None, 1.0))
+    to = setting.value if isinstance(setting, To) else round_value(usual.middle, usual.high - usual.low)
+    by = setting.amount if isinstance(setting, By) else usual.step
+    hidden = _hidden(asked, asked.question.without_lever(column))
+    share = Field(f"reach.{slug}", per_cent(reach), f"Reach of {column}, per cent")
+    return (
+        LeverForm("set", Field(f"set.{slug}", written(to), f"Set {column} to"), share, hidden, isinstance(setting, To)),
+        LeverForm(
+            "shift", Field(f"shift.{slug}", written(by), f"Shift {column} by"), share, hidden, isinstance(setting, By)
+        ),
+    )
+
+
+def _hidden(asked: Asked, rest: Question) -> Hidden:
+    return tuple(parse_qsl(query(rest, asked.spine.names)))
+
+
+def _drawn(marginal: Marginal, grid: np.ndarray) -> tuple[list[tuple[float, float]], np.ndarray]:
+    """Values held by many at once, with their shares, and the density of the rest on `grid`."""
+    number = marginal.number
+    assert number is not None
+    single = np.broadcast_to(number.sd == 0.0, number.weight.shape)
+    shares: dict[float, float] = {}
+    for value, share in zip(
+        np.broadcast_to(number.mean, number.weight.shape)[single], number.weight[single], strict=True
+    ):
+        shares[float(value)] = shares.get(float(value), 0.0) + float(share)
+    rest = replace(number, weight=np.where(single, 0.0, number.weight))
+    return list(shares.items()), rest.density(grid)[:, 0]
