@@ -4,7 +4,7 @@ These names are the way in for scripts, tests and the app.
 """
 
 from engine.answering.answer import Answer, Caution, Counted, Marginal, Reading
-from engine.answering.levers import Fix
+from engine.answering.levers import Fix, Mix, Rule, Shift
 from engine.model import Learned, Model, learn, open_learned
 from engine.network.nodes import Category, Number
 from engine.order import LESS, MORE, Order, Stage
@@ -22,11 +22,14 @@ __all__ = [
     "Fix",
     "Learned",
     "Marginal",
+    "Mix",
     "Model",
     "Number",
     "Order",
     "Reading",
     "Refusal",
+    "Rule",
+    "Shift",
     "Stage",
     "Table",
     "learn",

@@ -15,7 +15,7 @@ from engine.answering.asking import ask
 from engine.answering.counting import Records
 from engine.answering.doubt import Plausible, doubtable, held, plausible
 from engine.answering.kept import Kept
-from engine.answering.levers import Fix
+from engine.answering.levers import Lever
 from engine.answering.planner import Planner
 from engine.answering.question import Question, question
 from engine.doubting.case import Case
@@ -25,10 +25,13 @@ from engine.learning import learned as learnt
 from engine.network import conditional
 from engine.network.network import Network, network
 from engine.network.nodes import Node
+from engine.network.number_rules import number_rules
 from engine.network.program import program
 from engine.network.sampling import sample
 from engine.network.scoring import log_score
 from engine.network.story import Story, rules, touches
+from engine.network.strength import category_strength, number_strength
+from engine.network.typical import Typical, invented, recorded
 from engine.order import Order, better_levels
 from engine.records.table import Coded, Table
 from engine.refusal import Refusal, quoted
@@ -76,26 +79,30 @@ class Model:
     def ask(
         self,
         pins: Mapping[str, object] | None = None,
-        levers: Mapping[str, Fix] | None = None,
+        levers: Mapping[str, Lever] | None = None,
         watch: Iterable[str] | None = None,
         beside: Iterable[str] = (),
         draws: int = 200,
         seed: int = 0,
         exact: bool | None = None,
+        against: Mapping[str, Lever] | None = None,
+        pins_after: Mapping[str, object] | None = None,
     ) -> Answer:
         """What `watch` would be among records with `pins`, if `levers` were set (method: Richardson & Robins 2013).
 
-        pins: column -> a level, a set of levels, or a (low, high) range that matches a number's bands.
-        levers: column -> engine.Fix.  watch: columns in question; None: the order's outcomes, else every column.
-        beside: further columns to read in the same pass.  draws: parameter draws behind the intervals.
+        pins: column -> a level or a set of levels; on a number a value, its bands, or a range, (low, high).
+        levers: column -> engine.Fix, Mix, Shift or Rule.  against: levers of a second world to compare with.
+        pins_after: pins on what a lever sets or moves, as it is after that: "those who would show it".
+        watch: columns in question; None: the order's outcomes, else every column.  beside: further columns to read.
+        draws: parameter draws behind the intervals.  exact: True: never sampled; False: always; None: where need be.
         Raises Refusal for an unknown column or level, a pin downstream of a lever, a lever on a column that is not
-        changeable, pins that contradict each other, and a question too wide to sum exactly.
+        changeable, pins that contradict each other, and a question too wide to sum when it has to be exact.
         """
         wanted = self._outcomes() if watch is None else watch
-        pins, levers, wanted, beside = (held(each) for each in (pins, levers, wanted, beside))
+        given = tuple(held(each) for each in (pins, levers, wanted, beside, self.changeable, against, pins_after))
 
         def question_in(network: Network) -> Question:
-            return question(network, pins, levers, wanted, beside, self.changeable)
+            return question(network, *given)
 
         def checked(answer: Answer) -> Answer:
             found, made = cautions(Case(self.network, self.order, self._records, asked, answer, self.unsettled))
@@ -108,10 +115,13 @@ class Model:
         return doubtable(answer, self.plausible, question_in, seed, exact, checked)
 
     def strength(self, source: str, target: str) -> float:
-        """How much a link moves its child: 0 to 1.
+        """How much a link moves its child.
 
-        The largest change in the share of the child's better (else commonest) levels between two values of that
-        parent, averaged over the child's other parents as they are recorded.
+        A category: the largest change, 0 to 1, in the share of its better (else commonest) levels between two values
+        of that parent; a number acts through its bands. A number: the largest change in its mean, in its own unit,
+        between two levels of that parent; where the parent is a number, between the 5th and the 95th percentile of its
+        records, without records between 2 standard deviations below and above its mean.
+        Averaged over the child's other parents as they are recorded.
         Raises Refusal when there is no such link.
         """
         if (source, target) not in self.links:
@@ -120,13 +130,9 @@ class Model:
                 where=target,
                 do="Ask for one of model.links.",
             )
-        node = self.network.category(target)
-        better = np.asarray(node.table)[..., self._better(target)].sum(axis=-1)
-        others = tuple(parent for parent in node.parents if parent != source)
-        shares = np.moveaxis(better, node.parents.index(source), 0)
-        if others:
-            shares = (shares * self._joint(others)).reshape(len(shares), -1).sum(axis=1)
-        return float(shares.max() - shares.min())
+        if target in self.network.numbers:
+            return number_strength(self.network, source, target, self._joint, lambda: self._typical)
+        return category_strength(self.network, source, target, self._better(target), self._joint)
 
     def story(self, column: str) -> str:
         """How a column comes about: what it comes from or goes with, and its rules in plain words.
@@ -144,11 +150,17 @@ class Model:
             raise Refusal(
                 f"This model has no column {quoted(column)}.", where=column, do="Ask for one of model.network.names."
             )
+        said = touches(self.network, column, self.unsettled)
+        if column in self.network.numbers:
+            common = self._joint(self.network.category_parents(column))
+            beside = self._beside(column)
+            means = conditional.number_rows(self.network, column, common, beside, most)
+            told = number_rules(self.network, column, common, beside, lambda number: self._typical.sd(number))
+            return Story(said, told, (), common.size - len(means), means)
         common = self._joint(self.network.node(column).parents)
         better = self._better(column) if self.order is not None and column in self.order.outcomes else None
         rows = conditional.rows(self.network, column, common, most)
-        told = rules(self.network, column, common, better)
-        return Story(touches(self.network, column, self.unsettled), told, rows, common.size - len(rows))
+        return Story(said, rules(self.network, column, common, better), rows, common.size - len(rows))
 
     def log_score(self, frame: pd.DataFrame) -> np.ndarray:
         """(rows,) natural log of the probability or density of each row, by the posterior predictive; -inf where it
@@ -183,8 +195,37 @@ class Model:
         return [node.levels.index(level) for level in found] or [int(np.argmax(self._joint((column,))))]
 
     def _joint(self, columns: tuple[str, ...]) -> np.ndarray:
-        """(levels of each column...) joint shares as recorded; kept, for a page asks for the same ones again."""
-        return self._joints.get(columns, lambda: self._planner.joint(columns))
+        """(levels, or bands, of each column...) joint shares; kept, for a page asks for the same ones again.
+
+        By the model, where all its columns are categories; else by the records. Without records by the model where
+        only categories come before those columns, else by invented rows.
+        """
+        return self._joints.get(columns, lambda: self._common(columns))
+
+    def _common(self, columns: tuple[str, ...]) -> np.ndarray:
+        if not self.network.numbers:
+            return self._planner.joint(columns)
+        if self.coded is None and set(columns) <= self._before_numbers.index.keys():
+            return Planner(self._before_numbers).joint(columns)
+        return self._typical.joint(self.network, columns)
+
+    def _beside(self, column: str) -> np.ndarray:
+        """(category parents' levels..., number parents) means of a number's number parents in each configuration."""
+        categories, numbers = self.network.category_parents(column), self.network.number_parents(column)
+        if not numbers:
+            return np.zeros((*(len(self.network.node(parent).levels) for parent in categories), 0))
+        return self._typical.means(self.network, numbers, categories)
+
+    @cached_property
+    def _typical(self) -> Typical:
+        """What stands for all cases where numbers come in: the records, or rows invented with a fixed seed."""
+        return invented(self.network) if self.coded is None else recorded(self.coded)
+
+    @cached_property
+    def _before_numbers(self) -> Network:
+        """The categories that no number leads to."""
+        after = self.network.descendants(self.network.numbers) | set(self.network.numbers)
+        return Network(tuple(node for node in self.network.nodes if node.name not in after))
 
     @cached_property
     def _joints(self) -> Kept[tuple[str, ...], np.ndarray]:

@@ -7,7 +7,9 @@ from dataclasses import dataclass, field
 from numbers import Real
 
 import numpy as np
+import pandas as pd
 
+from engine.answering.mixture import Mixture
 from engine.records.wording import listing
 from engine.refusal import Refusal, quoted
 
@@ -16,14 +18,18 @@ Wanted = str | Iterable[str]
 
 @dataclass(frozen=True, eq=False)
 class Marginal:
-    """Shares of one column's levels in one world.
+    """Shares of one column's levels, or of a number's bands, in one world; of a number also its distribution.
 
     point: (levels,) the posterior predictive shares.  draws: (levels, draws), draws >= 0; common across worlds.
+    number: a number's distribution at the posterior mean; None for a category, and for a number taken as bands.
+    mean_draws: (draws,) a number's mean in each draw; None as above.
     """
 
     levels: tuple[str, ...]
     point: np.ndarray
     draws: np.ndarray
+    number: Mixture | None = None
+    mean_draws: np.ndarray | None = None
 
     @property
     def shares(self) -> dict[str, float]:
@@ -37,8 +43,51 @@ class Marginal:
         """(draws,) share of one level, or of several together, in each draw."""
         return np.asarray(self.draws[self._rows(wanted)].sum(axis=0))
 
-    def interval(self, wanted: Wanted, coverage: float = 0.90) -> tuple[float, float]:
-        """Equal-tailed credible interval of a share over draws; a point when the parameters are known exactly."""
+    @property
+    def mean(self) -> float:
+        """Mean of a number. Raises Refusal for a category, as `sd`, `quantile` and `density` do."""
+        return float(self._number.means[0])
+
+    @property
+    def sd(self) -> float:
+        """Standard deviation of a number."""
+        return float(self._number.sds[0])
+
+    def quantile(self, share: float) -> float:
+        """The value below which this share of a number lies. Raises Refusal unless 0 < share < 1."""
+        number = self._number
+        if isinstance(share, bool) or not isinstance(share, Real) or not 0.0 < share < 1.0:
+            raise Refusal(
+                f"There is no quantile at {quoted(share)}.", where="share", do="Give a share above 0 and below 1."
+            )
+        return float(number.quantile(float(share))[0])
+
+    def density(self, grid: Iterable[float]) -> np.ndarray:
+        """(values,) density of a number at each value of `grid`."""
+        return np.asarray(self._number.density(np.asarray(list(grid), dtype=np.float64))[:, 0])
+
+    def below(self, grid: Iterable[float]) -> np.ndarray:
+        """(values,) share of a number below each value of `grid`."""
+        return np.asarray(self._number.below(np.asarray(list(grid), dtype=np.float64))[:, 0])
+
+    @property
+    def _number(self) -> Mixture:
+        if self.number is None:
+            raise Refusal(
+                "Only a number has a mean, a standard deviation, quantiles and a density.",
+                do=f"Ask for the shares of its levels: {', '.join(self.levels)}.",
+            )
+        return self.number
+
+    def interval(self, wanted: Wanted | None, coverage: float = 0.90) -> tuple[float, float]:
+        """Equal-tailed credible interval of a share, or of a number's mean when `wanted` is None, over draws.
+
+        A point when the parameters are known exactly.
+        """
+        if wanted is None:
+            mean = self.mean
+            assert self.mean_draws is not None
+            return spread(self.mean_draws, mean, coverage)
         return spread(self.share_draws(wanted), self.share(wanted), coverage)
 
     def _rows(self, wanted: Wanted) -> list[int]:
@@ -69,17 +118,23 @@ def spread(draws: np.ndarray, point: float, coverage: float) -> tuple[float, flo
 
 @dataclass(frozen=True)
 class Counted:
-    """Straight from the records: `rows` that match every pin, and how many of them hold each level.
+    """Straight from the records: `rows` that match every pin, and how many of them hold each level or band.
 
+    mean: of a number over these rows, None for others.
+    weighed: level -> its share where records do not all count the same, None where they do.
     hidden: levels that are told together or not at all, for their counts one by one would give a small one away.
     """
 
     rows: int
     counts: Mapping[str, int]
     hidden: frozenset[str] = frozenset()
+    mean: float | None = None
+    weighed: Mapping[str, float] | None = None
 
     @property
     def shares(self) -> dict[str, float]:
+        if self.weighed is not None:
+            return dict(self.weighed)
         return {level: count / self.rows for level, count in self.counts.items()}
 
     def tellable(self, levels: Iterable[str]) -> bool:
@@ -93,8 +148,9 @@ class Reading:
     """One column in every world asked about.
 
     recorded: no pins.  among: pins.  set: pins and levers, None without levers.
-    had: pins and the levers' values as pins, None without levers, where no such record can be, and for columns that
-    are only read beside those in question.
+    had: pins and the levers' values as pins, None unless all levers fix a value, where no such record can be, and for
+    columns that are only read beside those in question.
+    against: pins and the second set of levers, None without one.
     counted: from the records, None without them and where the number of those that match is not told.
     """
 
@@ -104,6 +160,7 @@ class Reading:
     set: Marginal | None = None
     had: Marginal | None = None
     counted: Counted | None = None
+    against: Marginal | None = None
 
 
 @dataclass(frozen=True)
@@ -149,7 +206,9 @@ class Answer:
     matching_told: whether that number may be shown; where not, it would give a count under the limit away.
     method: "exact" or "sampled", and by which route.  cost: table cells times draws.  milliseconds: wall time.
     mc_error: largest Monte Carlo standard error, 0 when exact.
-    log_evidence: natural log of the pins' probability.
+    effective: fewest effective particles of any world, infinite when exact.
+    log_evidence: natural log of the pins' probability, or density where a number is pinned to a value.
+    pinned_after: columns pinned after the levers; what is set is then told of other people than `among`.
     cautions: those that block first, then those that weaken, then those worth knowing.
     checks_made: how many checks for cautions could be made of this question.
     doubt: what graphs the draws were pooled over, None while they are those of one model.  again: how to ask it with
@@ -169,6 +228,9 @@ class Answer:
     checks_made: int = 0
     doubt: Doubt | None = None
     again: Callable[[int, int], Answer] | None = field(default=None, repr=False)
+    effective: float = np.inf
+    pinned_after: tuple[str, ...] = ()
+    joints: Callable[[tuple[str, ...]], Mapping[str, np.ndarray]] | None = field(default=None, repr=False)
 
     @property
     def doubted(self) -> bool:
@@ -201,14 +263,47 @@ class Answer:
     def __iter__(self) -> Iterator[str]:
         return iter(self.readings)
 
-    def change(self, column: str, wanted: Wanted, coverage: float = 0.90) -> tuple[float, float, float]:
-        """(change, low, high): share if set minus share among these, over common draws.
+    def change(self, column: str, wanted: Wanted | None = None, coverage: float = 0.90) -> tuple[float, float, float]:
+        """(change, low, high): what is set minus among these, or minus against, over common draws.
 
-        Raises Refusal without levers, and for a column that was not asked for.
+        wanted: of the share of these levels or bands; None: of a number's mean.
+        Raises Refusal without levers, with pins after them, and for a column that was not asked for.
         """
         reading = self[column]
         if reading.set is None:
             raise Refusal("Nothing is set, so nothing changes.", do="Set a lever first.")
-        change = reading.set.share(wanted) - reading.among.share(wanted)
-        low, high = spread(reading.set.share_draws(wanted) - reading.among.share_draws(wanted), change, coverage)
-        return change, low, high
+        if self.pinned_after:
+            raise Refusal(
+                f"The people told of if set are picked by {listing(self.pinned_after)} after the lever, and are others "
+                "than before it, so there is no change to tell.",
+                where=column,
+                do="Take out the pins after the lever, or read each world by itself.",
+            )
+        before = reading.among if reading.against is None else reading.against
+        if wanted is None:
+            change = reading.set.mean - before.mean
+            assert reading.set.mean_draws is not None and before.mean_draws is not None
+            return change, *spread(reading.set.mean_draws - before.mean_draws, change, coverage)
+        change = reading.set.share(wanted) - before.share(wanted)
+        return change, *spread(reading.set.share_draws(wanted) - before.share_draws(wanted), change, coverage)
+
+    def joint(self, columns: Iterable[str], coverage: float = 0.90) -> dict[str, pd.DataFrame]:
+        """Joint shares of a few columns that were asked for, in "recorded", "among", "set" and "against" as they are.
+
+        Each frame has the columns' levels, or bands, as its index, and share, low and high, over draws of this model.
+        Raises Refusal for no columns, one that was not asked for, and where that costs too much.
+        """
+        names = (columns,) if isinstance(columns, str) else tuple(dict.fromkeys(columns))
+        if not names or self.joints is None:
+            raise Refusal(
+                "No column is named.", where="columns", do=f"Name some of {listing(tuple(self.readings), 12)}."
+            )
+        levels = [self[name].recorded.levels for name in names]
+        index = pd.MultiIndex.from_product(levels, names=list(names))
+        found: dict[str, pd.DataFrame] = {}
+        for world, shares in self.joints(names).items():
+            rows = shares.reshape(len(index), -1)
+            point = rows[:, 0]
+            ends = np.array([spread(row[1:], float(row[0]), coverage) for row in rows])
+            found[world] = pd.DataFrame({"share": point, "low": ends[:, 0], "high": ends[:, 1]}, index=index)
+        return found

@@ -2,54 +2,76 @@
 
 from __future__ import annotations
 
-from collections.abc import Hashable, Iterable, Mapping, Sequence
+from collections.abc import Mapping
 from dataclasses import dataclass, field
-from functools import partial
-from itertools import combinations
 
 import numpy as np
 
-from engine.answering.kept import Kept
-from engine.answering.question import Question, Setting
-from engine.answering.tree import Read, Tree, plan
-from engine.answering.worlds import World, world
-from engine.network.network import Category, Network, drawn_table
+from engine.answering.contradicting import contradiction
+from engine.answering.mixing import Mixing, NotExactError
+from engine.answering.pins import Pins
+from engine.answering.question import Question
+from engine.answering.scenes import Scene, Seen
+from engine.answering.settings import AnySetting, Setting, ValueSetting
+from engine.answering.summing import LIMIT, Summing, TooWideError, Work
+from engine.network.network import Network
+from engine.network.nodes import Category, Number
 from engine.refusal import Refusal, quoted
 
-LIMIT = 1e9  # table cells times draws that are summed exactly; beyond this a question is refused
-CHUNK = 64e6  # bytes of tables held at once
-DRAWING = 20.0  # a drawn cell counts as so many summed ones: it takes 20 to 60 times as long, and room of its own
-HEAVY = 1e6  # drawn cells of one table; a larger one is drawn only for what cannot be read without it
-TABLES = 256e6  # bytes of drawn tables kept for the next question, of all models together
-PLANS, DRAWS = 256, 3  # plans, and numbers of draws whose recorded world is kept
-SUBSETS = 400  # sets of pins tried, at most, when looking for the smallest that contradicts itself
-
-_DRAWN: Kept[tuple[Category, int, int], np.ndarray] = Kept(TABLES, lambda table: table.nbytes)
+TREE = "by one tree over the columns that bear on the question"
+MIXED = "by every configuration of the categories that touch its numbers"
+WEIGHTING = "by likelihood weighting"
+FEW = 3  # sampled columns that are named
 
 
 @dataclass(frozen=True)
 class Worlds:
-    """Shares in every world: column -> (levels, 1 + draws), the posterior mean first.
+    """What was read of every world.
 
-    set: None without levers.  had: None without levers or where nobody can have the levers' values.
-    log_evidence: of the pins, at the posterior mean.  cost: table cells times draws that were summed, and those of
-    the tables that had to be drawn, each weighed by DRAWING.
+    set: None without levers.  had: None without fixed levers or where nobody can have their values.  against: None
+    unless a second set of levers was asked about.
+    log_evidence: of the pins, at the posterior mean.  cost: table cells times draws that were summed, and those that
+    had to be drawn, each weighed.  method: "exact" or "sampled", and by which route.
     """
 
-    recorded: Mapping[str, np.ndarray]
-    among: Mapping[str, np.ndarray]
-    set: Mapping[str, np.ndarray] | None
-    had: Mapping[str, np.ndarray] | None
+    recorded: Seen
+    among: Seen
+    set: Seen | None
+    had: Seen | None
+    against: Seen | None
     log_evidence: float
     cost: float
+    method: str
+
+    @property
+    def every(self) -> tuple[Seen, ...]:
+        worlds = (self.recorded, self.among, self.set, self.had, self.against)
+        return tuple(seen for seen in worlds if seen is not None)
+
+    @property
+    def mc_error(self) -> float:
+        """Largest Monte Carlo standard error, 0 when exact."""
+        return max((error for seen in self.every for error in seen.error.values()), default=0.0)
+
+    @property
+    def effective(self) -> float:
+        """Fewest effective particles of any world, infinite when exact."""
+        return min(seen.effective for seen in self.every)
 
 
 @dataclass
-class Work:
-    """What a question asks for: cells times draws to sum, and the families to draw."""
+class Turn:
+    """One question being answered: its draws, its choice of route, and what was done for it so far."""
 
-    summed: float = 0.0
-    families: set[int] = field(default_factory=set)
+    count: int
+    seed: int
+    exact: bool | None
+    work: Work = field(default_factory=Work)
+    cells: float = 0.0
+    tree: bool = False
+    mixed: bool = False
+    sampled: dict[str, None] = field(default_factory=dict)
+    reads: dict[str, None] = field(default_factory=dict)
 
 
 class Planner:
@@ -57,211 +79,209 @@ class Planner:
 
     def __init__(self, network: Network) -> None:
         self.network = network
-        self._plans: Kept[Hashable, Tree] = Kept(PLANS)
-        self._worlds: Kept[Hashable, tuple[World, Tree]] = Kept(PLANS)
-        self._grouped: Kept[int, list[dict[str, None]]] = Kept(DRAWS)
-        self._recorded: Kept[tuple[int, int, tuple[str, ...]], tuple[Mapping[str, np.ndarray], Work]] = Kept(
-            DRAWS * (1 + len(network.nodes))
-        )
+        self.categories = _only_categories(network)
+        self._summing = Summing(self.categories)
+        self._mixing = Mixing(network)
 
-    def worlds(self, asked: Question, draws: int, seed: int) -> Worlds:
-        """Every world that `asked` needs, exactly.
+    def worlds(self, asked: Question, draws: int, seed: int, exact: bool | None = None) -> Worlds:
+        """Every world that `asked` needs. exact: True never samples, False always, None where summing costs too much.
 
-        Raises Refusal when the pins contradict each other, or when the cost is beyond what is summed at once.
+        Raises Refusal when the pins contradict each other, or when the cost is beyond what can be done.
         """
-        count = draws if self.network.drawable else 0
-        work = Work()
-        recorded = self._recorded_world(asked.columns, count, seed, work)
-        among: Mapping[str, np.ndarray]
+        turn = Turn(draws if self.network.drawable else 0, seed, exact)
+        recorded = self._read(Scene(Pins(), {}, asked.columns), turn)
         among, log_evidence = recorded, 0.0
-        if asked.pins:
-            found, read = self._read(asked.pins, {}, asked.columns, count, seed, work)
-            log_evidence = min(float(read.log_evidence[0]), 0.0)  # rounding may lift certainty above it
-            if log_evidence == -np.inf:
-                raise self._contradiction(asked)
-            among = found
-        set_world, had = None, None
+        if asked.pinned:
+            among = self._read(Scene(asked.before, {}, asked.columns), turn)
+            log_evidence = float(among.log_evidence[0])
+            if not (asked.values or among.error):
+                log_evidence = min(log_evidence, 0.0)  # rounding may lift certainty above it
+            if not among.possible:
+                raise self._impossible(Scene(asked.before, {}, ()), turn)
+        set_world, against, had = None, None, None
         if asked.levers:
-            levers = asked.working
-            moved = self.network.descendants(levers) | levers.keys()
-            columns = [column for column in asked.columns if column in moved]
-            found = self._read(asked.pins, levers, columns, count, seed, work)[0] if columns else {}
-            set_world = {column: found.get(column, among[column]) for column in asked.columns}
-            had = self._had(asked, count, seed, work)
-        cost = work.summed + DRAWING * self._cells_drawn(work.families, count)
-        return Worlds(recorded, among, set_world, had, log_evidence, cost)
+            set_world = self._set(asked, asked.levers, among, turn)
+            had = self._had(asked, turn)
+        if asked.against is not None:
+            against = self._set(asked, asked.against, among, turn)
+        cost = turn.cells + self._summing.total(turn.work, turn.count)
+        return Worlds(recorded, among, set_world, had, against, log_evidence, cost, _method(turn))
 
     def joint(self, columns: tuple[str, ...]) -> np.ndarray:
-        """(levels of each column in order...) joint shares at the posterior mean, as recorded.
+        """(levels or bands of each column in order...) joint shares at the posterior mean, as recorded.
 
-        Raises Refusal when the cost is beyond what is summed at once.
+        Raises Refusal when the cost is beyond what can be done.
         """
-        here = world(self.network, {}, {}, columns)
-        keep = tuple(sorted(here.watched))
-        tree = plan(here.scopes, here.sizes, (), keep)
-        if tree.cells > LIMIT:
-            raise _too_wide(tree.cells)
-        read = tree.programme.run(here.tables(self._tables(here, 0, 0)))
-        sizes = [len(self.network.node(column).levels) for column in columns]
-        if read.joint is None or not keep:
-            return np.ones(sizes)
-        scope = tree.scopes[tree.roots[0]]
-        ordered = [scope.index(here.reads[column]) for column in columns if here.reads[column] >= 0]
-        table = np.transpose(read.joint[..., 0], ordered).reshape(sizes)
-        return np.asarray(table / table.sum())
+        return self.joint_draws(Scene(Pins(), {}, columns), 0, 0)[..., 0]
 
-    def _recorded_world(self, columns: Sequence[str], count: int, seed: int, work: Work) -> Mapping[str, np.ndarray]:
-        """The world without pins: all columns in one tree where that can be, so that no digit hangs on what was asked
-        before; those that need the same heavy tables in one of their own; else each column by itself."""
-        found: dict[str, np.ndarray] = {}
-        for group in self._grouped.get(count, lambda: self._groups(count)):
-            asked = [column for column in columns if column in group]
-            if not asked:
-                continue
-            here, tree = self._planned({}, {}, tuple(group))
-            parts = [tuple(group)]
-            if self._cost(here, tree, count) > LIMIT:
-                parts = [(column,) for column in asked]
-            for part in parts:
-                shares, needed = self._recorded.get((count, seed, part), partial(self._alone, part, count, seed))
-                found.update(shares)
-                work.summed += needed.summed
-                work.families |= needed.families
-        return found
+    def joints(
+        self, asked: Question, draws: int, seed: int, exact: bool | None, columns: tuple[str, ...]
+    ) -> dict[str, np.ndarray]:
+        """world -> (levels or bands of each column in order..., 1 + draws) joint shares; each column once.
 
-    def _groups(self, count: int) -> list[dict[str, None]]:
-        """Columns that need the same heavy tables, group by group, each in the network's sequence."""
-        needs: dict[str, frozenset[int]] = {}
-        groups: dict[frozenset[int], dict[str, None]] = {}
-        for place, node in enumerate(self.network.nodes):
-            own = {place} if self._cells_drawn([place], count) > HEAVY else set()
-            needs[node.name] = frozenset(own).union(*(needs[parent] for parent in node.parents))
-            groups.setdefault(needs[node.name], {})[node.name] = None
-        return list(groups.values())
+        Raises Refusal when the cost is beyond what can be done.
+        """
+        scenes = {"recorded": Scene(Pins(), {}, columns), "among": Scene(asked.before, {}, columns)}
+        if asked.levers:
+            scenes["set"] = Scene(asked.before, _working(asked.levers), columns, asked.after)
+        if asked.against is not None:
+            scenes["against"] = Scene(asked.before, _working(asked.against), columns, asked.after)
+        return {world: self.joint_draws(scene, draws, seed, exact) for world, scene in scenes.items()}
 
-    def _alone(self, columns: tuple[str, ...], count: int, seed: int) -> tuple[Mapping[str, np.ndarray], Work]:
-        work = Work()
-        return self._read({}, {}, columns, count, seed, work)[0], work
+    def joint_draws(self, scene: Scene, draws: int, seed: int, exact: bool | None = None) -> np.ndarray:
+        """(levels or bands of each column in order..., 1 + draws) joint shares in one world; each column once.
 
-    def _had(self, asked: Question, count: int, seed: int, work: Work) -> Mapping[str, np.ndarray] | None:
+        Raises Refusal when the cost is beyond what can be done.
+        """
+        count = draws if self.network.drawable else 0
+        if exact is not False and self._fits(scene) and all(name in self.categories.index for name in scene.columns):
+            try:
+                return self._summing.joint(scene, count, seed)
+            except TooWideError as wide:
+                if exact:
+                    raise _too_wide(wide.cost) from None
+        try:
+            if exact is not False:
+                return self._mixing.joint(scene, count, seed)
+        except NotExactError as reason:
+            if exact:
+                raise reason.refusal() from None
+        return self._mixing.joint_sampled(scene, count, seed)
+
+    def _set(self, asked: Question, levers: Mapping[str, AnySetting], among: Seen, turn: Turn) -> Seen:
+        """The world with levers; what none of them moves is as among these, to the last digit."""
+        working = _working(levers)
+        moved = self.network.descendants(working) | working.keys()
+        after = asked.after.columns
+        columns = tuple(column for column in asked.columns if after or column in moved)
+        if not columns:
+            return among
+        scene = Scene(asked.before, working, columns, asked.after)
+        found = self._read(scene, turn)
+        if after and not found.possible:
+            raise self._impossible(scene.reading(()), turn)
+        return found.over(among, asked.columns)
+
+    def _had(self, asked: Question, turn: Turn) -> Seen | None:
         """The columns in question among those who had the levers' values anyway."""
-        pins = dict(asked.pins)
+        pins: Pins | None = asked.before
         for column, setting in asked.levers.items():
-            pins[column] = pins.get(column, frozenset([setting.position])) & {setting.position}
-            if not pins[column]:
+            node = self.network.node(column)
+            if pins is None:
                 return None
-        found, read = self._read(pins, {}, asked.watch, count, seed, work)
-        return found if read.log_evidence[0] > -np.inf else None
+            if isinstance(setting, Setting):
+                pins = pins.at(node, setting.position)
+            elif isinstance(setting, ValueSetting) and isinstance(node, Number) and len(setting.values) == 1:
+                pins = pins.at_value(node, setting.values[0])
+            else:
+                return None
+        if pins is None:
+            return None
+        found = self._read(Scene(pins, {}, asked.watch), turn)
+        return found if found.possible else None
 
-    def _read(
-        self,
-        pins: Mapping[str, frozenset[int]],
-        levers: Mapping[str, Setting],
-        columns: Iterable[str],
-        count: int,
-        seed: int,
-        work: Work,
-    ) -> tuple[dict[str, np.ndarray], Read]:
-        here, tree = self._planned(pins, levers, columns)
-        cost = self._cost(here, tree, count)
-        if cost > LIMIT:
-            raise _too_wide(cost)
-        work.summed += tree.cells * (1 + count)
-        work.families.update(here.families)
-        drawn = self._tables(here, count, seed)
-        width = max(1, int(CHUNK / (8.0 * max(tree.stored, 1.0))))
-        reads = [
-            tree.programme.run(
-                here.tables({family: table[..., start : start + width] for family, table in drawn.items()})
-            )
-            for start in range(0, 1 + count, width)
-        ]
-        read = reads[0] if len(reads) == 1 else _joined(reads)
-        return {column: here.spread_out(column, read.marginals, 1 + count) for column in here.reads}, read
+    def _read(self, scene: Scene, turn: Turn) -> Seen:
+        """Read one world by the routes that cost least; the recorded world is kept."""
+        turn.reads.update(dict.fromkeys(scene.columns))
+        bare = not (scene.before.columns or scene.levers or scene.after.columns)
+        if turn.exact is False:
+            return self._sampled(scene, turn, bare)
+        if not self._fits(scene):
+            return self._with_numbers(scene, turn, bare)
+        inside = tuple(column for column in scene.columns if column in self.categories.index)
+        rest = tuple(column for column in scene.columns if column not in self.categories.index)
+        found: Seen | None = None
+        if inside or not rest:
+            try:
+                found = self._summed(scene.reading(inside), turn, bare)
+            except TooWideError as wide:
+                if turn.exact:
+                    raise _too_wide(wide.cost) from None
+                found = self._sampled(scene.reading(inside), turn, bare)
+        if not rest:
+            assert found is not None
+            return found
+        other = self._with_numbers(scene.reading(rest), turn, bare)
+        return other if found is None else found.with_other(other)
 
-    def _cost(self, here: World, tree: Tree, count: int) -> float:
-        """Cells times draws to sum, and those to draw as so many more."""
-        return tree.cells * (1 + count) + DRAWING * self._cells_drawn(here.families, count)
+    def _summed(self, scene: Scene, turn: Turn, bare: bool) -> Seen:
+        turn.tree = True
+        if bare:
+            return Seen(self._summing.recorded(scene.columns, turn.count, turn.seed, turn.work))
+        return self._summing.read(scene, turn.count, turn.seed, turn.work)
 
-    def _cells_drawn(self, families: Iterable[int], count: int) -> float:
-        """Cells times draws of the tables of these families that are uncertain."""
-        nodes = [self._category(family) for family in families]
-        return float(sum(node.dirichlet.size for node in nodes if node.dirichlet is not None) * count)
-
-    def _tables(self, here: World, count: int, seed: int) -> dict[int, np.ndarray]:
-        """The tables that a world needs, by family; another question finds them kept."""
-        found = {}
-        for family in here.families:
-            node = self._category(family)
-            make = partial(drawn_table, node, count, seed)
-            uncertain = node.dirichlet is not None and count > 0
-            found[family] = _DRAWN.get((node, count, seed), make) if uncertain else make()
+    def _with_numbers(self, scene: Scene, turn: Turn, bare: bool) -> Seen:
+        """Exactly where that can be, column by column where not all of them can be; the others sampled."""
+        exact, sampled, reason = self._mixing.divided(scene, turn.count)
+        if sampled and turn.exact:
+            assert reason is not None
+            raise reason.refusal()
+        found: Seen | None = None
+        for columns in exact:
+            turn.mixed = True
+            part, cells = self._mixing.read(scene.reading(columns), turn.count, turn.seed, bare)
+            turn.cells += cells
+            found = part if found is None else found.with_other(part)
+        if sampled:
+            part = self._sampled(scene.reading(sampled), turn, bare)
+            found = part if found is None else found.with_other(part)
+        assert found is not None
         return found
 
-    def _category(self, family: int) -> Category:
-        return self.network.category(self.network.names[family])
+    def _sampled(self, scene: Scene, turn: Turn, bare: bool) -> Seen:
+        cells = self._mixing.cells_drawn(scene, turn.count)
+        if cells > LIMIT:
+            raise _too_wide(cells)
+        turn.sampled.update(dict.fromkeys(scene.columns))
+        turn.cells += cells
+        return self._mixing.sampled(scene, turn.count, turn.seed, bare)
 
-    def _planned(
-        self, pins: Mapping[str, frozenset[int]], levers: Mapping[str, Setting], columns: Iterable[str]
-    ) -> tuple[World, Tree]:
-        """The world and its tree, kept by what is pinned, set and watched."""
-        watched = tuple(columns)
-        asked = (tuple(pins.items()), tuple(levers.items()), watched)
-        return self._worlds.get(asked, lambda: self._plan(world(self.network, pins, levers, watched)))
+    def _fits(self, scene: Scene) -> bool:
+        """Whether pins and levers lie among the categories that no number leads to."""
+        inside = self.categories.index
+        if len(inside) == len(self.network.nodes):
+            return True
+        named = (*scene.before.columns, *scene.after.columns)
+        rulers = [setting.ruler for setting in scene.levers.values() if setting.ruler is not None]
+        return all(column in inside for column in (*named, *scene.levers, *rulers))
 
-    def _plan(self, here: World) -> tuple[World, Tree]:
-        """Another level pinned or set in the same columns needs no new tree."""
-        key = (here.scopes, tuple(here.sizes.items()), here.watched)
-        return here, self._plans.get(key, lambda: plan(here.scopes, here.sizes, here.watched))
+    def _impossible(self, scene: Scene, turn: Turn) -> Refusal:
+        return contradiction(self.network, scene, lambda tried: self._possible(tried), turn.sampled)
 
-    def _contradiction(self, asked: Question) -> Refusal:
-        """Name the smallest set of pins that no record can have together, as far as it is sought."""
-        found = list(asked.pins)
-        for column in list(found):  # leave out what the contradiction does not need
-            rest = [other for other in found if other != column]
-            if rest and not self._possible(asked, rest):
-                found = rest
-        tried = 0
-        for size in range(1, len(found)):
-            for columns in combinations(asked.pins, size):
-                tried += 1
-                if tried > SUBSETS:
-                    break
-                if not self._possible(asked, columns):
-                    return _impossible(self.network, asked, list(columns))
-        return _impossible(self.network, asked, found)
-
-    def _possible(self, asked: Question, columns: Iterable[str]) -> bool:
-        pins = {column: asked.pins[column] for column in columns}
-        _, read = self._read(pins, {}, (), 0, 0, Work())
-        return bool(read.log_evidence[0] > -np.inf)
+    def _possible(self, scene: Scene) -> bool:
+        """Whether some record can have the pins; taken to be so where that cannot be summed exactly."""
+        try:
+            return self._read(scene, Turn(0, 0, True)).possible
+        except (Refusal, NotExactError):
+            return True
 
 
-def _joined(reads: list[Read]) -> Read:
-    return Read(
-        np.concatenate([read.log_evidence for read in reads]),
-        {label: np.concatenate([read.marginals[label] for read in reads], axis=-1) for label in reads[0].marginals},
-    )
+def _only_categories(network: Network) -> Network:
+    """The categories that no number leads to, with their links."""
+    inside: dict[str, Category] = {}
+    for node in network.nodes:
+        if isinstance(node, Category) and all(parent in inside for parent in node.parents):
+            inside[node.name] = node
+    return network if len(inside) == len(network.nodes) else Network(tuple(inside.values()))
 
 
-def _impossible(network: Network, asked: Question, columns: list[str]) -> Refusal:
-    def told(column: str) -> str:
-        levels = network.node(column).levels
-        return f"{quoted(column)} = {' or '.join(quoted(levels[place]) for place in sorted(asked.pins[column]))}"
+def _working(levers: Mapping[str, AnySetting]) -> dict[str, AnySetting]:
+    return {column: setting for column, setting in levers.items() if setting.reach > 0.0}
 
-    pins = [told(column) for column in columns]
-    if len(pins) == 1:
-        return Refusal(f"No record in this model can have {pins[0]}.", where=columns[0], do="Take this pin out.")
-    together = f"{', '.join(pins[:-1])} and {pins[-1]}"
-    return Refusal(
-        f"No record in this model can have {together} together.",
-        where=", ".join(columns),
-        do=f"Take out one of these: {', '.join(map(quoted, columns))}.",
-    )
+
+def _method(turn: Turn) -> str:
+    """Which route answered, as a sentence may go on from it."""
+    routes = [words for used, words in ((turn.tree, TREE), (turn.mixed, MIXED)) if used]
+    if not turn.sampled:
+        return f"exact, {' and '.join(routes)}" if routes else "exact, for nothing needs summing"
+    if not routes:
+        return f"sampled, {WEIGHTING}"
+    few = ", ".join(map(quoted, turn.sampled)) if len(turn.sampled) <= FEW else f"{len(turn.sampled)} columns"
+    return f"sampled, {WEIGHTING}, for {few}; the others exactly, {' and '.join(routes)}"
 
 
 def _too_wide(cost: float) -> Refusal:
     return Refusal(
         f"This question is too wide to sum exactly: {cost:.1e} table cells, where {LIMIT:.0e} is the most.",
-        do="Watch fewer columns, pin more of them, or accept a model with fewer links.",
+        do="Watch fewer columns, pin more of them, ask for fewer draws, or accept a model with fewer links.",
     )

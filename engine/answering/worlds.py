@@ -12,7 +12,7 @@ from functools import cached_property
 
 import numpy as np
 
-from engine.answering.question import Setting
+from engine.answering.settings import OfCategory, Setting
 from engine.network.network import Network
 
 Left = int | tuple[int, ...] | None  # what is left of an axis: one position, some positions, or all
@@ -29,7 +29,7 @@ class Part:
     family: int
     left: tuple[Left, ...]
     scope: tuple[int, ...]
-    lever: Setting | None = None
+    lever: OfCategory | None = None
 
 
 @dataclass(frozen=True)
@@ -79,27 +79,45 @@ class World:
 
 
 def world(
-    network: Network, pins: Mapping[str, frozenset[int]], levers: Mapping[str, Setting], columns: Iterable[str]
+    network: Network,
+    pins: Mapping[str, frozenset[int]],
+    levers: Mapping[str, OfCategory],
+    columns: Iterable[str],
+    after: Mapping[str, frozenset[int]] | None = None,
 ) -> World:
-    """The world where `pins` held before `levers`, with the tables that reading `columns` needs and no others."""
+    """The world where `pins` held before `levers`, with the tables that reading `columns` needs and no others.
+
+    after: pins on what is seen after the levers, of columns that a lever sets or moves.
+    """
     count = len(network.nodes)
     settings = {network.index[column]: setting for column, setting in levers.items()}
-    pinned = {
-        network.index[column]: tuple(sorted(wanted))
-        for column, wanted in pins.items()
-        if len(wanted) < len(network.node(column).levels)
-    }
+    pinned: dict[int, tuple[int, ...]] = {}
+    for given, copied in ((pins, False), (after or {}, True)):
+        for column, wanted in given.items():
+            place = network.index[column]
+            if len(wanted) < len(network.nodes[place].levels):
+                pinned[place + count if copied and place in settings else place] = tuple(sorted(wanted))
     kept = {place: (0,) for place, node in enumerate(network.nodes) if len(node.levels) == 1} | pinned
 
     def as_seen(place: int) -> tuple[int | None, Left]:
         """Label under which the children of a column see it, and what is left of that axis."""
         setting = settings.get(place)
         if setting is None:
-            positions = kept.get(place)
-            return place, positions[0] if positions is not None and len(positions) == 1 else positions
-        if setting.reach == 1.0:
+            return _left(place, kept)
+        if isinstance(setting, Setting) and setting.reach == 1.0 and place + count not in kept:
             return None, setting.position
-        return place + count, None
+        return _left(place + count, kept)
+
+    def axes_of(own: int) -> list[tuple[int | None, Left]]:
+        """Parents, then the column itself, of a table; those of a set copy are its ruler and the natural column."""
+        node = network.nodes[own % count]
+        before = node.parents
+        if own >= count:
+            ruler = settings[own - count].ruler
+            before = () if ruler is None else (ruler,)
+        seen = [as_seen(network.index[parent]) for parent in before]
+        natural = [_left(own - count, kept)] if own >= count and not settings[own - count].forgets else []
+        return [*seen, *natural, _left(own, kept)]
 
     reads: dict[str, int] = {}
     for column in columns:
@@ -115,32 +133,24 @@ def world(
         own = waiting.pop()
         if own in parts:
             continue
-        family = own % count
-        if own >= count:
-            axes: list[tuple[int | None, Left]] = [_natural(family, kept), (own, None)]
-        else:
-            parents = [as_seen(network.index[parent]) for parent in network.nodes[own].parents]
-            axes = [*parents, _natural(own, kept)]
+        axes = axes_of(own)
         scope = tuple(label for label, left in axes if label is not None and not isinstance(left, int))
-        parts[own] = Part(family, tuple(left for _, left in axes), scope, settings[family] if own >= count else None)
+        lever = settings[own - count] if own >= count else None
+        parts[own] = Part(own % count, tuple(left for _, left in axes), scope, lever)
         waiting.extend(label for label, _ in axes if label is not None and label not in parts)
     labels = sorted({label for part in parts.values() for label in part.scope})
     sizes = {label: len(kept.get(label, network.nodes[label % count].levels)) for label in labels}
     return World(network, tuple(parts[own] for own in sorted(parts)), sizes, reads, kept)
 
 
-def _natural(place: int, kept: Mapping[int, tuple[int, ...]]) -> tuple[int, Left]:
-    positions = kept.get(place)
-    return place, positions[0] if positions is not None and len(positions) == 1 else positions
+def _left(label: int, kept: Mapping[int, tuple[int, ...]]) -> tuple[int, Left]:
+    """A label and what is left of its axis."""
+    positions = kept.get(label)
+    return label, positions[0] if positions is not None and len(positions) == 1 else positions
 
 
 def _table(part: Part, drawn: Mapping[int, np.ndarray], levels: int) -> np.ndarray:
-    if part.lever is None:
-        table = drawn[part.family]
-    else:  # the copy is the set level with probability reach, else the natural value
-        copy = (1.0 - part.lever.reach) * np.eye(levels)
-        copy[:, part.lever.position] += part.lever.reach
-        table = copy[..., None]
+    table = drawn[part.family] if part.lever is None else part.lever.copy(levels)[..., None]
     table = table[tuple(left if isinstance(left, int) else slice(None) for left in part.left)]
     axis = 0
     for left in part.left:

@@ -38,12 +38,12 @@ class Case:
     @cached_property
     def matching(self) -> np.ndarray:
         """(rows that match,) positions of the records that match every pin; empty without records."""
-        return np.empty(0, dtype=np.intp) if self.records is None else self.records.matching(self.asked.pins)
+        return np.empty(0, dtype=np.intp) if self.records is None else self.records.matching(self.asked.before)
 
     @property
     def these(self) -> str:
         """The matching records after "of", with their number where it may be told: these 412 records."""
-        if not self.asked.pins:
+        if not self.asked.pinned:
             return f"all {self.matching.size:,} records"
         if self.answer.matching_told:
             return f"these {self.matching.size:,} records"
@@ -68,11 +68,11 @@ class Case:
 
     @cached_property
     def levers(self) -> dict[str, Setting]:
-        """The levers that reach anyone and move a column in question other than themselves."""
+        """The levers that fix a category, reach anyone, and move a column in question other than themselves."""
         return {
             column: setting
             for column, setting in self.asked.working.items()
-            if self.network.descendants([column]) & set(self.asked.watch)
+            if isinstance(setting, Setting) and self.network.descendants([column]) & set(self.asked.watch)
         }
 
 

@@ -54,7 +54,7 @@ def _caution(case: Case, column: str, among: Marginal, count: Counted) -> list[C
             text,
             do,
             figures,
-            (column, *case.asked.pins),
+            (column, *case.asked.pinned),
         )
     ]
 

@@ -26,7 +26,7 @@ def check(case: Case) -> Found | None:
     unsettled = case.unsettled | unsettled_links(links, case.order.may_lead)
     forward = _bearing([(target, source) for source, target in links], {link[::-1] for link in unsettled}, {*levers})
     watch = tuple(column for column in watch if column in forward)  # whatever is turned, no lever moves the others
-    bearing = _bearing(links, unsettled, {*levers, *watch, *case.asked.pins})
+    bearing = _bearing(links, unsettled, {*levers, *watch, *case.asked.pinned})
     near = [link for link in links if bearing.issuperset(link)]
     met = {link for lever in levers for column in watch for link in between(near, lever, column)} & unsettled
     if not met:

@@ -35,7 +35,7 @@ def _left_out(case: Case, doubt: Doubt) -> Caution:
         f"{text}. There it reads: {doubt.why}",
         "On the Model page, see which links of these columns are unsure, or say more in the order.",
         figures,
-        tuple(dict.fromkeys((*case.asked.pins, *case.asked.levers))),
+        tuple(dict.fromkeys((*case.asked.pinned, *case.asked.levers))),
     )
 
 

@@ -11,15 +11,15 @@ FEW = 30  # records: below this a share counted directly is uncertain by about 1
 
 def check(case: Case) -> Found | None:
     """No record behind the pins blocks what a lever would do; under the small-count limit weakens; few are told."""
-    if case.records is None or not case.asked.pins:
+    if case.records is None or not case.asked.pinned:
         return None
     rows = int(case.matching.size)
-    several = len(case.asked.pins) > 1
+    several = len(case.asked.pinned) > 1
     values = "all of these values" if several else "this value"
     do = (
         "Take out a pin to ask about a wider group." if several else "Take the pin out, or pin several values together."
     )
-    columns = tuple(case.asked.pins)
+    columns = tuple(case.asked.pinned)
     figures = {"rows": rows}
     if rows == 0 and case.levers:
         text = f"has {values}, so what setting {' and '.join(case.levers)} would do for them is not in the records."

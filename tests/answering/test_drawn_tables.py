@@ -7,7 +7,8 @@ import pytest
 from hypothesis import given, settings
 
 import engine
-from engine.answering import planner as planning
+from engine.answering import drawing as keeping
+from engine.answering import summing
 from engine.answering.kept import Kept
 from engine.model import Model
 from engine.network import drawn as drawing
@@ -55,7 +56,7 @@ def test_drawn_cells_count_towards_the_cost():
     model = Model(network([*light, *heavy]))
     drawn = sum(node.dirichlet.size for node in (*light[:3], *heavy))
     few, many = (model.ask(watch=["child 0"], draws=draws).cost for draws in (20, 40))
-    assert few > planning.DRAWING * drawn * 20 and many > planning.DRAWING * drawn * 40
+    assert few > summing.DRAWING * drawn * 20 and many > summing.DRAWING * drawn * 40
 
 
 def test_a_table_too_large_to_draw_is_refused_before_it_is_drawn():
@@ -81,16 +82,16 @@ def test_tables_drawn_in_parts_hold_the_same_digits(net):
 @settings(max_examples=30, deadline=None)
 @given(networks(certain=False))
 def test_columns_grouped_by_their_large_tables_read_the_same_whatever_else_is_asked(net):
-    whole, kept = Model(net).ask(watch=net.names, draws=20), planning.HEAVY
+    whole, kept = Model(net).ask(watch=net.names, draws=20), summing.HEAVY
     try:
-        planning.HEAVY = 500.0
+        summing.HEAVY = 500.0
         grouped = Model(net)
         for column in net.names:
             alone = grouped.ask(watch=[column], draws=20)[column].recorded.draws
             np.testing.assert_allclose(alone, whole[column].recorded.draws, rtol=0, atol=1e-12)
             np.testing.assert_array_equal(Model(net).ask(watch=net.names, draws=20)[column].recorded.draws, alone)
     finally:
-        planning.HEAVY = kept
+        summing.HEAVY = kept
 
 
 def test_what_is_kept_weighs_no_more_than_its_limit():
@@ -110,9 +111,9 @@ def test_what_is_kept_weighs_no_more_than_its_limit():
 @pytest.mark.parametrize(("limit", "drawn_again"), [(1e6, 0), (1e4, 2)])
 def test_drawn_tables_are_kept_for_the_next_question_within_their_bytes(monkeypatch, limit, drawn_again):
     drawn = []
-    monkeypatch.setattr(planning, "_DRAWN", Kept(limit, lambda table: table.nbytes))
+    monkeypatch.setattr(keeping, "_DRAWN", Kept(limit, lambda table: table.nbytes))
     monkeypatch.setattr(
-        planning, "drawn_table", lambda node, *rest: drawn.append(node.name) or drawing.drawn_table(node, *rest)
+        keeping, "drawn", lambda node, *rest: drawn.append(node.name) or drawing.drawn_table(node, *rest)
     )
     light, _ = wide(children=0)
     model = Model(network(light))
@@ -121,4 +122,4 @@ def test_drawn_tables_are_kept_for_the_next_question_within_their_bytes(monkeypa
     before = len(drawn)
     model.ask({"first": "1"}, watch=["then"])
     assert len(drawn) - before == drawn_again  # two of the tables hold more than 10,000 bytes
-    assert planning._DRAWN.weight <= limit
+    assert keeping._DRAWN.weight <= limit

@@ -160,7 +160,7 @@ def test_rare_pins_on_leaves_of_a_hidden_column_are_weighed_rightly():
     assert answer["root"].among.shares["v"] == pytest.approx(2.0**30 / (1.0 + 2.0**30), rel=1e-12)
 
 
-def test_a_question_too_wide_to_sum_is_refused_with_its_cost():
+def test_a_question_too_wide_to_sum_is_refused_with_its_cost_when_it_has_to_be_exact():
     columns = [Category(f"c{n}", [f"l{k}" for k in range(30)], [], np.full(30, 1 / 30)) for n in range(14)]
     both = [
         Category(f"s{a} {b}", ["n", "y"], [f"c{a}", f"c{b}"], np.full((30, 30, 2), 0.5))
@@ -169,4 +169,7 @@ def test_a_question_too_wide_to_sum_is_refused_with_its_cost():
     ]
     model = Model(network([*columns, *both]))
     with pytest.raises(engine.Refusal, match=r"too wide to sum exactly: .*e.* table cells"):
-        model.ask({node.name: "y" for node in both}, watch=["c0"])
+        model.ask({node.name: "y" for node in both}, watch=["c0"], exact=True)
+    sampled = model.ask({node.name: "y" for node in both}, watch=["c0"])
+    assert sampled.method.startswith("sampled") and 0.0 < sampled.mc_error < 0.01
+    assert sampled["c0"].among.share("l3") == pytest.approx(1 / 30, abs=4 * sampled.mc_error)
