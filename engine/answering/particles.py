@@ -2,47 +2,22 @@
 
 from __future__ import annotations
 
-import hashlib
 from dataclasses import dataclass
-from functools import cached_property
-from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
 from scipy.special import ndtri
 
 from engine.answering import truncated
-from engine.answering.mixed import Drawn, MixedWorld
+from engine.answering.normal import log_between, standardised
+from engine.answering.sampling import Batch, Sampler
 from engine.answering.truncated import Floats, Interval
-from engine.network.nodes import Category, Node, Number
+from engine.network.nodes import Category, Number
 from engine.network.regression import Coefficients
 
 Places = NDArray[np.intp]
 
 _POINT = 1e-9  # sds that a sampled value is spread over
-
-
-@dataclass(frozen=True)
-class Batch:
-    """`size` particles in each of `draws` draws from `first` on.
-
-    key: tells the batches of a reading apart; the same in every world, so that a column meets the same chances.
-    """
-
-    first: int
-    draws: int
-    size: int
-    key: tuple[int, ...]
-
-    @property
-    def slots(self) -> slice:
-        return slice(self.first, self.first + self.draws)
-
-    def uniform(self, name: str, seed: int) -> Floats:
-        """(draws, size) numbers in 0 < u < 1 that belong to one column."""
-        digest = hashlib.blake2b(name.encode("utf-8", "surrogatepass"), digest_size=8).digest()
-        rng = np.random.default_rng([seed, int.from_bytes(digest, "little"), *self.key])
-        return rng.random((self.draws, self.size)) + 2.0**-54
 
 
 @dataclass(frozen=True, eq=False)
@@ -63,56 +38,6 @@ class Rows:
         return np.bincount(at, weight.ravel(), len(weight) * self.per_draw).reshape(len(weight), -1)
 
 
-class Sampler:
-    """What sampling a world needs to know before any number is looked at.
-
-    Only columns that are watched, or seen, or lead to such a column are sampled: the others cannot change anything.
-    """
-
-    def __init__(self, world: MixedWorld, drawn: Drawn, seed: int) -> None:
-        self.world = world
-        self.drawn = drawn
-        self.seed = seed
-        self.node: dict[str, Node] = {node.name: node for node in world.nodes}
-        self.pins = {name: at for name, at in world.pins.items() if len(at) < len(self.node[name].levels)}
-        needed = {*self.seen, *world.watch}
-        for node in reversed(world.nodes):
-            if node.name in needed:
-                needed.update(node.parents)
-        self.nodes = tuple(node for node in world.nodes if node.name in needed)
-        self.leading = {parent for node in self.nodes for parent in node.parents}
-        following: dict[str, list[str]] = {}
-        for node in self.nodes:
-            for parent in node.parents:
-                following.setdefault(parent, []).append(node.name)
-        self.only_leads_to = {parent: names[0] for parent, names in following.items() if len(names) == 1}
-        self.told_by_later: set[str] = set()  # columns with something seen downstream
-        for node in reversed(self.nodes):
-            if node.name in self.told_by_later or node.name in self.seen:
-                self.told_by_later.update(node.parents)
-
-    @cached_property
-    def seen(self) -> frozenset[str]:
-        return frozenset(self.pins) | frozenset(self.world.values) | frozenset(self.intervals)
-
-    @cached_property
-    def intervals(self) -> dict[str, tuple[Interval, ...]]:
-        """Numbers kept inside intervals, ascending and apart."""
-        found = {}
-        for name, interval in self.world.ranges.items():
-            if interval != (-np.inf, np.inf):
-                found[name] = (interval,)
-        for name, kept in self.pins.items():
-            node = self.node[name]
-            if isinstance(node, Number):
-                found[name] = _joined_bands(node.bands, kept)
-        return found
-
-    def sample(self, batch: Batch) -> Case:
-        """A case for every particle of the batch."""
-        return Case(self, batch)
-
-
 class Case:
     """The particles of a batch. Every array is (draws, size), or has 1 on an axis where all are the same.
 
@@ -122,6 +47,7 @@ class Case:
     rows: column -> where its parameters are.  tables: category -> (rows, levels) shares given parents and its own pin.
     mean, sd: number -> what it follows given its parents, before its own pin: one per row when it has no number
     parent, else one per particle.
+    pulls: watched number -> what the numbers that follow it tell of it, see `told`.
     """
 
     def __init__(self, sampler: Sampler, batch: Batch) -> None:
@@ -134,6 +60,7 @@ class Case:
         self.tables: dict[str, Floats] = {}
         self.mean: dict[str, Floats] = {}
         self.sd: dict[str, Floats] = {}
+        self.pulls: dict[str, tuple[Floats, Floats]] = {}
         for node in sampler.nodes:
             if isinstance(node, Category):
                 self._category(node)
@@ -160,7 +87,7 @@ class Case:
         self.tables[node.name] = shares / some[:, None]
         if kept is not None and len(kept) == 1:
             self.positions[node.name] = np.full((1, 1), next(iter(kept)))
-        elif node.name in self.sampler.leading:
+        elif node.name in self.sampler.following:
             uniform = self.batch.uniform(node.name, self.sampler.seed)
             position = np.zeros(uniform.shape, dtype=np.intp)
             for level in range(levels - 1):  # dividing keeps a last level of share 0 out of reach
@@ -184,37 +111,65 @@ class Case:
             middle = middle + slope * self.values[parent]
         self.mean[node.name], self.sd[node.name] = (middle, spread) if numbers else (mean, sd)
         if numbers and not spread.any():
-            self._followed(node.name, mean[at.at], steep, numbers)
+            self._follow(node.name, mean[at.at], steep, numbers)
         self._value(node, middle, spread)
+        if node.name in self.sampler.telling:
+            for slope, parent in zip(steep, numbers, strict=True):
+                self._pull(node.name, parent, slope, middle, spread)
 
-    def _followed(self, name: str, intercept: Floats, slopes: list[Floats], numbers: list[str]) -> None:
-        """What a number that follows others exactly, such as a set copy, is told by: what they follow themselves.
+    def _follow(self, name: str, intercept: Floats, slopes: list[Floats], numbers: list[str]) -> None:
+        """What tells a number that follows others exactly, such as a set copy: what those follow, where that is free.
 
-        Where they cannot be looked through, the sampled values are told as very narrow normals, for sd 0 is kept for
-        a value that is certain.
+        Otherwise the sampled values as very narrow normals, for sd 0 is kept for a value that is certain.
         """
         mean: Floats = intercept
         variance: Floats = np.zeros((1, 1))
         for slope, parent in zip(slopes, numbers, strict=True):
-            at, sd = self.told(parent, look_through=self.sampler.only_leads_to.get(parent) == name)
+            at, sd = self._normals(parent)
+            if parent in self.sampler.telling or self.sampler.following[parent] != [name]:
+                at, sd = self.values[parent], _POINT * sd
             mean, variance = mean + slope * at, variance + (slope * sd) ** 2
         self.mean[name], self.sd[name] = mean, np.sqrt(variance)
 
-    def told(self, name: str, look_through: bool = True) -> tuple[Floats, Floats]:
-        """(draws, size or 1) means and sds of normals that tell a number, sd 0 for a certain value.
+    def _pull(self, name: str, parent: str, slope: Floats, mean: Floats, sd: Floats) -> None:
+        """How a number that tells something pulls one that it follows: precision, and precision times place."""
+        if parent not in self.sampler.world.watch or parent in self.sampler.world.values:
+            return
+        left = self.values[name] - mean + slope * self.values[parent]
+        with np.errstate(divide="ignore", invalid="ignore"):
+            precision = np.where(slope == 0.0, 0.0, (slope / sd) ** 2)
+            place = np.where(slope == 0.0, 0.0, slope * left / sd**2)
+        before = self.pulls.get(parent, (np.zeros((1, 1)), np.zeros((1, 1))))
+        self.pulls[parent] = before[0] + precision, before[1] + place
 
-        Given its parents a number still follows its regression when nothing is seen of it or downstream of it: no
-        weight depends on the value sampled, and its normals have less noise than single values (Rao-Blackwell).
-        Otherwise the weights belong to the value that was sampled.
+    def _normals(self, name: str) -> tuple[Floats, Floats]:
+        """(draws, size or 1) mean and sd of a number given its parents."""
+        mean, sd = self.mean[name], self.sd[name]
+        if sd.ndim == 1:
+            return mean[self.rows[name].at], sd[self.rows[name].at]
+        return mean, sd
+
+    def told(self, name: str) -> tuple[Floats, Floats]:
+        """(draws, size or 1) means and sds of what a number follows given all else that was sampled and matters.
+
+        It is kept in the box of `Sampler.boxes` that its sampled value is in; sd 0 is a certain value. These normals,
+        with the weights of the particles, tell the number without the gaps between sampled values: one step of Gibbs
+        sampling, averaged (Gelfand & Smith 1990). When nothing is seen of it or downstream of it, they are what it
+        follows given its parents, and free of the noise of its own value (Rao-Blackwell).
         """
         if name in self.sampler.world.values:
             return self.values[name], np.zeros((1, 1))
-        mean, sd = self.mean[name], self.sd[name]
-        if sd.ndim == 1:
-            mean, sd = mean[self.rows[name].at], sd[self.rows[name].at]
-        if look_through and name not in self.sampler.told_by_later and name not in self.sampler.seen:
+        mean, sd = self._normals(name)
+        if name not in self.pulls:
             return mean, sd
-        return self.values[name], _POINT * sd
+        precision, place = self.pulls[name]
+        certain = (sd == 0.0) | ~np.isfinite(precision)
+        own = 1.0 / np.where(certain, 1.0, sd) ** 2
+        variance = 1.0 / np.where(certain, 1.0, own + precision)
+        return (
+            np.where(certain, self.values[name], variance * np.where(certain, 0.0, own * mean + place)),
+            np.where(certain, _POINT * sd, np.sqrt(variance)),
+        )
 
     def _value(self, node: Number, mean: Floats, sd: Floats) -> None:
         """Its value in every particle, and the weight of what was seen of it."""
@@ -226,7 +181,7 @@ class Case:
             uniform = self.batch.uniform(node.name, sampler.seed)
             value, log_mass = _kept_inside(sampler.intervals[node.name], mean, sd, uniform)
             self.log_weight = self.log_weight + log_mass
-        elif node.name in sampler.leading:
+        elif node.name in sampler.following:
             value = mean + sd * ndtri(self.batch.uniform(node.name, sampler.seed)) if np.any(sd) else mean
         else:
             return
@@ -261,27 +216,14 @@ def _parts(drawn: Coefficients, numbers: int) -> list[tuple[Floats, int]]:
     return [*parts, (drawn.slopes, numbers)] if numbers else parts
 
 
-def _joined_bands(cuts: tuple[float, ...], kept: frozenset[int]) -> tuple[Interval, ...]:
-    """The bands kept, neighbours as one."""
-    edges = (-np.inf, *cuts, np.inf)
-    found: list[Interval] = []
-    for place, (low, high) in enumerate(pairwise(edges)):
-        if place not in kept:
-            continue
-        if found and found[-1][1] == low:
-            found[-1] = (found[-1][0], high)
-        else:
-            found.append((low, high))
-    return tuple(found)
-
-
 def _kept_inside(intervals: tuple[Interval, ...], mean: Floats, sd: Floats, uniform: Floats) -> tuple[Floats, Floats]:
     """A value inside the intervals for every particle, and the log of how much of the normal is inside.
 
     One uniform number picks the interval and, by what is left of it, the place inside.
     """
-    ends = [truncated.bounds(interval, mean, sd) for interval in intervals]
-    logs = np.stack([truncated.log_mass(low, high) for low, high in ends])
+    ends = [standardised(np.float64(low), np.float64(high), mean, sd) for low, high in intervals]
+    with np.errstate(invalid="ignore"):  # the whole line has no middle
+        logs = np.stack([log_between(low, high) for low, high in ends])
     largest = logs.max(axis=0)
     shares = np.exp(logs - np.where(np.isfinite(largest), largest, 0.0))
     total = shares.sum(axis=0)

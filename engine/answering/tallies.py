@@ -2,15 +2,19 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 from numpy.typing import NDArray
 
 from engine.answering.mixture import Mixture
+from engine.answering.truncated import WHOLE, Floats, Interval
 
-Floats = NDArray[np.float64]
+Places = NDArray[np.intp]
 
-CELLS = 256  # normals that the particles of a number are put together into, in each draw
-_CLASSES = 4  # classes of sds, apart so that a narrow and a wide normal at one place stay two
+CELLS = 256  # normals that the particles of a number are put together into in each draw
+_CLASSES = 4  # at most so many classes of sds, apart so that a narrow and a wide normal at one place stay two
+_EACH = 64  # cells of a box, at least
 
 
 class Tally:
@@ -58,33 +62,39 @@ class Blend:
     first normals added.
     """
 
-    def __init__(self, draws: int) -> None:
+    def __init__(self, draws: int, boxes: Sequence[Interval] = (WHOLE,)) -> None:
+        """boxes: intervals that a number is kept in, each with cells of its own."""
         self._draws = draws
+        self._boxes = boxes
+        self._per_box = max(_EACH, CELLS // len(boxes))
         self._laid = False
         self.centre, self._width = 0.0, 1.0
         self._edges: Floats = np.zeros(0)
-        self._sums = np.zeros((3, draws, CELLS))  # of w, w d, w (d^2 + sd^2), d from the middle of the cell
+        # of w, w d, w (d^2 + sd^2), d from the middle of the cell
+        self._sums = np.zeros((3, draws, self._per_box * len(boxes)))
 
     def rescale(self, slots: slice, factor: Floats) -> None:
         """Weights of (draws of the slots,) are from now on told in another unit."""
         self._sums[:, slots] *= factor[:, None]
 
-    def add(self, slots: slice, weight: Floats, mean: Floats, sd: Floats) -> None:
-        """All (draws, elements); sd 0 is a single value."""
+    def add(self, slots: slice, weight: Floats, mean: Floats, sd: Floats, box: Places | int = 0) -> None:
+        """All (draws, elements): normals before any cut, sd 0 a single value; the box each is kept in."""
         if not self._laid:
             self._lay(weight, mean, sd)
-        per_class = CELLS // (len(self._edges) + 1)
+        per_class = self._per_class
         away = (mean - self.centre) / self._width
         ranked = (0.5 * per_class) * (1.0 + away / (1.0 + np.abs(away)))
         place = np.clip(ranked.astype(np.intp), 0, per_class - 1)
-        from_middle = mean - self._middles(per_class)[place]
-        cell = np.searchsorted(self._edges, sd, side="right") * per_class + place
+        from_middle = mean - self._middles()[place]
+        cells = self._sums.shape[-1]
         draws = len(weight)
-        cell = (cell + np.arange(draws)[:, None] * CELLS).ravel()
-        for sums, figures in zip(
-            self._sums, (weight, weight * from_middle, weight * (from_middle**2 + sd**2)), strict=True
-        ):
-            sums[slots] += np.bincount(cell, figures.ravel(), draws * CELLS).reshape(draws, CELLS)
+        cell = place + np.arange(draws)[:, None] * cells + box * self._per_box
+        if self._edges.size:
+            cell += np.searchsorted(self._edges, sd, side="right") * per_class
+        cell = cell.ravel()
+        moved = weight * from_middle
+        for sums, figures in zip(self._sums, (weight, moved, moved * from_middle + weight * sd**2), strict=True):
+            sums[slots] += np.bincount(cell, figures.ravel(), draws * cells).reshape(draws, cells)
 
     def mixture(self) -> Mixture:
         """The parts that hold any weight, in every draw. A draw without any weight is told like the first."""
@@ -97,17 +107,18 @@ class Blend:
         empty = ~weight.any(axis=1)
         for sums in (weight, first, second):
             sums[empty] = sums[0]
-        per_class = CELLS // (len(self._edges) + 1)
-        middles = np.tile(self._middles(per_class), CELLS // per_class)
-        middles = np.append(middles, np.zeros(CELLS - len(middles)))[used]
+        box, place = np.divmod(np.flatnonzero(used), self._per_box)
+        middles = self._middles()[place % self._per_class]
         with np.errstate(divide="ignore", invalid="ignore"):
             away = np.where(weight > 0.0, first / weight, 0.0)
             variance = np.where(weight > 0.0, second / weight - away**2, 0.0)
-        sd = np.sqrt(
-            np.where(variance > 1e-14 * self._width**2, variance, 0.0)
-        )  # what is left of one value is rounding
-        shares = weight / weight.sum(axis=1, keepdims=True)
-        return Mixture(shares.T, (middles + away).T, sd.T)
+        rounding = 1e-14 * self._width**2  # what is left of the variance of one value
+        sd = np.sqrt(np.where(variance > rounding, variance, 0.0)).T
+        shares = (weight / weight.sum(axis=1, keepdims=True)).T
+        if tuple(self._boxes) == (WHOLE,):
+            return Mixture(shares, (middles + away).T, sd)
+        low, high = (np.broadcast_to(side[box][:, None], sd.shape) for side in np.array(self._boxes).T)
+        return Mixture(shares, (middles + away).T, sd, low=low, high=high)
 
     def _lay(self, weight: Floats, mean: Floats, sd: Floats) -> None:
         trusted = weight if weight.any() else np.ones_like(weight)
@@ -126,9 +137,13 @@ class Blend:
         self._edges = np.array(edges)
         self._laid = True
 
-    def _middles(self, per_class: int) -> Floats:
-        """(per_class,) the values in the middle of the cells of one class."""
-        rank = (2.0 * np.arange(per_class) + 1.0) / per_class - 1.0
+    @property
+    def _per_class(self) -> int:
+        return self._per_box // (len(self._edges) + 1)
+
+    def _middles(self) -> Floats:
+        """(cells of a class,) the values in their middles."""
+        rank = (2.0 * np.arange(self._per_class) + 1.0) / self._per_class - 1.0
         return np.asarray(self.centre + self._width * rank / (1.0 - np.abs(rank)))
 
 

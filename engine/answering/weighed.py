@@ -5,11 +5,12 @@ from __future__ import annotations
 import numpy as np
 from scipy.special import ndtr, stdtrit
 
+from engine.answering import truncated
 from engine.answering.mixed import MixedRead
 from engine.answering.mixture import Mixture
-from engine.answering.particles import Batch, Case, Rows, Sampler
+from engine.answering.particles import Case, Rows
+from engine.answering.sampling import Batch, Sampler
 from engine.answering.tallies import Blend, Floats, Tally, calmed
-from engine.answering.truncated import band_shares
 from engine.network.nodes import Number
 
 ENOUGH = 0.2  # of half an interval's width is what a standard error may be
@@ -34,11 +35,13 @@ class Weighed:
         watched = [sampler.node[name] for name in dict.fromkeys(sampler.world.watch)]
         self._shares = {node.name: Tally(draws, len(node.levels)) for node in watched}
         self._moments = {node.name: Tally(draws, 1) for node in watched if isinstance(node, Number)}
-        self._blends = {name: Blend(draws) for name in self._moments}
+        self._squares = {name: Tally(draws, 1) for name in self._moments}
+        self._boxes = {name: sampler.boxes(name) for name in self._moments}
+        self._blends = {name: Blend(draws, self._boxes[name]) for name in self._moments}
 
     def add(self, batch: Batch) -> None:
         """Sample a batch and sum it up."""
-        case = self._sampler.sample(batch)
+        case = Case(self._sampler, batch)
         slots = batch.slots
         log_weight = np.broadcast_to(case.log_weight, (batch.draws, batch.size))
         self._rescale(slots, np.maximum(self._scale[slots], log_weight.max(axis=1)))
@@ -59,18 +62,20 @@ class Weighed:
         """Whether the point answer of every watched column is as exact as its interval asks for."""
         if self._weight[0] == 0.0:
             return False
-        found = [(tally, self._means(tally)[1]) for tally in self._shares.values()]
-        found += [(tally, self._means(tally)[1]) for tally in self._moments.values()]
-        for tally, draws in found:
-            error = self._stretch * np.sqrt(tally.variances(self._weight, self._square)[0])
-            if draws.shape[1] > 1:
-                low, high = np.quantile(draws[:, 1:], _TAILS, axis=1)
-                enough = ENOUGH * 0.5 * (high - low)
-            else:
-                enough = np.full(error.shape, FINE)
-            if np.any(error > enough + ROUNDING):
+        for name, tally in self._shares.items():
+            if not self._enough(tally, 1.0):
+                return False
+            if name in self._moments and not self._enough(self._moments[name], self._sd(name)):
                 return False
         return True
+
+    def _enough(self, tally: Tally, unit: float) -> bool:
+        error = self._stretch * np.sqrt(tally.variances(self._weight, self._square)[0])
+        draws = self._means(tally)[1][:, 1:]
+        if draws.shape[1] == 0:
+            return bool(np.all(error <= FINE * unit + ROUNDING))
+        low, high = np.quantile(draws, _TAILS, axis=1)
+        return bool(np.all(error <= ENOUGH * 0.5 * (high - low) + ROUNDING))
 
     def _rescale(self, slots: slice, to: Floats) -> None:
         """Weigh from now on in a unit whose log is `to`, so that the largest weight of a draw is 1."""
@@ -81,8 +86,9 @@ class Weighed:
         self._weight[slots] *= factor
         self._square[slots] *= factor**2
         self._fourth[slots] *= factor**4
-        for tally in (*self._shares.values(), *self._moments.values(), *self._blends.values()):
-            tally.rescale(slots, factor)
+        for sums in (self._shares, self._moments, self._squares, self._blends):
+            for tally in sums.values():
+                tally.rescale(slots, factor)
 
     def _add_category(self, name: str, case: Case, weight: Floats, square: Floats) -> None:
         # Given its parents and its own pin a column still follows its table when nothing is seen downstream of it:
@@ -96,21 +102,33 @@ class Weighed:
             self._shares[name].add(case.batch.slots, rows.summed(weight), rows.summed(square), table)
 
     def _add_number(self, name: str, case: Case, weight: Floats, square: Floats) -> None:
-        slots = case.batch.slots
-        if name in self._sampler.told_by_later or name in self._sampler.seen:
-            self._count(name, case, weight, square)
-            mean, sd = case.told(name)
-        else:
-            mean, sd = case.mean[name], case.sd[name]
-            if mean.ndim == 1:  # no number parent: one normal per row
-                rows = case.rows[name]
-                weight, square = rows.summed(weight), rows.summed(square)
-                mean, sd = mean.reshape(weight.shape), sd.reshape(weight.shape)
-            bands = np.asarray(self._sampler.node[name].cuts)
-            self._shares[name].add(slots, weight, square, band_shares(bands, *np.broadcast_arrays(mean, sd)))
-        mean, sd = np.broadcast_to(mean, weight.shape), np.broadcast_to(sd, weight.shape)
-        self._blends[name].add(slots, weight, mean, sd)
-        self._moments[name].add(slots, weight, square, (mean - self._blends[name].centre)[..., None])
+        if self._boxes[name] != (truncated.WHOLE,):
+            self._add_kept(name, case, weight, square)
+            return
+        if name in self._sampler.telling or case.mean[name].ndim > 1:
+            mean, sd = (np.broadcast_to(part, weight.shape) for part in case.told(name))
+        else:  # no number parent, and nothing told from downstream: one normal per row
+            rows = case.rows[name]
+            weight, square = rows.summed(weight), rows.summed(square)
+            mean, sd = (part.reshape(weight.shape) for part in (case.mean[name], case.sd[name]))
+        self._blends[name].add(case.batch.slots, weight, mean, sd)
+        bands = np.asarray(self._sampler.node[name].cuts)
+        self._shares[name].add(case.batch.slots, weight, square, truncated.band_shares(bands, mean, sd))
+        self._add_moments(name, case.batch.slots, weight, square, mean, sd)
+
+    def _add_kept(self, name: str, case: Case, weight: Floats, square: Floats) -> None:
+        """A number that is kept in boxes: its moments and bands by the sampled values, with a little more noise."""
+        self._count(name, case, weight, square)
+        box = case.positions[name] if len(self._boxes[name]) > 1 else 0
+        mean, sd = (np.broadcast_to(part, weight.shape) for part in case.told(name))
+        self._blends[name].add(case.batch.slots, weight, mean, sd, box)
+        values = np.broadcast_to(case.values[name], weight.shape)
+        self._add_moments(name, case.batch.slots, weight, square, values, np.zeros((1, 1)))
+
+    def _add_moments(self, name: str, slots: slice, weight: Floats, square: Floats, mean: Floats, sd: Floats) -> None:
+        away = mean - self._blends[name].centre
+        self._moments[name].add(slots, weight, square, away[..., None])
+        self._squares[name].add(slots, weight, square, (away**2 + sd**2)[..., None])
 
     def _count(self, name: str, case: Case, weight: Floats, square: Floats) -> None:
         """Weigh the levels or bands that were sampled."""
@@ -162,12 +180,16 @@ class Weighed:
 
     def _number(self, name: str) -> tuple[Mixture, float]:
         """The distribution of a number, and the standard error of its mean in sds of its own."""
-        blend = self._blends[name].mixture()
+        mixture = self._blends[name].mixture()
         means, calm = self._means(self._moments[name])
-        moved = calm - means
-        if np.all(blend.sd[blend.weight > 0.0] > 0.0):  # a value that is certain, such as one set, must stay
-            blend = Mixture(blend.weight, blend.mean + moved, blend.sd)
-        weight, mean = blend.weight[:, 0], blend.mean[:, 0]
-        sd = float(np.sqrt(weight @ (blend.sd[:, 0] ** 2 + (mean - weight @ mean) ** 2)))
+        # a certain value, such as one set, must stay, and so must the ends of what a number is kept in
+        if mixture.low is None and np.all(mixture.sd[mixture.weight > 0.0] > 0.0):
+            mixture = Mixture(mixture.weight, mixture.mean + (calm - means)[0], mixture.sd)
+        sd = self._sd(name)
         error = self._stretch * float(np.sqrt(self._variances(self._moments[name])[0, 0]))
-        return blend, error / sd if sd > 0.0 else 0.0
+        return mixture, error / sd if sd > 0.0 else 0.0 * error
+
+    def _sd(self, name: str) -> float:
+        """Of a number, in the point answer."""
+        mean, square = (self._means(sums[name])[0][0, 0] for sums in (self._moments, self._squares))
+        return float(np.sqrt(max(square - mean**2, 0.0)))

@@ -10,7 +10,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 
 from engine.answering.mixed import Drawn, MixedRead, MixedWorld
-from engine.answering.particles import Batch, Sampler
+from engine.answering.sampling import Batch, Sampler
 from engine.answering.weighed import Weighed
 
 PARTICLES = 100_000  # sampled at first: half for the point answer, half spread over the draws
