@@ -1,7 +1,8 @@
-"""The table of a column given its parents, a row for each configuration, with intervals."""
+"""The table of a column given its parents, a row for each configuration, with intervals: shares, or means."""
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from itertools import product
 
@@ -29,16 +30,32 @@ class Row:
     high: Floats
 
 
+@dataclass(frozen=True, eq=False)
+class NumberRow:
+    """One configuration of the category parents of a number.
+
+    given: the level of each.  weight: how common it is, 0 to 1.
+    mean: of the number where its number parents are as they usually are there.  low, high: the interval of that mean.
+    sd: around its line.  slopes: (number parents,) change in the mean for each 1 more of the parent.
+    """
+
+    given: tuple[str, ...]
+    weight: float
+    mean: float
+    low: float
+    high: float
+    sd: float
+    slopes: tuple[float, ...]
+
+
 def rows(network: Network, column: str, weights: Floats, most: int, coverage: float = 0.90) -> tuple[Row, ...]:
     """The `most` commonest configurations of the parents of `column`, in the order of their levels.
 
     weights: (parent levels...) how common each is.  The intervals are equal-tailed credible ones of each share by
     itself: a share of a Dirichlet is a Beta. A table known exactly has points.
     """
-    node = network.node(column)
-    configurations = list(product(*(network.node(parent).levels for parent in node.parents)))
-    common = weights.reshape(-1)
-    kept = np.sort(np.argsort(-common, kind="stable")[:most])
+    node = network.category(column)
+    configurations, common, kept = _commonest(network, node.parents, weights, most)
     shares = np.asarray(node.table).reshape(-1, len(node.levels))[kept]
     low = high = shares
     if node.dirichlet is not None:
@@ -53,3 +70,44 @@ def rows(network: Network, column: str, weights: Floats, most: int, coverage: fl
         Row(configurations[place], float(common[place]), shares[at], low[at], high[at])
         for at, place in enumerate(kept.tolist())
     )
+
+
+def number_rows(
+    network: Network, column: str, weights: Floats, beside: Floats, most: int, coverage: float = 0.90
+) -> tuple[NumberRow, ...]:
+    """The `most` commonest configurations of the category parents of a number, in the order of their levels.
+
+    weights: (category parents' levels...) how common each is.  beside: (category parents' levels..., number parents)
+    the values of the number parents at which the mean is told. What is known exactly has points.
+    """
+    node, categories = network.number(column), network.category_parents(column)
+    configurations, common, kept = _commonest(network, categories, weights, most)
+    at = beside.reshape(common.size, -1)[kept]
+    slopes = np.asarray(node.slopes).reshape(common.size, at.shape[1])[kept]
+    mean = np.asarray(node.intercept).reshape(-1)[kept] + (slopes * at).sum(axis=1)
+    low = high = mean
+    if node.regression is not None:
+        codes = np.stack(np.unravel_index(kept, weights.shape), axis=1) if categories else np.empty((kept.size, 0), int)
+        low, high = node.regression.mean_interval(codes, at, coverage)
+    sd = np.sqrt(np.asarray(node.variance)).reshape(-1)[kept]
+    return tuple(
+        NumberRow(
+            configurations[place],
+            float(common[place]),
+            float(mean[each]),
+            float(low[each]),
+            float(high[each]),
+            float(sd[each]),
+            tuple(slopes[each].tolist()),
+        )
+        for each, place in enumerate(kept.tolist())
+    )
+
+
+def _commonest(
+    network: Network, parents: Sequence[str], weights: Floats, most: int
+) -> tuple[list[tuple[str, ...]], Floats, NDArray[np.intp]]:
+    """Every configuration in levels, (configurations,) how common it is, and the places of the `most` commonest."""
+    configurations = list(product(*(network.node(parent).levels for parent in parents)))
+    common = weights.reshape(-1)
+    return configurations, common, np.sort(np.argsort(-common, kind="stable")[:most])

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.special import gammaln
+from scipy.special import gammaln, stdtrit
 
 from engine.network.additive import Additive, Sharing, by_configuration, from_configuration
 from engine.network.conjugate import Posterior, conjugate
@@ -84,16 +84,9 @@ class Regression:
 
         codes: (rows, category parents) levels.  parents: (rows, number parents) and values: (rows,) in own units.
         """
-        at = np.zeros(len(values), dtype=np.int64)
-        for place, count in enumerate(self.levels):
-            at = at * count + codes[:, place]
-        row = np.column_stack([np.ones(len(values)), (parents - self.centre[:-1]) / self.scale[:-1]])
-        away = (values - self.centre[-1]) / self.scale[-1] - (row * self.mean[at]).sum(axis=1)
-        spread = self.rate / self.shape
-        own = np.einsum("rj,rji->ri", row, self.root[at])
-        following = from_configuration(np.einsum("ri,rij->rj", row, self.pull[at]), codes, self.levels)
-        common = ((following @ self.shared_root) ** 2).sum(axis=1)
-        square = spread[at] * (1.0 + (own * own).sum(axis=1)) + common
+        at, expected, own, common = self._expected(codes, parents)
+        away = (values - self.centre[-1]) / self.scale[-1] - expected
+        square = self.rate[at] / self.shape[at] * (1.0 + own) + common
         half = self.shape[at]
         return np.asarray(
             gammaln(half + 0.5)
@@ -102,6 +95,36 @@ class Regression:
             - (half + 0.5) * np.log1p(away * away / (2.0 * half * square))
             - np.log(self.scale[-1])
         )
+
+    def mean_interval(
+        self, codes: NDArray[np.integer], parents: Floats, coverage: float = 0.90
+    ) -> tuple[Floats, Floats]:
+        """(rows,) twice: the equal-tailed credible interval of the child's mean, in its own unit.
+
+        codes: (rows, category parents) levels.  parents: (rows, number parents) in own units.
+        """
+        at, expected, own, common = self._expected(codes, parents)
+        half = stdtrit(2.0 * self.shape[at], 0.5 + 0.5 * coverage) * np.sqrt(
+            self.rate[at] / self.shape[at] * own + common
+        )
+        return self._child(expected - half), self._child(expected + half)
+
+    def _child(self, standardised: Floats) -> Floats:
+        return np.asarray(self.centre[-1] + self.scale[-1] * standardised)
+
+    def _expected(
+        self, codes: NDArray[np.integer], parents: Floats
+    ) -> tuple[NDArray[np.integer], Floats, Floats, Floats]:
+        """(rows,) each: the configuration, the child's mean, and what is not known of that mean, standardised: in
+        units of the residual variance, and what all configurations share."""
+        at = np.zeros(len(codes), dtype=np.int64)
+        for place, count in enumerate(self.levels):
+            at = at * count + codes[:, place]
+        row = np.column_stack([np.ones(len(codes)), (parents - self.centre[:-1]) / self.scale[:-1]])
+        own = np.einsum("rj,rji->ri", row, self.root[at])
+        following = from_configuration(np.einsum("ri,rij->rj", row, self.pull[at]), codes, self.levels)
+        common = ((following @ self.shared_root) ** 2).sum(axis=1)
+        return at, (row * self.mean[at]).sum(axis=1), (own * own).sum(axis=1), common
 
     def _in_units(self, mean: Floats, variance: Floats) -> Coefficients:
         more = mean.shape[2:]

@@ -6,7 +6,7 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from typing import Literal
 
-from engine.network.network import Category
+from engine.network.nodes import Node
 from engine.records.bands import band_levels
 
 NAMED = 3  # levels of a column named one by one
@@ -14,7 +14,7 @@ NAMED = 3  # levels of a column named one by one
 
 @dataclass(frozen=True)
 class Said:
-    """A few words of one style. name: a column or a level.  figure: a share."""
+    """A few words of one style. name: a column or a level.  figure: a share, a mean, a change."""
 
     text: str
     style: Literal["plain", "name", "figure"] = "plain"
@@ -58,7 +58,7 @@ def in_hundred(share: float) -> str:
     return "over 99 in 100" if share > 0.99 else f"{int(100 * share + 0.5 + 1e-9)} in 100"
 
 
-def these(node: Category, positions: Sequence[int]) -> Words:
+def these(node: Node, positions: Sequence[int]) -> Words:
     """One or several levels of a column: nights or days; upper or above; 20 and over; anything but nights."""
     last = len(node.levels) - 1
     real = [place for place in positions if not (node.has_blank and place == last)]
@@ -76,7 +76,7 @@ def these(node: Category, positions: Sequence[int]) -> Words:
     return series([[name(node.levels[place])] for place in positions], " or ")
 
 
-def _run(node: Category, real: Sequence[int], graded: int) -> Words | None:
+def _run(node: Node, real: Sequence[int], graded: int) -> Words | None:
     """Neighbouring levels of an ordered column told as one; None where that cannot be said."""
     if node.kind not in ("grade", "number") or not 2 <= len(real) < graded or real[-1] - real[0] != len(real) - 1:
         return None

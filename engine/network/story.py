@@ -1,8 +1,4 @@
-"""A column's rules in plain words: what it comes from, and how its shares differ, like configurations merged.
-
-The configurations of a column's parents are split in two, again and again, where that explains most of how the told
-share differs; each part is then a few conditions that can be said (regression trees: Breiman et al. 1984).
-"""
+"""A column's rules in plain words: what it comes from, and how its shares differ, like configurations merged."""
 
 from __future__ import annotations
 
@@ -12,19 +8,16 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from engine.network.conditional import Row
-from engine.network.network import Category, Network
+from engine.network.conditional import NumberRow, Row
+from engine.network.merging import Part, conditions, parts
+from engine.network.network import Network
+from engine.network.nodes import Category, Node
 from engine.network.said import Said, Words, figure, in_hundred, name, plain, series, these
 
 Floats = NDArray[np.float64]
 Link = tuple[str, str]
-Held = tuple[tuple[int, ...], ...]
 
-MOST = 4  # parts told of one column
-LIKE = 0.05  # shares that differ by less are told as one
 APART = 0.10  # a part whose configurations differ by more says so
-RARE = 0.01  # a part with a smaller share of the records is not told by itself
-TINY = 1e-300
 LISTED = 4  # levels told of a column without parents
 
 
@@ -32,14 +25,16 @@ LISTED = 4  # levels told of a column without parents
 class Story:
     """How a column comes about.
 
-    touches: what it comes from and goes with, a sentence.  rules: how its shares differ.
-    rows: its table, a row for each configuration of its parents.  left_out: rarer configurations without a row.
+    touches: what it comes from and goes with, a sentence.  rules: how its shares, or its mean, differ.
+    rows: the table of a category, a row for each configuration of its parents.  left_out: rarer configurations
+    without a row.  means: of a number, a row for each configuration of its category parents.
     """
 
     touches: Words
     rules: Rules
     rows: tuple[Row, ...]
     left_out: int
+    means: tuple[NumberRow, ...] = ()
 
     @property
     def text(self) -> str:
@@ -48,41 +43,20 @@ class Story:
 
 @dataclass(frozen=True)
 class Rules:
-    """A sentence in pieces: what is told, such as "It is yes for", and a clause for each part, the highest first."""
+    """A sentence in pieces: what is told, such as "It is yes for", and a clause for each part, the highest first.
+
+    between: what stands between clauses in one line of text.  then: a sentence about all parts, or nothing.
+    """
 
     lead: Words
     clauses: tuple[Words, ...]
+    between: str = "; for "
+    then: Words = ()
 
     @property
     def text(self) -> str:
-        return f"{plain(self.lead)} {'; for '.join(plain(clause) for clause in self.clauses)}."
-
-
-@dataclass(frozen=True, eq=False)
-class Part:
-    """Configurations told as one.
-
-    held: for each parent the positions of its levels here.  weight: share of all records.  share: of the told levels.
-    low, high: that share in the configurations that are not rare here.
-    """
-
-    held: Held
-    weight: float
-    share: float
-    low: float
-    high: float
-
-
-@dataclass(frozen=True)
-class Split:
-    """A part in two by one parent. gain: weighted sum of squares explained, 0 where no split is worth telling.
-
-    axis: which parent.  sides: its levels on each side.
-    """
-
-    gain: float
-    axis: int
-    sides: Held
+        told = f"{plain(self.lead)} {self.between.join(plain(clause) for clause in self.clauses)}."
+        return f"{told} {plain(self.then)}" if self.then else told
 
 
 def touches(network: Network, column: str, unsettled: Collection[Link]) -> Words:
@@ -106,12 +80,12 @@ def touches(network: Network, column: str, unsettled: Collection[Link]) -> Words
 
 
 def rules(network: Network, column: str, weights: Floats, better: Sequence[int] | None = None) -> Rules:
-    """How the shares of a category differ; a column told by its mean gets rules of its own beside these.
+    """How the shares of a category differ.
 
     weights: (parent levels...) how common each configuration of the parents is, summing to 1.
     better: positions of the levels to tell of, None to choose them.
     """
-    node = network.node(column)
+    node = network.category(column)
     table = np.asarray(node.table)
     overall = (table * weights[..., None]).reshape(-1, len(node.levels)).sum(axis=0)
     told = tuple(better) if better is not None else _telling(node, table, weights, overall)
@@ -121,7 +95,7 @@ def rules(network: Network, column: str, weights: Floats, better: Sequence[int] 
     parents = tuple(network.node(parent) for parent in node.parents)
     found = parts(parents, shares, weights)
     lead = (Said("It is "), *these(node, told), Said(" for"))
-    if len(found) == 1 and not _conditions(parents, found[0]):
+    if len(found) == 1 and not conditions(parents, found[0]):
         among = figure(found[0].share)
         if varies := _varies(parents, found[0]):
             return Rules(lead, ((among, *varies),))
@@ -131,7 +105,7 @@ def rules(network: Network, column: str, weights: Floats, better: Sequence[int] 
     common = max(found, key=lambda part: part.weight)
     clauses: list[Words] = []
     for part in sorted(found, key=lambda part: (-part.share, part.held)):
-        where = (figure(part.share), Said(" where "), *_conditions(parents, part))
+        where = (figure(part.share), Said(" where "), *conditions(parents, part))
         commonest = (Said(", the commonest case"),) if part is common and len(found) > 2 else ()
         clauses.append((*where, *_varies(parents, part), *commonest))
     return Rules(lead, tuple(clauses))
@@ -171,81 +145,7 @@ def _distribution(node: Category, overall: Floats, better: tuple[int, ...] | Non
     return Rules((Said("It is"),), (series(clauses, " and "),))
 
 
-def parts(parents: Sequence[Category], shares: Floats, weights: Floats) -> list[Part]:
-    """At most MOST parts of the configurations, each a set of levels of every parent; together they are all.
-
-    shares, weights: (parent levels...).
-    """
-    whole = _part(tuple(tuple(range(size)) for size in shares.shape), shares, weights)
-    found = [(whole, _best_split(parents, whole, shares, weights))]
-    while len(found) < MOST:
-        place = max(range(len(found)), key=lambda place: found[place][1].gain)  # the first of equal ones
-        split = found[place][1]
-        if split.gain <= 0.0:
-            break
-        halves = [_part(_with(found[place][0].held, split.axis, side), shares, weights) for side in split.sides]
-        found[place : place + 1] = [(half, _best_split(parents, half, shares, weights)) for half in halves]
-    return [part for part, _ in found]
-
-
-def _part(held: Held, shares: Floats, weights: Floats) -> Part:
-    here, common = shares[np.ix_(*held)].ravel(), weights[np.ix_(*held)].ravel()
-    weight = float(common.sum())
-    share = float((here * common).sum() / weight) if weight > 0.0 else float(here.mean())
-    seen = here[common >= RARE * weight]
-    return Part(held, weight, share, float(seen.min()), float(seen.max()))
-
-
-def _best_split(parents: Sequence[Category], part: Part, shares: Floats, weights: Floats) -> Split:
-    """The split of one parent's levels that explains most; the first of equal ones."""
-    best = Split(0.0, 0, ())
-    here, common = shares[np.ix_(*part.held)], weights[np.ix_(*part.held)]
-    for axis, parent in enumerate(parents):
-        levels = part.held[axis]
-        mass = np.moveaxis(common, axis, 0).reshape(len(levels), -1).sum(axis=1)
-        told = np.moveaxis(common * here, axis, 0).reshape(len(levels), -1).sum(axis=1)
-        for sequence in _sequences(parent, levels, told / np.maximum(mass, TINY)):
-            left, left_told = mass[sequence].cumsum()[:-1], told[sequence].cumsum()[:-1]
-            right, right_told = mass.sum() - left, told.sum() - left_told
-            apart = np.abs(left_told / np.maximum(left, TINY) - right_told / np.maximum(right, TINY))
-            allowed = (np.minimum(left, right) >= RARE) & (apart >= LIKE)
-            gains = np.where(allowed, left * right / np.maximum(left + right, TINY) * apart**2, 0.0).round(12)
-            if gains.size and gains.max() > best.gain:
-                cut = int(gains.argmax()) + 1
-                sides = (sequence[:cut], sequence[cut:])
-                best = Split(
-                    float(gains.max()), axis, tuple(tuple(sorted(levels[at] for at in side)) for side in sides)
-                )
-    return best
-
-
-def _sequences(parent: Category, levels: tuple[int, ...], shares: Floats) -> list[list[int]]:
-    """Sequences of places in `levels` that may be cut, by `shares` (of each) where levels have no order (Fisher 1958).
-
-    Levels in order stay so, a blank at either end.
-    """
-    places = list(range(len(levels)))
-    if parent.kind not in ("grade", "number"):
-        return [sorted(places, key=lambda place: (round(float(shares[place]), 9), place))]
-    if not parent.has_blank or levels[-1] != len(parent.levels) - 1:
-        return [places]
-    return [places, [places[-1], *places[:-1]]]
-
-
-def _with(held: Held, axis: int, levels: tuple[int, ...]) -> Held:
-    return (*held[:axis], levels, *held[axis + 1 :])
-
-
-def _conditions(parents: Sequence[Category], part: Part) -> Words:
-    conditions = [
-        (name(parent.name), Said(" is "), *these(parent, levels))
-        for parent, levels in zip(parents, part.held, strict=True)
-        if len(levels) < len(parent.levels)
-    ]
-    return series(conditions, " and ") if conditions else ()
-
-
-def _varies(parents: Sequence[Category], part: Part) -> Words:
+def _varies(parents: Sequence[Node], part: Part) -> Words:
     """How far the configurations of a part differ, where they differ much, and with what."""
     if part.high - part.low <= APART:
         return ()

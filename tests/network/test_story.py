@@ -5,8 +5,9 @@ import pytest
 from hypothesis import given, settings
 
 import engine
+from engine.network.merging import MOST, parts
 from engine.network.said import in_hundred
-from engine.network.story import APART, MOST, parts, rules
+from engine.network.story import APART, rules
 from tests.answering.generated import networks
 from tests.plainly import cases, total
 
