@@ -53,6 +53,11 @@ class Tally:
         spread = self.squares - 2.0 * means * self.square + means**2 * square[:, None]
         return np.asarray(np.maximum(spread, 0.0) / weight[:, None] ** 2)
 
+    def biases(self, weight: Floats, square: Floats) -> Floats:
+        """(draws, places) what the means are off by on average, by the delta method."""
+        off = self.square - self.means(weight) * square[:, None]
+        return np.asarray(-off / weight[:, None] ** 2)
+
 
 class Blend:
     """Normals of many particles put together into few, draw by draw.

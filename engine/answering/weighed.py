@@ -70,7 +70,7 @@ class Weighed:
         return True
 
     def _enough(self, tally: Tally, unit: float) -> bool:
-        error = self._stretch * np.sqrt(tally.variances(self._weight, self._square)[0])
+        error = self._errors(tally)
         draws = self._means(tally)[1][:, 1:]
         if draws.shape[1] == 0:
             return bool(np.all(error <= FINE * unit + ROUNDING))
@@ -138,17 +138,19 @@ class Weighed:
         each = np.broadcast_to(np.eye(levels), (len(weight), levels, levels))
         self._shares[name].add(case.batch.slots, rows.summed(weight), rows.summed(square), each)
 
-    @property
-    def _stretch(self) -> float:
-        """What a standard error of the point answer is multiplied by, for it is itself estimated.
+    def _errors(self, tally: Tally) -> Floats:
+        """(places,) standard errors of the point answer, nan where no particle fits.
 
-        Student's t, so that two of them hold 95 % of the time, with as many degrees of freedom as squared weights are
-        effective (Owen 2013, Monte Carlo theory, methods and examples, chapter 9): few carry a wide error.
+        A ratio of sums is also off in the mean, which matters when few particles carry the weight; and its error is
+        itself estimated: by Student's t, with as many degrees of freedom as squared weights are effective, two of
+        them hold 95 % of the time (Owen 2013, Monte Carlo theory, methods and examples, chapter 9).
         """
-        if self._fourth[0] == 0.0:
-            return np.nan
+        if self._weight[0] == 0.0:
+            return np.full(tally.plain.shape[1], np.nan)
         effective = float(self._square[0] ** 2 / self._fourth[0])
-        return float(stdtrit(max(effective - 1.0, 1.0), ndtr(2.0))) / 2.0
+        stretch = float(stdtrit(max(effective - 1.0, 1.0), ndtr(2.0))) / 2.0
+        mean_square = self._variances(tally)[0] + tally.biases(self._weight, self._square)[0] ** 2
+        return np.asarray(stretch * np.sqrt(mean_square))
 
     def _variances(self, tally: Tally) -> Floats:
         """(draws, places) squared standard errors; nan where no particle fits."""
@@ -172,7 +174,7 @@ class Weighed:
             if name in self._blends:
                 numbers[name], error[name] = self._number(name)
             else:
-                error[name] = self._stretch * float(np.sqrt(self._variances(tally)[0].max()))
+                error[name] = float(self._errors(tally).max())
         with np.errstate(divide="ignore", invalid="ignore"):
             log_evidence = self._scale + np.log(self._weight / self._size)
         effective = float(self._weight[0] ** 2 / self._square[0]) if self._square[0] > 0.0 else 0.0
@@ -186,7 +188,7 @@ class Weighed:
         if mixture.low is None and np.all(mixture.sd[mixture.weight > 0.0] > 0.0):
             mixture = Mixture(mixture.weight, mixture.mean + (calm - means)[0], mixture.sd)
         sd = self._sd(name)
-        error = self._stretch * float(np.sqrt(self._variances(self._moments[name])[0, 0]))
+        error = float(self._errors(self._moments[name])[0])
         return mixture, error / sd if sd > 0.0 else 0.0 * error
 
     def _sd(self, name: str) -> float:
