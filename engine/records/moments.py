@@ -201,17 +201,23 @@ class ArrayMoments:
         configurations = prod(shape)
         if configurations > LARGEST:
             raise AssertionError("a family of so many configurations is left out of learning")
-        code = (self._joint(categories, 0, self.rows).astype(np.int64) + configurations * self.fold).astype(np.int64)
-        terms = [np.ones(self.rows), *(self.numbers.values[:, place] for place in places)]
-        products = np.empty((self.folds * configurations, len(terms), len(terms)))
-        for one in range(len(terms)):
-            for other in range(one, len(terms)):
-                weights = self.weights * terms[one] * terms[other]
-                found = np.bincount(code, weights, minlength=products.shape[0])
-                products[:, one, other] = products[:, other, one] = found
-        return FamilySums(
-            shape, places, products.reshape(self.folds, configurations, len(terms), len(terms)), self.numbers
-        )
+        terms = len(places) + 1
+        one, other = np.triu_indices(terms)
+        sums = np.zeros((self.folds * configurations, one.size))
+        for low in range(0, self.rows, _ROWS):
+            high = min(low + _ROWS, self.rows)
+            code = self._joint(categories, low, high) + np.int32(configurations) * self.fold[low:high]
+            row = np.empty((high - low, terms))
+            row[:, 0] = 1.0
+            for term, place in enumerate(places, start=1):
+                row[:, term] = self.numbers.values[low:high, place]
+            laid = np.empty((high - low, one.size))
+            _pairs(row, laid)
+            ends = np.arange(high - low + 1, dtype=np.int32)
+            sums += csc_matrix((self.weights[low:high], code, ends), shape=(sums.shape[0], high - low)) @ laid
+        products = np.empty((sums.shape[0], terms, terms))
+        products[:, one, other] = products[:, other, one] = sums
+        return FamilySums(shape, places, products.reshape(self.folds, configurations, terms, terms), self.numbers)
 
     def _joint(self, columns: Sequence[int], low: int, high: int) -> NDArray[np.int32]:
         """(rows low to high,) the joint level of `columns`."""
@@ -291,14 +297,19 @@ class ArrayMoments:
         if not pairs:
             np.multiply(values, values, out=laid[:, 1 + numbers :])
         else:
-            begin = 1 + numbers
-            for place in range(numbers):
-                end = begin + numbers - place
-                np.multiply(values[:, place : place + 1], values[:, place:], out=laid[:, begin:end])
-                begin = end
+            _pairs(values, laid[:, 1 + numbers :])
         if high - low == self.rows:
             self._laid = {pairs: laid}
         return laid
+
+
+def _pairs(row: Floats, out: Floats) -> None:
+    """Products of all pairs of columns i <= j of `row`, a row of the upper triangle after the other."""
+    begin = 0
+    for place in range(row.shape[1]):
+        end = begin + row.shape[1] - place
+        np.multiply(row[:, place : place + 1], row[:, place:], out=out[:, begin:end])
+        begin = end
 
 
 def _terms(numbers: int, pairs: bool) -> int:

@@ -94,7 +94,9 @@ def own_reason(column: Column) -> str | None:
     return f"{share} of its records hold {figure(float(distinct[common]))}."
 
 
-def _most_alike(column: Column) -> int:
+def _most_alike(column: Column, still: Callable[[], None]) -> int:
+    """The records in the commonest value."""
+    still()
     return int(np.unique(np.asarray(column.values), return_counts=True)[1].max())
 
 
@@ -104,7 +106,7 @@ def _constant_inside(
     """Numbers that are constant in a configuration of categories of which at least one is `fresh`."""
     categories = [column for column in columns if column.kind != "number" or column.name in bands]
     left = [column for column in columns if column.kind == "number" and column.name not in bands]
-    left = [column for column in left if _most_alike(column) >= CONSTANT]
+    left = [column for column in left if _most_alike(column, still) >= CONSTANT]
     found: dict[str, str] = {}
     rows = np.arange(columns[0].codes.size)
     some = np.random.default_rng(0).permutation(rows)[:PROBED]
