@@ -123,6 +123,7 @@ def pooled(
         readings={column: _pooled(answer[column], [each[column] for each in found]) for column in answer},
         doubt=Doubt(plausible.graphs, len(plausible.planners), plausible.effective, left_out, why),
         mc_error=max([answer.mc_error, *(each.mc_error for each in found)]),
+        effective=min([answer.effective, *(each.effective for each in found)]),
         cost=answer.cost + sum(each.cost for each in found),
         milliseconds=answer.milliseconds + (time.perf_counter() - started) * 1000.0,
     )
@@ -143,7 +144,9 @@ def _pooled(reading: Reading, others: Sequence[Reading]) -> Reading:
 
 
 def _together(own: Marginal, others: Sequence[Marginal]) -> Marginal:
-    return replace(own, draws=np.concatenate([marginal.draws for marginal in others], axis=-1))
+    draws = np.concatenate([marginal.draws for marginal in others], axis=-1)
+    means = [marginal.mean_draws for marginal in others if marginal.mean_draws is not None]
+    return replace(own, draws=draws, mean_draws=np.concatenate(means) if means else None)
 
 
 def held(given: object) -> Any:

@@ -12,7 +12,7 @@ from engine.answering.answer import Answer, Caution, Counted
 from engine.answering.counting import Records
 from engine.answering.question import Question, Setting
 from engine.network.network import Network
-from engine.order import Order
+from engine.order import Order, better_levels
 from engine.records.table import SMALL_COUNT
 from engine.records.wording import listing
 
@@ -65,6 +65,13 @@ class Case:
         if told is None and self.records is not None and self.matching.size >= MANY:
             return self.records.count(column, self.matching)
         return told
+
+    def in_question(self, column: str) -> tuple[str, ...]:
+        """The better levels of an outcome, else the commonest level of the group."""
+        better = None if self.order is None else self.order.outcomes.get(column)
+        shares = self.answer[column].among.shares
+        found = better_levels(better, tuple(shares), self.network.node(column).has_blank)
+        return found or (max(shares, key=lambda level: shares[level]),)
 
     @cached_property
     def levers(self) -> dict[str, Setting]:

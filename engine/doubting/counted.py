@@ -6,7 +6,6 @@ import math
 
 from engine.answering.answer import Caution, Counted, Marginal
 from engine.doubting.case import Case, Found, named, per_cent
-from engine.order import better_levels
 from engine.records.table import SMALL_COUNT
 
 COVERAGE = 0.90
@@ -29,7 +28,7 @@ def check(case: Case) -> Found | None:
 
 
 def _caution(case: Case, column: str, among: Marginal, count: Counted) -> list[Caution]:
-    levels = _levels(case, column, among)
+    levels = case.in_question(column)
     low, high = among.interval(levels, COVERAGE)
     held = sum(count.counts[level] for level in levels)
     share = held / count.rows
@@ -57,13 +56,6 @@ def _caution(case: Case, column: str, among: Marginal, count: Counted) -> list[C
             (column, *case.asked.pinned),
         )
     ]
-
-
-def _levels(case: Case, column: str, among: Marginal) -> tuple[str, ...]:
-    """The better levels of an outcome, else the commonest level of the group."""
-    better = None if case.order is None else case.order.outcomes.get(column)
-    found = better_levels(better, among.levels, case.network.node(column).has_blank)
-    return found or (max(among.levels, key=lambda level: among.shares[level]),)
 
 
 def wilson(held: int, rows: int) -> tuple[float, float]:

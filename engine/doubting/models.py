@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from engine.answering.answer import Caution, Doubt
 from engine.doubting.case import Case, Found, named, per_cent
-from engine.order import better_levels
+from engine.records.wording import figure
 
 COVERAGE = 0.90
 ROUNDING = 1e-9  # what sums of the same shares may differ by
@@ -40,33 +40,40 @@ def _left_out(case: Case, doubt: Doubt) -> Caution:
 
 
 def _outside(case: Case, column: str) -> list[Caution]:
-    """The accepted model's share, or change where something is set, against the interval over plausible models."""
-    reading = case.answer[column]
-    better = None if case.order is None else case.order.outcomes.get(column)
-    levels = better_levels(better, reading.among.levels, case.network.node(column).has_blank)
-    levels = levels or (max(reading.among.levels, key=lambda level: reading.among.shares[level]),)
-    what = f"{column} = {named(levels, 'or')}"
-    if reading.set is None:
-        said = reading.among.share(levels)
-        low, high = reading.among.interval(levels, COVERAGE)
-        figure, span = per_cent(said), f"{per_cent(low)} and {per_cent(high)}"
+    """The accepted model's figure, or change where something is set, against the interval over plausible models."""
+    answer, reading = case.answer, case.answer[column]
+    wanted = None if reading.among.number is not None else case.in_question(column)
+    changes = reading.set is not None and not answer.pinned_after
+    if changes:
+        said, low, high = answer.change(column, wanted, COVERAGE)
     else:
-        said, low, high = case.answer.change(column, levels, COVERAGE)
-        figure, span = f"{_points(said)} points", f"{_points(low)} and {_points(high)} points"
-    if low - ROUNDING <= said <= high + ROUNDING:
+        shown = reading.among if reading.set is None else reading.set
+        said = shown.mean if wanted is None else shown.share(wanted)
+        low, high = shown.interval(wanted, COVERAGE)
+    hair = ROUNDING * (1.0 if wanted is not None else reading.recorded.sd)
+    if low - hair <= said <= high + hair:
         return []
-    kind = "share" if reading.set is None else "change"
+    told = _value if wanted is None else _points if changes else per_cent
+    kind = "change" if changes else "mean" if wanted is None else "share"
+    what = f"the {kind} of {column}" if wanted is None else f"the {kind} for {column} = {named(wanted, 'or')}"
+    unit = " points" if changes and wanted is not None else ""
     return [
         Caution(
             "know",
             "models",
-            figure,
-            f"is the {kind} for {what} in the model you accepted; nine in ten plausible ones say between {span}.",
+            f"{told(said)}{unit}",
+            f"is {what} in the model you accepted; nine in ten plausible ones say between {told(low)} and "
+            f"{told(high)}{unit}.",
             "Go by the interval rather than by this figure; on the Model page, see which links are unsure.",
             {"model": said, "low": low, "high": high},
             (column, *case.asked.levers),
         )
     ]
+
+
+def _value(value: float) -> str:
+    """A number's mean, or a change of it, with three figures."""
+    return figure(float(f"{value:.3g}"))
 
 
 def _points(change: float) -> str:
