@@ -8,11 +8,11 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from engine.answering.cutting import Cut, Gate, back, forward
 from engine.answering.layout import Axis, Block, Layout
 from engine.answering.linear import Given, Line, apart, following, given, steady, together
 from engine.answering.mixed import Drawn, MixedWorld
-from engine.answering.mixture import Gate, Mixture
-from engine.answering.normal import log_between, standardised
+from engine.answering.mixture import Mixture
 from engine.network.nodes import Number
 from engine.network.regression import Coefficients
 
@@ -68,7 +68,7 @@ def solve(block: Block, world: MixedWorld, drawn: Drawn, keep: Sequence[str]) ->
         node = nodes[equation.name]
         assert isinstance(node, Number)
         lines[equation.name] = following(offset, terms, noise, sd)
-        if len(terms) == 1 and own is not None and node.regression is None and not np.any(node.variance):
+        if len(terms) == 1 and own is not None and node.regression is None and not np.any(np.asarray(node.variance)):
             exact[equation.name] = offset + terms[0][0] * own[0], terms[0][0] * own[1]
         else:
             exact[equation.name] = np.zeros(1), np.ones(1)
@@ -110,17 +110,21 @@ def restricted(
     return array, labels
 
 
-def factor(solved: Solved, world: MixedWorld, layout: Layout) -> tuple[Floats, Floats]:
-    """(scope..., draws) of a block, largest cell of every draw at 1, and the natural log of what was divided out."""
+def factor(solved: Solved, world: MixedWorld, layout: Layout, finely: bool = True) -> tuple[Floats, Floats]:
+    """(scope..., draws) of a block, largest cell of every draw at 1, and the natural log of what was divided out.
+
+    finely: small probabilities of two numbers in their cells have all their digits, too.
+    """
     block = solved.block
+    needed = None if finely else np.zeros(1, dtype=bool)
     logs = solved.open(solved.given.log_density) + solved.open(EXACTLY * solved.given.certain.astype(np.float64))
     if block.roots:
-        logs = logs + _log_mass(solved, _intervals(solved, world, layout))
+        logs = logs + _log_mass(solved, _intervals(solved, world, layout), needed)
     shape = tuple(layout.sizes[label] for label in block.scope)
     flat = np.broadcast_to(logs, (*shape, logs.shape[-1]))
     largest = flat.reshape(-1, flat.shape[-1]).max(axis=0)
     largest = np.where(largest > -np.inf, largest, 0.0)
-    sure = solved.open(solved.given.certain)
+    sure = solved.open(solved.given.certain.astype(np.float64))
     lifted = EXACTLY * sure.reshape(-1, sure.shape[-1]).max(axis=0)
     return np.exp(flat - largest), largest - lifted
 
@@ -150,30 +154,19 @@ def _intervals(solved: Solved, world: MixedWorld, layout: Layout) -> dict[str | 
     return found
 
 
-def back(low: Floats, high: Floats, constant: Floats, slope: Floats) -> tuple[Floats, Floats]:
-    """Where x lies when low <= constant + slope x < high; without a slope everywhere or nowhere."""
-    flat = slope == 0.0
-    inside = (low <= constant) & (constant < high)
-    divisor = np.where(flat, 1.0, slope)
-    one, other = (low - constant) / divisor, (high - constant) / divisor
-    down = slope < 0.0
-    start, end = np.where(down, other, one), np.where(down, one, other)
-    return (
-        np.where(flat, np.where(inside, -np.inf, np.inf), start),
-        np.where(flat, np.where(inside, np.inf, -np.inf), end),
-    )
-
-
-def _log_mass(solved: Solved, intervals: Mapping[str | None, tuple[Floats, Floats]]) -> Floats:
+def _log_mass(
+    solved: Solved, intervals: Mapping[str | None, tuple[Floats, Floats]], needed: NDArray[np.bool_] | None
+) -> Floats:
     """Natural log of the probability that every number is in its cell."""
     total: Floats = np.zeros(1)
     if None in intervals:
         low, high = intervals[None]
         total = np.where(low < high, 0.0, -np.inf)
     gates = solved.block.gates
-    if len(gates) == 1:
+    if gates:
         mean, sd = solved.line(gates[0])
-        total = total + log_between(*standardised(*intervals[gates[0]], mean, sd))
+        gate = _gate(solved, gates[0], gates[1], *intervals[gates[1]]) if len(gates) > 1 else None
+        total = total + Cut(mean, sd, *intervals[gates[0]], gate).log_mass(needed)
     return total
 
 
@@ -193,30 +186,18 @@ def mixture(solved: Solved, name: str, shares: Floats, world: MixedWorld, layout
         start, end = intervals[cut]
         if cut == root:
             constant, slope = (solved.open(array) for array in solved.affine[name])
-            low, high = (flat(side) for side in _forward(start, end, constant, slope))
+            low, high = (flat(side) for side in forward(start, end, constant, slope))
             continue
-        own, other = solved.given.lines[name], solved.given.lines[cut]
-        variance = solved.open(steady(own)) ** 2
-        still = variance == 0.0
-        lean = np.where(still, 0.0, solved.open(together(own, other)) / np.where(still, 1.0, variance))
-        rest = np.where(still, solved.open(steady(other)), solved.open(apart(other, _closed(solved, lean), own)))
-        at = solved.open(other.offset) - lean * mean
-        gate = Gate(flat(lean), flat(at), flat(rest), flat(start), flat(end))
+        made = _gate(solved, name, cut, start, end)
+        gate = Gate(*(flat(side) for side in (made.slope, made.at, made.sd, made.low, made.high)))
     return Mixture(flat(shares), flat(mean), flat(sd), gate, low, high)
 
 
-def _forward(low: Floats, high: Floats, constant: Floats, slope: Floats) -> tuple[Floats, Floats]:
-    """Where constant + slope x lies when low <= x < high; without a slope that leaves it where it is."""
-    flat = slope == 0.0
-    factor = np.where(flat, 1.0, slope)
-    one, other = constant + factor * low, constant + factor * high
-    return (
-        np.where(flat, -np.inf, np.where(slope < 0.0, other, one)),
-        np.where(flat, np.inf, np.where(slope < 0.0, one, other)),
-    )
-
-
-def _closed(solved: Solved, array: Floats) -> Floats:
-    """Without the axes that `open` put in."""
-    shape = array.shape
-    return array.reshape((*shape[: solved.block.outer], shape[-1]))
+def _gate(solved: Solved, name: str, cut: str, low: Floats, high: Floats) -> Gate:
+    """Another number of the block as a gate on this one."""
+    own, other = solved.given.lines[name], solved.given.lines[cut]
+    variance = steady(own) ** 2
+    still = variance == 0.0
+    lean = np.where(still, 0.0, together(own, other) / np.where(still, 1.0, variance))
+    rest = np.where(still, steady(other), apart(other, lean, own))
+    return Gate(solved.open(lean), solved.open(other.offset - lean * own.offset), solved.open(rest), low, high)

@@ -3,34 +3,25 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
 from scipy.special import ndtr, ndtri
 
-from engine.answering.normal import log_between, log_density, moments_between, standardised
+from engine.answering.bivariate import SURE
+from engine.answering.cutting import Cut, Gate
+from engine.answering.normal import log_density, moments_between, standardised
+
+__all__ = ["Gate", "Mixture"]
 
 Floats = NDArray[np.float64]
 
+WEIGHS = 1e-12  # a part that weighs less is of no account
 FAR = 40.0  # standard deviations that no quantile lies beyond
 HALVINGS = 200
 AT_ONCE = 2_000_000  # numbers of a grid x parts x draws that are worked on at once
-
-
-@dataclass(frozen=True, eq=False)
-class Gate:
-    """Another number X of each part, kept where low <= X < high: X given the value y ~ N(at + slope y, sd^2).
-
-    All (parts, draws), or what broadcasts to it.
-    """
-
-    slope: Floats
-    at: Floats
-    sd: Floats
-    low: Floats
-    high: Floats
 
 
 @dataclass(frozen=True, eq=False)
@@ -81,7 +72,7 @@ class Mixture:
         By halving and Newton steps, to the last digits; a single value comes out as it is.
         """
         z = float(ndtri(q))
-        if len(self.weight) == 1 and self.gate is None and self.low is None:
+        if len(self.weight) == 1 and self._free:
             return np.asarray(self.mean[0] + z * self.sd[0] + 0.0 * self.weight[0])
         low, high = self._bracket(z)
         for _ in range(HALVINGS):
@@ -98,7 +89,7 @@ class Mixture:
     def _bracket(self, z: float) -> tuple[Floats, Floats]:
         """Values that the quantile lies between in every draw."""
         live = self.weight > 0.0
-        reach = (z, z) if self.gate is None and self.low is None else (-FAR, FAR)
+        reach = (z, z) if self._free else (-FAR, FAR)
         low, high = (self.mean + side * self.sd for side in reach)
         if self.low is not None and self.high is not None:
             low, high = np.maximum(low, self.low), np.minimum(high, self.high)
@@ -120,28 +111,51 @@ class Mixture:
         with np.errstate(invalid="ignore"):
             return np.asarray((self.weight * live).sum(axis=-2))
 
+    @cached_property
+    def _cut(self) -> Cut:
+        everywhere = np.full(1, np.inf)
+        low = -everywhere if self.low is None else self.low
+        return Cut(self.mean, self.sd, low, everywhere if self.high is None else self.high, self.gate)
+
+    @property
+    def _free(self) -> bool:
+        return self.gate is None and self.low is None and self.high is None
+
+    @cached_property
+    def _log_mass(self) -> Floats:
+        """Natural log of what each part keeps, (parts, draws); 0 where that is nothing."""
+        found = self._cut.log_mass(self.weight > WEIGHS)
+        return np.where(found > -np.inf, found, 0.0)
+
     def _parts_below(self, x: Floats) -> Floats:
-        if self.low is None or self.high is None:
-            certain = self.sd == 0.0
-            return np.where(certain, self.mean < x, ndtr((x - self.mean) / np.where(certain, 1.0, self.sd)))
-        start, end = standardised(self.low, self.high, self.mean, self.sd)
-        mass = log_between(start, end)
         certain = self.sd == 0.0
-        z = np.clip((x - self.mean) / np.where(certain, 1.0, self.sd), start, end)
-        share = np.exp(log_between(start, z) - np.where(mass > -np.inf, mass, 0.0))
-        return np.where(certain, self.mean < x, np.where(x >= self.high, 1.0, np.minimum(share, 1.0)))
+        if self._free:
+            return np.where(certain, self.mean < x, ndtr((x - self.mean) / np.where(certain, 1.0, self.sd)))
+        cut = replace(self._cut, high=np.minimum(self._cut.high, x))
+        needed = (self.weight > WEIGHS) & (self._log_mass < np.log(SURE))
+        share = np.minimum(np.exp(np.minimum(cut.log_mass(needed) - self._log_mass, 0.0)), 1.0)
+        return np.where(certain, self.mean < x, np.where(x >= self._cut.high, 1.0, share))
 
     def _parts_density(self, x: Floats) -> Floats:
         found = log_density(x, self.mean, self.sd)
-        if self.low is not None and self.high is not None:
-            mass = log_between(*standardised(self.low, self.high, self.mean, self.sd))
-            found = np.where((self.low <= x) & (x < self.high), found - np.where(mass > -np.inf, mass, 0.0), -np.inf)
-        return np.exp(found)
+        if self._free:
+            return np.exp(found)
+        kept = found + self._cut.log_open(x) - self._log_mass
+        inside = (self._cut.low <= x) & (x < self._cut.high)
+        return np.exp(np.where(self.sd == 0.0, found, np.where(inside, kept, -np.inf)))
 
     @cached_property
     def _moments(self) -> tuple[Floats, Floats]:
         """Mean and variance of each part, (parts, draws)."""
-        if self.low is None or self.high is None:
+        if self._free:
             return self.mean, self.sd * self.sd
-        mean, variance = moments_between(*standardised(self.low, self.high, self.mean, self.sd))
-        return self.mean + self.sd * mean, self.sd * self.sd * variance
+        if self.gate is None or self.low is not None or self.high is not None:
+            return self._cut.moments(self.weight > WEIGHS)
+        gate = self.gate  # the gate's number is only cut to an interval, and this one leans on it
+        spread = np.hypot(gate.slope * self.sd, gate.sd)
+        still = spread == 0.0
+        divisor = np.where(still, 1.0, spread)
+        lean = gate.slope * self.sd * self.sd / divisor
+        mean, variance = moments_between(*standardised(gate.low, gate.high, gate.at + gate.slope * self.mean, spread))
+        own = np.where(still, self.sd, self.sd * gate.sd / divisor)
+        return self.mean + lean * np.where(np.isfinite(mean), mean, 0.0), own * own + lean * lean * variance

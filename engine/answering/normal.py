@@ -39,13 +39,13 @@ def standardised(low: Floats, high: Floats, mean: Floats, sd: Floats) -> tuple[F
 
 def log_between(start: Floats, end: Floats) -> Floats:
     """Natural log of the probability that a standard normal lies between; -inf where end <= start."""
-    upper = start + end > 0.0  # false for -inf + inf, which is nan
+    upper = start > -end
     low, high = np.where(upper, -end, start), np.where(upper, -start, end)  # now the nearer end is `high`
     log_high = log_ndtr(high)
     with np.errstate(divide="ignore", invalid="ignore"):
         found = log_high + np.log(-np.expm1(log_ndtr(low) - log_high))
-    width = high - low
-    middle = 0.5 * (high + low)
+        width = high - low
+        middle = 0.5 * (high + low)
     narrow = (width > 0.0) & (width * (1.0 + np.abs(middle)) < 1e-2)
     if np.any(narrow):  # by the Taylor series about the middle, where a difference would lose digits
         c, w = np.where(narrow, middle, 0.0) ** 2, np.where(narrow, width, 1.0) ** 2
@@ -60,8 +60,7 @@ def moments_between(start: Floats, end: Floats) -> tuple[Floats, Floats]:
     Where nothing lies between, the mean is the nearer end, and the variance 0.
     """
     start, end = np.broadcast_arrays(start, end)
-    with np.errstate(invalid="ignore"):
-        upper = start + end > 0.0
+    upper = start > -end
     low, high = np.where(upper, start, -end), np.where(upper, end, -start)  # now the nearer end is `low`
     log_mass = log_between(low, high)
     empty = ~(high > low)

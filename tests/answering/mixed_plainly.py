@@ -5,7 +5,7 @@ about 1e-12; all else is closed. Nothing here knows of trees, messages or the or
 """
 
 import itertools
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from scipy.stats import norm
@@ -23,11 +23,13 @@ class Truth:
     """What reading a world must give, for one draw.
 
     shares: name -> (levels or bands,).  parts: number -> (weights, means, sds) of normals, as many as quadrature made.
+    asked: the world, its parameters, and which draw of them.
     """
 
     log_evidence: float
     shares: dict
     parts: dict
+    asked: tuple
 
     def mean(self, name):
         weights, means, _ = self.parts[name]
@@ -38,8 +40,20 @@ class Truth:
         return float(np.sqrt(weights @ (sds**2 + (means - self.mean(name)) ** 2)))
 
     def below(self, name, value):
+        world, drawn, draw = self.asked
         weights, means, sds = self.parts[name]
-        return float(weights @ _below(value, means, sds))
+        if name in world.values or np.all(sds > 0.0) or len(weights) < NODES.size:
+            return float(weights @ _below(value, means, sds))
+        low, high = world.ranges.get(name, (-np.inf, np.inf))  # a step in a sum of points: kept in a range instead
+        if value <= low:
+            return 0.0
+        kept = replace(world, ranges={**world.ranges, name: (low, min(high, value))}, watch=())
+        return float(np.exp(truth(kept, drawn, draw).log_evidence - self.log_evidence))
+
+    def _bands(self, name):
+        """Shares of a number's bands."""
+        (node,) = (node for node in self.asked[0].nodes if node.name == name)
+        return np.diff([0.0, *(self.below(name, cut) for cut in node.bands), 1.0])
 
     def density(self, name, value):
         weights, means, sds = self.parts[name]
@@ -85,7 +99,7 @@ def truth(world, drawn=None, draw=0):
             }
             found.append((log_density + np.log(chance), weights, full, parts))
     if not found:
-        return Truth(-np.inf, {}, {})
+        return Truth(-np.inf, {}, {}, (world, drawn, draw))
     largest = max(log for log, *_ in found)
     weights = [np.exp(log - largest) * inner for log, inner, *_ in found]
     total = sum(inner.sum() for inner in weights)
@@ -104,19 +118,13 @@ def truth(world, drawn=None, draw=0):
                 strict=True,
             )
         )
-        shares[name] = _bands(node, world, mixtures[name])
-    return Truth(float(largest + np.log(total)), shares, mixtures)
+    found = Truth(float(largest + np.log(total)), shares, mixtures, (world, drawn, draw))
+    shares.update((name, found._bands(name)) for name in mixtures)
+    return found
 
 
 def band_of(node, value):
     return int(np.searchsorted(node.bands, value, side="right"))
-
-
-def _bands(node, world, parts):
-    """Shares of a number's bands; quadrature points on a number in a box never lie on its ends."""
-    weights, means, sds = parts
-    ends = [np.zeros_like(weights), *(_below(cut, means, sds) for cut in node.bands), np.ones_like(weights)]
-    return np.array([weights @ (high - low) for low, high in itertools.pairwise(ends)])
 
 
 def _below(value, means, sds):
@@ -201,44 +209,47 @@ def _points(offset, spread, sides):
     points, weights = np.zeros((1, 0)), np.ones(1)
     for place, (low, high) in enumerate(sides):
         constant, slopes, sd = _conditional(offset, spread, list(range(place)), place)
-        longer, heavier = [], []
-        for point, weight in zip(points, weights, strict=True):
-            centre = constant + slopes @ point
-            if sd == 0.0:
-                own, shares = np.array([centre]), np.array([1.0 if low <= centre < high else 0.0])
-            else:
-                own, shares = _panels(centre, sd, low, high, _steps(offset, spread, sides, place, point))
-            longer.append(np.column_stack([np.tile(point, (own.size, 1)), own]))
-            heavier.append(weight * shares)
-        points, weights = np.concatenate(longer), np.concatenate(heavier)
-        points, weights = points[weights > 0.0], weights[weights > 0.0]
+        centre = constant + points @ slopes
+        if sd == 0.0:
+            own, shares = centre[:, None], ((low <= centre) & (centre < high)).astype(float)[:, None]
+        else:
+            own, shares = _panels(centre, sd, low, high, _steps(offset, spread, sides, place, points))
+        shares = (shares * weights[:, None]).ravel()
+        kept = shares > 1e-25 * shares.max()
+        points = np.column_stack([np.repeat(points, own.shape[1], axis=0), own.ravel()])[kept]
+        weights = shares[kept]
         if not weights.size:
             return np.zeros((0, len(sides))), weights
     return points, weights
 
 
 def _panels(centre, sd, low, high, steps):
-    """Points and weights that integrate over a normal between low and high."""
-    start, end = max(low, centre - FAR * sd), min(high, centre + FAR * sd)
-    if not start < end:  # all of it lies in a tail
-        start, end = (low, min(high, low + sd)) if low > centre else (max(low, high - sd), high)
-    edges = np.concatenate([np.linspace(start, end, 13), steps])
-    edges = np.unique(edges[(edges >= start) & (edges <= end)])
-    middle, half = (edges[1:] + edges[:-1]) / 2.0, np.diff(edges) / 2.0
-    own = (middle[:, None] + half[:, None] * NODES).ravel()
-    return own, (half[:, None] * WEIGHTS).ravel() * norm.pdf(own, centre, sd)
+    """(points, nodes) and their weights, which integrate over a normal about each centre between low and high."""
+    start, end = np.maximum(low, centre - FAR * sd), np.minimum(high, centre + FAR * sd)
+    tail = ~(start < end)  # all of it lies beyond: what there is, is near the nearer end
+    above = tail & (low > centre)
+    start, end = np.where(above, low, start), np.where(above, np.minimum(high, low + sd), end)
+    below = tail & ~above
+    start, end = np.where(below, np.maximum(low, high - sd), start), np.where(below, high, end)
+    even = start[:, None] + (end - start)[:, None] * np.linspace(0.0, 1.0, 13)
+    edges = np.sort(np.concatenate([even, np.clip(steps, start[:, None], end[:, None])], axis=1), axis=1)
+    middle, half = (edges[:, 1:] + edges[:, :-1]) / 2.0, np.diff(edges, axis=1) / 2.0
+    own = (middle[..., None] + half[..., None] * NODES).reshape(len(centre), -1)
+    shares = (half[..., None] * WEIGHTS).reshape(len(centre), -1) * norm.pdf(own, centre[:, None], sd)
+    return own, shares
 
 
-def _steps(offset, spread, sides, place, point):
-    """Where the chance that a later number lies in its box rises or falls, as this one moves."""
-    found = [np.zeros(0)]
+def _steps(offset, spread, sides, place, points):
+    """(points, steps): where the chance that a later number lies in its box rises or falls, as this one moves."""
+    found = [np.zeros((len(points), 0))]
     for later in range(place + 1, len(sides)):
         constant, slopes, sd = _conditional(offset, spread, list(range(place + 1)), later)
         if abs(slopes[-1]) > 0.0:
-            ends = np.array([end for end in sides[later] if np.isfinite(end)])
-            crossing = (ends - constant - slopes[:-1] @ point) / slopes[-1]
-            found.append((crossing[:, None] + STEPS * sd / abs(slopes[-1])).ravel())
-    return np.concatenate(found)
+            for end in sides[later]:
+                if np.isfinite(end):
+                    crossing = (end - constant - points @ slopes[:-1]) / slopes[-1]
+                    found.append(crossing[:, None] + STEPS * sd / abs(slopes[-1]))
+    return np.concatenate(found, axis=1)
 
 
 def _through(offset, spread, given, points, place):
