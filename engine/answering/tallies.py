@@ -12,6 +12,7 @@ from engine.answering.truncated import WHOLE, Floats, Interval
 
 Places = NDArray[np.intp]
 
+ALL = slice(None)
 CELLS = 256  # normals that the particles of a number are put together into in each draw
 _CLASSES = 4  # at most so many classes of sds, apart so that a narrow and a wide normal at one place stay two
 _EACH = 64  # cells of a box, at least
@@ -40,23 +41,23 @@ class Tally:
         self.square[slots] += np.einsum("de,dep->dp", square, figures)
         self.squares[slots] += np.einsum("de,dep->dp", square, figures * figures)
 
-    def means(self, weight: Floats) -> Floats:
+    def means(self, weight: Floats, slots: slice = ALL) -> Floats:
         """(draws, places), given the (draws,) sums of weights."""
-        return np.asarray(self.plain / weight[:, None])
+        return np.asarray(self.plain[slots] / weight[slots, None])
 
-    def variances(self, weight: Floats, square: Floats) -> Floats:
+    def variances(self, weight: Floats, square: Floats, slots: slice = ALL) -> Floats:
         """(draws, places) squared standard errors of the means, given the (draws,) sums of weights and their squares.
 
-        The delta method for a ratio of sums (Owen 2013, Monte Carlo theory, chapter 9).
+        The delta method for a ratio of sums (Owen 2013, Monte Carlo theory, methods and examples, chapter 9).
         """
-        means = self.means(weight)
-        spread = self.squares - 2.0 * means * self.square + means**2 * square[:, None]
-        return np.asarray(np.maximum(spread, 0.0) / weight[:, None] ** 2)
+        means = self.means(weight, slots)
+        spread = self.squares[slots] - 2.0 * means * self.square[slots] + means**2 * square[slots, None]
+        return np.asarray(np.maximum(spread, 0.0) / weight[slots, None] ** 2)
 
-    def biases(self, weight: Floats, square: Floats) -> Floats:
+    def biases(self, weight: Floats, square: Floats, slots: slice = ALL) -> Floats:
         """(draws, places) what the means are off by on average, by the delta method."""
-        off = self.square - self.means(weight) * square[:, None]
-        return np.asarray(-off / weight[:, None] ** 2)
+        off = self.square[slots] - self.means(weight, slots) * square[slots, None]
+        return np.asarray(-off / weight[slots, None] ** 2)
 
 
 class Blend:
@@ -114,16 +115,19 @@ class Blend:
             sums[empty] = sums[0]
         box, place = np.divmod(np.flatnonzero(used), self._per_box)
         middles = self._middles()[place % self._per_class]
-        with np.errstate(divide="ignore", invalid="ignore"):
-            away = np.where(weight > 0.0, first / weight, 0.0)
-            variance = np.where(weight > 0.0, second / weight - away**2, 0.0)
+        held = weight > 0.0
+        some = np.where(held, weight, 1.0)
+        mean = middles + first / some
+        variance = second / some - (first / some) ** 2
         rounding = 1e-14 * self._width**2  # what is left of the variance of one value
-        sd = np.sqrt(np.where(variance > rounding, variance, 0.0)).T
-        shares = (weight / weight.sum(axis=1, keepdims=True)).T
+        sd = np.sqrt(np.where(variance > rounding, variance, np.where(held, 0.0, self._width**2)))
+        with np.errstate(invalid="ignore"):  # nan where not even the first draw has any weight
+            shares = weight / weight.sum(axis=1, keepdims=True)
         if tuple(self._boxes) == (WHOLE,):
-            return Mixture(shares, (middles + away).T, sd)
-        low, high = (np.broadcast_to(side[box][:, None], sd.shape) for side in np.array(self._boxes).T)
-        return Mixture(shares, (middles + away).T, sd, low=low, high=high)
+            return Mixture(shares.T, mean.T, sd.T)
+        low, high = (np.broadcast_to(side[box], sd.shape) for side in np.array(self._boxes).T)
+        mean = np.where(sd > 0.0, mean, np.clip(mean, low, np.nextafter(high, -np.inf)))  # rounding keeps out of no box
+        return Mixture(shares.T, mean.T, sd.T, low=low.T, high=high.T)
 
     def _lay(self, weight: Floats, mean: Floats, sd: Floats) -> None:
         trusted = weight if weight.any() else np.ones_like(weight)

@@ -26,12 +26,18 @@ def log_density(away: Floats, sd: Floats) -> Floats:
 
 def band_shares(cuts: Floats, mean: Floats, sd: Floats) -> Floats:
     """(..., bands) share of each normal in each band between ascending cuts; sd 0 is all in one band."""
-    if not cuts.size:
-        return np.ones((*mean.shape, 1))
-    at_once = (sd == 0.0)[..., None]
-    away = cuts - mean[..., None]
-    below = np.where(at_once, away > 0.0, ndtr(away / np.where(at_once, 1.0, sd[..., None])))
-    return np.diff(below, prepend=0.0, append=1.0, axis=-1)
+    shares = np.ones((*np.shape(mean), cuts.size + 1))
+    certain = sd == 0.0
+    spread = np.where(certain, 1.0, sd) if certain.any() else sd
+    before: Floats | float = 0.0
+    for place, cut in enumerate(cuts):
+        below = ndtr((cut - mean) / spread)
+        if spread is not sd:
+            below = np.where(certain, mean < cut, below)
+        shares[..., place] = below - before
+        before = below
+    shares[..., -1] -= before
+    return shares
 
 
 def inside(low: Floats, high: Floats, uniform: Floats) -> Floats:

@@ -149,19 +149,16 @@ class Weighed:
             return np.full(tally.plain.shape[1], np.nan)
         effective = float(self._square[0] ** 2 / self._fourth[0])
         stretch = float(stdtrit(max(effective - 1.0, 1.0), ndtr(2.0))) / 2.0
-        mean_square = self._variances(tally)[0] + tally.biases(self._weight, self._square)[0] ** 2
+        point = slice(0, 1)
+        bias = tally.biases(self._weight, self._square, point)[0]
+        mean_square = tally.variances(self._weight, self._square, point)[0] + bias**2
         return np.asarray(stretch * np.sqrt(mean_square))
-
-    def _variances(self, tally: Tally) -> Floats:
-        """(draws, places) squared standard errors; nan where no particle fits."""
-        with np.errstate(divide="ignore", invalid="ignore"):
-            return tally.variances(self._weight, self._square)
 
     def _means(self, tally: Tally) -> tuple[Floats, Floats]:
         """(places, draws) means, as they are and calmed; where no particle fits, those of the point answer."""
         with np.errstate(divide="ignore", invalid="ignore"):
             means = tally.means(self._weight).T
-        variances = self._variances(tally).T
+            variances = tally.variances(self._weight, self._square).T
         empty = self._weight == 0.0
         means[:, empty] = means[:, :1]
         return means, np.concatenate([means[:, :1], calmed(means[:, 1:], variances[:, 1:][:, ~empty[1:]])], axis=1)
