@@ -31,32 +31,40 @@ def levels(counts: Sequence[int | None], hidden_total: int = 0) -> Markup:
     return _frame(bars)
 
 
-def number(values: np.ndarray, small: int) -> Markup:
-    """Equal-width bins over the values, (rows,) float64, blanks as nan. Bins with under `small` rows are hatched."""
+def number(values: np.ndarray, small: int, cuts: Sequence[float] = ()) -> Markup:
+    """Equal-width bins over the values, (rows,) float64, blanks as nan; dotted lines where bands are cut.
+
+    Bins with under `small` rows are hatched.
+    """
     present = values[np.isfinite(values)]
     if present.size == 0:
         return _frame(())
-    counts = _bins(present, min(BINS, max(4, present.size // small)))
+    counts, high = _bins(present, min(BINS, max(4, present.size // small)))
     top = max(int(counts.max()), small)
-    bars = []
+    heights = [max(1, round(TALLEST * count / top)) if count >= small else 0 for count in counts.tolist()]
+    drawn = [_outline(heights)]
     for place, count in enumerate(counts.tolist()):
-        if count == 0:
-            continue
-        shown = float(count) if count >= small else small / 2
-        bars.append(_bar(place / counts.size, 1 / counts.size, round(TALLEST * shown / top), count < small))
-    return _frame(bars)
+        if 0 < count < small:
+            drawn.append(_bar(place / counts.size, 1 / counts.size, round(TALLEST * small / 2 / top), True))
+    low = float(present.min())
+    wide = high / 2 - low / 2  # halves, so that no difference overflows
+    return _frame([*drawn, *(_cut((cut / 2 - low / 2) / wide) for cut in cuts if wide > 0 and low < cut < high)])
 
 
-def _bins(present: np.ndarray, most: int) -> np.ndarray:
-    """Counts in at most `most` bins of one width. Whole numbers get bins that hold equally many of them."""
+def _bins(present: np.ndarray, most: int) -> tuple[np.ndarray, float]:
+    """Counts in at most `most` bins of one width, from the smallest value on, and where the last bin ends.
+
+    Whole numbers get bins that hold equally many of them.
+    """
     low, high = float(present.min()), float(present.max())
     if high <= low:
-        return np.array([present.size])
+        return np.array([present.size]), high
     if high - low < WHOLE and bool((present == np.round(present)).all()):
         held = int(high - low) // most + 1  # whole numbers in a bin
-        return np.bincount((present - low).astype(np.int64) // held)
+        counts = np.bincount((present - low).astype(np.int64) // held)
+        return counts, low + float(counts.size * held)
     along = (present / 2 - low / 2) / (high / 2 - low / 2)  # halves, so that no difference overflows
-    return np.bincount(np.minimum((along * most).astype(np.int64), most - 1), minlength=most)
+    return np.bincount(np.minimum((along * most).astype(np.int64), most - 1), minlength=most), high
 
 
 def plain() -> Markup:
@@ -76,6 +84,26 @@ def hatching() -> Markup:
         patternTransform="rotate(45)",
     )
     return tag("svg", tag("defs", pattern), width=0, height=0, aria_hidden="true", class_="defs")
+
+
+def _outline(heights: Sequence[int]) -> Markup:
+    """Bins that touch, as one stepped shape; a number knows no gaps. Stretched to the width by the browser."""
+    steps = "".join(f"V{BASE - height:g}H{place + 1}" for place, height in enumerate(heights))
+    shape = tag(
+        "path",
+        d=f"M0 {BASE:g}{steps}V{BASE:g}",
+        fill=TINT,
+        stroke=LINE,
+        stroke_width=1.5,
+        vector_effect="non-scaling-stroke",
+    )
+    box = f"0 0 {len(heights)} {HEIGHT}"
+    return tag("svg", shape, width="100%", height=HEIGHT, viewBox=box, preserveAspectRatio="none", overflow="visible")
+
+
+def _cut(x: float) -> Markup:
+    """Where one band ends and the next begins."""
+    return line(percent(x), percent(x), 0, BASE, stroke=INK, stroke_dasharray="1.5 3", class_="cut")
 
 
 def _bar(x: float, width: float, height: float, hidden: bool) -> Markup:

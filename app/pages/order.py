@@ -66,7 +66,7 @@ def save(
             case ["remove", stage]:
                 plan = order_form.stage_taken_out(plan, _whole(stage))
             case ["type"]:
-                out = [name for name in table.columns if table.columns[name].kind == "left out"]
+                out = [name for name in table.columns if not table.columns[name].used]
                 plan = replace(plan, stages=order_text.read(text, study.plan.columns, out))
             case ["rule"]:
                 plan = order_form.ruled(plan, rule, _column(table, source), _column(table, target))

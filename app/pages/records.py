@@ -92,6 +92,7 @@ def _page(
         "view": records_view.view(study, table, find, show, opened, refused),
         "kinds": records_view.KINDS,
         "shows": SHOWS,
+        "blank_kept": records_view.BLANK_KEPT,
         "refused": next(iter(refused.values()))[1] if refused else None,
     }
     page: Response = request.app.state.templates.TemplateResponse(request, "records.html", context, status)

@@ -11,14 +11,22 @@ import numpy as np
 from markupsafe import Markup
 
 from app.drawing import histogram
+from app.pages.records_pictures import picture
 from app.store import Study
 from app.wording import columns as wording
-from app.wording.amounts import count, listing, number, people, plural
+from app.wording.amounts import count, listing, people, plural
 from engine.order import Better, Direction
+from engine.records.cells import level_text
 from engine.records.table import SMALL_COUNT, Column, Table
+from engine.records.wording import figure
 from engine.refusal import Refusal
 
-KINDS = ("category", "grade", "number", "left out")
+KINDS = ("category", "grade", "number", "left out", "weight", "group")
+BLANK_KEPT = {  # what a blank is whose row stays, where that is no level
+    "group": "a case by itself",
+    "weight": "to be mended in the file",
+    "number": "a level of its own, which makes bands",
+}
 FIRST_ROWS = 5
 SHOWS = (("look", "Wants a look first"), ("file", "As in the file"), ("out", "Left out"))
 
@@ -55,6 +63,7 @@ class Card:
     mark: str
     histogram: Markup
     told: str
+    acts: str
     blanks: str
     warnings: tuple[str, ...]
     chosen: bool
@@ -112,10 +121,10 @@ def view(
         shown = [card for card in shown if card.column.kind == "left out" or card.place in refused]
     elif show == "look":
         shown.sort(key=lambda card: not card.flagged)
-    numbers = [column.kind == "number" for column in table.columns.values()]
+    numbers = [column.kind in ("number", "weight") for column in table.columns.values()]
     return RecordsView(
         records=count(table.rows),
-        used=sum(card.column.kind != "left out" for card in cards),
+        used=sum(card.column.used for card in cards),
         left_out=sum(card.column.kind == "left out" for card in cards),
         flagged=sum(card.flagged for card in cards),
         deck=_deck(table),
@@ -159,9 +168,9 @@ def _card(
     column = table.columns[name]
     wanted = study.plan.outcomes.get(name)
     typed = refused[0] if refused else saved(study, column)
-    picture, told, extra = _picture(table, column)
+    drawn = picture(table, name)
     chosen = name in study.choices.kinds
-    warnings = [*column.warnings, *extra]
+    warnings = [*column.warnings, *drawn.warnings]
     if column.kind == "left out" and not chosen and not warnings:
         warnings.append(column.why)
     return Card(
@@ -169,8 +178,9 @@ def _card(
         name=name,
         column=column,
         mark=mark(column),
-        histogram=picture,
-        told=told,
+        histogram=drawn.histogram,
+        told=drawn.told,
+        acts=drawn.acts,
         blanks=wording.blanks(column, len(table.kept), SMALL_COUNT),
         warnings=tuple(dict.fromkeys(warnings)),
         chosen=chosen,
@@ -181,20 +191,6 @@ def _card(
         refusal=refused[1] if refused else None,
         open=refused is not None or opened == place,
     )
-
-
-def _picture(table: Table, column: Column) -> tuple[Markup, str, list[str]]:
-    """The histogram, what is told under it, and the warning that goes with hidden counts."""
-    if column.kind == "left out":
-        different = int(table.frame[column.name].nunique())
-        told = f"{count(different)} different {plural(different, 'value')}"
-        return histogram.plain(), told, []
-    counts = wording.shown(wording.level_counts(column), SMALL_COUNT)
-    under = wording.small_levels(column, counts, SMALL_COUNT)
-    if column.kind == "number" and column.values is not None:
-        return histogram.number(column.values, SMALL_COUNT), wording.span(column), [under] if under else []
-    drawn = histogram.levels(counts.counts, counts.together)
-    return drawn, wording.levels(column, counts, SMALL_COUNT), [under] if under else []
 
 
 def _better_places(wanted: Better | None, column: Column) -> frozenset[int]:
@@ -219,12 +215,12 @@ def _deck(table: Table) -> tuple[str, ...]:
             said.append(f"{amount} {plural(rows, 'row is', 'rows are')} left out because {name} is blank there.")
     if not said:
         said.append("No row has been dropped.")
-    if any(column.blanks and column.blank == "level" for column in table.columns.values()):
+    if any(column.has_blank for column in table.columns.values()):
         said.append("A blank is a level of its own; change that column by column below.")
     if any(column.kind == "number" for column in table.columns.values()):
         said.append(
-            "Numbers are cut into bands, of about equally many records unless you move the cuts, and learned as grades "
-            "for now."
+            "A number that varies smoothly is learned as a number, any other as bands; its card says which. Bands hold "
+            "about equally many records unless you move the cuts."
         )
     return tuple(sentence[:1].upper() + sentence[1:] for sentence in said)
 
@@ -232,12 +228,15 @@ def _deck(table: Table) -> tuple[str, ...]:
 def _first_rows(table: Table, numbers: list[bool]) -> tuple[tuple[tuple[str, bool], ...], ...]:
     first = table.frame.head(FIRST_ROWS)
     return tuple(
-        tuple((_cell(value), is_number) for value, is_number in zip(row, numbers, strict=True))
+        tuple((_cell(value, is_number), is_number) for value, is_number in zip(row, numbers, strict=True))
         for row in first.itertuples(index=False, name=None)
     )
 
 
-def _cell(value: object) -> str:
+def _cell(value: object, is_number: bool) -> str:
+    """A cell as its column's amounts are written, or its levels."""
     if value is None or (isinstance(value, float) and np.isnan(value)) or str(value) in ("<NA>", "NaT"):
         return ""
-    return number(float(value)) if isinstance(value, int | float | np.integer | np.floating) else str(value)
+    if is_number and isinstance(value, int | float | np.integer | np.floating):
+        return figure(float(value))
+    return level_text(value)

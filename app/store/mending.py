@@ -15,7 +15,7 @@ FIRST_STAGE = "Everything"
 
 def usable(table: Table) -> tuple[str, ...]:
     """The columns that a model can be learned from, in file order."""
-    return tuple(name for name, column in table.columns.items() if column.kind != "left out")
+    return tuple(name for name, column in table.columns.items() if column.used)
 
 
 def first_plan(table: Table) -> Plan:
@@ -31,7 +31,7 @@ def mend(plan: Plan, table: Table) -> tuple[Plan, tuple[str, ...]]:
     for name, columns in plan.stages:
         stages.append((name, tuple(column for column in columns if column in holds)))
         said += [
-            f"“{column}” is left out now, so it was taken out of the stage {name}."
+            f"“{column}” is {_taken_as(table, column)} now, so it was taken out of the stage {name}."
             for column in columns
             if column not in holds
         ]
@@ -72,11 +72,11 @@ def check(plan: Plan, table: Table) -> None:
     for column in plan.columns:
         if column not in table.columns:
             raise Refusal(f"The records have no column “{column}”.", where=column, do="Take it out of the order.")
-        if table.columns[column].kind == "left out":
+        if not table.columns[column].used:
             raise Refusal(
-                f"The column “{column}” is left out, so no stage can hold it.",
+                f"The column “{column}” is {_taken_as(table, column)}, so no stage can hold it.",
                 where=column,
-                do="Bring it back on the Records page first.",
+                do="Choose another kind for it on the Records page first.",
             )
     missing = [column for column in usable(table) if column not in plan.columns]
     if missing:
@@ -97,11 +97,17 @@ def check(plan: Plan, table: Table) -> None:
             )
 
 
+def _taken_as(table: Table, name: str) -> str:
+    """What a column is that no stage can hold."""
+    kind = table.columns[name].kind if name in table.columns else "left out"
+    return kind if kind == "left out" else f"the {kind}"
+
+
 def _outcomes_that_fit(outcomes: Mapping[str, Better], table: Table) -> dict[str, Better]:
     fitting: dict[str, Better] = {}
     for name, wanted in outcomes.items():
         column = table.columns.get(name)
-        if column is None or column.kind == "left out":
+        if column is None or not column.used:
             continue
         kept = _better_that_fits(wanted, column)
         if kept is not None:

@@ -1,4 +1,4 @@
-"""Counts, shares and lists in words, as every page writes them."""
+"""Counts and lists in words, as every page writes them."""
 
 from __future__ import annotations
 
@@ -23,17 +23,6 @@ def small_word(number: int) -> str:
 def plural(number: int, word: str, words: str | None = None) -> str:
     """The word that goes with the number, without the number."""
     return word if number == 1 else (words or f"{word}s")
-
-
-def share(part: float) -> str:
-    """A share, 0 to 1, in whole per cent; what is not quite none or all is said so."""
-    if part <= 0:
-        return "0%"
-    if part >= 1:
-        return "100%"
-    if part < 0.01:
-        return "under 1%"
-    return "over 99%" if part > 0.99 else f"{100 * part:.0f}%"
 
 
 def listing(names: Sequence[str], most: int | None = None) -> str:

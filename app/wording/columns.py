@@ -7,8 +7,11 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from app.wording.amounts import count, listing, number, people, share
+from app.wording.amounts import count, listing, number, people, plural
+from app.wording.figures import share
 from engine.records.small_counts import hidden_levels
+from engine.records.spikes import own_reason
+from engine.records.steps import recording_step
 from engine.records.table import Column
 
 SHOWN_LEVELS = 6
@@ -79,14 +82,42 @@ def small_levels(column: Column, counts: Shown, small: int) -> str | None:
 
 
 def span(column: Column) -> str:
-    """A number's range, middle and bands."""
-    assert column.values is not None
-    present = column.values[np.isfinite(column.values)]
+    """A number's range, middle, the step it was recorded to, and its bands if it has any."""
+    present = np.asarray(column.values, dtype=np.float64)
+    present = present[np.isfinite(present)]
     if present.size == 0:
         return "no values"
-    bands = [level for place, level in enumerate(column.levels) if place <= len(column.cuts)]
     low, high, middle = number(float(present.min())), number(float(present.max())), number(float(np.median(present)))
-    return f"{low} to {high}, middle {middle}; bands: {', '.join(bands)}"
+    said = f"{low} to {high}, middle {middle}" + (f", {_steps(present)}" if low != high else "")
+    bands = column.levels[: len(column.cuts) + 1] if column.kind == "number" else ()
+    return f"{said}; bands: {', '.join(bands)}" if bands else said
+
+
+def _steps(present: np.ndarray) -> str:
+    step = recording_step(present)
+    if step == 0.0:
+        return "in fine steps"
+    if step == 1.0 and bool((present == np.round(present)).all()):
+        return "in whole numbers"
+    return f"in steps of {number(step)}"
+
+
+def acts(column: Column) -> str:
+    """Whether a number is learned from as one or as bands, and why."""
+    why = own_reason(column)
+    return "learned as a number; on categories it acts by its bands" if why is None else f"learned as bands: {why[:-1]}"
+
+
+WEIGHT = "how much each record counts; not learned from"
+GROUP = "which records belong together; not learned from"
+
+
+def groups(column: Column, small: int) -> str:
+    """How many groups there are and how large they get."""
+    sizes = np.bincount(column.codes)
+    said = f"{count(sizes.size)} {plural(int(sizes.size), 'group')}"
+    largest = int(sizes.max())
+    return f"{said}, the largest of {people(largest, small)} records" if largest > 1 else f"{said} of one record each"
 
 
 def blanks(column: Column, rows: int, small: int) -> str:
@@ -94,8 +125,10 @@ def blanks(column: Column, rows: int, small: int) -> str:
     if column.blanks == 0:
         return "no blanks"
     amount = f"under {small} blank" if column.blanks < small else f"{share(column.blanks / max(rows, 1))} blank"
-    if column.kind == "left out":
+    if column.kind in ("left out", "weight") and column.blank == "level":
         return amount
+    if column.kind == "group" and column.blank == "level":
+        return f"{amount}, each a case by itself"
     if column.blank == "drop row":
         return f"{amount}, those rows are left out"
     return f"{amount}, a level of its own" if column.kind == "number" else "a blank is a level of its own"

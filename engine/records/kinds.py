@@ -146,7 +146,10 @@ def _levels_or_out(held: Cells, warnings: tuple[str, ...], too_many: str) -> Gue
 def _id_words(distinct: int, seen: int) -> str:
     if distinct == seen:
         return "Looks like an identifier: every record has its own value."
-    return f"Looks like an identifier: {distinct:,} different values."
+    return (
+        f"Looks like an identifier: {distinct:,} different values. "
+        "Take it as the group if it says which records belong together."
+    )
 
 
 def _are_dates(held: Cells) -> bool:

@@ -146,6 +146,16 @@ class TestMending:
         assert mended.plan.outcomes == {}
         assert mended.mended == ("“age” is no longer marked as an outcome: what counted as better is gone.",)
 
+    @pytest.mark.parametrize("kind", ["weight", "group"])
+    def test_a_column_that_says_how_records_count_leaves_the_plan_and_this_is_said(self, store, study, kind):
+        choices = Choices(kinds={"age": kind}, blanks={"age": "drop row"})
+        mended = store.save_choices(study.key, choices)
+        assert mended.plan.stages[0] == ("Background", ("shift",))
+        assert mended.mended == (f"“age” is the {kind} now, so it was taken out of the stage Background.",)
+        assert store.study(study.key).choices == choices
+        with pytest.raises(Refusal, match=f"“age” is the {kind}, so no stage can hold it"):
+            store.save_plan(study.key, study.plan)
+
     def test_the_words_go_when_the_plan_is_looked_at_and_saved(self, store, study):
         mended = store.save_choices(study.key, Choices(kinds={"mentor": "left out"}))
         assert store.save_plan(study.key, mended.plan).mended == ()

@@ -97,9 +97,35 @@ def test_a_number_of_any_values_can_be_drawn(values: list[float]) -> None:
 
 def test_whole_numbers_leave_no_gaps_between_their_bars() -> None:
     values = np.repeat(np.arange(11.0), 50)
-    bars = list(parsed(histogram.number(values, 10)).iter("rect"))
-    assert len(bars) == 11
-    assert len({bar.get("height") for bar in bars}) == 1
+    assert stepped(histogram.number(values, 10)) == [histogram.TALLEST] * 11
+
+
+def stepped(drawn: str) -> list[float]:
+    """The heights of the bins in the outline, from left to right."""
+    outline = next(path.get("d", "") for path in parsed(drawn).iter("path"))
+    return [histogram.BASE - float(step.split("H")[0]) for step in outline.split("V")[1:-1]]
+
+
+def test_bins_are_as_tall_as_their_counts_and_those_under_the_limit_are_not_in_the_outline() -> None:
+    values = np.repeat([0.0, 1.0, 2.0, 3.0, 4.0], [100, 50, 9, 0, 10])
+    assert stepped(histogram.number(values, 10)) == [50, 25, 0, 0, 5]
+
+
+@pytest.mark.parametrize(
+    ("values", "cuts", "at"),
+    [
+        ([0.0, 2.5, 10.0] * 20, (2.5, 7.5), ["25.00%", "75.00%"]),
+        (list(range(10)) * 20, (5.0, 9.0), ["50.00%", "90.00%"]),  # whole numbers fill bins from one to the next
+        ([-1e308, 1e308] * 20, (0.0,), ["50.00%"]),
+        ([3.0] * 20, (3.0,), []),
+        ([1.0, 2.0] * 20, (0.5, 40.0), []),
+    ],
+)
+def test_dotted_lines_stand_where_the_bands_are_cut(
+    values: list[float], cuts: tuple[float, ...], at: list[str]
+) -> None:
+    drawn = parsed(histogram.number(np.array(values, dtype=float), 10, cuts))
+    assert [cut.get("x1") for cut in drawn.iter("line") if cut.get("class") == "cut"] == at
 
 
 POINTS = [Point(links, -12 + 0.1 * links, -12.1 + 0.08 * links, 0.05) for links in range(11)]

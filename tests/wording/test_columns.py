@@ -61,10 +61,45 @@ def test_levels_are_told_with_their_shares() -> None:
     assert columns.levels(shift, columns.shown([52, 26, 22], LIMIT), LIMIT) == "days 52%, mixed 26%, nights 22%"
 
 
-def test_a_number_is_told_by_its_range_middle_and_bands() -> None:
-    values = np.array([4.0, 31.0, 95.0, np.nan])
-    travel = Column("t", "number", "", ("under 20", "20 and over", "blank"), cuts=(20.0,), values=values)
-    assert columns.span(travel) == "4 to 95, middle 31; bands: under 20, 20 and over"
+@pytest.mark.parametrize(
+    ("values", "told"),
+    [
+        ([4.0, 31.0, 95.0, np.nan], "4 to 95, middle 31, in whole numbers"),
+        ([4.5, 31.5, 95.5], "4.5 to 95.5, middle 31.5, in steps of 1"),
+        ([0.0, 5.0, 15.0, 1200.0], "0 to 1,200, middle 10, in steps of 5"),
+        ([-2.5, 0.0, 3.5], "−2.5 to 3.5, middle 0, in steps of 0.5"),
+        ([0.1, 0.2, 0.4, 1.7], "0.1 to 1.7, middle 0.3, in steps of 0.1"),
+        (list(np.sqrt(np.arange(2.0, 30.0))), "1.414 to 5.385, middle 3.936, in fine steps"),
+        ([21.0, 21.0], "21 to 21, middle 21"),
+    ],
+)
+def test_a_number_is_told_by_its_range_middle_step_and_bands(values: list[float], told: str) -> None:
+    levels = ("under 20", "20 and over", "blank")
+    travel = Column("t", "number", "", levels, cuts=(20.0,), values=np.array(values))
+    assert columns.span(travel) == f"{told}; bands: under 20, 20 and over"
+    assert columns.span(replace(travel, kind="weight", levels=(), cuts=())) == told
+
+
+def test_a_number_says_whether_it_is_learned_as_one_and_why_not() -> None:
+    smooth = Column("<t>", "number", "", ("any value",), values=np.sqrt(np.arange(200.0)))
+    assert columns.acts(smooth) == "learned as a number; on categories it acts by its bands"
+    spiked = replace(smooth, values=np.repeat([0.0, *np.arange(1.0, 151.0)], [50, *[1] * 150]))
+    assert columns.acts(spiked) == "learned as bands: 25% of its records hold 0"
+    blank = replace(smooth, values=np.append(np.arange(99.0), np.nan), levels=("any value", "blank"), blanks=1)
+    assert columns.acts(blank) == "learned as bands: a blank is a level of its own here, which only bands can have"
+
+
+@pytest.mark.parametrize(
+    ("sizes", "told"),
+    [
+        ([12, 30, 1], "3 groups, the largest of 30 records"),
+        ([3, 2], "2 groups, the largest of under 10 records"),
+        ([1] * 1200, "1,200 groups of one record each"),
+    ],
+)
+def test_groups_are_told_by_their_number_and_the_largest(sizes: list[int], told: str) -> None:
+    site = Column("site", "group", "", codes=np.repeat(np.arange(len(sizes)), sizes).astype(np.int32))
+    assert columns.groups(site, LIMIT) == told
 
 
 @pytest.mark.parametrize(
@@ -75,17 +110,13 @@ def test_a_number_is_told_by_its_range_middle_and_bands() -> None:
         ("grade", 30, "level", "a blank is a level of its own"),
         ("category", 60, "drop row", "6% blank, those rows are left out"),
         ("left out", 350, "level", "35% blank"),
+        ("group", 350, "level", "35% blank, each a case by itself"),
+        ("group", 5, "drop row", "under 10 blank, those rows are left out"),
+        ("weight", 125, "drop row", "13% blank, those rows are left out"),
     ],
 )
 def test_blanks_are_told_with_what_is_made_of_them(kind: Kind, blank: int, meaning: Blank, words: str) -> None:
     assert columns.blanks(Column("x", kind, "", blank=meaning, blanks=blank), 1000, LIMIT) == words
-
-
-@pytest.mark.parametrize(
-    ("part", "words"), [(0.0, "0%"), (0.004, "under 1%"), (0.545, "55%"), (0.997, "over 99%"), (1.0, "100%")]
-)
-def test_shares_are_in_whole_per_cent_without_false_certainty(part: float, words: str) -> None:
-    assert amounts.share(part) == words
 
 
 def test_lists_and_counts_read_as_written_by_a_person() -> None:
