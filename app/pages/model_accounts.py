@@ -8,10 +8,13 @@ import numpy as np
 
 from app.wording.amounts import listing, plural, small_word
 from app.wording.figures import share, span
+from app.wording.numbers import amount, decimals_for
 from engine.model import Model
-from engine.network.conditional import Row
+from engine.network.conditional import NumberRow, Row
+from engine.network.number_rules import NINE_IN_TEN
 from engine.network.said import Said, Words, series
 from engine.network.story import Rules
+from engine.records.wording import figure
 
 ROWS = 24  # commonest configurations in a table; the program holds all
 LEVELS = 7  # columns of shares in a table; further levels are added up
@@ -19,7 +22,8 @@ LEVELS = 7  # columns of shares in a table; further levels are added up
 
 @dataclass(frozen=True)
 class Line:
-    """A row of the table. given: a level for each parent.  shares: (share, interval) for each level shown."""
+    """A row of the table. given: a level for each parent.  shares: (share, interval) for each level shown; of a number
+    its mean, its spread and its slopes, with an interval where one is told."""
 
     given: tuple[str, ...]
     common: str
@@ -28,7 +32,10 @@ class Line:
 
 @dataclass(frozen=True)
 class Account:
-    """One column. leads: what it leads to, a sentence, or nothing.  note: what the table leaves out."""
+    """One column. leads: what it leads to, a sentence, or nothing.  note: what the table leaves out.
+
+    number: whether its table tells means; then `parents` are its category parents, and `levels` what is told of it.
+    """
 
     name: str
     picked: bool
@@ -39,6 +46,7 @@ class Account:
     levels: tuple[str, ...]
     lines: tuple[Line, ...]
     note: str
+    number: bool = False
 
 
 def accounts(model: Model, picked: str | None) -> tuple[Account, ...]:
@@ -54,20 +62,47 @@ def accounts(model: Model, picked: str | None) -> tuple[Account, ...]:
 def _account(model: Model, name: str, picked: str | None) -> Account:
     told, node = model.account(name, ROWS), model.network.node(name)
     leads = [target for source, target in model.links if source == name and (source, target) not in model.unsettled]
-    shown = _shown(told.rows, len(node.levels))
+    said = (Said("It leads to "), *series([[Said(target, "name")] for target in leads], " and "), Said("."))
+    number = name in model.network.numbers
+    if number:
+        parents = model.network.category_parents(name)
+        heads, lines, hidden = _heads(model.network.number_parents(name)), _number_lines(told.means), 0
+    else:
+        shown = _shown(told.rows, len(node.levels))
+        parents, heads = node.parents, tuple(node.levels[place] for place in shown)
+        lines, hidden = tuple(_line(row, shown) for row in told.rows), len(node.levels) - len(shown)
     return Account(
         name=name,
         picked=name == picked,
         touches=told.touches,
         rules=told.rules,
-        leads=(Said("It leads to "), *series([[Said(target, "name")] for target in leads], " and "), Said("."))
-        if leads
-        else (),
-        parents=node.parents,
-        levels=tuple(node.levels[place] for place in shown),
-        lines=tuple(_line(row, shown) for row in told.rows),
-        note=_note(told.left_out, len(node.levels) - len(shown)),
+        leads=said if leads else (),
+        parents=parents,
+        levels=heads,
+        lines=lines,
+        note=_note(told.left_out, hidden),
+        number=number,
     )
+
+
+def _heads(numbers: tuple[str, ...]) -> tuple[str, ...]:
+    """What is told of a number in each row."""
+    return ("on average", "9 in 10 lie within", *(f"for each 1 more of {number}" for number in numbers))
+
+
+def _number_lines(rows: tuple[NumberRow, ...]) -> tuple[Line, ...]:
+    found = []
+    for row in rows:
+        decimals = decimals_for(row.high - row.low, 50.0 * row.sd)
+        interval = f"{amount(row.low, decimals)} to {amount(row.high, decimals)}" if row.low < row.high else ""
+        told = [(amount(row.mean, decimals), interval), (f"{_two_digits(NINE_IN_TEN * row.sd)} of that", "")]
+        told += [(f"{'+' if slope > 0.0 else ''}{_two_digits(slope)}", "") for slope in row.slopes]
+        found.append(Line(row.given, share(row.weight), tuple(told)))
+    return tuple(found)
+
+
+def _two_digits(value: float) -> str:
+    return figure(float(f"{value:.2g}"))
 
 
 def _shown(rows: tuple[Row, ...], levels: int) -> list[int]:

@@ -203,3 +203,39 @@ def test_a_study_whose_size_in_use_is_shown_needs_no_query(app: FastAPI, study: 
     learned = app.state.store.learned(study.key)
     view = model_view.view(replace(study, links=5), learned)
     assert view.program == f"/study/{study.key}/model.py?links=5"
+
+
+def test_the_table_of_a_number_holds_means_intervals_spreads_and_slopes() -> None:
+    site = engine.Category("site", ["north", "south"], [], [0.75, 0.25])
+    hours = engine.Number("hours", ["site"], [10.0, 14.0], [], [4.0, 9.0], [12.0])
+    pay = engine.Number("pay", ["hours", "site"], [1000.0, 2000.0], [[100.0], [-50.0]], [1e4, 0.0])
+    model = engine.Model.from_network([site, hours, pay])
+    found = {each.name: each for each in model_accounts.accounts(model, None)}
+    assert found["pay"].parents == ("site",) and found["pay"].number and not found["site"].number
+    assert found["pay"].levels == ("on average", "9 in 10 lie within", "for each 1 more of hours")
+    assert [line.given for line in found["pay"].lines] == [("north",), ("south",)]
+    assert [line.shares[1:] for line in found["pay"].lines] == [
+        (("160 of that", ""), ("+100", "")),
+        (("0 of that", ""), ("−50", "")),
+    ]
+    assert [line.shares[0] for line in found["hours"].lines] == [("10.0", ""), ("14.0", "")]
+    assert [line.common for line in found["hours"].lines] == ["75%", "25%"]
+
+
+def test_a_number_is_told_by_its_mean_on_the_page(client: TestClient, app: FastAPI) -> None:
+    rng = np.random.default_rng(8)
+    site = rng.choice(["north", "south"], 400)
+    hours = np.where(site == "north", 10.0, 14.0) + rng.normal(0.0, 2.0, 400)
+    frame = pd.DataFrame({"site": site, "hours": hours, "pay": 20.0 * hours + rng.normal(0.0, 9.0, 400)})
+    plan = Plan(stages=tuple((name, (name,)) for name in frame.columns))
+    study = app.state.store.bring("Numbers", frame, "numbers.csv", plan=plan)
+    keep_a_model(app.state.store, study)
+    model = app.state.store.model(study.key)
+    assert model.network.numbers == ("hours", "pay")
+    told = words(client.get(f"/study/{study.key}/model").text)
+    for name in model.network.numbers:
+        rules = model.account(name).rules
+        for clause in (*rules.clauses, rules.then):
+            assert "".join(part.text for part in clause) in told
+        assert f"Means and intervals of {name}" in told
+    assert "Each row is a combination of levels; across it, hours in it, on average where" in told
