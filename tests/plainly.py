@@ -8,34 +8,74 @@ import itertools
 
 import numpy as np
 
+import engine
+
 
 def cases(network, levers=None, draw=0, tables=None):
     """[(natural levels, shown levels, probability)] of every possible case.
 
-    levers: {column: (level, reach)}.  draw: which draw of `tables` (parents..., own levels, draws) to follow.
+    levers: {column: (level, reach)}, or engine.Fix, Mix or Rule in place of the pair; a rule goes by what its column
+    shows.  draw: which draw of `tables` (parents..., own levels, draws) to follow.
     """
+    levers = levers or {}
     found = [({}, {}, 1.0)]
-    for place, node in enumerate(network.nodes):
-        table = node.table if tables is None else tables[place][..., draw]
+    for name, what in _turns(network, levers):
         longer = []
         for natural, shown, probability in found:
-            row = table
-            for parent in node.parents:
-                row = row[network.node(parent).levels.index(shown[parent])]
-            for level, share in zip(node.levels, row, strict=True):
-                for seen, chance in _shown(level, (levers or {}).get(node.name)):
-                    weight = probability * float(share) * chance
-                    if weight > 0.0:
-                        longer.append((natural | {node.name: level}, shown | {node.name: seen}, weight))
+            node = network.node(name)
+            if what == "natural":
+                table = node.table if tables is None else tables[network.index[name]][..., draw]
+                row = table
+                for parent in node.parents:
+                    row = row[network.node(parent).levels.index(shown[parent])]
+                ways = zip(node.levels, row, strict=True)
+            else:
+                ways = _shown(natural[name], levers.get(name), shown)
+            for level, share in ways:
+                weight = probability * float(share)
+                if weight > 0.0:
+                    own = {name: level}
+                    longer.append(
+                        (natural | own, shown, weight) if what == "natural" else (natural, shown | own, weight)
+                    )
         found = longer
     return found
 
 
-def _shown(natural, lever):
+def _turns(network, levers):
+    """(column, "natural" or "shown") so that nothing comes before what it follows from."""
+    waiting = [(name, what) for name in network.names for what in ("natural", "shown")]
+    done = []
+    while waiting:
+        for name, what in waiting:
+            if what == "natural":
+                needs = [(parent, "shown") for parent in network.node(name).parents]
+            else:
+                ruler = getattr(levers.get(name), "column", None)
+                needs = [(name, "natural"), *([] if ruler is None else [(ruler, "shown")])]
+            if all(need in done for need in needs):
+                done.append((name, what))
+                waiting.remove((name, what))
+                break
+        else:
+            raise AssertionError("a circle")
+    return done
+
+
+def _shown(natural, lever, shown):
+    """[(level, probability)] of what a column shows, given its natural level and what other columns show."""
     if lever is None:
         return [(natural, 1.0)]
-    level, reach = lever
-    return [(level, reach), (natural, 1.0 - reach)]
+    if isinstance(lever, tuple):
+        level, reach = lever
+        return [(level, reach), (natural, 1.0 - reach)]
+    if isinstance(lever, engine.Fix):
+        set_to = {lever.value: 1.0}
+    elif isinstance(lever, engine.Mix):
+        set_to = lever.shares
+    else:
+        set_to = {lever.values.get(shown[lever.column], natural): 1.0}
+    return [*((level, lever.reach * share) for level, share in set_to.items()), (natural, 1.0 - lever.reach)]
 
 
 def total(every, pins):
@@ -43,14 +83,24 @@ def total(every, pins):
     return sum(p for natural, _, p in every if all(natural[column] in wanted for column, wanted in pins.items()))
 
 
-def shares(network, every, pins, column):
-    """(levels,) shares of what `column` shows among cases whose natural values match `pins`."""
-    levels = network.node(column).levels
-    found = np.zeros(len(levels))
+def shares(network, every, pins, column, after=None):
+    """(levels,) shares of what `column` shows among cases whose natural values match `pins`.
+
+    after: pins on what is shown.
+    """
+    return joint(network, every, pins, [column], after)
+
+
+def joint(network, every, pins, columns, after=None):
+    """(levels of each column...) joint shares, as `shares`; nan where no case matches."""
+    levels = [network.node(column).levels for column in columns]
+    found = np.zeros([len(each) for each in levels])
     for natural, shown, p in every:
-        if all(natural[pinned] in wanted for pinned, wanted in pins.items()):
-            found[levels.index(shown[column])] += p
-    return found / found.sum()
+        matches = all(natural[pinned] in wanted for pinned, wanted in pins.items())
+        if matches and all(shown[pinned] in wanted for pinned, wanted in (after or {}).items()):
+            found[tuple(each.index(shown[column]) for each, column in zip(levels, columns, strict=True))] += p
+    with np.errstate(invalid="ignore"):
+        return found / found.sum()
 
 
 def smallest_contradiction(every, pins):

@@ -12,7 +12,7 @@ from engine.answering.mixing import Mixing, NotExactError
 from engine.answering.pins import Pins
 from engine.answering.question import Question
 from engine.answering.scenes import Scene, Seen
-from engine.answering.settings import AnySetting, Setting, ValueSetting
+from engine.answering.settings import AnySetting, Setting, ShiftSetting, ValueSetting
 from engine.answering.summing import LIMIT, Summing, TooWideError, Work
 from engine.network.network import Network
 from engine.network.nodes import Category, Number
@@ -123,9 +123,9 @@ class Planner:
         """
         scenes = {"recorded": Scene(Pins(), {}, columns), "among": Scene(asked.before, {}, columns)}
         if asked.levers:
-            scenes["set"] = Scene(asked.before, _working(asked.levers), columns, asked.after)
+            scenes["set"] = Scene(asked.before, self._splits(asked, asked.levers), columns, asked.after)
         if asked.against is not None:
-            scenes["against"] = Scene(asked.before, _working(asked.against), columns, asked.after)
+            scenes["against"] = Scene(asked.before, self._splits(asked, asked.against), columns, asked.after)
         return {world: self.joint_draws(scene, draws, seed, exact) for world, scene in scenes.items()}
 
     def joint_draws(self, scene: Scene, draws: int, seed: int, exact: bool | None = None) -> np.ndarray:
@@ -150,17 +150,27 @@ class Planner:
 
     def _set(self, asked: Question, levers: Mapping[str, AnySetting], among: Seen, turn: Turn) -> Seen:
         """The world with levers; what none of them moves is as among these, to the last digit."""
-        working = _working(levers)
-        moved = self.network.descendants(working) | working.keys()
+        splits = self._splits(asked, levers)
+        moved = self.network.descendants(splits) | splits.keys()
         after = asked.after.columns
         columns = tuple(column for column in asked.columns if after or column in moved)
         if not columns:
             return among
-        scene = Scene(asked.before, working, columns, asked.after)
+        scene = Scene(asked.before, splits, columns, asked.after)
         found = self._read(scene, turn)
         if after and not found.possible:
             raise self._impossible(scene.reading(()), turn)
         return found.over(among, asked.columns)
+
+    def _splits(self, asked: Question, levers: Mapping[str, AnySetting]) -> dict[str, AnySetting]:
+        """The levers that reach anyone; a column pinned before and after is split even where nothing is set."""
+        found = {column: setting for column, setting in levers.items() if setting.reach > 0.0}
+        for column in asked.after.columns:
+            if column not in found and column in asked.pinned:
+                node = self.network.node(column)
+                idle = ShiftSetting(0.0, 1.0) if isinstance(node, Number) else Setting(0, 0.0, node.levels[0])
+                found[column] = idle
+        return found
 
     def _had(self, asked: Question, turn: Turn) -> Seen | None:
         """The columns in question among those who had the levers' values anyway."""
@@ -263,10 +273,6 @@ def _only_categories(network: Network) -> Network:
         if isinstance(node, Category) and all(parent in inside for parent in node.parents):
             inside[node.name] = node
     return network if len(inside) == len(network.nodes) else Network(tuple(inside.values()))
-
-
-def _working(levers: Mapping[str, AnySetting]) -> dict[str, AnySetting]:
-    return {column: setting for column, setting in levers.items() if setting.reach > 0.0}
 
 
 def _method(turn: Turn) -> str:

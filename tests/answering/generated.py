@@ -3,6 +3,7 @@
 import numpy as np
 from hypothesis import strategies as st
 
+import engine
 from engine.network.network import Category, network
 
 
@@ -59,3 +60,45 @@ def questions(draw, most=6, certain=None):
     }
     free = set(net.names) - net.descendants(chosen)
     return net, draw(pins(net, free)), levers
+
+
+@st.composite
+def levers(draw, net, columns):
+    """A Fix, Mix or Rule with reach on each of the columns; a rule goes by a column that none of this follows from."""
+    found = {}
+    for column in columns:
+        levels = net.node(column).levels
+        reach = draw(st.sampled_from([0.0, 0.25, 0.8, 1.0, 1.0]))
+        before = [name for name in net.names if name != column and name not in net.descendants([column])]
+        kind = draw(st.sampled_from(["fix", "mix", "rule"] if before else ["fix", "mix"]))
+        if kind == "fix":
+            found[column] = engine.Fix(draw(st.sampled_from(levels)), reach)
+        elif kind == "mix":
+            weights = [draw(st.integers(0, 4)) for _ in levels]
+            total = sum(weights) or 1
+            shares = {level: weight / total for level, weight in zip(levels, weights, strict=True) if weight}
+            found[column] = engine.Mix(shares or {levels[0]: 1.0}, reach)
+        else:
+            ruler = draw(st.sampled_from(before))
+            named = draw(st.sets(st.sampled_from(net.node(ruler).levels), min_size=1))
+            found[column] = engine.Rule(ruler, {level: draw(st.sampled_from(levels)) for level in sorted(named)}, reach)
+    return found
+
+
+@st.composite
+def lever_questions(draw, most=5, certain=None):
+    """(network, pins, levers, levers against or None, pins after): two set worlds with every kind of lever."""
+    net = draw(networks(certain, most))
+    columns = st.lists(st.sampled_from(sorted(net.names)), min_size=1, max_size=3, unique=True)
+    first = draw(columns)
+    second = draw(st.one_of(st.none(), columns))
+    free = set(net.names) - net.descendants([*first, *(second or [])])
+    moved = set(first) | net.descendants(first)
+    after = draw(pins(net, moved, 2)) if draw(st.booleans()) else {}
+    return (
+        net,
+        draw(pins(net, free)),
+        draw(levers(net, first)),
+        None if second is None else draw(levers(net, second)),
+        after,
+    )
