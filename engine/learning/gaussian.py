@@ -12,7 +12,7 @@ from scipy.special import gammaln
 
 from engine.learning.scores import Floats, Ints, SetScores
 from engine.records.joint import LARGEST
-from engine.records.moments import ArrayMoments, Sums
+from engine.records.moments import ArrayMoments, FamilySums, Sums
 
 MEAN_WEIGHT = 1.0  # records that the prior mean counts for
 SCATTER = MEAN_WEIGHT * MEAN_WEIGHT / (MEAN_WEIGHT + 1.0)  # prior scatter of every standardised number
@@ -45,6 +45,22 @@ def number_scores(
             for part in range(parts):
                 np.add.at(by_size[held][part], ranks, scores[:, part, :])
     return coarsened(SetScores(columns, 0.0, by_size), max(grain, _grain(columns, by_size)))
+
+
+def family_score(sums: FamilySums) -> float:
+    """The score of one number given its parents, from all records: the difference of two set scores."""
+    products = sums.part(0)
+    products = products[products[:, 0, 0] > 0.0]
+    count, first = products[:, 0, 0], products[:, 0, 1:]
+    places = list(sums.columns)
+    held = len(places)
+    scatter = products[:, 1:, 1:] - first[:, :, None] * first[:, None, :] / (count + MEAN_WEIGHT)[:, None, None]
+    rounding = sums.numbers.rounding[places]
+    scatter += (count[:, None] * rounding + SCATTER)[:, None, :] * np.eye(held)
+    logs = np.linalg.slogdet(scatter)[1], np.linalg.slogdet(scatter[:, :-1, :-1])[1]
+    with_child, without = (-0.5 * (count + shape + MEAN_WEIGHT + 1.0) for shape in (held, held - 1))
+    score = _one_more(count, held) + with_child * logs[0] - without * logs[1]
+    return float(score.sum() - count.sum() * np.log(sums.numbers.scale[places[-1]]))
 
 
 def coarsened(scores: SetScores, grain: float) -> SetScores:

@@ -7,7 +7,9 @@ from collections.abc import Sequence
 import numpy as np
 import pandas as pd
 
+from engine.learning.cap import Capped, capped
 from engine.learning.checks import check_coded, check_groups, check_limits, check_rows, check_table, numbers_to_learn
+from engine.learning.cuts import banded, number_cuts
 from engine.learning.evidence import counts_of, moments_of
 from engine.learning.families import Candidates, Families, candidates
 from engine.learning.folds import FOLDS
@@ -24,7 +26,8 @@ from engine.order import Order
 from engine.records.counts import LARGEST, ArrayCounts
 from engine.records.moments import ArrayMoments
 from engine.records.table import Coded, Table
-from engine.refusal import Refusal
+from engine.records.wording import listing
+from engine.refusal import Refusal, quoted
 
 
 def learn(
@@ -81,6 +84,7 @@ def learn_coded(
     """
     check_limits(max_links, max_parents, graphs, seed)
     check_coded(coded, order)
+    coded = banded(coded, number_cuts(coded))
     if folds:
         check_groups(coded.group)
     stages = candidates(order, max_parents)
@@ -115,9 +119,11 @@ def learn_coded(
         judged = scoring.result()
         curve["held_out"], curve["held_out_se"] = judged.mean, judged.behind_se
         recommended = judged.recommended
+    say.begin("Trying one parent more where the limit was reached")
+    cap = capped(coded, counts, moments, stages, found.parents[recommended], scores, max_parents, ess, say.within)
+    said = (*notes, *_left_out(stages, scores, max_parents), *_at_cap(cap, max_parents))
     say.finish()
-    said = (*notes, *_left_out(stages, scores, max_parents))
-    return Learned(order, coded, curve, recommended, found.parents, sure, max_parents, seed, digest, said)
+    return Learned(order, coded, curve, recommended, found.parents, sure, max_parents, seed, digest, said, cap)
 
 
 def _scores(counts: ArrayCounts, moments: ArrayMoments | None, size: int, ess: float, say: Saying) -> MixedScores:
@@ -146,3 +152,13 @@ def _left_out(stages: tuple[tuple[Candidates, ...], ...], scores: FamilyScores, 
         return ()
     what = "1 set of parents was" if left_out == 1 else f"{left_out:,} sets of parents were"
     return (f"{what} left out: with their column they have more than {LARGEST:,} combinations of levels.",)
+
+
+def _at_cap(cap: Sequence[Capped], max_parents: int) -> tuple[str, ...]:
+    """A sentence about columns that want more parents than were allowed, if there are any."""
+    if not cap:
+        return ()
+    names = listing([quoted(each.column) for each in cap], 12)
+    verb = "is" if len(cap) == 1 else "are each"
+    parents = "1 parent" if max_parents == 1 else f"{max_parents} parents"
+    return (f"{names} {verb} described better with {max_parents + 1} parents than with {parents}, the most allowed.",)

@@ -13,6 +13,7 @@ import numpy as np
 import pandas as pd
 
 from engine.learning import archive
+from engine.learning.cap import Capped
 from engine.learning.evidence import FamilyMoments, counts_of, family_node, moments_of
 from engine.learning.posterior import Posterior
 from engine.learning.search import Parents
@@ -42,6 +43,7 @@ class Learned:
     error of its record-by-record difference to the best size, 0 there.
     recommended: the smallest number of links within one standard error of the best (paired).
     notes: sentences worth knowing about how it was learned.
+    cap: columns that, in the recommended model, would gain from one parent more than `max_parents`.
     """
 
     order: Order
@@ -54,6 +56,7 @@ class Learned:
     seed: int
     digest: str
     notes: tuple[str, ...] = ()
+    cap: tuple[Capped, ...] = ()
 
     @property
     def rows(self) -> int:
@@ -160,6 +163,7 @@ class Learned:
             "seed": self.seed,
             "digest": self.digest,
             "notes": self.notes,
+            "cap": self.cap,
         }
         curve = {f"curve_{name}": self.curve[name].to_numpy() for name in _CURVE}
         posterior: dict[str, np.ndarray] = {
@@ -186,6 +190,7 @@ class Learned:
             seed=described["seed"],
             digest=described["digest"],
             notes=tuple(described["notes"]),
+            cap=tuple(Capped(column, gain, tuple(parents)) for column, gain, parents in described["cap"]),
         )
 
     def _chosen(self, links: int | None) -> Parents:

@@ -37,7 +37,8 @@ class Saying:
         if moments is not None:
             scoring += len(moments.numbers.columns) * max_parents * (0.006 + 0.0003 * thousands)
         weighing = sum(len(stage) * (4.0 ** min(len(stage), 10)) * 2e-7 for stage in stages) + 0.003 * columns
-        self.steps = [counting, *summing, searching, weighing, *[searching + scoring] * parts]
+        trying = 0.003 * columns * min(thousands, 20.0)
+        self.steps = [counting, *summing, searching, weighing, *[searching + scoring] * parts, trying]
         self.at = -1
         self.words = ""
         self.fraction = 0.0

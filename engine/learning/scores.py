@@ -66,6 +66,15 @@ def set_scores(counts: Counts, size: int, ess: float = 1.0, tick: Callable[[floa
     return SetScores(columns, grain, by_size)
 
 
+def family_score(counts: NDArray[np.number], ess: float = 1.0) -> float:
+    """The score of one family, the difference of two set scores.  counts: (parent levels..., child levels)."""
+    flat = counts.reshape(-1, counts.shape[-1])
+    seen = np.asarray(flat[flat.sum(axis=1) > 0.0], dtype=np.float64)
+    each, cell = ess / flat.shape[0], ess / flat.size
+    score = (gammaln(seen + cell) - gammaln(cell)).sum() - (gammaln(seen.sum(axis=1) + each) - gammaln(each)).sum()
+    return float(score)
+
+
 def _block_scores(block: Block, terms: _Terms, parts: int) -> Floats:
     """(parts, sets) sums of the block's terms."""
     _, cells, more = block.counts.shape

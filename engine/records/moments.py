@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Iterator, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from itertools import combinations
 from math import comb, prod
 
@@ -111,6 +111,21 @@ class FamilySums:
         whole = self.products.sum(axis=0)
         return np.asarray(whole if part == 0 else whole - self.products[part - 1])
 
+    def exact(self, records: int, tolerance: float) -> bool:
+        """Whether the child follows its number parents exactly throughout a configuration of so many records more.
+
+        tolerance: of the standard deviation, what rounding to float leaves.
+        """
+        whole = self.part(0)
+        large = whole[whole[:, 0, 0] >= records + whole.shape[1] - 2]
+        if not large.size:
+            return False
+        inner = large[:, :-1, :-1] / large[:, :1, :1] + tolerance**2 * np.eye(large.shape[1] - 1)
+        across = large[:, :-1, -1] / large[:, 0, :1]
+        slopes = np.linalg.solve(inner, across[..., None])[..., 0]
+        left = large[:, -1, -1] / large[:, 0, 0] - (slopes * across).sum(axis=1)
+        return bool((left <= 4.0 * tolerance**2 * (1.0 + (slopes**2).sum(axis=1))).any())
+
 
 @dataclass(frozen=True, eq=False)
 class _Piece:
@@ -180,6 +195,11 @@ class ArrayMoments:
             if waiting:
                 yield self._summed(waiting, wide, hear, begun, at)
         hear(1.0)
+
+    def part_of(self, rows: Ints) -> ArrayMoments:
+        """The same of some rows, standardised as all are, without folds."""
+        numbers = replace(self.numbers, values=self.numbers.values[rows])
+        return ArrayMoments(self.codes[rows], self.levels, numbers, weights=self.weights[rows])
 
     def seconds(self, size: int) -> float:
         """Roughly how long `blocks` and the scores of its sums take, for telling progress."""

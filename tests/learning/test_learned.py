@@ -150,6 +150,7 @@ def test_progress_is_in_plain_words_and_never_runs_back():
         "Finding the best model of every size",
         "Weighing every model that the order allows",
         *(f"Scoring part {part} of 5 of the records held out" for part in range(1, 6)),
+        "Trying one parent more where the limit was reached",
         "Done",
     ]
 
