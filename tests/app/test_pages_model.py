@@ -238,4 +238,4 @@ def test_a_number_is_told_by_its_mean_on_the_page(client: TestClient, app: FastA
         for clause in (*rules.clauses, rules.then):
             assert "".join(part.text for part in clause) in told
         assert f"Means and intervals of {name}" in told
-    assert "Each row is a combination of levels; across it, hours in it, on average where" in told
+    assert "Each row is a combination of levels; across it, hours in it. 90% intervals" in told
