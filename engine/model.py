@@ -197,17 +197,14 @@ class Model:
     def _joint(self, columns: tuple[str, ...]) -> np.ndarray:
         """(levels, or bands, of each column...) joint shares; kept, for a page asks for the same ones again.
 
-        By the model, where all its columns are categories; else by the records. Without records by the model where
-        only categories come before those columns, else by invented rows.
+        By the model; where it has numbers and there are records, by the records, which need no working out.
         """
         return self._joints.get(columns, lambda: self._common(columns))
 
     def _common(self, columns: tuple[str, ...]) -> np.ndarray:
-        if not self.network.numbers:
-            return self._planner.joint(columns)
-        if self.coded is None and set(columns) <= self._before_numbers.index.keys():
-            return Planner(self._before_numbers).joint(columns)
-        return self._typical.joint(self.network, columns)
+        if self.network.numbers and self.coded is not None:
+            return self._typical.joint(self.network, columns)
+        return self._planner.joint(columns)
 
     def _beside(self, column: str) -> np.ndarray:
         """(category parents' levels..., number parents) means of a number's number parents in each configuration."""
@@ -218,14 +215,8 @@ class Model:
 
     @cached_property
     def _typical(self) -> Typical:
-        """What stands for all cases where numbers come in: the records, or rows invented with a fixed seed."""
+        """What stands for all cases where values of numbers come in: the records, else rows always invented alike."""
         return invented(self.network) if self.coded is None else recorded(self.coded)
-
-    @cached_property
-    def _before_numbers(self) -> Network:
-        """The categories that no number leads to."""
-        after = self.network.descendants(self.network.numbers) | set(self.network.numbers)
-        return Network(tuple(node for node in self.network.nodes if node.name not in after))
 
     @cached_property
     def _joints(self) -> Kept[tuple[str, ...], np.ndarray]:

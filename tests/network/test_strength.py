@@ -3,6 +3,7 @@
 import numpy as np
 import pytest
 from hypothesis import given, settings
+from scipy.stats import norm
 
 import engine
 from engine.network.typical import invented, recorded
@@ -70,6 +71,11 @@ def test_a_number_moves_a_category_across_its_bands():
     model = engine.Model.from_network([RAIN, FLOW, WET, DEPTH])
     # no, the commonest level: .9, .8, .5 in the bands without rain and .4, .3, .2 with it; it rains for a fifth
     assert model.strength("flow", "wet") == pytest.approx(0.8 * (0.9 - 0.5) + 0.2 * (0.4 - 0.2))
+    bands = sum(
+        weight * np.diff(norm.cdf([-np.inf, 2.0, 4.0, np.inf], mean, np.sqrt(variance)))
+        for weight, mean, variance in ((0.8, 1.0, 1.0), (0.2, 5.0, 2.0))
+    )
+    assert model.strength("rain", "wet") == pytest.approx(bands @ [0.9 - 0.4, 0.8 - 0.3, 0.5 - 0.2])
 
 
 def test_heavier_records_count_for_more():
