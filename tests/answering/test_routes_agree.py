@@ -25,10 +25,11 @@ def test_weighting_agrees_with_the_exact_route(world, seed):
     assert abs(found.log_evidence[0] - exact.log_evidence[0]) < ERRORS / np.sqrt(found.effective)
     assert found.shares.keys() == exact.shares.keys()
     assert found.numbers.keys() == exact.numbers.keys()
+    unseen = 1.0 / found.effective  # a share this small may rest on weights that no particle has met
     for name in world.watch:
         away = np.abs(found.shares[name][:, 0] - exact.shares[name][:, 0]).max()
         if name not in found.numbers:
-            assert away <= ERRORS * found.error[name] + 1e-9
+            assert away <= ERRORS * found.error[name] + unseen
             continue
         assert away <= ERRORS * 0.5 / np.sqrt(found.effective)
         own, other = found.numbers[name], exact.numbers[name]
