@@ -15,7 +15,6 @@ from engine.records.wording import figure, listing, people
 from engine.refusal import Refusal, quoted
 
 NAMED = 5  # records that a refusal names
-ROUND = 3  # figures of a correlation that a sentence gives
 Kept = NDArray[np.bool_]
 
 
@@ -125,10 +124,11 @@ def _grouped(group: Column, effect: DesignEffect, rows: int, worth: float) -> li
             "than others, so each counts as a case of its own."
         )
     else:
+        correlation = f"{effect.alike:.2f}"
+        alike = f"alike (intraclass correlation {correlation} on average)" if float(correlation) else "a little alike"
         said.append(
-            f"The records stand in {_people(effect.groups)} groups by {name}. Those of one group are alike (intraclass "
-            f"correlation {effect.alike:.{ROUND - 1}f} on average), so that all of them are worth {_worth(worth)} "
-            "separate cases."
+            f"The records stand in {_people(effect.groups)} groups by {name}. Those of one group are {alike}, so that "
+            f"all of them are worth {_worth(worth)} separate cases."
         )
         if effect.same:
             told = listing([quoted(each) for each in effect.same])

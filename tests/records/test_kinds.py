@@ -52,6 +52,14 @@ GUESSES = [
 ]
 
 
+def test_an_identifier_of_several_records_may_be_the_group():
+    column = guessed([f"K{n // 3:05}x" for n in range(300)], "person id")
+    assert column.kind == "left out"
+    assert column.why == (
+        "Looks like an identifier: 100 different values. Take it as the group if it says which records belong together."
+    )
+
+
 @pytest.mark.parametrize(("cells", "kind", "why"), [each[1:] for each in GUESSES], ids=[each[0] for each in GUESSES])
 def test_a_kind_is_guessed_with_its_reason(cells, kind, why):
     column = guessed(cells)

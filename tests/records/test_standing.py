@@ -6,7 +6,8 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from engine.records import Table
+from engine.records import Column, Table
+from engine.records.standing import standing
 from engine.refusal import Refusal
 
 
@@ -151,6 +152,19 @@ def test_groups_that_are_no_more_alike_than_others_change_nothing():
     every = Table.from_frame(frame(who=np.arange(40)), {"who": "group"})
     assert every.weights.tolist() == [1.0] * 40
     assert every.warnings == ("Every record is a group of its own by “who”, so grouping changes nothing.",)
+
+
+@pytest.mark.parametrize(
+    ("away", "told"),
+    [(10, "alike (intraclass correlation 0.03 on average)"), (6, "a little alike"), (0, "no more alike than others")],
+)
+def test_a_correlation_that_rounds_to_nothing_is_told_in_words(away, told):
+    ones = [50 + away, 50 - away] * 50  # of each 100 records of a group
+    codes = np.concatenate([np.arange(100) < many for many in ones]).astype(np.int32)
+    group = Column("who", "group", "", codes=np.repeat(np.arange(100), 100).astype(np.int32))
+    made = standing({"who": group, "x": Column("x", "category", "", ("a", "b"), codes)}, 10_000)
+    assert f"Those of one group are {told}, so " in made.said[0]
+    assert (made.weights.sum() < 9_990) == (away > 0)
 
 
 def test_blank_groups_are_counted_and_few_of_them_only_as_few():
