@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -10,7 +10,9 @@ import numpy as np
 
 from engine.answering.answer import Answer, Caution, Counted
 from engine.answering.counting import Records
-from engine.answering.question import Question, Setting
+from engine.answering.question import Question
+from engine.answering.settings import AnySetting
+from engine.doubting.aims import Aim, aim
 from engine.network.network import Network
 from engine.order import Order, better_levels
 from engine.records.table import SMALL_COUNT
@@ -74,13 +76,34 @@ class Case:
         return found or (max(shares, key=lambda level: shares[level]),)
 
     @cached_property
-    def levers(self) -> dict[str, Setting]:
-        """The levers that fix a category, reach anyone, and move a column in question other than themselves."""
-        return {
-            column: setting
-            for column, setting in self.asked.working.items()
-            if isinstance(setting, Setting) and self.network.descendants([column]) & set(self.asked.watch)
-        }
+    def levers(self) -> dict[str, AnySetting]:
+        """The levers that reach anyone and move a column in question other than themselves."""
+        return self._moving(self.asked.working)
+
+    @cached_property
+    def aims(self) -> dict[str, Aim]:
+        """What each of the levers would make of every record; empty without records."""
+        return self._aimed(self.levers)
+
+    @cached_property
+    def aims_against(self) -> dict[str, Aim]:
+        """The same of the levers that are held against."""
+        reaching = {column: setting for column, setting in (self.asked.against or {}).items() if setting.reach > 0.0}
+        return self._aimed(self._moving(reaching))
+
+    @property
+    def every_aim(self) -> tuple[Aim, ...]:
+        return (*self.aims.values(), *self.aims_against.values())
+
+    def _moving(self, settings: Mapping[str, AnySetting]) -> dict[str, AnySetting]:
+        watch = set(self.asked.watch)
+        return {column: each for column, each in settings.items() if self.network.descendants([column]) & watch}
+
+    def _aimed(self, settings: Mapping[str, AnySetting]) -> dict[str, Aim]:
+        if self.records is None:
+            return {}
+        records = self.records
+        return {column: aim(self.network, records, column, setting) for column, setting in settings.items()}
 
 
 def out_of(part: int, whole: int) -> str:

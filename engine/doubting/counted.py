@@ -7,6 +7,7 @@ import math
 from engine.answering.answer import Caution, Counted, Marginal
 from engine.doubting.case import Case, Found, named, per_cent
 from engine.records.table import SMALL_COUNT
+from engine.records.wording import figure
 
 COVERAGE = 0.90
 ENOUGH = 100  # records: among fewer, a share that chance explains is not worth knowing
@@ -28,10 +29,12 @@ def check(case: Case) -> Found | None:
 
 
 def _caution(case: Case, column: str, among: Marginal, count: Counted) -> list[Caution]:
+    if count.mean is not None and among.number is not None:
+        return _of_mean(case, column, among, count, count.mean)
     levels = case.in_question(column)
     low, high = among.interval(levels, COVERAGE)
-    held = sum(count.counts[level] for level in levels)
-    share = held / count.rows
+    share = sum(count.shares[level] for level in levels)
+    held = share * count.rows  # with weights, what they make of the count
     if low <= share <= high:
         return []
     at_least, at_most = wilson(held, count.rows)
@@ -58,7 +61,30 @@ def _caution(case: Case, column: str, among: Marginal, count: Counted) -> list[C
     ]
 
 
-def wilson(held: int, rows: int) -> tuple[float, float]:
+def _of_mean(case: Case, column: str, among: Marginal, count: Counted, mean: float) -> list[Caution]:
+    """The same of a number's mean; its own interval is the normal one around it."""
+    low, high = among.interval(None, COVERAGE)
+    if low <= mean <= high:
+        return []
+    by_chance = abs(among.mean - mean) <= DEVIATION * among.sd / math.sqrt(count.rows)
+    if by_chance and count.rows < ENOUGH:
+        return []
+    text = (
+        f"is the mean of {column} when {case.these} are counted; the model says {_short(among.mean)}, between "
+        f"{_short(low)} and {_short(high)}."
+    )
+    do = "For how things are, go by the count; on the Model page, see whether more links bring the two together."
+    figures = {"counted": mean, "model": among.mean, "low": low, "high": high, "rows": count.rows}
+    rank = "know" if by_chance else "weakens"
+    return [Caution(rank, "counted", _short(mean), text, do, figures, (column, *case.asked.pinned))]
+
+
+def _short(value: float) -> str:
+    """To four digits, as people read it."""
+    return figure(float(f"{value:.4g}"))
+
+
+def wilson(held: float, rows: int) -> tuple[float, float]:
     """90 % score interval of a share counted as `held` of `rows`, rows at least 1 (Wilson 1927)."""
     share, square = held / rows, DEVIATION**2
     middle = (share + square / (2.0 * rows)) / (1.0 + square / rows)
@@ -66,7 +92,7 @@ def wilson(held: int, rows: int) -> tuple[float, float]:
     return middle - half, middle + half
 
 
-def _counted(held: int, rows: int) -> str:
+def _counted(held: float, rows: int) -> str:
     """A counted share as a figure, without giving away a count under the limit."""
     if 0 < held < SMALL_COUNT:
         return f"under {SMALL_COUNT}"

@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from engine.answering.answer import Caution
-from engine.doubting import blanks, counted, direction, models, overlap, thin
+from engine.doubting import blanks, counted, direction, models, outside, overlap, thin
 from engine.doubting.case import Case, Check
 
 CHECKS: tuple[Check, ...] = (
     overlap.check,
+    outside.check,
     thin.check,
     direction.check,
     models.check,
