@@ -18,7 +18,7 @@ class Column:
 
     name: as in the file.  kind: category, grade (ordered category) or number; left out; weight (what each record
     counts for) or group (which records belong together), neither of which is learned from.
-    why: one sentence: why it is taken as this kind.
+    why: why it is taken as this kind, in a sentence or two.
     levels: grades low to high, bands of a number in words, the blank level last; empty when not learned from.
     codes: (rows,) positions in `levels` for the kept rows, int32; of a group, which one each row is in, from 0; else
     empty when not learned from.
