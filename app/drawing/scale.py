@@ -10,6 +10,7 @@ from engine.records.bands import YEARS
 from engine.records.wording import figure
 
 FINE = {"1": 10, "2": 4, "5": 5}  # ticks to a step, by its first digit
+NEAR, TINY = 1e-9, 1e-100
 FIGURES = 5  # at least so many steps where the ends are rounded outward
 
 
@@ -74,8 +75,9 @@ def rounded_outward(low: float, high: float, also: Iterable[float] = ()) -> Scal
     A step is 1, 2 or 5 of a power of ten, the widest that leaves FIGURES of them.
     """
     low, high = min(low, high, *also), max(low, high, *also)
-    if not high > low:
-        room = abs(low) / 10 or 1.0
+    size = max(abs(low), abs(high))
+    if high - low <= NEAR * size or size < TINY:  # ticks between could not be told apart
+        room = size / 10 if size >= TINY else 1.0
         low, high = low - room, high + room
     step = round_step((high - low) / FIGURES)
     return Scale(math.floor(low / step + 1e-9), math.ceil(high / step - 1e-9), step, FINE[f"{step:e}"[0]])

@@ -9,9 +9,9 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from app.address import Misread, parse
+from app.address import Misread, from_a_form, parse
 from app.names import Names, slugs
-from app.question import SHOWS, Question, query, url
+from app.question import SHOWS, By, Question, To, Within, query, url
 
 NAMES = Names(
     [
@@ -19,9 +19,13 @@ NAMES = Names(
         ("mentor", ("no", "yes")),
         ("travel time", ("under 20", "20 to under 45", "45 and over")),
         ("passed", ("no", "yes")),
-    ]
+        ("mentor hours", ("under 5", "5 to under 15", "15 and over")),
+    ],
+    {"mentor hours"},
 )
+HOURS = "mentor hours"
 
+amounts = st.floats(-1e15, 1e15).map(lambda value: value + 0.0)
 texts = st.text(max_size=12) | st.sampled_from(
     ["<script>", "a.b", "a&b=c", "", "Ä", "ä", "%2E", "a b", "a-b", "夜勤", "-"]
 )
@@ -31,14 +35,21 @@ texts = st.text(max_size=12) | st.sampled_from(
 def named_questions(draw):
     columns = draw(st.lists(texts, min_size=1, max_size=5, unique=True))
     levels = {name: draw(st.lists(texts, min_size=1, max_size=4, unique=True)) for name in columns}
-    names = Names([(name, levels[name]) for name in columns])
+    numbers = draw(st.sets(st.sampled_from(columns)))
+    names = Names([(name, levels[name]) for name in columns], numbers)
     pins, levers = {}, {}
     for name in columns:
-        if draw(st.booleans()):
+        if name in numbers and draw(st.booleans()):
+            low, high = sorted(draw(st.tuples(amounts, amounts)))
+            ends = [Within(low, high), Within(low, None), Within(None, high)]
+            pins[name] = draw(st.sampled_from(ends))
+        elif draw(st.booleans()):
             chosen = draw(st.sets(st.sampled_from(levels[name]), min_size=1))
             pins[name] = tuple(level for level in levels[name] if level in chosen)
         if draw(st.booleans()):
-            levers[name] = (draw(st.sampled_from(levels[name])), draw(st.integers(0, 10**6)) / 10**6)
+            shifts = amounts.filter(bool).map(By)
+            settings = amounts.map(To) | shifts if name in numbers else st.sampled_from(levels[name])
+            levers[name] = (draw(settings), draw(st.integers(0, 10**6)) / 10**6)
     some = st.frozensets(st.sampled_from(columns))
     return names, Question(
         pins,
@@ -73,6 +84,45 @@ def test_addresses_are_readable():
     assert url("s", Question(), NAMES, "answer") == "/study/s/answer"
 
 
+@pytest.mark.parametrize(
+    ("pin", "lever", "address"),
+    [
+        (("5 to under 15",), To(12.0), "pin=mentor-hours.5-to-under-15&set=mentor-hours.to.12"),
+        (Within(5.5, 12.25), To(0.5), "pin=mentor-hours.from.5.5.under.12.25&set=mentor-hours.to.0.5"),
+        (Within(-2.0), By(-2.5), "pin=mentor-hours.from.-2&shift=mentor-hours.by.-2.5"),
+        (Within(None, 1e12), By(1e-7), "pin=mentor-hours.under.1000000000000&shift=mentor-hours.by.1e-07"),
+        (Within(7.0, 7.0), By(3.0), "pin=mentor-hours.at.7&shift=mentor-hours.by.3"),
+    ],
+)
+def test_addresses_of_numbers_are_readable(pin, lever, address):
+    assert query(Question({HOURS: pin}, {HOURS: (lever, 1.0)}), NAMES) == address
+
+
+@pytest.mark.parametrize(
+    ("typed", "value"),
+    [("12", 12.0), (" 12.5 ", 12.5), ("12,5", 12.5), ("1,200", 1200.0), ("−1,200.5", -1200.5), ("+3", 3.0)],
+)
+def test_the_forms_of_a_number_send_values_as_people_type_them(typed, value):
+    sent = [
+        ("set.mentor-hours", typed),
+        ("reach.mentor-hours", "80"),
+        ("from.mentor-hours", ""),
+        ("under.mentor-hours", typed),
+    ]
+    assert from_a_form(sent)
+    found = parse(sent, NAMES)
+    assert found == Question({HOURS: Within(None, value)}, {HOURS: (To(value), 0.8)})
+    assert parse([("shift.mentor-hours", typed)], NAMES).levers == {HOURS: (By(value), 1.0)}
+
+
+def test_a_range_that_is_left_empty_is_no_pin():
+    assert parse([("from.mentor-hours", " "), ("under.mentor-hours", "")], NAMES) == Question()
+
+
+def test_an_address_of_its_own_is_no_form():
+    assert not from_a_form(parse_qsl("pin=mentor-hours.from.5.5&set=mentor-hours.to.12&reach=mentor-hours.5&find=a.b"))
+
+
 def test_several_levels_and_bands_are_joined_by_dots():
     question = Question({"shift work": ("mixed", "nights"), "travel time": ("20 to under 45",)})
     assert query(question, NAMES) == "pin=shift-work.mixed.nights&pin=travel-time.20-to-under-45"
@@ -105,6 +155,21 @@ def test_the_form_of_a_card_sends_a_reach_as_people_type_it(typed, reach):
         (("show", "everything"), "“everything”"),
         (("drop", "table"), "“drop”"),
         (("pin", "shift-work.days"), "twice"),
+        (("set", "mentor-hours.12"), "a number and is set to a value"),
+        (("set", "mentor-hours.5-to-under-15"), "a number and is set to a value"),
+        (("set", "mentor-hours.to."), "No number was given for mentor hours"),
+        (("set", "mentor-hours.to.inf"), "“inf”"),
+        (("set", "mentor-hours.to.1_000"), "“1_000”"),
+        (("set.mentor-hours", "1e300"), "“1e300”"),
+        (("set.mentor", "12"), "mentor is no number"),
+        (("shift", "mentor.by.2"), "mentor is no number"),
+        (("shift", "mentor-hours.by.many"), "“many”"),
+        (("shift.mentor-hours", "0"), "leaves mentor hours as it is"),
+        (("pin", "mentor-hours.from"), "no range of it"),
+        (("pin", "mentor-hours.from.9.under.3"), "9 or over and under 3 at once"),
+        (("pin", "mentor-hours.at.nan"), "“nan”"),
+        (("under.mentor-hours", "<b>"), "“<b>”"),
+        (("from.passed", "3"), "passed is no number"),
     ],
 )
 def test_what_cannot_be_read_is_said_and_the_rest_is_kept(pair, says):
@@ -114,6 +179,12 @@ def test_what_cannot_be_read_is_said_and_the_rest_is_kept(pair, says):
     assert says in misread.value.message and misread.value.do
     assert misread.value.rest.pins == {"shift work": ("nights",)}
     assert misread.value.rest.levers == {"mentor": ("yes", 1.0)}
+
+
+def test_a_number_is_set_or_shifted_but_not_both():
+    with pytest.raises(Misread, match="twice for mentor hours") as misread:
+        parse([("set", "mentor-hours.to.3"), ("shift", "mentor-hours.by.2")], NAMES)
+    assert misread.value.rest.levers == {HOURS: (To(3.0), 1.0)}
 
 
 def test_the_same_complaint_is_made_once():
