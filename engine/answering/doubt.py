@@ -18,10 +18,12 @@ from engine.answering.answer import Answer, Doubt, Marginal, Reading
 from engine.answering.asking import FEWEST_DRAWS, ask
 from engine.answering.planner import Planner
 from engine.answering.question import Question
+from engine.answering.summing import Plans
 from engine.learning.learned import Learned
 from engine.network.network import Network
 from engine.refusal import Refusal, whole
 
+PLANS = 4096  # kept together for all plausible graphs of one study
 STRIDE = 1_000_003  # between the seeds of two graphs, so that each has parameter draws of its own
 
 
@@ -60,7 +62,8 @@ def plausible(learned: Learned, graphs: int) -> Plausible:
             key = graph.tobytes()
             times[key] = times.get(key, 0) + int(taken)
             parents[key] = tuple(tuple(np.flatnonzero(into).tolist()) for into in graph.T)
-    planners = tuple(Planner(learned.network_of(parents[key])) for key in times)
+    plans = Plans(PLANS)
+    planners = tuple(Planner(learned.network_of(parents[key]), plans, whole=False) for key in times)
     return Plausible(planners, tuple(times.values()), min(float(graphs), drawn.effective))
 
 

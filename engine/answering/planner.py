@@ -13,7 +13,7 @@ from engine.answering.pins import Pins
 from engine.answering.question import Question
 from engine.answering.scenes import Scene, Seen
 from engine.answering.settings import AnySetting, Setting, ShiftSetting, ValueSetting
-from engine.answering.summing import LIMIT, Summing, TooWideError, Work
+from engine.answering.summing import LIMIT, Plans, Summing, TooWideError, Work
 from engine.network.network import Network
 from engine.network.nodes import Category, Number
 from engine.refusal import Refusal, quoted
@@ -75,12 +75,12 @@ class Turn:
 
 
 class Planner:
-    """Answers questions of one network; keeps its plans and its recorded world."""
+    """Answers questions of one network; keeps its plans and its recorded world.  plans, whole: as in `Summing`."""
 
-    def __init__(self, network: Network) -> None:
+    def __init__(self, network: Network, plans: Plans | None = None, whole: bool = True) -> None:
         self.network = network
         self.categories = _only_categories(network)
-        self._summing = Summing(self.categories)
+        self._summing = Summing(self.categories, plans, whole)
         self._mixing = Mixing(network)
 
     def worlds(self, asked: Question, draws: int, seed: int, exact: bool | None = None) -> Worlds:

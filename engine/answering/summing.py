@@ -42,12 +42,21 @@ class Work:
     families: set[int] = field(default_factory=set)
 
 
-class Summing:
-    """Sums the worlds of one network of categories; keeps its plans and its recorded world."""
+Plans = Kept[Hashable, Tree]  # by what alone a plan hangs on: scopes, sizes, and what is read
 
-    def __init__(self, network: Network) -> None:
+
+class Summing:
+    """Sums the worlds of one network of categories; keeps its plans and its recorded world.
+
+    plans: kept together with other networks, whose worlds are alike in part; None: of its own.
+    whole: whether the recorded world is read for all columns at once; else for those asked for, as is better where a
+    network is asked little.
+    """
+
+    def __init__(self, network: Network, plans: Plans | None = None, whole: bool = True) -> None:
         self.network = network
-        self._plans: Kept[Hashable, Tree] = Kept(PLANS)
+        self._plans = Plans(PLANS) if plans is None else plans
+        self._whole = whole
         self._worlds: Kept[Hashable, tuple[World, Tree]] = Kept(PLANS)
         self._grouped: Kept[int, list[dict[str, None]]] = Kept(DRAWS)
         self._recorded: Kept[tuple[int, int, tuple[str, ...]], tuple[Mapping[str, np.ndarray], Work]] = Kept(
@@ -72,6 +81,12 @@ class Summing:
 
         Raises TooWideError.
         """
+        if not self._whole:
+            part = tuple(columns)
+            alone, needed = self._recorded.get((count, seed, part), partial(self._alone, part, count, seed))
+            work.summed += needed.summed
+            work.families |= needed.families
+            return dict(alone)
         found: dict[str, np.ndarray] = {}
         for group in self._grouped.get(count, lambda: self._groups(count)):
             asked = [column for column in columns if column in group]
