@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
@@ -15,12 +16,21 @@ ENDS = (0.01, 0.5, 0.99)
 
 @dataclass(frozen=True)
 class Usual:
-    """low, middle, high: 1st, 50th and 99th percentile.  step: a shift to begin with, half a standard deviation."""
+    """low, middle, high: 1st, 50th and 99th percentile.  step: a shift to begin with, half a standard deviation.
+
+    least, most: of all records, infinite without records.
+    """
 
     low: float
     middle: float
     high: float
     step: float
+    least: float = -math.inf
+    most: float = math.inf
+
+    def holds(self, value: float) -> bool:
+        """Whether the records reach as far as this value."""
+        return self.least <= value <= self.most
 
 
 def usual(coded: Coded | None, column: str, recorded: Marginal) -> Usual:
@@ -28,6 +38,6 @@ def usual(coded: Coded | None, column: str, recorded: Marginal) -> Usual:
     if coded is not None and column in coded.names:
         values = coded.values[:, coded.numbers.index(coded.names.index(column))]
         low, middle, high = (float(value) for value in np.quantile(values, ENDS))
-        return Usual(low, middle, high, round_step(float(values.std()) / 2))
+        return Usual(low, middle, high, round_step(float(values.std()) / 2), float(values.min()), float(values.max()))
     low, middle, high = (recorded.quantile(share) for share in ENDS)
     return Usual(low, middle, high, round_step(recorded.sd / 2))
