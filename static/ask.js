@@ -1,6 +1,7 @@
 /* Ask without reloading: what was clicked keeps its place and its focus, and silence of the program is said. */
 (() => {
   let clicked = null;
+  let doubted = null;
 
   const say = (silent) => {
     const gone = document.getElementById("gone");
@@ -21,6 +22,7 @@
   };
 
   document.addEventListener("htmx:before:request", (event) => {
+    if (event.target.matches?.(".doubt")) return;
     const source = event.target;
     const control = source.matches?.("form") ? source.querySelector(":focus") : source.closest?.("a, button, input");
     clicked = control && document.getElementById("ask")?.contains(control)
@@ -28,7 +30,20 @@
       : null;
   });
 
+  /* The doubt over sampled models comes by itself: what has the focus stays where it is. */
+  document.addEventListener("htmx:before:swap", (event) => {
+    const here = document.activeElement;
+    const comes = event.detail?.ctx?.sourceElement?.matches?.(".doubt") && document.getElementById("ask")?.contains(here);
+    doubted = comes && here.id ? { id: here.id, top: here.getBoundingClientRect().top } : null;
+  });
+
   document.addEventListener("htmx:after:swap", () => {
+    if (doubted) {
+      const here = document.getElementById(doubted.id);
+      if (here) keepPlace(here, doubted.top);
+      doubted = null;
+      return;
+    }
     if (!clicked) return;
     const { id, then, hash, top } = clicked;
     clicked = null;

@@ -27,7 +27,8 @@ ROOM = 80  # letters of figures that stand clear of each other under the rule
 class Mark:
     """One world on the beam.
 
-    words, figure: its label.  point, low, high: values on the scale.
+    words, figure: its label.  point, low, high: values on the scale.  inner: the narrower interval inside, where there
+    is one.
     """
 
     world: World
@@ -36,6 +37,7 @@ class Mark:
     point: float
     low: float
     high: float
+    inner: tuple[float, float] | None = None
 
 
 def answer_beam(
@@ -45,8 +47,7 @@ def answer_beam(
 
     told: what a screen reader says.  compared: the two worlds whose difference is shaded.  scale: of the marks.
     """
-    place = scale.place  # from here on every mark stands between 0 and 1
-    marks = [replace(mark, point=place(mark.point), low=place(mark.low), high=place(mark.high)) for mark in marks]
+    marks = [_placed(mark, scale) for mark in marks]  # from here on every mark stands between 0 and 1
     rule = FIRST + STEP * (len(marks) - 1) + (24 if len(marks) > 1 else 26)
     places = {mark.world: (mark, FIRST + STEP * row) for row, mark in enumerate(marks)}
     drawn: list[Markup] = []
@@ -107,13 +108,22 @@ def _between(start: tuple[Mark, int], end: tuple[Mark, int], rule: int) -> Marku
     )
 
 
+def _placed(mark: Mark, scale: Scale) -> Mark:
+    place = scale.place
+    inner = None if mark.inner is None else (place(mark.inner[0]), place(mark.inner[1]))
+    return replace(mark, point=place(mark.point), low=place(mark.low), high=place(mark.high), inner=inner)
+
+
 def _whisker(mark: Mark, y: int) -> Markup:
+    """Ends stand on the interval that the sentence quotes; the narrower one within the model lies over it, heavier."""
     if mark.high <= mark.low:
         return Markup("")
     low, high = percent(mark.low), percent(mark.high)
+    within = [] if mark.inner is None else [_line(percent(mark.inner[0]), percent(mark.inner[1]), y, y, 2.5)]
     return join(
         [
-            _line(low, high, y, y, 2.5),
+            _line(low, high, y, y, 2.5 if mark.inner is None else 1.0),
+            *within,
             _line(low, low, y - 5, y + 5, 1.5),
             _line(high, high, y - 5, y + 5, 1.5),
         ]

@@ -1,4 +1,4 @@
-"""The bars of one value: as recorded, among these, if set, with a whisker for doubt. Only numbers go in."""
+"""The bars of one value: as recorded, among these, if set, with whiskers for doubt. Only numbers go in."""
 
 from __future__ import annotations
 
@@ -18,7 +18,7 @@ SURE = 0.0005  # a share this close to none or all has neither whisker nor end m
 
 
 class Bar(Protocol):
-    """A share with its interval, all 0 to 1."""
+    """A share with its interval, all 0 to 1; inner: the narrower one inside it, None where there is but one."""
 
     @property
     def point(self) -> float: ...
@@ -26,6 +26,8 @@ class Bar(Protocol):
     def low(self) -> float: ...
     @property
     def high(self) -> float: ...
+    @property
+    def inner(self) -> tuple[float, float] | None: ...
 
 
 def bars(recorded: float, among: Bar | None = None, set_to: Bar | None = None) -> Markup:
@@ -46,13 +48,22 @@ def _bar(bar: Bar, y: float, height: int, colour: str, mark: Callable[[float, fl
     middle = y + height / 2
     drawn = f'<rect x="0" y="{y:g}" width="{_per_cent(bar.point)}" height="{height}" fill="{colour}"/>'
     if SURE < bar.point < 1 - SURE:
-        if bar.high > bar.low:
-            drawn += (
-                f'<line x1="{_per_cent(bar.low)}" x2="{_per_cent(bar.high)}" y1="{middle:g}" y2="{middle:g}" '
-                f'stroke="{INK}" stroke-width="2.5"/>'
-            )
+        drawn += whisker(_per_cent, bar.low, bar.high, bar.inner, middle)
         drawn += mark(bar.point, middle)
     return drawn
+
+
+def whisker(place: Callable[[float], str], low: float, high: float, inner: tuple[float, float] | None, y: float) -> str:
+    """The interval over sampled models as a light line, and the one within the model as a heavy one over it.
+
+    inner: None where `low` to `high` is the one within the model.  place: where a value stands.
+    """
+    lines = [(low, high, 2.5)] if inner is None else [(low, high, 1.0), (*inner, 2.5)]
+    return "".join(
+        f'<line x1="{place(start)}" x2="{place(end)}" y1="{y:g}" y2="{y:g}" stroke="{INK}" stroke-width="{width:g}"/>'
+        for start, end, width in lines
+        if end > start
+    )
 
 
 def _disc(share: float, y: float) -> str:

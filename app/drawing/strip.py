@@ -9,13 +9,14 @@ import numpy as np
 from markupsafe import Markup
 
 from app.drawing.answer_beam import World
-from app.drawing.bars import INK, LINE, PAPER, SEEN, SET
+from app.drawing.bars import INK, LINE, PAPER, SEEN, SET, whisker
 from app.drawing.scale import Scale
 
 HEIGHT, BASE, TALLEST = 68, 44.0, 40.0  # px: of the strip, down to the base, from there up to the top of a curve
 DISC, DIAMOND = 52, 61  # heights of the means
 POINTS = 97  # of a curve
 LEAST = 0.01  # of the whole: a single value held by fewer is not drawn
+Drawn = tuple[np.ndarray, tuple[tuple[float, float], ...]]  # density and spikes of a Curve
 STROKES = {
     "recorded": f'stroke="{LINE}" stroke-width="1.5"',
     "among": f'stroke="{SEEN}" stroke-width="2"',
@@ -28,7 +29,7 @@ class Curve:
     """A number in one world.
 
     density: (POINTS,) at `places` of the scale.  spikes: (value, share of the whole) of values held by many at once.
-    mean, low, high: its mean with the interval, in its own unit.
+    mean, low, high, inner: its mean with the interval, and the narrower one inside it, in its own unit.
     """
 
     world: World
@@ -37,6 +38,7 @@ class Curve:
     mean: float
     low: float
     high: float
+    inner: tuple[float, float] | None = None
 
 
 def places(scale: Scale) -> np.ndarray:
@@ -85,10 +87,7 @@ def _outline(density: np.ndarray, top: float) -> str:
 
 def _mean(curve: Curve, scale: Scale) -> str:
     y, x = DISC if curve.world == "among" else DIAMOND, _x(curve.mean, scale)
-    drawn = ""
-    if curve.high > curve.low:
-        low, high = _x(curve.low, scale), _x(curve.high, scale)
-        drawn = f'<line x1="{low}" x2="{high}" y1="{y}" y2="{y}" stroke="{INK}" stroke-width="2.5"/>'
+    drawn = whisker(lambda value: _x(value, scale), curve.low, curve.high, curve.inner, y)
     look = f'stroke="{PAPER}" stroke-width="1.25"'
     if curve.world == "among":
         return f'{drawn}<circle cx="{x}" cy="{y}" r="4" fill="{SEEN}" {look}/>'

@@ -27,7 +27,7 @@ def answer_page(request: Request, key: str) -> Response:
     except Misread as misread:
         onward = ("Go to Ask", url(key, misread.rest, spine.names))
         return _refused(request, study, misread, onward)
-    asked = ask(model, question)
+    asked = ask(model, question, doubt=True)
     back = url(key, question, spine.names)
     if asked.refusal is not None:
         return _refused(request, study, asked.refusal, ("Back to the question", back))

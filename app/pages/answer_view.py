@@ -10,12 +10,11 @@ from itertools import combinations
 
 from app.drawing.answer_beam import World
 from app.pages.ask_view import RANKS, WORDS
-from app.pages.asking import DRAWS, SEED, Asked
+from app.pages.asking import DRAWS, EACH, SEED, Asked
 from app.store import Study
 from app.wording.amounts import listing
-from app.wording.answers import WITHIN
-from app.wording.computed import method, size
-from app.wording.estimates import Estimate, Estimates
+from app.wording.computed import intervals, method, size
+from app.wording.estimates import OVER, WITHIN, Estimate, Estimates
 from app.wording.figures import counted, records, share
 from app.wording.links import SETTLED, strength
 from app.wording.numbers import amount
@@ -25,8 +24,6 @@ from engine.answering.answer import Caution
 from engine.doubting.direction import between
 from engine.order import Direction
 from engine.records.table import SMALL_COUNT, Table
-
-INTERVAL = f"90% interval, {WITHIN}"
 
 
 @dataclass(frozen=True)
@@ -49,6 +46,11 @@ class Link:
     target: str
     strength: str
     settled: str
+
+
+def interval_head(asked: Asked) -> str:
+    """What the intervals are, over their column."""
+    return OVER if asked.answer.doubted else f"{OVER}, {WITHIN}"
 
 
 def today() -> str:
@@ -107,7 +109,7 @@ def _counted(asked: Asked) -> str | None:
     """What the records hold of the column in question, where it may be told."""
     count, wanted = asked.answer[asked.watch].counted, asked.wanted(asked.watch)
     if count is not None and count.mean is not None and not wanted:
-        return f"mean {amount(count.mean, asked.estimates(asked.watch).decimals or 0)} of {count.rows:,}"
+        return f"{amount(count.mean, asked.estimates(asked.watch).decimals or 0)}, over {count.rows:,}"
     if count is None or not wanted or not count.tellable(wanted):
         return None
     return counted(sum(count.counts[level] for level in wanted), count.rows, SMALL_COUNT)
@@ -238,7 +240,7 @@ def again(asked: Asked, study: Study) -> list[tuple[str, str]]:
         ("computed", method(asked.answer)),
         (
             "intervals",
-            f"90%, over {DRAWS} plausible versions of this model’s figures; the doubt about its links is left out",
+            intervals(asked.answer, DRAWS, EACH),
         ),
         ("model", f"{size(links, study.links is not None)}; exact search{state}"),
         ("version", f"Steelyard {metadata.version('steelyard')}, seed {SEED}"),

@@ -24,7 +24,21 @@ router = APIRouter()
 
 @router.get("/study/{key}/ask")
 def ask_page(request: Request, key: str) -> Response:
-    """The question in the address, answered. Without a model: what is missing, or how far learning is."""
+    """The question in the address, answered. Without a model: what is missing, or how far learning is.
+
+    A click is answered at once within the model, and its page then fetches the doubt over sampled models; a page that
+    is loaded whole waits for it.
+    """
+    return _asked(request, key, doubt="HX-Request" not in request.headers)
+
+
+@router.get("/study/{key}/ask/doubt")
+def doubted_page(request: Request, key: str) -> Response:
+    """The same page with the doubt over sampled models."""
+    return _asked(request, key, doubt=True)
+
+
+def _asked(request: Request, key: str, doubt: bool) -> Response:
     store = request.app.state.store
     study: Study = store.study(key)
     job = request.app.state.jobs.state(key)
@@ -40,7 +54,7 @@ def ask_page(request: Request, key: str) -> Response:
     canonical = url(key, question, spine.names)
     if from_a_form(request.query_params.multi_items()):
         return RedirectResponse(canonical, 303)  # a form's fields become the address that says the same
-    asked = ask(model, question)
+    asked = ask(model, question, doubt)
     if question.touched and asked.refusal is None:
         store.note_question(key, query(question.asked, spine.names), asked.said.text, asked.answer.cautions)
     return _answered(request, study, asked, job is not None and job.state == "running")
@@ -60,6 +74,7 @@ def _answered(request: Request, study: Study, asked: Asked, learning: bool) -> R
         view=ask_view,
         examples=[] if question.touched else examples(asked, study.sample, address),
         lanes=ask_lanes.lanes(asked, address),
+        doubt_address=url(study.key, question, names, "ask/doubt"),
         print_address=url(study.key, question.asked, names, "answer"),
         learning=learning,
         standing=STANDING,

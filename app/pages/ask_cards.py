@@ -20,6 +20,7 @@ from app.wording.values import either, held, setting_words
 from engine.network.nodes import Node, Number
 from engine.order import Direction
 from engine.records.table import SMALL_COUNT
+from engine.records.wording import figure
 
 Address = Callable[[Question], str]
 MOST_LEVELS, SHOWN_LEVELS, TOLD = 7, 5, 4
@@ -91,7 +92,7 @@ def card_of(asked: Asked, address: Address, column: str) -> Card:
         name=column,
         slug=slug,
         pinned=None if pinned is None else _pinned_words(asked, pinned),
-        set_to=None if lever is None else _set_words(asked, *lever),
+        set_to=None if lever is None else _set_words(asked, column, *lever),
         state=_state(asked, column),
         told=_told(asked, address, column),
         narrow=pinned is not None and lever is None,
@@ -132,8 +133,11 @@ def _rows(asked: Asked, address: Address, column: str, shown: Sequence[str]) -> 
     if isinstance(node, Number) and not node.bands:
         return ()  # one row would say that every value is a value
     shows_set = asked.shows_set and not asked.untouched(column)
-    among = level_estimates(reading.among) if asked.shows_among else None
-    after = level_estimates(reading.set) if shows_set and reading.set is not None else None
+    within = asked.within.get(column)
+    among = level_estimates(reading.among, None if within is None else within.among) if asked.shows_among else None
+    after = None
+    if shows_set and reading.set is not None:
+        after = level_estimates(reading.set, None if within is None else within.set)
     return tuple(
         _row(
             *(asked, address, node, level, float(reading.recorded.point[place])),
@@ -202,8 +206,12 @@ def _pinned_words(asked: Asked, pin: Pin) -> str:
     return f"{words} · {matching_of(matching, asked.spine.records, SMALL_COUNT, asked.answer.matching_told)}"
 
 
-def _set_words(asked: Asked, setting: Setting, reach: float) -> str:
-    return f"{setting_words(setting)} for {reach_words(reach)}{' · its effect is withheld' if asked.blocked else ''}"
+def _set_words(asked: Asked, column: str, setting: Setting, reach: float) -> str:
+    words = f"{setting_words(setting)} for {reach_words(reach)}"
+    if asked.beyond(column, setting):
+        usual = asked.usual(column)
+        words += f" · beyond every record, which run from {figure(usual.least)} to {figure(usual.most)}"
+    return f"{words} · its effect is withheld" if asked.blocked else words
 
 
 def _watch(asked: Asked, address: Address, column: str) -> Act | None:

@@ -9,7 +9,7 @@ import numpy as np
 from markupsafe import Markup
 
 from app.drawing.answer_beam import World
-from app.drawing.strip import Curve, places, strip
+from app.drawing.strip import Curve, Drawn, places, strip
 from app.pages.asking import Asked
 from app.question import By, Question, To, Within, query
 from app.typed import per_cent, written
@@ -84,13 +84,17 @@ def _strip(asked: Asked, column: str) -> Markup:
     if asked.shows_set and reading.set is not None and found.set is not None and not asked.untouched(column):
         worlds.append(("set", reading.set, found.set))
     grid = places(scale)
-    curves = [_curve(world, marginal, estimate, grid) for world, marginal, estimate in worlds]
+
+    def drawn(world: World, marginal: Marginal) -> Drawn:
+        if world != "recorded":
+            return _drawn(marginal, grid)
+        return asked.spine.curves.get((column, scale), lambda: _drawn(marginal, grid))
+
+    curves = [
+        Curve(world, *drawn(world, marginal), estimate.point, estimate.low, estimate.high, estimate.inner)
+        for world, marginal, estimate in worlds
+    ]
     return strip(curves, asked.spine.nodes[column].cuts, scale)
-
-
-def _curve(world: World, marginal: Marginal, estimate: Estimate, grid: np.ndarray) -> Curve:
-    spikes, density = _drawn(marginal, grid)
-    return Curve(world, density, spikes, estimate.point, estimate.low, estimate.high)
 
 
 def _pin_form(asked: Asked, column: str) -> PinForm:
@@ -109,7 +113,7 @@ def _lever_forms(asked: Asked, column: str) -> tuple[LeverForm, ...]:
     to = setting.value if isinstance(setting, To) else round_value(usual.middle, usual.high - usual.low)
     by = setting.amount if isinstance(setting, By) else usual.step
     hidden = _hidden(asked, asked.question.without_lever(column))
-    share = Field(f"reach.{slug}", per_cent(reach), f"Reach of {column}, per cent")
+    share = Field(f"reach.{slug}", per_cent(reach), f"{column}: for how many of them, in per cent")
     return (
         LeverForm("set", Field(f"set.{slug}", written(to), f"Set {column} to"), share, hidden, isinstance(setting, To)),
         LeverForm(
@@ -122,8 +126,8 @@ def _hidden(asked: Asked, rest: Question) -> Hidden:
     return tuple(parse_qsl(query(rest, asked.spine.names)))
 
 
-def _drawn(marginal: Marginal, grid: np.ndarray) -> tuple[list[tuple[float, float]], np.ndarray]:
-    """Values held by many at once, with their shares, and the density of the rest on `grid`."""
+def _drawn(marginal: Marginal, grid: np.ndarray) -> Drawn:
+    """The density on `grid`, and apart from it the values held by many at once, with their shares."""
     number = marginal.number
     assert number is not None
     single = np.broadcast_to(number.sd == 0.0, number.weight.shape)
@@ -133,4 +137,4 @@ def _drawn(marginal: Marginal, grid: np.ndarray) -> tuple[list[tuple[float, floa
     ):
         shares[float(value)] = shares.get(float(value), 0.0) + float(share)
     rest = replace(number, weight=np.where(single, 0.0, number.weight))
-    return list(shares.items()), rest.density(grid)[:, 0]
+    return rest.density(grid)[:, 0], tuple(shares.items())

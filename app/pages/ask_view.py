@@ -10,7 +10,7 @@ from markupsafe import Markup
 from app.drawing.answer_beam import Mark, World, answer_beam
 from app.drawing.scale import PER_CENT
 from app.pages.ask_cards import Address
-from app.pages.asking import DRAWS, SEED, Asked
+from app.pages.asking import DRAWS, EACH, SEED, Asked
 from app.question import SHOWS, query
 from app.store import Study
 from app.wording.answers import also_sentence, counted_sentence, had_sentence
@@ -85,7 +85,9 @@ def beam(asked: Asked) -> Markup:
         estimate = worlds[key.world]
         told.append(f"{key.words} {key.figure}")
         if key.figure != "withheld" and estimate is not None:
-            marks.append(Mark(key.world, key.words, key.figure, estimate.point, estimate.low, estimate.high))
+            marks.append(
+                Mark(key.world, key.words, key.figure, estimate.point, estimate.low, estimate.high, estimate.inner)
+            )
     compared: tuple[World, World] | None = None
     if asked.shows_set:
         compared = ("among" if asked.shows_among else "recorded", "set")
@@ -131,7 +133,10 @@ def also(asked: Asked, address: Address) -> list[Also]:
 def colophon(asked: Asked, study: Study) -> str:
     """How the answer was computed."""
     links = len(asked.spine.model.links)
-    words = [method(asked.answer), f"{size(links, study.links is not None)}; {intervals(DRAWS)}; seed {SEED}."]
+    words = [
+        method(asked.answer),
+        f"{size(links, study.links is not None)}; {intervals(asked.answer, DRAWS, EACH)}; seed {SEED}.",
+    ]
     if len(asked.apart) < len(asked.question.levers):  # else the answer says so
         for lever in asked.spine.names.ordered(asked.apart):
             words.append(f"In this model no link leads from {lever} to {asked.watch}, nor any chain of them.")

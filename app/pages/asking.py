@@ -4,10 +4,11 @@ from __future__ import annotations
 
 import weakref
 from collections.abc import Mapping
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 
 from app.drawing.scale import Scale, rounded_outward
+from app.drawing.strip import Drawn
 from app.names import Names
 from app.pages.usual import Usual, usual
 from app.question import By, Pin, Question, Setting, To, Within
@@ -15,7 +16,8 @@ from app.wording.answers import Said, answer_sentence
 from app.wording.estimates import Estimates, estimates
 from app.wording.questions import question_sentence
 from app.wording.values import Words, in_question
-from engine.answering.answer import Answer, Marginal
+from engine.answering.answer import Answer, Marginal, Reading
+from engine.answering.kept import Kept
 from engine.answering.levers import Fix, Shift
 from engine.model import Model
 from engine.network.equivalence import unsettled_links
@@ -24,6 +26,8 @@ from engine.order import Order
 from engine.refusal import Refusal
 
 DRAWS, SEED = 200, 0
+GRAPHS, EACH = 50, 20  # sampled models, and draws of the figures in each
+CURVES = 256  # curves as recorded that one model keeps
 MOST = 0.5  # share of the records asked about
 
 
@@ -43,6 +47,7 @@ class Spine:
         self.outcomes = tuple(column for column in self.columns if column in self.order.outcomes)
         self.changeable = frozenset(model.changeable)
         self._usual: dict[str, Usual] = {}
+        self.curves: Kept[tuple[str, Scale], Drawn] = Kept(CURVES)  # as recorded, the same in every question
 
     def usual(self, column: str, recorded: Marginal) -> Usual:
         """What is usual of a number. recorded: its marginal as recorded, which tells where there are no records."""
@@ -101,6 +106,7 @@ class Asked:
 
     watched: as Spine.watched.  wanted: column -> its levels in question.  refusal: why it was not answered, else None;
     the readings are then those of the records as they are.
+    within: the readings within the accepted model, where those of the answer are over sampled models; else none.
     """
 
     question: Question
@@ -108,6 +114,12 @@ class Asked:
     answer: Answer
     spine: Spine
     refusal: Refusal | None = None
+    within: Mapping[str, Reading] = field(default_factory=dict)
+
+    @property
+    def awaits_doubt(self) -> bool:
+        """Whether the intervals over sampled models are still to come."""
+        return self.refusal is None and self.answer.doubt is None and self.answer.again is not None
 
     @property
     def watch(self) -> str:
@@ -150,6 +162,10 @@ class Asked:
         """What is usual of a number in the records."""
         return self.spine.usual(column, self.answer[column].recorded)
 
+    def beyond(self, column: str, setting: Setting) -> bool:
+        """Whether a lever sets a number to where no record is, so that nobody had its value anyway."""
+        return isinstance(setting, To) and column in self.spine.numbers and not self.usual(column).holds(setting.value)
+
     def scale(self, column: str) -> Scale:
         """The axis of a number: over what is usual, and on to the means that are shown."""
         found, usual = self.estimates(column), self.usual(column)
@@ -166,7 +182,9 @@ class Asked:
 
     def estimates(self, column: str) -> Estimates:
         if column not in self._estimates:
-            self._estimates[column] = estimates(self.answer[column], self.wanted(column))
+            found = estimates(self.answer[column], self.wanted(column), self.within.get(column))
+            beyond = any(self.beyond(lever, setting) for lever, (setting, _) in self.question.levers.items())
+            self._estimates[column] = replace(found, had=None) if beyond else found
         return self._estimates[column]
 
     @cached_property
@@ -194,21 +212,46 @@ class Asked:
         )
 
 
-def ask(model: Model, question: Question) -> Asked:
-    """Ask `question` of `model`, with every column read beside it."""
+def ask(model: Model, question: Question, doubt: bool = False) -> Asked:
+    """Ask `question` of `model`, with every column read beside it.
+
+    doubt: whether intervals of the watched columns are over sampled models, which takes longer.
+    """
     spine = spine_of(model)
     watched = spine.watched(question)
     try:
-        return Asked(question, watched, _answer(spine, question, watched), spine)
+        asked = Asked(question, watched, _answer(spine, question, watched), spine)
+        return _doubted(asked) if doubt else asked
     except Refusal as refusal:
         bare = replace(question, pins={}, levers={})
         return Asked(question, watched, _answer(spine, bare, watched), spine, refusal)
 
 
-def _answer(spine: Spine, question: Question, watched: tuple[str, ...]) -> Answer:
+def _answer(spine: Spine, question: Question, watched: tuple[str, ...], beside: bool = True) -> Answer:
     levers = {column: _lever(setting, reach) for column, (setting, reach) in question.levers.items()}
     pins = {column: _pin(pin) for column, pin in question.pins.items()}
-    return spine.model.ask(pins, levers, watch=watched, beside=spine.columns, draws=DRAWS, seed=SEED)
+    columns = spine.columns if beside else ()
+    return spine.model.ask(pins, levers, watch=watched, beside=columns, draws=DRAWS, seed=SEED)
+
+
+def _doubted(asked: Asked) -> Asked:
+    """The same with the doubt over sampled models about its watched columns; as it is where there is none to tell."""
+    answer = asked.answer
+    try:
+        over = _answer(asked.spine, asked.question, asked.watched, beside=False).with_doubt(GRAPHS, EACH)
+    except Refusal:  # no graphs were drawn when this was learned
+        return replace(asked, answer=replace(answer, again=None))
+    within = {column: answer[column] for column in asked.watched} if over.doubted else {}
+    together = replace(
+        answer,
+        readings={**answer.readings, **over.readings},
+        method=over.method,
+        milliseconds=answer.milliseconds + over.milliseconds,
+        cautions=over.cautions,
+        checks_made=over.checks_made,
+        doubt=over.doubt,
+    )
+    return replace(asked, answer=together, within=within)
 
 
 def _pin(pin: Pin) -> object:

@@ -16,8 +16,6 @@ from app.wording.values import Words, had_before, is_at, is_yes, set_to, subject
 from engine.answering.answer import Counted
 from engine.network.nodes import Node
 
-WITHIN = "within this model"  # of an interval, until the one over sampled models is ready
-
 
 @dataclass(frozen=True)
 class Said:
@@ -61,7 +59,7 @@ def answer_sentence(
     if question.pins:
         recorded, here = found.gap.ends
         words = say(_capital(among(question, nodes)), ", ", _is(nodes[watch], wanted, Part(here, "among")))
-        return _said(say(words, f", {_against(recorded, found)}."), bracket(found.gap))
+        return _said(say(words, f", {_against(recorded, found)}."), bracket(found, found.gap))
     what = _is(nodes[watch], wanted, Part(found.figure(found.recorded), "recorded"))
     return _said(say(f"Across {_all(records)} ", what, "."), _interval(found))
 
@@ -103,7 +101,7 @@ def counted_sentence(
     if not wanted:
         mean = "" if count.mean is None else amount(count.mean, decimals)
         told = Part(mean, "recorded")
-        return say("Counted in the records: mean ", told, f" of {count.rows:,}.") if mean else []
+        return say("Counted in the records: mean ", told, f" over {count.rows:,} records.") if mean else []
     have = say("have ", value(nodes[watch], wanted))
     if not count.tellable(wanted):
         return say("How many records ", have, f" is not shown: it would give a count under {small} away.")
@@ -120,20 +118,22 @@ def also_sentence(
         assert found.change is not None
         start, end = found.change.ends
         if found.change.still:
-            return what, say(" stays at ", Part(end, "set"))
+            return what, say(" stays at ", Part(end, "set"), _mean(found))
         from_to = say(" from ", Part(start, "among" if question.pins else "recorded"), " to ", Part(end, "set"))
-        return what, say(from_to, f"{_mean(found)} {bracket(found.change)}")
+        return what, say(from_to, f"{_mean(found)} {bracket(found, found.change)}")
     if question.pins:
         recorded, here = found.gap.ends
-        return what, say(" ", Part(here, "among"), f"{_mean(found)}, {_against(recorded, found)} {bracket(found.gap)}")
+        return what, say(
+            " ", Part(here, "among"), f"{_mean(found)}, {_against(recorded, found)} {bracket(found, found.gap)}"
+        )
     return what, say(" ", Part(found.figure(found.recorded), "recorded"), _mean(found))
 
 
-def bracket(change: Change | Move) -> str:
-    """(+9 points, within this model +4 to +14)"""
+def bracket(found: Estimates, change: Change | Move) -> str:
+    """(+9 points, 90% interval +1 to +17)"""
     if change.known:
         return f"({change.difference})"
-    return f"({change.difference}, {WITHIN} {change.interval})"
+    return f"({change.difference}, {found.interval} {change.interval})"
 
 
 def _moved(question: Question, watch: str, wanted: tuple[str, ...], found: Estimates, nodes: Nodes, thin: bool) -> Said:
@@ -144,7 +144,7 @@ def _moved(question: Question, watch: str, wanted: tuple[str, ...], found: Estim
     estimate = "By this estimate, most of it filled in by the model, " if thin else "By this estimate, "
     opening = say(estimate, _group(question, nodes), _settings(question))
     moving = (" would move ", what, " ") if found.change.moves else (" may not move ", what, ": ")
-    return _said(say(opening, *moving, from_to, _mean(found)), f"{bracket(found.change)}.")
+    return _said(say(opening, *moving, from_to, _mean(found)), f"{bracket(found, found.change)}.")
 
 
 def _unmoved(
@@ -178,6 +178,9 @@ def _unmoved(
     if away and idle:
         why = say(why, ", and ", series(idle), f" {'is' if len(idle) == 1 else 'are'} set for 0% of {whom}")
     stays = say(" stays at ", Part(found.figure(found.among), "set"), _mean(found))
+    if found.doubted and found.change is not None and not found.change.known:
+        unit = "" if found.of_a_number else " points"
+        stays = say(stays, f" in this model; {found.interval} over sampled models {found.change.interval}{unit}")
     still = say("(", subject(nodes[watch], wanted), stays, ")")
     return _said(say(opening, " would not move ", name(watch), ": ", why, "."), still)
 
@@ -191,7 +194,7 @@ def _withheld(
     if question.pins:
         recorded, here = found.gap.ends
         known = say(_capital(among(question, nodes)), f" {it_is}", Part(here, "among"))
-        known = say(known, f"{_mean(found)}, {_against(recorded, found)} {bracket(found.gap)}.")
+        known = say(known, f"{_mean(found)}, {_against(recorded, found)} {bracket(found, found.gap)}.")
     else:
         here = found.figure(found.recorded)
         known = say(f"Across {_all(records)} {it_is}", Part(here, "recorded"), f"{_mean(found)}.")
@@ -237,7 +240,7 @@ def _against(recorded: str, found: Estimates) -> str:
 
 
 def _interval(found: Estimates) -> str:
-    return "" if found.recorded.known else f"({WITHIN} {found.span(found.recorded)})"
+    return "" if found.recorded.known else f"({found.interval} {found.span(found.recorded)})"
 
 
 def _all(records: int | None) -> str:

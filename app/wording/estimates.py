@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -13,15 +13,21 @@ from app.wording.numbers import Move, amount, decimals_for
 from engine.answering.answer import Marginal, Reading, spread
 
 COVERAGE = 0.90
+WITHIN = "within this model"  # of an interval, until the one over sampled models is ready
+OVER = "90% interval"  # of one over sampled models
 
 
 @dataclass(frozen=True)
 class Estimate:
-    """A share, 0 to 1, or a number's mean, with its interval; low equals high where the model is known exactly."""
+    """A share, 0 to 1, or a number's mean, with its interval; low equals high where the model is known exactly.
+
+    inner: the interval within the accepted model, where low and high are over sampled models; else None.
+    """
 
     point: float
     low: float
     high: float
+    inner: tuple[float, float] | None = None
 
     @property
     def known(self) -> bool:
@@ -33,7 +39,7 @@ class Estimates:
     """Shares of the levels in question; of a number its means.
 
     gap: from as recorded to among these.  change: from among these to if set; None without levers.
-    decimals: of a mean; None for shares.
+    decimals: of a mean; None for shares.  doubted: whether the intervals are over sampled models.
     """
 
     recorded: Estimate
@@ -43,6 +49,12 @@ class Estimates:
     had: Estimate | None = None
     change: Change | Move | None = None
     decimals: int | None = None
+    doubted: bool = False
+
+    @property
+    def interval(self) -> str:
+        """What the intervals are, in words."""
+        return OVER if self.doubted else WITHIN
 
     @property
     def of_a_number(self) -> bool:
@@ -62,12 +74,16 @@ class Estimates:
         return f"{amount(estimate.low, told)} to {amount(estimate.high, told)}"
 
 
-def estimates(reading: Reading, wanted: Iterable[str]) -> Estimates:
-    """The share of the `wanted` levels, taken together, in every world of `reading`; of none of them: the mean."""
+def estimates(reading: Reading, wanted: Iterable[str], within: Reading | None = None) -> Estimates:
+    """The share of the `wanted` levels, taken together, in every world of `reading`; of none of them: the mean.
+
+    within: the reading within the accepted model, where `reading` is over sampled models.
+    """
     levels = tuple(wanted)
     if not levels:
-        return _means(reading)
-    return Estimates(
+        found = _means(reading)
+        return found if within is None else _with_inner(found, _means(within))
+    found = Estimates(
         recorded=_estimate(reading.recorded, levels),
         among=_estimate(reading.among, levels),
         gap=_change(reading.recorded, reading.among, levels),
@@ -75,6 +91,22 @@ def estimates(reading: Reading, wanted: Iterable[str]) -> Estimates:
         had=None if reading.had is None else _estimate(reading.had, levels),
         change=None if reading.set is None else _change(reading.among, reading.set, levels),
     )
+    return found if within is None else _with_inner(found, estimates(within, levels))
+
+
+def _with_inner(found: Estimates, within: Estimates) -> Estimates:
+    """The same over sampled models, with the narrower intervals inside."""
+    return replace(
+        found,
+        recorded=_around(found.recorded, within.recorded),
+        among=_around(found.among, within.among),
+        set=None if found.set is None or within.set is None else _around(found.set, within.set),
+        doubted=True,
+    )
+
+
+def _around(estimate: Estimate, within: Estimate) -> Estimate:
+    return replace(estimate, inner=(within.low, within.high))
 
 
 def _means(reading: Reading) -> Estimates:
@@ -105,16 +137,22 @@ def _move(start: Marginal, end: Marginal, spread_of: float) -> Move:
     if max(abs(after - before), np.abs(difference).max(initial=0.0)) <= STILL * max(spread_of, abs(before)):
         return Move(before, before, 0.0, 0.0, decimals_for(0.0, spread_of))
     low, high = spread(difference, after - before, COVERAGE)
+    if high - low <= STILL * spread_of:  # a shift moves its own number by as much in every draw
+        low = high = after - before
     return Move(before, after, low, high, decimals_for(high - low, spread_of))
 
 
-def level_estimates(marginal: Marginal) -> list[Estimate]:
-    """Every level of a column in one world."""
+def level_estimates(marginal: Marginal, within: Marginal | None = None) -> list[Estimate]:
+    """Every level of a column in one world.  within: as for `estimates`."""
+    if within is not None:
+        inside = level_estimates(within)
+        return [_around(each, inner) for each, inner in zip(level_estimates(marginal), inside, strict=True)]
     if marginal.draws.shape[-1] == 0:
         return [Estimate(float(part), float(part), float(part)) for part in marginal.point]
     tail = (1.0 - COVERAGE) / 2.0
     lows, highs = np.quantile(marginal.draws, [tail, 1.0 - tail], axis=-1)
-    return [Estimate(*map(float, each)) for each in zip(marginal.point, lows, highs, strict=True)]
+    ends = zip(marginal.point, lows, highs, strict=True)
+    return [Estimate(float(point), float(low), float(high)) for point, low, high in ends]
 
 
 def _estimate(marginal: Marginal, levels: tuple[str, ...]) -> Estimate:

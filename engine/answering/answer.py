@@ -187,7 +187,7 @@ class Doubt:
 
     graphs: drawn from the posterior; different: of these, how many are not the same; effective: how many independent
     draws they are worth.  left_out: of the graphs, those in which the question could not be asked, and why the first
-    of them refused it.
+    of them refused it.  apart: watched column -> of the others, those in which nothing leads to it from any lever.
     """
 
     graphs: int
@@ -195,6 +195,7 @@ class Doubt:
     effective: float
     left_out: int = 0
     why: str | None = None
+    apart: Mapping[str, int] = field(default_factory=dict)
 
 
 @dataclass(frozen=True, eq=False)

@@ -114,6 +114,7 @@ def pooled(
     started = time.perf_counter()
     found: list[Answer] = []
     left_out, why = 0, None
+    apart = dict.fromkeys(answer.watch, 0)
     for place, (planner, times) in enumerate(zip(plausible.planners, plausible.times, strict=True)):
         try:
             asked = question_in(planner.network)
@@ -121,10 +122,14 @@ def pooled(
         except Refusal as refusal:
             left_out += times
             why = why or refusal.message
+            continue
+        reached = planner.network.descendants(asked.working) | asked.working.keys()
+        for column in answer.watch:
+            apart[column] += 0 if column in reached else times
     return replace(
         answer,
         readings={column: _pooled(answer[column], [each[column] for each in found]) for column in answer},
-        doubt=Doubt(plausible.graphs, len(plausible.planners), plausible.effective, left_out, why),
+        doubt=Doubt(plausible.graphs, len(plausible.planners), plausible.effective, left_out, why, apart),
         mc_error=max([answer.mc_error, *(each.mc_error for each in found)]),
         effective=min([answer.effective, *(each.effective for each in found)]),
         cost=answer.cost + sum(each.cost for each in found),

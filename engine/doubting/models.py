@@ -7,6 +7,7 @@ from engine.doubting.case import Case, Found, named, per_cent
 from engine.records.wording import figure
 
 COVERAGE = 0.90
+FEW = 0.05  # of the plausible models: fewer than this share are not told of
 ROUNDING = 1e-9  # what sums of the same shares may differ by
 
 
@@ -18,7 +19,8 @@ def check(case: Case) -> Found | None:
         return None
     found = [_left_out(case, doubt)] if doubt.left_out else []
     if case.answer.doubted:
-        found += [caution for column in case.asked.watch for caution in _outside(case, column)]
+        for column in case.asked.watch:
+            found += [*_unlinked(case, doubt, column), *_outside(case, column)]
     return tuple(found)
 
 
@@ -37,6 +39,33 @@ def _left_out(case: Case, doubt: Doubt) -> Caution:
         figures,
         tuple(dict.fromkeys((*case.asked.pinned, *case.asked.levers))),
     )
+
+
+def _unlinked(case: Case, doubt: Doubt, column: str) -> list[Caution]:
+    """Plausible models that part with the accepted one over whether anything leads from the levers to a column."""
+    asked = doubt.graphs - doubt.left_out
+    apart = doubt.apart.get(column, 0)
+    levers = [lever for lever in case.asked.working if lever != column]
+    if not levers or not FEW * asked <= apart <= (1.0 - FEW) * asked:
+        return []
+    linked = column in case.network.descendants(levers)
+    here = named(levers, "or")
+    if linked:
+        text = f"no link, nor any chain of them, from {here} to {column}. The longer whisker counts them."
+    else:
+        text = f"a link, or a chain of them, from {here} to {column}; the one you accepted has none."
+    told = apart if linked else asked - apart
+    return [
+        Caution(
+            "know",
+            "models",
+            f"{told} of {asked}",
+            f"plausible versions of the model have {text}",
+            "On the Model page, see how sure its links are.",
+            {"graphs": float(asked), "apart": float(apart)},
+            (column, *levers),
+        )
+    ]
 
 
 def _outside(case: Case, column: str) -> list[Caution]:

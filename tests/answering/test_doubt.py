@@ -106,6 +106,17 @@ def test_graphs_without_a_link_from_the_lever_say_that_nothing_moves(unsure, eve
     assert np.mean(change == 0.0) == pytest.approx(apart, abs=4.0 * np.sqrt(apart * (1.0 - apart) / GRAPHS))
 
 
+def test_how_many_plausible_graphs_part_with_the_model_over_a_link_is_told(unsure, every_graph):
+    linked, bare = unsure.model(max(unsure.curve["links"])), unsure.model(0)
+    apart = sum(share for network, share in every_graph if "passed" not in network.descendants(["offer"]))
+    for model, expected, words in ((linked, apart, "no link"), (bare, 1.0 - apart, "the one you accepted has none")):
+        answer = model.ask(levers={"offer": engine.Fix("yes")}, watch=["passed"]).with_doubt(GRAPHS, 20)
+        (caution,) = [each for each in answer.cautions if each.code == "models" and "apart" in each.figures]
+        told = int(caution.figure.removesuffix(f" of {GRAPHS}"))
+        assert told / GRAPHS == pytest.approx(expected, abs=4.0 * np.sqrt(apart * (1.0 - apart) / GRAPHS))
+        assert words in caution.text
+
+
 def test_graphs_in_which_a_pin_follows_from_the_lever_are_left_out_and_counted(unsure, every_graph):
     model = next(
         model

@@ -14,8 +14,10 @@ import pytest
 from fastapi import FastAPI
 from fastapi.testclient import TestClient
 
+import engine
 from app.jobs import JobState
 from app.store import Choices, Plan, Store, Study
+from app.store.rows import table_of
 from tests.app.evening import PLAN, evening, keep_a_model
 
 BASE = "http://127.0.0.1:8377"
@@ -87,11 +89,65 @@ MENTOR = "set=mentor.yes"
 def test_the_first_visit_says_how_to_ask_and_has_two_examples(ask):
     page = ask()
     assert re.fullmatch(
-        r"Across all 600 records passed is yes for \d+%\. \(within this model \d+% to \d+%\)", sentence(page)
+        r"Across all 600 records passed is yes for \d+%\. \(90% interval \d+% to \d+%\)", sentence(page)
     )
     assert "How to ask" in page and "Click a ring" in page and "Click a diamond" in page
     examples = re.search(r"Try one:(.*?)</p>", page, re.DOTALL)[1]
     assert len(re.findall("<a ", examples)) == 2
+
+
+def fetched(client, study, address):
+    """What a click fetches."""
+    return client.get(html.unescape(address), headers={"HX-Request": "true"}).text
+
+
+def test_a_click_is_answered_within_the_model_and_then_over_sampled_models(client, study):
+    page = fetched(client, study, f"/study/{study.key}/ask?{NIGHTS}&{MENTOR}")
+    first = sentence(page)
+    assert re.search(r"\(\+\d+ points, within this model \+\d+ to \+\d+\)\.", first)
+    assert "they leave out the doubt about its links" in page
+    waiting = re.search(r'<div class="doubt" id="[^"]*" hx-get="([^"]*)" hx-trigger="load"', page)
+    assert html.unescape(waiting[1]) == f"/study/{study.key}/ask/doubt?{NIGHTS}&{MENTOR}"
+    page = fetched(client, study, waiting[1])
+    assert re.search(r"\(\+\d+ points, 90% interval \+\d+ to \+\d+\)\.", sentence(page))
+    assert sentence(page).split("(")[0] == first.split("(")[0]
+    assert words(page, r'id="status">(.*?)</p>') == sentence(page)
+    assert 'class="doubt"' not in page
+    assert re.search(r"intervals over 50 sampled models(, \d+ of them different)?, with 20 draws each", page)
+
+
+def test_a_page_loaded_whole_waits_for_the_doubt(ask, client, study):
+    page = ask(f"{NIGHTS}&{MENTOR}")
+    assert "within this model +" not in sentence(page) and "90% interval +" in sentence(page)
+    assert 'class="doubt"' not in page
+    assert sentence(page) == sentence(fetched(client, study, f"/study/{study.key}/ask/doubt?{NIGHTS}&{MENTOR}"))
+
+
+def test_watched_columns_have_both_whiskers_and_the_others_one(ask, client, study):
+    def widths(page, slug):
+        return [set(re.findall(r'stroke="#1B1E22" stroke-width="(1|2.5)"', card(page, slug)))]
+
+    within = fetched(client, study, f"/study/{study.key}/ask?{NIGHTS}&{MENTOR}&open=turned-up")
+    over = ask(f"{NIGHTS}&{MENTOR}&open=turned-up")
+    assert widths(within, "passed") == [{"2.5"}] and widths(over, "passed") == [{"1", "2.5"}]
+    assert widths(over, "turned-up") == [{"2.5"}]
+    beam = re.search(r'<svg class="beam".*?</svg>', over, re.DOTALL)[0]
+    assert beam.count('stroke-width="2.5"') >= 1
+
+
+def test_a_refused_question_has_no_doubt_to_wait_for(client, study):
+    page = fetched(client, study, f"/study/{study.key}/ask?pin=turned-up.most&{MENTOR}")
+    assert "would mix two worlds" in page and 'class="doubt"' not in page
+
+
+def test_a_model_learned_without_sampled_models_tells_what_it_can(client, store):
+    bare = store.bring("Bare", evening(), "bare.csv", Choices(), PLAN)
+    learned = engine.learn(table_of(store.table(bare.key).frame, bare.choices, bare.name), bare.plan.order(), graphs=0)
+    path = store.files(bare.key) / "a.unfinished"
+    learned.save(path)
+    store.keep_learned(bare.key, path, bare.basis)
+    page = client.get(f"/study/{bare.key}/ask?{NIGHTS}&{MENTOR}").text
+    assert "within this model +" in sentence(page) and 'class="doubt"' not in page
 
 
 def test_the_examples_can_be_asked(ask, client):

@@ -30,6 +30,15 @@ def labels(drawing):
     ]
 
 
+def test_ends_stand_on_the_interval_over_sampled_models_and_the_heavy_line_is_within_the_model():
+    drawing = beam(Mark("set", "if set", "63%", 0.63, 0.55, 0.71, (0.58, 0.68)))
+    lines = [node for node in drawing.iter("line") if node.get("stroke") == "#1B1E22" and not node.get("class")]
+    level = [(node.get("x1"), node.get("x2"), node.get("stroke-width")) for node in lines if node.get("y1") == "16"]
+    ends = [node.get("x1") for node in lines if (node.get("y1"), node.get("y2")) == ("11", "21")]
+    assert level == [("55.00%", "71.00%", "1"), ("58.00%", "68.00%", "2.5")]
+    assert ends == ["55.00%", "71.00%"]
+
+
 @pytest.mark.parametrize(
     ("marks", "height"), [((RECORDED,), 76), ((RECORDED, AMONG), 106), ((RECORDED, AMONG, SET), 138)]
 )

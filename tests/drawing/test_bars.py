@@ -54,6 +54,14 @@ def test_the_whisker_spans_the_interval():
     assert [(node.get("x1"), node.get("x2")) for node in whiskers] == [("31%", "52%")]
 
 
+def test_over_sampled_models_a_light_whisker_runs_under_the_heavy_one():
+    lines = [node for node in shapes(bars(0.5, Bar(0.4, 0.25, 0.6, (0.31, 0.52))), "line")]
+    whiskers = [
+        (node.get("stroke-width"), node.get("x1"), node.get("x2")) for node in lines if node.get("y1") == "13.5"
+    ]
+    assert whiskers == [("1", "25%", "60%"), ("2.5", "31%", "52%")]
+
+
 @given(shares, st.tuples(shares, shares, shares), st.tuples(shares, shares, shares))
 def test_every_length_is_a_presentation_attribute_inside_the_drawing(recorded, among, after):
     drawing = bars(recorded, Bar(*sorted(among)), Bar(*sorted(after)))
