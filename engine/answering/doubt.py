@@ -130,8 +130,6 @@ def pooled(
         answer,
         readings={column: _pooled(answer[column], [each[column] for each in found]) for column in answer},
         doubt=Doubt(plausible.graphs, len(plausible.planners), plausible.effective, left_out, why, apart),
-        mc_error=max([answer.mc_error, *(each.mc_error for each in found)]),
-        effective=min([answer.effective, *(each.effective for each in found)]),
         cost=answer.cost + sum(each.cost for each in found),
         milliseconds=answer.milliseconds + (time.perf_counter() - started) * 1000.0,
     )

@@ -51,10 +51,15 @@ class Planned:
 
 
 class Mixing:
-    """Reads worlds of one network that holds numbers; keeps its plans and its recorded world."""
+    """Reads worlds of one network that holds numbers; keeps its plans and its recorded world.
 
-    def __init__(self, network: Network) -> None:
+    whole: False for one of many networks asked together, whose draws get as many particles as they would have here,
+    and whose point answer is not told.
+    """
+
+    def __init__(self, network: Network, whole: bool = True) -> None:
         self.network = network
+        self._whole = whole
         self._plans: Kept[Hashable, exact_mixed.Plan] = Kept(PLANS)
         self._worlds: Kept[Hashable, Split] = Kept(PLANS)
         self._recorded: Kept[Hashable, Seen] = Kept(RECORDED)
@@ -130,7 +135,8 @@ class Mixing:
 
     def _sample(self, scene: Scene, count: int, seed: int) -> Seen:
         apart = self._apart(scene)
-        return _seen(scene, apart, weighting.weigh(apart.world, _drawn(apart, count, seed), count, seed))
+        particles = (weighting.PARTICLES, weighting.MOST) if self._whole else (weighting.a_draw(count),) * 2
+        return _seen(scene, apart, weighting.weigh(apart.world, _drawn(apart, count, seed), count, seed, *particles))
 
     def _planned(self, scene: Scene) -> Planned:
         """The world and its plan; another value pinned or set in the same columns needs no new plan."""

@@ -81,7 +81,7 @@ class Planner:
         self.network = network
         self.categories = _only_categories(network)
         self._summing = Summing(self.categories, plans, whole)
-        self._mixing = Mixing(network)
+        self._mixing = Mixing(network, whole)
 
     def worlds(self, asked: Question, draws: int, seed: int, exact: bool | None = None) -> Worlds:
         """Every world that `asked` needs. exact: True never samples, False always, None where summing costs too much.

@@ -15,7 +15,13 @@ from engine.answering.weighed import Weighed
 
 PARTICLES = 100_000  # sampled at first: half for the point answer, half spread over the draws
 MOST = 400_000  # sampled at most, in batches that double what there is
+A_DRAW = 250  # of every draw where 200 draws have PARTICLES together
 AT_ONCE = 16_384  # particles in memory at once: 64 MB in a world of 400 columns
+
+
+def a_draw(count: int) -> int:
+    """Particles that give each of `count` draws as many as it has where there are 200 draws."""
+    return 2 * A_DRAW * max(count, 1)
 
 
 def weigh(

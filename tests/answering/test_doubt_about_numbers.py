@@ -76,3 +76,13 @@ def test_people_picked_after_a_lever_are_told_of_over_plausible_models_too(learn
     doubted = answer.with_doubt(20, 20)
     left_out = doubted.doubt.left_out
     assert doubted["score"].set.mean_draws.shape == (400 - 20 * left_out,)
+
+
+def test_sampled_answers_have_about_the_interval_that_exact_ones_have(learned):
+    question = {"pins": {"area": "yes"}, "levers": {"course": engine.Fix("yes")}, "watch": ["score"]}
+    exact = learned.model().ask(**question).with_doubt().change("score")
+    sampled = learned.model().ask(**question, exact=False)
+    found = sampled.with_doubt()
+    width = exact[2] - exact[1]
+    assert found.change("score")[1:] == pytest.approx(exact[1:], abs=0.15 * width)
+    assert (found.mc_error, found.method) == (sampled.mc_error, "sampled, by likelihood weighting")
