@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from functools import partial
 from numbers import Integral
 
 import numpy as np
@@ -11,7 +12,7 @@ from engine.learning.folds import FOLDS
 from engine.learning.search import check_widths
 from engine.order import Direction, Order
 from engine.records.spikes import refuse_collinear, taken_as_bands
-from engine.records.table import Coded, Column, Table
+from engine.records.table import Coded, Table
 from engine.refusal import Refusal, quoted, whole
 
 FEWEST_ROWS = 30
@@ -119,34 +120,20 @@ def check_groups(group: np.ndarray | None) -> None:
 
 
 def numbers_to_learn(
-    table: Table, order: Order, max_parents: int, still: Callable[[], None] = lambda: None
+    table: Table, order: Order, max_parents: int, tick: Callable[[float], None] = lambda part: None
 ) -> tuple[tuple[str, ...], tuple[str, ...]]:
     """The columns learned as numbers, and a sentence for each number that is taken as bands instead.
 
-    still: called often, a chance to cancel.
-    Raises Refusal for infinite values, and for numbers of which one follows exactly from others.
+    tick: hears the fraction done, which may end early.
+    Raises Refusal for numbers of which one follows exactly from others.
     """
     columns = [table.columns[name] for name in order.columns]
-    for column in columns:
-        if column.values is not None:
-            _check_finite(column)
     if not any(column.kind == "number" for column in columns):
         return (), ()
-    bands = taken_as_bands(columns, max_parents, still)
+    bands = taken_as_bands(columns, max_parents, tick)
     kept = [column for column in columns if column.kind == "number" and column.name not in bands]
-    refuse_collinear(kept, max_parents + 1, still)
+    refuse_collinear(kept, max_parents + 1, partial(tick, 0.0))
     return tuple(column.name for column in kept), tuple(bands.values())
-
-
-def _check_finite(column: Column) -> None:
-    infinite = np.isinf(np.asarray(column.values))
-    if infinite.any():
-        rows = int(infinite.sum())
-        raise Refusal(
-            f"{quoted(column.name)} is infinite in {rows:,} {'record' if rows == 1 else 'records'}.",
-            where=column.name,
-            do="Write a number there, leave the cell blank, or take the column out of the order.",
-        )
 
 
 def _check_values(name: str, values: np.ndarray) -> None:

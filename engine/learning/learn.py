@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from functools import partial
 
 import numpy as np
 import pandas as pd
@@ -19,7 +20,7 @@ from engine.learning.held_out import Scoring
 from engine.learning.learned import Learned
 from engine.learning.mixed import FamilyScores, MixedScores, mixed_scores
 from engine.learning.posterior import posterior
-from engine.learning.progress import Progress, Saying
+from engine.learning.progress import Looking, Progress, Saying
 from engine.learning.scores import set_scores
 from engine.learning.search import SizeCurve, size_curve
 from engine.order import Order
@@ -55,14 +56,10 @@ def learn(
     check_table(table, order)
     check_limits(max_links, max_parents, graphs, seed)
     check_rows(table.rows)
-
-    def still() -> None:
-        if progress is not None:
-            progress(0.0, "Looking at how each number varies")
-
-    numbers, notes = numbers_to_learn(table, order, max_parents, still)
+    look = Looking(progress)
+    numbers, notes = numbers_to_learn(table, order, max_parents, look.within)
     coded = table.coded(order.columns, numbers)
-    return learn_coded(coded, order, table.digest, max_links, max_parents, graphs, seed, progress, ess, folds, notes)
+    return learn_coded(coded, order, table.digest, max_links, max_parents, graphs, seed, look.after, ess, folds, notes)
 
 
 def learn_coded(
@@ -89,12 +86,8 @@ def learn_coded(
         check_groups(coded.group)
     stages = candidates(order, max_parents)
     fold, parts = (dealt(coded.codes.shape[0], seed, coded.group), FOLDS) if folds else (None, 1)
-
-    def still() -> None:
-        if progress is not None:
-            progress(0.0, "Looking at how each number varies")
-
-    counts, moments = counts_of(coded, fold, parts), moments_of(coded, fold, parts, still)
+    look = Looking(progress)
+    counts, moments = counts_of(coded, fold, parts), moments_of(coded, fold, parts, partial(look.within, 0.0))
     say = Saying(progress, counts, moments, stages, max_parents)
 
     scores = _scores(counts, moments, max_parents + 1, ess, say)

@@ -11,6 +11,29 @@ from engine.records.moments import ArrayMoments
 Progress = Callable[[float, str], None]
 
 
+LOOKING = 0.2  # the most that looking at numbers takes of all, where many are recorded coarsely
+LOOK = "Looking at how each number varies"
+
+
+class Looking:
+    """Tells `progress` of what comes before the records are coded, and of the rest from there on."""
+
+    def __init__(self, progress: Progress | None) -> None:
+        self.progress = progress
+        self.fraction = 0.0
+
+    def within(self, part: float) -> None:
+        """`part` of the looking is done."""
+        if self.progress is not None:
+            self.fraction = max(self.fraction, LOOKING * part)
+            self.progress(self.fraction, LOOK)
+
+    def after(self, fraction: float, words: str) -> None:
+        """`fraction` of what follows is done."""
+        if self.progress is not None:
+            self.progress(self.fraction + (1.0 - self.fraction) * fraction, words)
+
+
 class Saying:
     """Tells `progress` of every step; raising in there cancels.
 

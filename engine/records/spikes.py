@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from itertools import combinations
-from math import prod
+from math import comb, prod
 
 import numpy as np
 from numpy.typing import NDArray
@@ -23,23 +23,26 @@ EXACT = 1e-6  # of the standard deviation: what rounding to float leaves of an e
 Floats = NDArray[np.float64]
 
 
-def taken_as_bands(columns: Sequence[Column], size: int, still: Callable[[], None] = lambda: None) -> dict[str, str]:
+def taken_as_bands(
+    columns: Sequence[Column], size: int, tick: Callable[[float], None] = lambda part: None
+) -> dict[str, str]:
     """The numbers among `columns` that are learned from as bands, and why, in a sentence each.
 
     A density has no limit where a number does not vary: such a number would outweigh everything else. So bands are
     taken for one with SPIKE of its records or more in one value, and for one that holds a single value throughout
     a configuration of CONSTANT records or more of up to `size` categories (bands included); and for one with blanks
-    that are a level of their own, since no number stands for a blank.  still: called often, a chance to cancel.
+    that are a level of their own, since no number stands for a blank.  tick: hears the fraction done, which ends
+    early where no number holds a value often enough.
     """
     found: dict[str, str] = {}
     for column in columns:
-        still()
+        tick(0.0)
         why = own_reason(column) if column.kind == "number" else None
         if why is not None:
             found[column.name] = f"{quoted(column.name)} is taken as bands: {why}"
     fresh = {column.name for column in columns if column.kind != "number" or column.name in found}
     while fresh:
-        constant = _constant_inside(columns, set(found), fresh, size, still)
+        constant = _constant_inside(columns, set(found), fresh, size, tick)
         found.update(constant)
         fresh = set(constant)
     return {column.name: found[column.name] for column in columns if column.name in found}
@@ -94,25 +97,27 @@ def own_reason(column: Column) -> str | None:
     return f"{share} of its records hold {figure(float(distinct[common]))}."
 
 
-def _most_alike(column: Column, still: Callable[[], None]) -> int:
+def _most_alike(column: Column, tick: Callable[[float], None]) -> int:
     """The records in the commonest value."""
-    still()
+    tick(0.0)
     return int(np.unique(np.asarray(column.values), return_counts=True)[1].max())
 
 
 def _constant_inside(
-    columns: Sequence[Column], bands: set[str], fresh: set[str], size: int, still: Callable[[], None]
+    columns: Sequence[Column], bands: set[str], fresh: set[str], size: int, tick: Callable[[float], None]
 ) -> dict[str, str]:
     """Numbers that are constant in a configuration of categories of which at least one is `fresh`."""
     categories = [column for column in columns if column.kind != "number" or column.name in bands]
     left = [column for column in columns if column.kind == "number" and column.name not in bands]
-    left = [column for column in left if _most_alike(column, still) >= CONSTANT]
+    left = [column for column in left if _most_alike(column, tick) >= CONSTANT]
     found: dict[str, str] = {}
     rows = np.arange(columns[0].codes.size)
     some = np.random.default_rng(0).permutation(rows)[:PROBED]
     probes = (rows, some, some[::-1], some[::3])
+    done, whole = 0, sum(comb(len(categories), count) for count in range(1, size + 1))
     for count in range(1, size + 1):
         for chosen in combinations(categories, count):
+            done += 1
             if not left:
                 return found
             if not fresh.intersection(column.name for column in chosen):
@@ -120,7 +125,7 @@ def _constant_inside(
             joint = prod(len(column.levels) for column in chosen)
             if joint > LARGEST:
                 continue
-            still()
+            tick(done / whole)
             code = np.zeros(chosen[0].codes.size, dtype=np.int64)
             for column in chosen:
                 code = code * len(column.levels) + column.codes
