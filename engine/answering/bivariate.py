@@ -147,13 +147,14 @@ def _owen(h: Floats, k: Floats, lean: Floats, rest: Floats) -> Floats:
 
 
 def _likely(box: Rectangle, left: Floats, right: Floats) -> tuple[Floats, Floats]:
-    """The part of [left, right] where X has a chance that is not nearly nothing; the nearest end if none."""
+    """The part of [left, right] where X has a chance that is above 1e-340; all of it if there is none."""
     flat = box.lean == 0.0
     lean = np.where(flat, 1.0, box.lean)
     one, other = (box.low - REACH * box.rest) / lean, (box.high + REACH * box.rest) / lean
     start, end = np.minimum(one, other), np.maximum(one, other)
     start, end = np.where(flat, left, start), np.where(flat, right, end)
-    return np.clip(start, left, right), np.clip(end, left, right)
+    some = (start < right) & (end > left)
+    return np.where(some, np.clip(start, left, right), left), np.where(some, np.clip(end, left, right), right)
 
 
 def _by_quadrature(box: Rectangle) -> tuple[Floats, Floats, Floats]:
@@ -206,7 +207,7 @@ def _by_quadrature(box: Rectangle) -> tuple[Floats, Floats, Floats]:
     edges = np.sort(np.stack([lowest, *(np.clip(each, lowest, highest) for each in crossings), highest], axis=-1))
     half = 0.5 * np.diff(edges)
     y = 0.5 * (edges[:, 1:] + edges[:, :-1])[..., None] + half[..., None] * _NODES
-    values = np.exp(log_integrand(y) - np.where(real, top, 0.0)[:, None, None])
+    values = np.exp(np.minimum(log_integrand(y) - np.where(real, top, 0.0)[:, None, None], 1.0))
     weights = values * _WEIGHTS * half[..., None]
     total = weights.sum(axis=(-2, -1))
     divisor = np.where(total > 0.0, total, 1.0)

@@ -39,6 +39,7 @@ def standardised(low: Floats, high: Floats, mean: Floats, sd: Floats) -> tuple[F
 
 def log_between(start: Floats, end: Floats) -> Floats:
     """Natural log of the probability that a standard normal lies between; -inf where end <= start."""
+    end = np.maximum(start, end)
     upper = start > -end
     low, high = np.where(upper, -end, start), np.where(upper, -start, end)  # now the nearer end is `high`
     log_high = log_ndtr(high)

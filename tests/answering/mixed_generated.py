@@ -86,13 +86,6 @@ def _positions(levels):
     return st.frozensets(st.integers(0, levels - 1), min_size=1)
 
 
-def in_boxes(world):
-    """Numbers that the slow truth integrates over: it takes a second for three of them."""
-    numbers = {node.name for node in world.nodes if isinstance(node, Number)} - world.values.keys()
-    acting = {parent for node in world.nodes if isinstance(node, Category) for parent in node.parents}
-    return numbers & (acting | world.pins.keys() | world.ranges.keys())
-
-
 def own_parameters(world):
     """The nodes' own tables and coefficients as draws: an axis of length 1, the last."""
     return {node.name: _own(node) for node in world.nodes}
@@ -130,7 +123,23 @@ def watching(world, *names):
     return replace(world, watch=names)
 
 
-def only_possible(found):
-    """Leave out a world whose evidence cannot be, or is so unlikely that nothing of it can be checked."""
-    assume(found.log_evidence > -50.0)
-    return found
+@st.composite
+def set_worlds(draw, **given):
+    """A world in which one number is set: those who take it up get a fixed value or a shift."""
+    world = draw(mixed_worlds(**given))
+    numbers = [node.name for node in world.nodes if isinstance(node, Number)]
+    assume(numbers)
+    name = draw(st.sampled_from(numbers))
+    reach = draw(st.sampled_from([0.0, 0.3, 1.0]))
+    value = round(draw(st.floats(-1.5, 1.5)), 2)
+    shift = draw(st.booleans())
+    copy, takes = f"{name} set", f"{name} takes"
+    nodes = []
+    for node in world.nodes:
+        parents = tuple(copy if parent == name else parent for parent in node.parents)
+        nodes.append(replace(node, parents=parents))
+        if node.name == name:
+            slopes = [[1.0], [1.0 if shift else 0.0]]
+            nodes.append(Category(takes, ["no", "yes"], (), [1.0 - reach, reach]))
+            nodes.append(Number(copy, (takes, name), [0.0, value], slopes, [0.0, 0.0], node.bands))
+    return replace(world, nodes=tuple(nodes), watch=(*world.watch, copy))

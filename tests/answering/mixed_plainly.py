@@ -42,9 +42,9 @@ class Truth:
     def below(self, name, value):
         world, drawn, draw = self.asked
         weights, means, sds = self.parts[name]
-        if name in world.values or np.all(sds > 0.0) or len(weights) < NODES.size:
+        if name in world.values or not in_boxes(world):
             return float(weights @ _below(value, means, sds))
-        low, high = world.ranges.get(name, (-np.inf, np.inf))  # a step in a sum of points: kept in a range instead
+        low, high = world.ranges.get(name, (-np.inf, np.inf))  # not as a sum of steps, but kept in a range as well
         if value <= low:
             return 0.0
         kept = replace(world, ranges={**world.ranges, name: (low, min(high, value))}, watch=())
@@ -60,19 +60,20 @@ class Truth:
         return float(weights @ norm.pdf(value, means, sds))
 
 
+def in_boxes(world):
+    """Numbers that are integrated over: three of them take seconds."""
+    numbers = {node.name for node in world.nodes if isinstance(node, Number)} - world.values.keys()
+    acting = {parent for node in world.nodes if isinstance(node, Category) for parent in node.parents}
+    return numbers & (acting | world.pins.keys() | world.ranges.keys())
+
+
 def truth(world, drawn=None, draw=0):
     """Read `world` by brute force. drawn: as for the routes; None: the nodes' own tables and coefficients."""
     nodes = world.nodes
     by_name = {node.name: node for node in nodes}
     categories = [node for node in nodes if isinstance(node, Category)]
     numbers = [node for node in nodes if isinstance(node, Number)]
-    acting = {parent for node in categories for parent in node.parents if isinstance(by_name[parent], Number)}
-    boxed = [
-        node.name
-        for node in numbers
-        if node.name not in world.values
-        and (node.name in acting or node.name in world.ranges or node.name in world.pins)
-    ]
+    boxed = [node.name for node in numbers if node.name in in_boxes(world)]
     found = []  # log weight, level of each category and band of each boxed number, parts of each watched number
     for levels in itertools.product(*(_open(world, node) for node in categories)):
         at = {node.name: level for node, level in zip(categories, levels, strict=True)}
@@ -119,7 +120,7 @@ def truth(world, drawn=None, draw=0):
             )
         )
     found = Truth(float(largest + np.log(total)), shares, mixtures, (world, drawn, draw))
-    shares.update((name, found._bands(name)) for name in mixtures)
+    shares.update((name, found._bands(name)) for name in mixtures if len({*boxed, name}) < 3)
     return found
 
 
@@ -182,7 +183,8 @@ def _given(values, numbers, offset, spread):
         return 0.0, offset, spread
     away = np.array([values[numbers[place].name] for place in seen]) - offset[seen]
     left, sizes, right = np.linalg.svd(spread[seen])
-    sizes, right = np.where(sizes > TINY * np.abs(spread).max(), sizes, 0.0), right[: len(seen)]
+    rounding = TINY * np.abs(spread).max()
+    sizes, right = np.where(sizes > rounding, sizes, 0.0), right[: len(seen)]
     in_noise = left.T @ away
     if np.any(np.abs(in_noise[sizes == 0.0]) > 1e-9 * (1.0 + np.abs(away).max())):
         return -np.inf, offset, spread
@@ -191,6 +193,7 @@ def _given(values, numbers, offset, spread):
     log_density = norm.logpdf(noise).sum() - np.log(sizes[kept]).sum()
     offset = offset + spread @ (right[kept].T @ noise)
     spread = spread - spread @ right[kept].T @ right[kept]
+    spread[np.linalg.norm(spread, axis=1) <= rounding] = 0.0
     for place in seen:
         offset[place], spread[place] = values[numbers[place].name], 0.0
     return float(log_density), offset, spread
@@ -215,7 +218,7 @@ def _points(offset, spread, sides):
         else:
             own, shares = _panels(centre, sd, low, high, _steps(offset, spread, sides, place, points))
         shares = (shares * weights[:, None]).ravel()
-        kept = shares > 1e-25 * shares.max()
+        kept = shares > 0.0
         points = np.column_stack([np.repeat(points, own.shape[1], axis=0), own.ravel()])[kept]
         weights = shares[kept]
         if not weights.size:
