@@ -53,12 +53,17 @@ def as_model(tables, posteriors=None):
     )
 
 
-def learned(drawn):
-    posteriors = {}
+def counted(drawn):
+    """Column -> records in every cell of its table."""
+    found = {}
     for name, parents in PARENTS.items():
-        counts = np.zeros([*(COLUMNS[parent] for parent in parents), COLUMNS[name]])
-        np.add.at(counts, tuple(drawn[column] for column in (*parents, name)), 1)
-        posteriors[name] = dirichlet_posterior(counts)
+        found[name] = np.zeros([*(COLUMNS[parent] for parent in parents), COLUMNS[name]])
+        np.add.at(found[name], tuple(drawn[column] for column in (*parents, name)), 1)
+    return found
+
+
+def learned(drawn):
+    posteriors = {name: dirichlet_posterior(counts) for name, counts in counted(drawn).items()}
     return as_model({name: predictive(posterior) for name, posterior in posteriors.items()}, posteriors)
 
 
