@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, fields, replace
 from urllib.parse import parse_qsl
 
 import numpy as np
@@ -16,6 +16,8 @@ from app.typed import per_cent, written
 from app.wording.estimates import Estimate
 from app.wording.numbers import round_value
 from engine.answering.answer import Marginal
+from engine.answering.cutting import Gate
+from engine.answering.mixture import Mixture
 
 Hidden = tuple[tuple[str, str], ...]
 
@@ -128,13 +130,25 @@ def _hidden(asked: Asked, rest: Question) -> Hidden:
 
 def _drawn(marginal: Marginal, grid: np.ndarray) -> Drawn:
     """The density on `grid`, and apart from it the values held by many at once, with their shares."""
-    number = marginal.number
-    assert number is not None
+    assert marginal.number is not None
+    number = _first_draw(marginal.number)
     single = np.broadcast_to(number.sd == 0.0, number.weight.shape)
+    means = np.broadcast_to(number.mean, number.weight.shape)
     shares: dict[float, float] = {}
-    for value, share in zip(
-        np.broadcast_to(number.mean, number.weight.shape)[single], number.weight[single], strict=True
-    ):
+    for value, share in zip(means[single], number.weight[single], strict=True):
         shares[float(value)] = shares.get(float(value), 0.0) + float(share)
     rest = replace(number, weight=np.where(single, 0.0, number.weight))
     return rest.density(grid)[:, 0], tuple(shares.items())
+
+
+def _first_draw(number: Mixture) -> Mixture:
+    """The mixture at the posterior mean alone: a curve needs no other draw, and some cost a hundred times as much."""
+
+    def first(array: np.ndarray | None) -> np.ndarray | None:
+        return None if array is None else array[:, :1]
+
+    gate = number.gate
+    if gate is not None:
+        gate = Gate(**{each.name: getattr(gate, each.name)[..., :1] for each in fields(gate)})
+    weight, mean, sd = number.weight[:, :1], number.mean[:, :1], number.sd[:, :1]
+    return Mixture(weight, mean, sd, gate, first(number.low), first(number.high))
