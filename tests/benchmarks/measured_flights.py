@@ -119,4 +119,4 @@ def measure() -> dict[str, object]:
 
 
 if __name__ == "__main__":
-    print(json.dumps(measure(), indent=1))
+    print(json.dumps(measure()))

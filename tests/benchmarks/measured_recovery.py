@@ -17,7 +17,7 @@ from engine.network.scoring import log_score
 from engine.records.table import Table
 from tests.benchmarks.mixed_networks import generated
 
-SIZES = (10, 24, 37, 13, 16, 19, 20, 22, 27, 30, 33, 37)  # columns
+SIZES = (10, 16, 24, 37, 13, 19, 20, 22, 27, 30, 33, 37)  # columns
 HELD_OUT = 10_000
 
 
