@@ -14,6 +14,7 @@ Floats = NDArray[np.float64]
 
 SURE = 1e-4  # a probability above this is a difference of sums of about 1 and right to twelve digits
 FALLS = 40.0  # natural logs below its peak at which an integrand is taken as over
+NOTHING = 1e-11  # a probability that as a difference has no digits left
 WIDE = 0.1  # standard deviations; the moments in a narrower interval are summed, not taken as a difference
 AT_ONCE = 4_000  # rectangles summed by quadrature at once
 REACH = 40.0  # standard deviations that are looked at
@@ -59,15 +60,23 @@ class Rectangle:
             found[thin] = box._some(thin)._summed()[0]
         return found
 
-    def moments(self, needed: NDArray[np.bool_]) -> tuple[Floats, Floats]:
-        """Mean and variance of Y (Rosenbaum 1961, for intervals); 0 and 1 where they are not needed."""
+    def moments(self, needed: NDArray[np.bool_], weighty: NDArray[np.bool_]) -> tuple[Floats, Floats]:
+        """Mean and variance of Y (Rosenbaum 1961, for intervals), 0 and 1 where nothing is left.
+
+        By quadrature where small probabilities are `needed` and where the interval is narrow and `weighty`, since a
+        difference would lose digits there.
+        """
         box = self._full()
         log_mass = box.log_mass(np.zeros(box.start.shape, dtype=bool))
-        wide = needed & (log_mass > np.log(SURE)) & (box.end - box.start > WIDE)
+        narrow = box.end - box.start < WIDE
+        small = log_mass < np.log(SURE)
+        rest = (needed & small) | (weighty & (narrow | small))
+        wide = ~rest & (log_mass > np.log(NOTHING))
         mean, variance = np.zeros(box.start.shape), np.ones(box.start.shape)
         if np.any(wide):
             mean[wide], variance[wide] = box._some(wide)._closed(np.exp(log_mass[wide]))
-        rest = needed & ~wide & (box.end > box.start) & (box.high > box.low)
+            variance = np.maximum(variance, 0.0)
+        rest &= (box.end > box.start) & (box.high > box.low)
         if np.any(rest):
             _, mean[rest], variance[rest] = box._some(rest)._summed()
         return mean, variance

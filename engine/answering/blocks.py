@@ -110,14 +110,16 @@ def restricted(
     return array, labels
 
 
-def factor(solved: Solved, world: MixedWorld, layout: Layout, finely: bool = True) -> tuple[Floats, Floats]:
+def factor(solved: Solved, world: MixedWorld, layout: Layout, finely: bool) -> tuple[Floats, Floats, Floats]:
     """(scope..., draws) of a block, largest cell of every draw at 1, and the natural log of what was divided out.
 
+    Third, (draws,) how much of that comes from small probabilities of two numbers in their cells, 0 or less.
     finely: small probabilities of two numbers in their cells have all their digits, too.
     """
     block = solved.block
     needed = None if finely else np.zeros(1, dtype=bool)
     logs = solved.open(solved.given.log_density) + solved.open(EXACTLY * solved.given.certain.astype(np.float64))
+    density = logs.reshape(-1, logs.shape[-1]).max(axis=0)
     if block.roots:
         logs = logs + _log_mass(solved, _intervals(solved, world, layout), needed)
     shape = tuple(layout.sizes[label] for label in block.scope)
@@ -126,7 +128,8 @@ def factor(solved: Solved, world: MixedWorld, layout: Layout, finely: bool = Tru
     largest = np.where(largest > -np.inf, largest, 0.0)
     sure = solved.open(solved.given.certain.astype(np.float64))
     lifted = EXACTLY * sure.reshape(-1, sure.shape[-1]).max(axis=0)
-    return np.exp(flat - largest), largest - lifted
+    rare = largest - np.where(density > -np.inf, density, 0.0) if len(block.gates) > 1 else np.zeros(1)
+    return np.exp(flat - largest), largest - lifted, rare
 
 
 def _intervals(solved: Solved, world: MixedWorld, layout: Layout) -> dict[str | None, tuple[Floats, Floats]]:

@@ -77,8 +77,8 @@ class Cut:
             found[tied] = box.log_mass(wanted)
         return found
 
-    def moments(self, needed: NDArray[np.bool_]) -> tuple[Floats, Floats]:
-        """Mean and variance of y where it is kept."""
+    def moments(self, needed: NDArray[np.bool_], weighty: NDArray[np.bool_]) -> tuple[Floats, Floats]:
+        """Mean and variance of y where it is kept; needed, weighty: as in Rectangle."""
         eased, gate = (self, None) if self.gate is None else self._eased()
         mean, variance = moments_between(*standardised(eased.low, eased.high, eased.mean, eased.sd))
         if gate is not None:
@@ -87,7 +87,8 @@ class Cut:
             mean, variance = (np.array(np.broadcast_to(array, shape)) for array in (mean, variance))
             if np.any(tied):
                 box = eased._rectangle(gate, tied, shape)
-                mean[tied], variance[tied] = box.moments(np.broadcast_to(needed, shape)[tied])
+                sides = (np.broadcast_to(side, shape)[tied] for side in (needed, weighty))
+                mean[tied], variance[tied] = box.moments(*sides)
         return eased.mean + eased.sd * np.where(np.isfinite(mean), mean, 0.0), eased.sd**2 * variance
 
     def log_open(self, y: Floats) -> Floats:

@@ -28,6 +28,7 @@ CHUNK = 64e6  # bytes held at once
 STEP = 50.0  # cells that a step of a tree counts for, however small
 CELL = {0: 2.0, 1: 40.0, 2: 600.0}  # cells that one costs, by how many numbers it cuts: so many times a product's time
 GATE = ("slope", "at", "sd", "low", "high")
+LIKELY = 1e-4  # evidence above this, against the likeliest cells, hangs on no small probability
 PART = 4.0  # cells that a part of a mixture counts for
 
 
@@ -47,6 +48,12 @@ class Reading:
     cells: float
     stored: float
     why: str
+
+    @property
+    def needs(self) -> list[str]:
+        """Columns whose parameters it takes."""
+        found = {table.name for table in self.layout.tables}
+        return sorted(found.union(*(block.names for block in (*self.layout.factors, *self.layout.watched.values()))))
 
 
 @dataclass(frozen=True, eq=False)
@@ -69,7 +76,7 @@ class Plan:
             width = max(1, int(CHUNK / (8.0 * max(reading.stored, 1.0))))
             ends = [(start, min(start + width, 1 + count)) for start in range(0, 1 + count, width)]
             parts = [
-                _read(reading, world, {name: _some(drawn[name], start, end) for name in drawn}, end - start)
+                _read(reading, world, {name: _some(drawn[name], start, end) for name in reading.needs}, end - start)
                 for start, end in ends
             ]
             if turn == 0:
@@ -161,8 +168,8 @@ def _some(found: np.ndarray | Coefficients, start: int, stop: int) -> np.ndarray
     return found[..., start:stop]
 
 
-def _read(reading: Reading, world: MixedWorld, drawn: Drawn, width: int) -> MixedRead:
-    """One reading, `width` draws of it."""
+def _read(reading: Reading, world: MixedWorld, drawn: Drawn, width: int, finely: bool = False) -> MixedRead:
+    """One reading, `width` draws of it. finely: with every digit of small probabilities, where that could tell."""
     laid = reading.layout
     nodes = {node.name: node for node in world.nodes}
     bands = {name: int(np.searchsorted(nodes[name].cuts, value, side="right")) for name, value in world.values.items()}
@@ -179,12 +186,16 @@ def _read(reading: Reading, world: MixedWorld, drawn: Drawn, width: int) -> Mixe
         if block.names not in solved:
             solved[block.names] = blocks.solve(block, world, drawn, keep.get(block.names, ()))
     log_constant: Floats = np.zeros(1)
+    rare: Floats = np.zeros(1)
     for block in laid.factors:
-        cells, log_scale = blocks.factor(solved[block.names], world, laid)
+        cells, log_scale, small = blocks.factor(solved[block.names], world, laid, finely)
         tables.append(cells)
-        log_constant = log_constant + log_scale
+        log_constant, rare = log_constant + log_scale, rare + small
     tables.extend(np.ones((*(laid.sizes[label] for label in scope), 1)) for scope in reading.ones)
     read = reading.tree.programme.run(tables)
+    coarse = not finely and any(len(block.gates) > 1 for block in laid.factors)
+    if coarse and not np.all(read.log_evidence + rare > np.log(LIKELY)):
+        return _read(reading, world, drawn, width, finely=True)
     shares: dict[str, Floats] = {}
     numbers: dict[str, Mixture] = {}
     for name in reading.names:

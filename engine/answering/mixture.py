@@ -10,7 +10,6 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.special import ndtr, ndtri
 
-from engine.answering.bivariate import SURE
 from engine.answering.cutting import Cut, Gate
 from engine.answering.normal import log_density, moments_between, standardised
 
@@ -19,8 +18,10 @@ __all__ = ["Gate", "Mixture"]
 Floats = NDArray[np.float64]
 
 WEIGHS = 1e-12  # a part that weighs less is of no account
+MUCH = 1e4  # a weight that is so many times the probability of what the part keeps
 FAR = 40.0  # standard deviations that no quantile lies beyond
 HALVINGS = 200
+CLOSE = 1e-14  # a step of this size, against the number and 1, ends the search
 AT_ONCE = 2_000_000  # numbers of a grid x parts x draws that are worked on at once
 
 
@@ -75,16 +76,28 @@ class Mixture:
         if len(self.weight) == 1 and self._free:
             return np.asarray(self.mean[0] + z * self.sd[0] + 0.0 * self.weight[0])
         low, high = self._bracket(z)
-        for _ in range(HALVINGS):
-            middle = 0.5 * (low + high)
-            going = (low < middle) & (middle < high)  # false too where it is nan
+        x = np.clip(self.means + z * self.sds, low, high)
+        found = np.full(x.shape, np.nan)
+        going = low < high  # false too where it is nan
+        for turn in range(HALVINGS):
             if not np.any(going):
                 break
-            under = self._at(middle, self._parts_below) < q
-            low, high = np.where(going & under, middle, low), np.where(going & ~under, middle, high)
+            short = q - self._at(x, self._parts_below)
+            low, high = np.where(short > 0.0, x, low), np.where(short > 0.0, high, x)
+            with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
+                step = short / self._at(x, self._parts_density)
+            near = going & (np.abs(step) <= CLOSE * (1.0 + np.abs(x)) * (turn > 0))
+            found = np.where(near, x + step, found)
+            middle = 0.5 * (low + high)
+            shut = going & ~near & ~((low < middle) & (middle < high))
+            found = np.where(shut, high, found)
+            going &= ~(near | shut)
+            inside = (x + step > low) & (x + step < high) & (turn % 4 < 3)  # a halving now and then, lest it creep
+            x = np.where(inside, x + step, middle)
+        found = np.where(going, high, found)
         single = np.where((self.sd == 0.0) & (self.weight > 0.0), self.mean, np.nan)
-        exact = (single >= low) & (single <= high)
-        return np.where(exact.any(axis=0), np.where(exact, single, -np.inf).max(axis=0), high)
+        exact = np.abs(single - found) <= CLOSE * (1.0 + np.abs(found))
+        return np.where(exact.any(axis=0), np.where(exact, single, -np.inf).max(axis=0), found)
 
     def _bracket(self, z: float) -> tuple[Floats, Floats]:
         """Values that the quantile lies between in every draw."""
@@ -124,16 +137,23 @@ class Mixture:
     @cached_property
     def _log_mass(self) -> Floats:
         """Natural log of what each part keeps, (parts, draws); 0 where that is nothing."""
-        found = self._cut.log_mass(self.weight > WEIGHS)
+        found = self._cut.log_mass(self._needed)
         return np.where(found > -np.inf, found, 0.0)
+
+    @cached_property
+    def _needed(self) -> NDArray[np.bool_]:
+        """Parts whose small probabilities must have all their digits: the others weigh too little for it to tell."""
+        if self.gate is None:
+            return np.zeros(self.weight.shape, dtype=bool)
+        coarse = np.exp(self._cut.log_mass(np.zeros(1, dtype=bool)))
+        return np.asarray((self.weight > WEIGHS) & (self.weight > MUCH * coarse))
 
     def _parts_below(self, x: Floats) -> Floats:
         certain = self.sd == 0.0
         if self._free:
             return np.where(certain, self.mean < x, ndtr((x - self.mean) / np.where(certain, 1.0, self.sd)))
         cut = replace(self._cut, high=np.minimum(self._cut.high, x))
-        needed = (self.weight > WEIGHS) & (self._log_mass < np.log(SURE))
-        share = np.minimum(np.exp(np.minimum(cut.log_mass(needed) - self._log_mass, 0.0)), 1.0)
+        share = np.minimum(np.exp(np.minimum(cut.log_mass(self._needed) - self._log_mass, 0.0)), 1.0)
         return np.where(certain, self.mean < x, np.where(x >= self._cut.high, 1.0, share))
 
     def _parts_density(self, x: Floats) -> Floats:
@@ -150,7 +170,7 @@ class Mixture:
         if self._free:
             return self.mean, self.sd * self.sd
         if self.gate is None or self.low is not None or self.high is not None:
-            return self._cut.moments(self.weight > WEIGHS)
+            return self._cut.moments(self._needed, self.weight > 1.0 / MUCH)
         gate = self.gate  # the gate's number is only cut to an interval, and this one leans on it
         spread = np.hypot(gate.slope * self.sd, gate.sd)
         still = spread == 0.0
