@@ -17,6 +17,7 @@ from engine.answering.doubt import Plausible, doubtable, held, plausible
 from engine.answering.kept import Kept
 from engine.answering.levers import Lever
 from engine.answering.planner import Planner
+from engine.answering.predicting import predict
 from engine.answering.question import Question, question
 from engine.doubting.case import Case
 from engine.doubting.register import cautions
@@ -171,6 +172,15 @@ class Model:
         Raises Refusal for a missing or unknown column, an unknown level, and a blank that no level stands for.
         """
         return log_score(self.network, frame)
+
+    def predict(self, frame: pd.DataFrame, column: str) -> pd.DataFrame:
+        """A row per row of `frame`: shares of `column` by level, or mean and sd of a number, given its other columns.
+
+        At the posterior means. Columns that `frame` leaves out, and blanks that no level stands for, are summed out;
+        what it holds of `column` itself is not looked at. A row that cannot be is nan.
+        Raises Refusal for an unknown column or level, and for blanks that cannot be summed out exactly.
+        """
+        return predict(self.network, frame, column)
 
     def sample(self, rows: int, seed: int) -> pd.DataFrame:
         """Invented rows at the posterior means: levels as texts, numbers as floats; the same for the same seed.

@@ -112,13 +112,14 @@ class Planner:
 
         Raises Refusal when the cost is beyond what can be done.
         """
-        return self.joint_draws(Scene(Pins(), {}, columns), 0, 0)[..., 0]
+        return self._joint(Scene(Pins(), {}, columns), 0, 0, None)[0][..., 0]
 
     def joints(
         self, asked: Question, draws: int, seed: int, exact: bool | None, columns: tuple[str, ...]
-    ) -> dict[str, np.ndarray]:
-        """world -> (levels or bands of each column in order..., 1 + draws) joint shares; each column once.
+    ) -> dict[str, tuple[np.ndarray, bool]]:
+        """world -> (levels or bands of each column in order..., 1 + draws) joint shares, and whether they were sampled.
 
+        columns: each once.
         Raises Refusal when the cost is beyond what can be done.
         """
         scenes = {"recorded": Scene(Pins(), {}, columns), "among": Scene(asked.before, {}, columns)}
@@ -126,27 +127,24 @@ class Planner:
             scenes["set"] = Scene(asked.before, self._splits(asked, asked.levers), columns, asked.after)
         if asked.against is not None:
             scenes["against"] = Scene(asked.before, self._splits(asked, asked.against), columns, asked.after)
-        return {world: self.joint_draws(scene, draws, seed, exact) for world, scene in scenes.items()}
-
-    def joint_draws(self, scene: Scene, draws: int, seed: int, exact: bool | None = None) -> np.ndarray:
-        """(levels or bands of each column in order..., 1 + draws) joint shares in one world; each column once.
-
-        Raises Refusal when the cost is beyond what can be done.
-        """
         count = draws if self.network.drawable else 0
+        return {world: self._joint(scene, count, seed, exact) for world, scene in scenes.items()}
+
+    def _joint(self, scene: Scene, count: int, seed: int, exact: bool | None) -> tuple[np.ndarray, bool]:
+        """Joint shares in one world, and whether they were sampled."""
         if exact is not False and self._fits(scene) and all(name in self.categories.index for name in scene.columns):
             try:
-                return self._summing.joint(scene, count, seed)
+                return self._summing.joint(scene, count, seed), False
             except TooWideError as wide:
                 if exact:
                     raise _too_wide(wide.cost) from None
         try:
             if exact is not False:
-                return self._mixing.joint(scene, count, seed)
+                return self._mixing.joint(scene, count, seed), False
         except NotExactError as reason:
             if exact:
                 raise reason.refusal() from None
-        return self._mixing.joint_sampled(scene, count, seed)
+        return self._mixing.joint_sampled(scene, count, seed), True
 
     def _set(self, asked: Question, levers: Mapping[str, AnySetting], among: Seen, turn: Turn) -> Seen:
         """The world with levers; what none of them moves is as among these, to the last digit."""

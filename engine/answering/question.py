@@ -5,10 +5,11 @@ from __future__ import annotations
 from collections.abc import Collection, Iterable, Mapping
 from dataclasses import dataclass, field
 
+from engine.answering.lever_checks import checked_setting, refuse_circles
 from engine.answering.levers import Lever
 from engine.answering.naming import known, listed
 from engine.answering.pins import Pins, checked_pins
-from engine.answering.settings import AnySetting, Setting, checked_setting, refuse_circles
+from engine.answering.settings import AnySetting, Setting
 from engine.network.network import Network
 from engine.refusal import Refusal, quoted
 
