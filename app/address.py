@@ -55,6 +55,7 @@ class _Reading:
         self.pins: dict[str, Pin] = {}
         self.levers: dict[str, Setting] = {}
         self.reaches: dict[str, float] = {}
+        self.tried: set[str] = set()  # columns that something sets, readable or not
         self.ends: dict[str, dict[str, float]] = {}
         self.watch: str | None = None
         self.cards: dict[str, frozenset[str]] = {"open": frozenset(), "fold": frozenset(), "whole": frozenset()}
@@ -74,12 +75,12 @@ class _Reading:
                 self.pins[column] = self._pin(column, parts, value)
             case "set":
                 column, parts = self._column(value)
-                self._once(key, column, self.levers)
+                self._lever_once(key, column)
                 self.levers[column] = self._setting(column, parts, value)
             case "shift":
                 slug, _, rest = value.partition(".")
                 column = self.names.number(slug)
-                self._once(key, column, self.levers)
+                self._lever_once(key, column)
                 self.levers[column] = self._shift(column, rest.removeprefix("by."))
             case "reach":
                 slug, _, rest = value.partition(".")
@@ -107,7 +108,7 @@ class _Reading:
                 self.pins[column] = self._range(column, ends)
             except Refusal as refusal:
                 self.refused.append(refusal)
-        for column in set(self.reaches) - set(self.levers):
+        for column in set(self.reaches) - self.tried:
             self.refused.append(
                 Refusal(f"A reach is given for {column}, which is not set.", where=column, do=f"Set {column} first.")
             )
@@ -130,12 +131,16 @@ class _Reading:
             case "reach":
                 self.reaches[column] = typed.share(value, column)
             case "set" | "shift":
-                self._once(start, column, self.levers)
+                self._lever_once(start, column)
                 self.levers[column] = (
                     self._shift(column, value) if start == "shift" else To(typed.number(value, column))
                 )
             case _ if value.strip():
                 self.ends.setdefault(column, {})[start] = typed.number(value, column)
+
+    def _lever_once(self, key: str, column: str) -> None:
+        self._once(key, column, self.levers)
+        self.tried.add(column)
 
     def _once(self, key: str, column: str, before: Mapping[str, object]) -> None:
         if column in before:

@@ -30,8 +30,15 @@
       : null;
   });
 
-  /* The doubt over sampled models comes by itself: what has the focus stays where it is. */
+  /* A page that asks nothing, such as a refusal, is opened whole.
+     The doubt over sampled models comes by itself: what has the focus stays where it is. */
   document.addEventListener("htmx:before:swap", (event) => {
+    const { text, request, response } = event.detail?.ctx ?? {};
+    if (text && !text.includes('id="ask"')) {
+      event.preventDefault();
+      location.assign(response?.raw?.url || request.action);
+      return;
+    }
     const here = document.activeElement;
     const comes = event.detail?.ctx?.sourceElement?.matches?.(".doubt") && document.getElementById("ask")?.contains(here);
     doubted = comes && here.id ? { id: here.id, top: here.getBoundingClientRect().top } : null;

@@ -62,11 +62,13 @@ class LeverLine:
 class Card:
     """An open card. pinned, set_to: what the state line says of them, None when it is not.  told: verb and links.
 
-    number: what it has more for a number.  unpin, unset: take out a range or a lever that no mark of a row stands for.
+    action: where its forms are sent.  number: what it has more for a number.  unpin, unset: take out a range or a
+    lever that no mark of a row stands for.
     """
 
     name: str
     slug: str
+    action: str
     pinned: str | None
     set_to: str | None
     state: str
@@ -91,6 +93,7 @@ def card_of(asked: Asked, address: Address, column: str) -> Card:
     return Card(
         name=column,
         slug=slug,
+        action=address(Question()),
         pinned=None if pinned is None else _pinned_words(asked, pinned),
         set_to=None if lever is None else _set_words(asked, column, *lever),
         state=_state(asked, column),

@@ -181,6 +181,12 @@ def test_what_cannot_be_read_is_said_and_the_rest_is_kept(pair, says):
     assert misread.value.rest.levers == {"mentor": ("yes", 1.0)}
 
 
+def test_what_cannot_be_set_is_not_said_to_be_missing():
+    with pytest.raises(Misread) as misread:
+        parse([("set.mentor-hours", "lots"), ("reach.mentor-hours", "80")], NAMES)
+    assert misread.value.message == "“lots” is no number that mentor hours could be."
+
+
 def test_a_number_is_set_or_shifted_but_not_both():
     with pytest.raises(Misread, match="twice for mentor hours") as misread:
         parse([("set", "mentor-hours.to.3"), ("shift", "mentor-hours.by.2")], NAMES)

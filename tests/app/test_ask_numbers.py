@@ -104,13 +104,13 @@ def test_a_band_is_pinned_by_its_ring_and_has_neither_bar_nor_diamond(ask, clien
 
 
 def test_a_range_is_pinned_by_its_form(ask, client, study):
-    fields = form(ask("open=travel-time&set=mentor.yes"), "range-travel-time")
+    fields = form(ask("open=travel-time&set=mentor.yes"), "form-range-travel-time")
     query, page = send(client, study, {**fields, "from.travel-time": "25,5", "under.travel-time": "40"})
     assert query == "pin=travel-time.from.25.5.under.40&set=mentor.yes&open=travel-time"
     assert "among records with travel time 25.5 to under 40, setting mentor to yes" in sentence(page)
     shown = card(page, "travel-time")
     assert "at 25.5 to under 40 · " in shown
-    assert form(page, "range-travel-time") == {
+    assert form(page, "form-range-travel-time") == {
         "set": "mentor.yes",
         "open": "travel-time",
         "from.travel-time": "25.5",
@@ -121,19 +121,19 @@ def test_a_range_is_pinned_by_its_form(ask, client, study):
 
 def test_a_number_is_set_by_its_form(ask, client, study):
     start = ask("open=mentor-hours")
-    fields = form(start, "set-mentor-hours")
+    fields = form(start, "form-set-mentor-hours")
     assert 5 <= float(fields["set.mentor-hours"]) <= 9 and fields["reach.mentor-hours"] == "100"
     query, page = send(client, study, {**fields, "set.mentor-hours": "10.5", "reach.mentor-hours": "80"})
     assert query == "set=mentor-hours.to.10.5&reach=mentor-hours.80&open=mentor-hours"
     assert "setting mentor hours to 10.5 for 80% of all records would move mark from" in sentence(page)
     shown = card(page, "mentor-hours")
     assert "to 10.5 for 80% of them" in shown and "is-set" in shown
-    assert form(page, "set-mentor-hours")["set.mentor-hours"] == "10.5"
+    assert form(page, "form-set-mentor-hours")["set.mentor-hours"] == "10.5"
     assert link(page, "unset-mentor-hours") == f"/study/{study.key}/ask?open=mentor-hours"
 
 
 def test_a_number_is_shifted_by_its_form(ask, client, study):
-    fields = form(ask("pin=shift-work.nights&open=mentor-hours"), "shift-mentor-hours")
+    fields = form(ask("pin=shift-work.nights&open=mentor-hours"), "form-shift-mentor-hours")
     query, page = send(client, study, {**fields, "shift.mentor-hours": "−2", "reach.mentor-hours": "100"})
     assert query == "pin=shift-work.nights&shift=mentor-hours.by.-2&open=mentor-hours"
     assert "among records with shift work = nights, lowering mentor hours by 2 would move mark" in sentence(page)
@@ -265,7 +265,7 @@ def test_hostile_names_of_numbers_stay_text(client, store):
     )
     hostile = keep_a_model(store, store.bring("Hostile", frame, "h.csv", Choices(), plan))
     first = client.get(f"/study/{hostile.key}/ask?show=all").text
-    fields = form(first, "set-script-alert-1-script")
+    fields = form(first, "form-set-script-alert-1-script")
     query, page = send(client, hostile, {**fields, "set.script-alert-1-script": "7"})
     printed = client.get(f"/study/{hostile.key}/answer?{query}").text
     for text in (first, page, printed):
