@@ -131,22 +131,22 @@ class Learned:
         """Each link of that model and who settled its direction: source, target, settled.
 
         settled: "your order"; "the data", when every equivalent graph that the order allows agrees and the support is
-        over SURE; else "nobody". Between a category and a number of one stage it is always "nobody": there the shape
-        of the number decides, not the data.
+        over SURE; else "nobody". Between a category and a number of one stage it is always "nobody", as is what rests
+        on such a link: there the shape of the number decides, not the data.
         """
-        names = self.coded.names
+        names, may_lead = self.coded.names, self.order.may_lead
+        numbers = {names[place] for place in self.coded.numbers}
         pairs = [(parent, child) for child, parents in self.parents_at(links).items() for parent in parents]
         pairs.sort(key=lambda link: (names.index(link[0]), names.index(link[1])))
-        open_links = unsettled_links(pairs, self.order.may_lead)
-        numbers = self.coded.numbers
+        free = [link for link in pairs if may_lead(link[1], link[0])]
+        by_shape = {(source, target) for source, target in free if (source in numbers) != (target in numbers)}
+        # What rests on such a link is open as well: it must be settled without them, too.
+        without = [link for link in pairs if link not in by_shape]
+        unsettled = by_shape | unsettled_links(pairs, may_lead) | unsettled_links(without, may_lead)
         rows = []
         for source, target in pairs:
-            if not self.order.may_lead(target, source):
-                settled = "your order"
-            else:
-                alike = (names.index(source) in numbers) == (names.index(target) in numbers)
-                sure = alike and (source, target) not in open_links and self.support_of(source, target) > SURE
-                settled = "the data" if sure else "nobody"
+            sure = (source, target) not in unsettled and self.support_of(source, target) > SURE
+            settled = "your order" if (source, target) not in free else "the data" if sure else "nobody"
             rows.append((source, target, settled))
         return pd.DataFrame(rows, columns=["source", "target", "settled"])
 

@@ -157,6 +157,20 @@ def test_a_link_inside_a_stage_between_a_category_and_a_number_is_settled_by_nob
         assert between["settled"].tolist() == [told]
 
 
+@pytest.mark.parametrize(("number", "told"), [(False, "the data"), (True, "nobody")])
+def test_a_direction_that_rests_on_the_shape_of_a_number_is_settled_by_nobody(number, told):
+    """Two causes that do not go together settle their directions, unless one of them is a number."""
+    rng = np.random.default_rng(2)
+    a, values = rng.integers(0, 2, 4_000), rng.normal(size=(4_000, 1))
+    high = values[:, 0] > 0.0
+    c = (rng.random(4_000) < 0.1 + 0.4 * a + 0.4 * high).astype(int)
+    codes = np.column_stack([a, high, c])
+    coded = plainly.coded_mixed("abc", codes, values if number else values[:, :0], (1,) if number else (), bands=2)
+    learned = learn_coded(coded, Order([("All", ["a", "b", "c"])]), folds=False)
+    settled = {(row.source, row.target): row.settled for row in learned.settled(2).itertuples()}
+    assert settled == {("a", "c"): told, ("b", "c"): told}
+
+
 def test_what_was_kept_is_the_same_to_the_last_digit_in_another_process(tmp_path):
     coded = records(rows=300, seed=9)
     learned = learn_coded(coded, ORDERS[0], seed=3, notes=("“e” is taken as bands.",))
