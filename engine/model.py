@@ -23,6 +23,7 @@ from engine.doubting.case import Case
 from engine.doubting.register import cautions
 from engine.learning import learn as learning
 from engine.learning import learned as learnt
+from engine.learning.cap import Capped
 from engine.network import conditional
 from engine.network.network import Network, network
 from engine.network.nodes import Node
@@ -49,6 +50,7 @@ class Model:
     network: tables and their posterior.  order: as stated, None for a network given as it is.
     coded: the records it was learned from, None without.  unsettled: links whose direction nobody settled.
     plausible: so many graphs drawn from the posterior, to ask the same of; None without.
+    capped: columns that want more parents than learning allowed; None where no such limit is known.
     """
 
     network: Network
@@ -56,6 +58,7 @@ class Model:
     coded: Coded | None = None
     unsettled: frozenset[tuple[str, str]] = frozenset()
     plausible: Callable[[int], Plausible] | None = None
+    capped: tuple[Capped, ...] | None = None
 
     @classmethod
     def from_network(cls, nodes: Iterable[Node]) -> Model:
@@ -106,7 +109,9 @@ class Model:
             return question(network, *given)
 
         def checked(answer: Answer) -> Answer:
-            found, made = cautions(Case(self.network, self.order, self._records, asked, answer, self.unsettled))
+            found, made = cautions(
+                Case(self.network, self.order, self._records, asked, answer, self.unsettled, self.capped)
+            )
             return replace(answer, cautions=found, checks_made=made)
 
         asked = question_in(self.network)
@@ -257,7 +262,9 @@ class Learned(learnt.Learned):
         found = self.settled(links)
         pairs = zip(found["source"], found["target"], found["settled"], strict=True)
         unsettled = frozenset((source, target) for source, target, by in pairs if by == "nobody")
-        return Model(self.network(links), self.order, self.coded, unsettled, self._plausible)
+        parents = self.parents_at(links)
+        capped = tuple(each for each in self.cap if len(parents[each.column]) == self.max_parents)
+        return Model(self.network(links), self.order, self.coded, unsettled, self._plausible, capped)
 
     def _plausible(self, graphs: int) -> Plausible:
         """The same for every model of this study."""

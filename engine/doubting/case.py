@@ -13,6 +13,7 @@ from engine.answering.counting import Records
 from engine.answering.question import Question
 from engine.answering.settings import AnySetting
 from engine.doubting.aims import Aim, aim
+from engine.learning.cap import Capped
 from engine.network.network import Network
 from engine.order import Order, better_levels
 from engine.records.table import SMALL_COUNT
@@ -28,6 +29,7 @@ class Case:
     """A question that was asked of a model, and its answer.
 
     order and records are None for a network given as it is.  unsettled: links whose direction the support leaves open.
+    capped: columns that want more parents than learning allowed; None where no such limit is known.
     """
 
     network: Network
@@ -36,6 +38,7 @@ class Case:
     asked: Question
     answer: Answer
     unsettled: frozenset[tuple[str, str]] = frozenset()
+    capped: tuple[Capped, ...] | None = None
 
     @cached_property
     def matching(self) -> np.ndarray:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from engine.answering.answer import Caution
-from engine.doubting import blanks, counted, direction, models, outside, overlap, thin
+from engine.doubting import blanks, cap, counted, direction, models, outside, overlap, thin
 from engine.doubting.case import Case, Check
 
 CHECKS: tuple[Check, ...] = (
@@ -11,6 +11,7 @@ CHECKS: tuple[Check, ...] = (
     outside.check,
     thin.check,
     direction.check,
+    cap.check,
     models.check,
     counted.check,
     blanks.check,
