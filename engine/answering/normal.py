@@ -72,8 +72,8 @@ def moments_between(start: Floats, end: Floats) -> tuple[Floats, Floats]:
         mean = at_low - at_high
         variance = 1.0 + np.where(at_low > 0.0, low, 0.0) * at_low - np.where(at_high > 0.0, high, 0.0) * at_high
         variance = variance - mean * mean
-    nearest = np.maximum(low, 0.0)
-    close = ~empty & np.isfinite(low) & ((low > _TAIL) | ((high - low) * (1.0 + np.maximum(nearest, 1.0)) < _NARROW))
+    width = np.where(empty, 0.0, high) - np.where(empty, 0.0, low)
+    close = ~empty & np.isfinite(low) & ((low > _TAIL) | (width < _NARROW / (1.0 + np.maximum(low, 1.0))))
     if np.any(close):
         mean, variance = np.array(mean), np.array(variance)
         mean[close], variance[close] = _by_quadrature(low[close], high[close])

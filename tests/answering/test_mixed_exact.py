@@ -2,11 +2,13 @@
 
 import numpy as np
 import pytest
-from hypothesis import given, settings
+from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
 from engine.answering.exact_mixed import plan
-from tests.answering.mixed_generated import mixed_worlds, own_parameters, shaken_parameters
+from engine.answering.mixed import MixedWorld
+from engine.network.nodes import Category, Number
+from tests.answering.mixed_generated import mixed_worlds, own_parameters, set_worlds, shaken_parameters
 from tests.answering.mixed_plainly import in_boxes, truth
 
 QUICK = settings(max_examples=60, deadline=None)
@@ -50,3 +52,123 @@ def test_every_draw_is_read_with_its_own_parameters(world, seed):
     found = read(world, drawn, 3)
     for draw in range(4):
         agree(world, found, truth(world, drawn, draw), draw)
+
+
+@QUICK
+@given(mixed_worlds(most=5))
+def test_numbers_that_act_through_bands_or_lie_in_ranges_are_cut(world):
+    assume(len(in_boxes(world)) < 2)
+    agree(world, read(world), truth(world))
+
+
+@settings(max_examples=40, deadline=None)
+@given(set_worlds(most=4))
+def test_a_set_copy_follows_its_number_to_the_last_digit(world):
+    assume(len(in_boxes(world)) < 3)
+    assume(np.isfinite(plan(world).cells))
+    true = truth(world)
+    assume(true.log_evidence > -50.0 or true.log_evidence == -np.inf)
+    agree(world, read(world), true, exactly=1e-9)
+
+
+@settings(max_examples=8, deadline=None)  # the slow truth takes half a second
+@given(st.integers(0, 2**32 - 1))
+def test_two_numbers_that_hang_together_are_cut_by_the_bivariate_normal(seed):
+    rng = np.random.default_rng(seed)
+    noise = rng.gamma(1.0, 1.0, (2, 2)) * 10.0 ** rng.uniform(-3.0, 0.0)
+    world = MixedWorld(
+        (
+            Category("kind", ["a", "b"], (), [0.4, 0.6]),
+            Number("first", ("kind",), rng.normal(size=2), (), noise[0], (-0.3, 0.4)),
+            Number("second", ("kind", "first"), rng.normal(size=2), rng.normal(size=(2, 1)), noise[1], (0.1,)),
+            Category("after", ["no", "yes"], ("first", "kind"), np.dstack([ups := rng.random((3, 2)), 1.0 - ups])),
+        ),
+        {"after": frozenset([1])},
+        {},
+        {"second": (float(rng.normal()), np.inf)},
+        ("kind", "first"),
+    )
+    true = truth(world)
+    assume(true.log_evidence > -30.0)
+    found = read(world)
+    assert plan(world).readings[0].layout.factors[0].gates == ("first", "second")
+    agree(world, found, true, exactly=1e-9)
+
+
+def test_more_than_two_cut_numbers_that_hang_together_have_no_exact_route():
+    ends = {"a": (0.0, 1.0), "b": (0.0, 1.0), "c": (0.0, 1.0)}
+    nodes = (Number("a"), Number("b", ("a",), 0.0, [1.0]), Number("c", ("b",), 0.0, [1.0]))
+    found = plan(MixedWorld(nodes, {}, {}, ends, ("a",)))
+    assert found.cells == np.inf
+    assert "hang together" in found.why
+    apart = plan(MixedWorld(nodes[:2], {}, {"a": 0.3}, {"b": (0.0, 1.0)}, ("b",)))
+    assert np.isfinite(apart.cells)
+    assert apart.why == ""
+
+
+def test_columns_that_only_follow_bring_nothing_into_an_answer():
+    nodes = (
+        Number("a", (), 0.0, (), 1.0, (0.0,)),
+        Number("b", ("a",), 0.0, [1.0], 1.0, (0.0,)),
+        Number("c", ("b",), 0.0, [1.0], 1.0, (0.0,)),
+        *(Category(f"of {name}", ["x", "y"], (name,), [[0.5, 0.5], [0.1, 0.9]]) for name in "abc"),
+    )
+    world = MixedWorld(nodes, {}, {}, {}, tuple(node.name for node in nodes))
+    found = read(world)  # each is read with what bears on it alone
+    assert found.numbers["c"].sds[0] == pytest.approx(np.sqrt(3.0))
+    assert found.shares["of c"][:, 0] == pytest.approx([0.3, 0.7])
+
+
+def test_what_cannot_be_has_no_probability_and_no_distribution():
+    nodes = (Category("kind", ["a", "b"], (), [1.0, 0.0]), Number("x", ("kind",), [0.0, 1.0], (), [0.0, 1.0]))
+    found = read(MixedWorld(nodes, {}, {"x": 0.5}, {}, ("kind", "x")))
+    assert found.log_evidence[0] == -np.inf
+    assert np.isnan(found.numbers["x"].means[0])
+    empty = read(MixedWorld(nodes, {}, {}, {"x": (0.5, 0.7)}, ("x",)))
+    assert empty.log_evidence[0] == -np.inf
+    assert np.isnan(empty.numbers["x"].quantile(0.5)[0])
+
+
+def test_a_value_that_a_number_takes_exactly_outweighs_any_density():
+    nodes = (Category("kind", ["a", "b"], (), [0.01, 0.99]), Number("x", ("kind",), [0.5, 0.5], (), [0.0, 1e-6]))
+    found = read(MixedWorld(nodes, {}, {"x": 0.5}, {}, ("kind",)))
+    assert found.shares["kind"][0, 0] == pytest.approx(1.0)
+    assert found.log_evidence[0] == pytest.approx(np.log(0.01))
+
+
+def test_far_fetched_values_do_not_underflow():
+    nodes = (Category("kind", ["a", "b"], (), [0.5, 0.5]), Number("x", ("kind",), [0.0, 1.0], (), [1.0, 1.0]))
+    found = read(MixedWorld(nodes, {}, {"x": 200.0}, {}, ("kind",)))
+    assert found.log_evidence[0] == pytest.approx(np.log(0.5) - 0.5 * 199.0**2 - 0.5 * np.log(2.0 * np.pi))
+    assert found.shares["kind"][1, 0] == pytest.approx(1.0)
+
+
+def test_a_precise_measurement_keeps_its_digits():
+    nodes = (Number("x", (), 0.0, (), 1e4), Number("read off", ("x",), 0.0, [1.0], 1e-10))
+    found = read(MixedWorld(nodes, {}, {"read off": 12.5}, {}, ("x",)))
+    assert found.numbers["x"].sds[0] == pytest.approx(1e-5, rel=1e-6)
+    assert found.numbers["x"].means[0] == pytest.approx(12.5, abs=1e-9)
+
+
+@QUICK
+@given(mixed_worlds(most=5), st.sampled_from([0.05, 0.5, 0.9]))
+def test_a_quantile_has_its_share_below_it(world, q):
+    assume(np.isfinite(plan(world).cells))
+    for mixture in read(world).numbers.values():
+        at = mixture.quantile(q)
+        if np.isnan(at[0]):
+            continue
+        step = 1e-9 * (1.0 + np.abs(at))
+        below, above = mixture.below(at - step)[0, 0], mixture.below(at + step)[0, 0]
+        assert below - 1e-9 <= q <= above + 1e-9
+
+
+@QUICK
+@given(mixed_worlds(most=5, exact_numbers=False))
+def test_a_density_is_what_the_share_below_grows_by(world):
+    assume(len(in_boxes(world)) < 2 and np.isfinite(plan(world).cells))
+    found, true = read(world), truth(world)
+    for name, mixture in found.numbers.items():
+        if name not in in_boxes(world) and name not in world.values and true.log_evidence > -np.inf:
+            value = true.mean(name) + 0.3
+            assert mixture.density([value])[0, 0] == pytest.approx(true.density(name, value), rel=1e-6, abs=1e-9)
