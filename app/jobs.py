@@ -127,7 +127,7 @@ class Jobs:
         ours, theirs = context.Pipe()
         arguments = (
             *(theirs, self._store.records(job.study.key), job.study.name),
-            *(job.study.choices.to_json(), job.study.plan.to_json(), job.out),
+            *(job.study.choices.to_json(), job.study.plan.to_json(), job.study.max_parents, job.out),
         )
         process = context.Process(target=self._work, args=arguments, daemon=True)
         with job.lock:

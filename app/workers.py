@@ -56,7 +56,9 @@ def start(process: BaseProcess) -> None:
         process.start()
 
 
-def learn_study(pipe: Connection, records: Path, name: str, choices: str, plan: str, out: Path) -> None:
+def learn_study(
+    pipe: Connection, records: Path, name: str, choices: str, plan: str, max_parents: int, out: Path
+) -> None:
     """Learn from a study's records and write the learned file to `out`. Runs in a child."""
 
     def learn() -> Report:
@@ -65,7 +67,7 @@ def learn_study(pipe: Connection, records: Path, name: str, choices: str, plan: 
 
         progress(0.0, "Opening the records")
         table = table_of(pd.read_parquet(records), Choices.from_json(choices), name)
-        learned = engine.learn(table, Plan.from_json(plan).order(), progress=progress)
+        learned = engine.learn(table, Plan.from_json(plan).order(), max_parents=max_parents, progress=progress)
         learned.save(out)
         return ("done",)
 

@@ -30,6 +30,7 @@ def study_of(row: sqlite3.Row) -> Study:
         mended=tuple(json.loads(row["mended"])),
         links=row["links"],
         recommended=row["recommended"],
+        max_parents=row["max_parents"],
         model="none" if row["learned_file"] is None else "current" if current else "old",
         asked=row["asked"],
         last=None if row["last"] is None else Asked.from_json(row["last"]),

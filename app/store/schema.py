@@ -10,7 +10,7 @@ from pathlib import Path
 
 from engine.refusal import Refusal
 
-VERSION = 1
+VERSION = 2
 PATIENCE = 10.0  # seconds to wait for another process that is writing
 
 TABLES = """
@@ -29,6 +29,7 @@ CREATE TABLE studies (
     mended TEXT NOT NULL DEFAULT '[]',
     links INTEGER,
     recommended INTEGER,
+    max_parents INTEGER NOT NULL DEFAULT 3,
     learned_file TEXT,
     learned_basis TEXT,
     asked INTEGER NOT NULL DEFAULT 0,
@@ -47,6 +48,9 @@ CREATE TABLE jobs (
     advice TEXT
 ) STRICT;
 """
+STEPS = {  # what brings the tables of the version before to this one
+    2: "ALTER TABLE studies ADD COLUMN max_parents INTEGER NOT NULL DEFAULT 3",
+}
 
 
 class Database:
@@ -91,7 +95,7 @@ class Database:
             self._connection.close()
 
     def _prepare(self) -> None:
-        """Create the tables of an empty database and stamp the version in the same transaction."""
+        """Create the tables of an empty database, or bring older ones up to date; all or nothing."""
         with self.writing() as connection:
             found = int(connection.execute("PRAGMA user_version").fetchone()[0])
             if found > VERSION:
@@ -100,9 +104,10 @@ class Database:
                     where=str(self._path),
                     do="Install the newer version, or give another folder with --data. Nothing here was changed.",
                 )
-            if found == 0:
-                for statement in TABLES.split(";"):
-                    connection.execute(statement)
+            made = TABLES.split(";") if found == 0 else [STEPS[version] for version in range(found + 1, VERSION + 1)]
+            for statement in made:
+                connection.execute(statement)
+            if found < VERSION:
                 connection.execute(f"PRAGMA user_version = {VERSION}")
 
     @contextmanager

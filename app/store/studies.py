@@ -17,11 +17,13 @@ import pandas as pd
 import engine
 from app.store import files
 from app.store.cache import Bounded
+from app.store.lacking import ModelUnreadable, NoModelYet, NoSuchStudy, RecordsDamaged
 from app.store.mending import check, first_plan, mend
 from app.store.rows import study_of, table_of
 from app.store.schema import Database
 from app.store.values import Asked, Choices, Plan, Study
 from engine.answering.answer import Caution
+from engine.learning.checks import check_limits
 from engine.records.table import Table
 from engine.refusal import Refusal
 
@@ -29,31 +31,6 @@ RECORDS = "records.parquet"
 TABLES_KEPT = 4
 MODELS_KEPT = 4
 ABANDONED = 24 * 3600.0  # seconds after which an upload or a file that no study names is swept away
-
-
-class NoSuchStudy(Refusal):
-    """The address names a study that is not on the Shelf."""
-
-    def __init__(self, key: str) -> None:
-        super().__init__(f"There is no study “{key}”.", where=key, do="Pick one on the Shelf.")
-
-
-class ModelUnreadable(Refusal):
-    """What was learned cannot be opened: the file is damaged, missing or of another version."""
-
-    def __init__(self, path: Path) -> None:
-        super().__init__(
-            "The model of this study cannot be opened: its file is damaged, or another version of Steelyard wrote it.",
-            where=str(path),
-            do="Learn it again; the records and the order are as they were.",
-        )
-
-
-class NoModelYet(Refusal):
-    """A question was asked before anything was learned."""
-
-    def __init__(self, study: Study) -> None:
-        super().__init__(f"“{study.name}” has no model yet.", where=study.name, do="Start learning on the Model page.")
 
 
 class Store:
@@ -218,6 +195,13 @@ class Store:
         if row["learned_file"]:
             (self.files(key) / row["learned_file"]).unlink(missing_ok=True)
 
+    def limit_parents(self, key: str, most: int) -> Study:
+        """Let a column have at most this many parents when the study is learned the next time. Raises Refusal."""
+        check_limits(None, most, 0, 0)
+        with self.database.writing() as database:
+            database.execute("UPDATE studies SET max_parents = ? WHERE key = ?", (most, key))
+        return self.study(key)
+
     def learned(self, key: str) -> engine.Learned | None:
         """What was learned last, current or old; None before the first time. Raises NoSuchStudy and ModelUnreadable."""
         with self.database.reading() as database:
@@ -289,7 +273,7 @@ class Store:
             try:
                 frame = pd.read_parquet(path)
             except (OSError, ValueError) as error:
-                raise _damaged(study.name, path) from error
+                raise RecordsDamaged(study.name, path) from error
         return table_of(frame, choices, study.name)
 
     def _open_learned(self, key: str, name: str) -> engine.Learned:
@@ -317,11 +301,3 @@ class Store:
                 shutil.rmtree(path, ignore_errors=True)
             else:
                 path.unlink(missing_ok=True)
-
-
-def _damaged(name: str, path: Path) -> Refusal:
-    return Refusal(
-        f"A file of “{name}” is missing or damaged.",
-        where=str(path),
-        do="Bring the table again as a new study, or put the file back from a copy.",
-    )

@@ -128,6 +128,7 @@ class Study:
     rows: records kept.  columns: columns in the file.  digest: of the records and choices, hex.
     warnings: sentences from reading the file.  mended: what the last change of choices did to the plan, in sentences.
     links: the accepted budget, None until one is accepted.  recommended: of the learned file, None without one.
+    max_parents: the most a column may have when it is learned the next time.
     model: "old" when the records' choices or the plan changed since it was learned.  asked: questions answered.
     """
 
@@ -145,6 +146,7 @@ class Study:
     mended: tuple[str, ...]
     links: int | None
     recommended: int | None
+    max_parents: int
     model: Literal["none", "current", "old"]
     asked: int
     last: Asked | None

@@ -9,7 +9,7 @@ from app import workers
 from engine.refusal import Refusal
 
 
-def waits(pipe, records, name, choices, plan, out):
+def waits(pipe, records, name, choices, plan, max_parents, out):
     """Says how far it is, begins its file, then takes far too long."""
 
     def work():
@@ -22,20 +22,20 @@ def waits(pipe, records, name, choices, plan, out):
     workers.report(pipe, work)
 
 
-def will_not_stop(pipe, records, name, choices, plan, out):
+def will_not_stop(pipe, records, name, choices, plan, max_parents, out):
     """Ignores a polite request to end."""
     signal.signal(signal.SIGTERM, signal.SIG_IGN)
-    waits(pipe, records, name, choices, plan, out)
+    waits(pipe, records, name, choices, plan, max_parents, out)
 
 
-def refuses(pipe, records, name, choices, plan, out):
+def refuses(pipe, records, name, choices, plan, max_parents, out):
     def work():
         raise Refusal("The stage Background has too many columns.", where="Background", do="Split it.")
 
     workers.report(pipe, work)
 
 
-def breaks(pipe, records, name, choices, plan, out):
+def breaks(pipe, records, name, choices, plan, max_parents, out):
     def work():
         os.dup2(os.open(os.devnull, os.O_WRONLY), 2)  # the trace is for the console, not for the test's output
         raise ZeroDivisionError("inner words")
@@ -43,7 +43,7 @@ def breaks(pipe, records, name, choices, plan, out):
     workers.report(pipe, work)
 
 
-def leaves_a_damaged_file(pipe, records, name, choices, plan, out):
+def leaves_a_damaged_file(pipe, records, name, choices, plan, max_parents, out):
     def work():
         Path(out).write_bytes(b"not a model")
         return ("done",)

@@ -81,6 +81,15 @@ def test_learning_keeps_the_model_that_the_engine_learns_in_this_process(store, 
     assert leftovers(store, study) == []
 
 
+def test_learning_allows_as_many_parents_as_the_study_says(store, jobs, study):
+    store.limit_parents(study.key, 1)
+    jobs.start(study.key)
+    assert ended(jobs, study.key).state == "done"
+    learned = store.learned(study.key)
+    assert learned.max_parents == 1
+    assert max(len(parents) for parents in learned.parents_at(int(learned.curve["links"].max())).values()) == 1
+
+
 def test_progress_is_told_in_words_and_what_was_done_stays(jobs, store, study, working):
     jobs = working(slow_work.waits)
     jobs.start(study.key)
@@ -201,6 +210,7 @@ def test_a_damaged_result_is_not_kept(store, study, working):
     jobs.start(study.key)
     assert ended(jobs, study.key).state == "failed"
     assert store.study(study.key).model == "none"
+    jobs._jobs[study.key].thread.join(PATIENCE)
     assert leftovers(store, study) == []
 
 

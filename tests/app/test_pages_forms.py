@@ -50,6 +50,7 @@ def study(plan: Plan = PLAN, choices: Choices | None = None) -> Study:
         mended=(),
         links=None,
         recommended=None,
+        max_parents=3,
         model="none",
         asked=0,
         last=None,

@@ -27,6 +27,7 @@ NEW = Study(
     mended=(),
     links=None,
     recommended=None,
+    max_parents=3,
     model="none",
     asked=0,
     last=None,

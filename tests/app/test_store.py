@@ -3,6 +3,7 @@
 import os
 import sqlite3
 import threading
+import zipfile
 from dataclasses import replace
 
 import numpy as np
@@ -12,8 +13,9 @@ from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
 import engine
-from app.store import Choices, NoModelYet, NoSuchStudy, Plan, Store, files
+from app.store import Choices, ModelUnreadable, NoModelYet, NoSuchStudy, Plan, Store, files
 from app.store.schema import VERSION
+from engine.learning.learned import VERSION as FORMAT
 from engine.refusal import Refusal
 
 
@@ -238,6 +240,36 @@ class TestModels:
             store.keep_learned(study.key, learned_file(store, study), study.basis)
         assert len(list(store.files(study.key).iterdir())) == 2
 
+    def test_how_many_parents_are_allowed_next_is_kept_and_leaves_the_model_as_it_is(self, store, study):
+        store.keep_learned(study.key, learned_file(store, study), study.basis)
+        changed = store.limit_parents(study.key, 5)
+        assert (changed.max_parents, changed.model, changed.basis) == (5, "current", study.basis)
+        for wrong in (0, 6, -1):
+            with pytest.raises(Refusal, match="at most 1 to 5 parents"):
+                store.limit_parents(study.key, wrong)
+        assert store.study(study.key).max_parents == 5
+        with pytest.raises(NoSuchStudy):
+            store.limit_parents("nowhere", 4)
+
+    def test_a_model_of_a_version_before_is_told_to_be_learned_again(self, store, study):
+        path = learned_file(store, study)
+        store.keep_learned(study.key, path, study.basis)
+        (kept,) = store.files(study.key).glob("*.learned")
+        with zipfile.ZipFile(kept) as archive:
+            held = {name: archive.read(name) for name in archive.namelist()}
+        older = {
+            name: content.replace(f'"version": {FORMAT}'.encode(), b'"version": 2') for name, content in held.items()
+        }
+        assert older != held
+        with zipfile.ZipFile(kept, "w") as archive:
+            for name, content in older.items():
+                archive.writestr(name, content)
+        later = Store(store.folder)
+        with pytest.raises(ModelUnreadable, match="another version of Steelyard wrote it") as refused:
+            later.model(study.key)
+        assert refused.value.do == "Learn it again; the records and the order are as they were."
+        later.close()
+
 
 class TestQuestions:
     def test_the_last_question_is_kept_and_a_reload_is_not_counted_twice(self, store, study):
@@ -321,6 +353,22 @@ class TestFailures:
 
 
 class TestFolder:
+    def test_a_folder_of_the_version_before_is_brought_up_to_date_with_all_it_holds(self, store, study):
+        store.keep_learned(study.key, learned_file(store, study), study.basis)
+        before = store.study(study.key)
+        store.close()
+        with sqlite3.connect(store.folder / "steelyard.db") as database:
+            database.execute("ALTER TABLE studies DROP COLUMN max_parents")
+            database.execute("PRAGMA user_version = 1")
+        database.close()
+        reopened = Store(store.folder)
+        assert reopened.study(study.key) == before and before.max_parents == 3
+        assert reopened.limit_parents(study.key, 4).max_parents == 4
+        reopened.close()
+        again = Store(store.folder)
+        assert again.study(study.key).max_parents == 4
+        again.close()
+
     def test_a_folder_of_a_newer_version_is_refused_untouched(self, store, study):
         store.close()
         with sqlite3.connect(store.folder / "steelyard.db") as database:
