@@ -12,12 +12,13 @@ from engine.learning.folds import FOLDS
 from engine.learning.search import check_widths
 from engine.order import Direction, Order
 from engine.records.spikes import refuse_collinear, taken_as_bands
-from engine.records.table import Coded, Table
+from engine.records.table import Coded, Column, Table
 from engine.refusal import Refusal, quoted, whole
 
 FEWEST_ROWS = 30
 MOST_LEVELS = 50
 MOST_PARENTS = 5
+SMALLEST, LARGEST = 1e-100, 1e100
 
 
 def check_table(table: Table, order: Order) -> None:
@@ -125,15 +126,30 @@ def numbers_to_learn(
     """The columns learned as numbers, and a sentence for each number that is taken as bands instead.
 
     tick: hears the fraction done, which may end early.
-    Raises Refusal for numbers of which one follows exactly from others.
+    Raises Refusal for numbers too large or too alike to square, and for one that follows exactly from others.
     """
     columns = [table.columns[name] for name in order.columns]
     if not any(column.kind == "number" for column in columns):
         return (), ()
     bands = taken_as_bands(columns, max_parents, tick)
     kept = [column for column in columns if column.kind == "number" and column.name not in bands]
+    for column in kept:
+        _check_size(column)
     refuse_collinear(kept, max_parents + 1, partial(tick, 0.0))
     return tuple(column.name for column in kept), tuple(bands.values())
+
+
+def _check_size(column: Column) -> None:
+    """Raises Refusal where squares of a number, or of its differences, leave what a float holds."""
+    values = np.asarray(column.values)
+    apart, largest = float(values.max() / 2 - values.min() / 2), float(np.abs(values).max())
+    if apart < SMALLEST or largest > LARGEST:
+        raise Refusal(
+            f"The values of {quoted(column.name)} are too {'large' if largest > LARGEST else 'close together'} to be "
+            "learned from as numbers.",
+            where=column.name,
+            do="Give them in another unit.",
+        )
 
 
 def _check_values(name: str, values: np.ndarray) -> None:

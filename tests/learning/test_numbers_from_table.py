@@ -66,6 +66,8 @@ def test_the_users_cuts_are_the_bands_through_which_a_number_acts():
     [
         ({"minutes": np.r_[np.inf, np.arange(399.0)]}, "infinite in 1", "minutes"),
         ({"minutes": np.full(400, 3.5)}, "same value in “minutes”", "minutes"),
+        ({"minutes": night_bus()["minutes"] * 1e120}, "“minutes” are too large", "minutes"),
+        ({"minutes": night_bus()["minutes"] * 1e-120}, "“minutes” are too close together", "minutes"),
         ({"fare": night_bus()["minutes"] * 2.0 + 1.0}, "follows exactly from “minutes”", "fare"),
     ],
 )
