@@ -240,7 +240,7 @@ def again(asked: Asked, study: Study) -> list[tuple[str, str]]:
         ("computed", method(asked.answer)),
         (
             "intervals",
-            intervals(asked.answer, DRAWS, EACH),
+            intervals(asked.answer, DRAWS, EACH).removeprefix("intervals "),
         ),
         ("model", f"{size(links, study.links is not None)}; exact search{state}"),
         ("version", f"Steelyard {metadata.version('steelyard')}, seed {SEED}"),

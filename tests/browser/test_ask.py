@@ -31,13 +31,14 @@ def home(study: Study) -> str:
 
 
 def click(page: Page, selector: str) -> None:
-    """Click, and wait until the answer has been put in place."""
+    """Click, and wait until the answer has been put in place, with the doubt that follows it."""
     page.evaluate(
         "() => { const root = document.documentElement; delete root.dataset.swapped;"
         " document.addEventListener('htmx:after:swap', () => { root.dataset.swapped = 'yes' }, { once: true }) }"
     )
     page.click(selector)
     page.wait_for_selector("html[data-swapped]")
+    expect(page.locator(".doubt")).to_have_count(0)
 
 
 def top(page: Page, selector: str) -> float:
@@ -101,6 +102,7 @@ def test_back_and_forward_lead_through_the_questions(open_page: Callable[..., Pa
     page.goto(home)
     first = sentence(page)
     click(page, "#set-mentor-yes")
+    expect(page.locator("#answer")).to_contain_text("90% interval")
     second = sentence(page)
     assert second != first
     page.go_back()
