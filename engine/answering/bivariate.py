@@ -135,14 +135,16 @@ def _density(x: Floats) -> Floats:
 
 def _below(h: Floats, k: Floats, lean: Floats, rest: Floats) -> Floats:
     """P(Y < h, X < k) by Owen's T function (Owen 1956, eq. 3.1), to about 1e-16."""
-    infinite = ~(np.isfinite(h) & np.isfinite(k))
-    y, x = np.where(infinite, 1.0, h), np.where(infinite, 1.0, k)
-    found = 0.5 * (ndtr(y) + ndtr(x)) - _owen(y, x, lean, rest) - _owen(x, y, lean, rest)
-    opposite = (y * x < 0.0) | ((y * x == 0.0) & (y + x < 0.0))
-    found = np.where(opposite, found - 0.5, found)
-    nothing = (y == 0.0) & (x == 0.0)
-    found = np.where(nothing, 0.25 + np.arctan2(lean, rest) / (2.0 * np.pi), found)
-    return np.where(infinite, np.where((h == -np.inf) | (k == -np.inf), 0.0, ndtr(np.minimum(h, k))), found)
+    finite = np.isfinite(h) & np.isfinite(k)
+    found = np.where((h == -np.inf) | (k == -np.inf), 0.0, ndtr(np.minimum(h, k)))
+    if np.any(finite):
+        y, x, lean, rest = h[finite], k[finite], lean[finite], rest[finite]
+        inner = 0.5 * (ndtr(y) + ndtr(x)) - _owen(y, x, lean, rest) - _owen(x, y, lean, rest)
+        opposite = (y * x < 0.0) | ((y * x == 0.0) & (y + x < 0.0))
+        inner = np.where(opposite, inner - 0.5, inner)
+        nothing = (y == 0.0) & (x == 0.0)
+        found[finite] = np.where(nothing, 0.25 + np.arctan2(lean, rest) / (2.0 * np.pi), inner)
+    return found
 
 
 def _owen(h: Floats, k: Floats, lean: Floats, rest: Floats) -> Floats:

@@ -29,7 +29,7 @@ STEP = 50.0  # cells that a step of a tree counts for, however small
 CELL = {0: 2.0, 1: 40.0, 2: 600.0}  # cells that one costs, by how many numbers it cuts: so many times a product's time
 GATE = ("slope", "at", "sd", "low", "high")
 LIKELY = 1e-4  # evidence above this, against the likeliest cells, hangs on no small probability
-PART = 4.0  # cells that a part of a mixture counts for
+PART, GATED = 4.0, 1500.0  # cells that a part of a mixture counts for, when nothing cuts it and when something does
 
 
 @dataclass(frozen=True, eq=False)
@@ -141,7 +141,8 @@ def _reading(world: MixedWorld, names: tuple[str, ...]) -> Reading:
         size = len(block.equations)
         cells += outer * size * (2.0 + 0.5 * size) * (1.0 + len(block.seen)) + full * CELL.get(len(block.gates), 0.0)
         stored += outer * size * (2.0 + size) + 6.0 * full
-    cells += sum(PART * _product(block.scope, laid.sizes) for block in laid.watched.values())
+    for block in laid.watched.values():
+        cells += (GATED if block.gates else PART) * _product(block.scope, laid.sizes)
     return Reading(laid, tree, at, names, tuple(ones), np.inf if why else cells, stored, why)
 
 

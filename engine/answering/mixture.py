@@ -76,7 +76,11 @@ class Mixture:
         if len(self.weight) == 1 and self._free:
             return np.asarray(self.mean[0] + z * self.sd[0] + 0.0 * self.weight[0])
         low, high = self._bracket(z)
-        x = np.clip(self.means + z * self.sds, low, high)
+        start = self.means + z * self.sds
+        if not self._free:  # begin where normals with the same moments have it: each step is dear here
+            mean, variance = self._moments
+            start = Mixture(self.weight, mean, np.sqrt(variance)).quantile(q)
+        x = np.clip(start, low, high)
         found = np.full(x.shape, np.nan)
         going = low < high  # false too where it is nan
         for turn in range(HALVINGS):
