@@ -50,7 +50,7 @@ def test_from_a_file_to_a_pinned_and_set_answer(open_page: OpenPage, csv: Path, 
     said = re.compile(
         r"By this estimate, among records with shift work = nights, setting mentor to yes "
         r"(would move passed from|may not move passed: from) [\d.]+% to [\d.]+% "
-        r"\([+−]?[\d.]+ points?, within this model"
+        r"\([+−]?[\d.]+ points?, 90% interval"
     )
     expect(answer(page)).to_contain_text(said)
     expect(page.locator(".had")).to_contain_text("That is not the effect.")
