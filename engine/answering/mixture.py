@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, fields, replace
 from functools import cached_property
 
 import numpy as np
@@ -52,6 +52,16 @@ class Mixture:
         mean, variance = self._moments
         away = mean - self.means
         return np.asarray(np.sqrt((self.weight * (variance + away * away)).sum(axis=0)))
+
+    def only(self, draw: int) -> Mixture:
+        """One draw of it, for what need not be found in all."""
+
+        def column(array: Floats) -> Floats:
+            return np.broadcast_to(array, self.weight.shape)[:, draw : draw + 1]
+
+        gate = self.gate and Gate(*(column(getattr(self.gate, side.name)) for side in fields(Gate)))
+        sides = (None if side is None else column(side) for side in (self.low, self.high))
+        return Mixture(column(self.weight), column(self.mean), column(self.sd), gate, *sides)
 
     def below(self, grid: Sequence[float] | Floats) -> Floats:
         """(grid, draws) share below each value."""

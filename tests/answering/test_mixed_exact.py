@@ -163,6 +163,16 @@ def test_a_quantile_has_its_share_below_it(world, q):
         assert below - 1e-9 <= q <= above + 1e-9
 
 
+@settings(max_examples=20, deadline=None)
+@given(mixed_worlds(most=5), st.integers(0, 2))
+def test_one_draw_of_a_distribution_reads_as_it_does_among_all(world, draw):
+    assume(np.isfinite(plan(world).cells))
+    for mixture in read(world, shaken_parameters(world, 2, 1), 2).numbers.values():
+        alone = mixture.only(draw)
+        assert alone.means == pytest.approx(mixture.means[[draw]], nan_ok=True)
+        assert alone.quantile(0.3) == pytest.approx(mixture.quantile(0.3)[[draw]], nan_ok=True)
+
+
 @QUICK
 @given(mixed_worlds(most=5, exact_numbers=False))
 def test_a_density_is_what_the_share_below_grows_by(world):
