@@ -7,7 +7,7 @@ from engine.answering.answer import Answer, Caution, Counted, Marginal, Reading
 from engine.answering.levers import Fix, Mix, Rule, Shift
 from engine.model import Learned, Model, learn, open_learned
 from engine.network.nodes import Category, Number
-from engine.order import LESS, MORE, Order, Stage
+from engine.order import LESS, MORE, Order, Stage, Unrecorded
 from engine.records.reading import read_frame, read_table
 from engine.records.table import Table
 from engine.refusal import Refusal
@@ -32,6 +32,7 @@ __all__ = [
     "Shift",
     "Stage",
     "Table",
+    "Unrecorded",
     "learn",
     "open_learned",
     "read_frame",

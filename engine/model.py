@@ -297,6 +297,12 @@ def learn(
     folds: False leaves the held-out scores out and recommends the size with the best score.
     Raises Refusal for records or an order that cannot be learned from.
     """
+    if isinstance(order, Order) and order.unrecorded:
+        raise Refusal(
+            "Unrecorded causes cannot be declared yet.",
+            where="unrecorded",
+            do="Leave them out of the order; the cautions speak of what was not recorded.",
+        )
     found = learning.learn(table, order, max_links, max_parents, graphs, seed, progress, folds=folds)
     return Learned(**{field.name: getattr(found, field.name) for field in fields(found)})
 

@@ -45,20 +45,33 @@ class Stage:
 
 
 @dataclass(frozen=True)
+class Unrecorded:
+    """A cause in no column that drives both `first` and `second`; `first` comes before `second`.
+
+    direct: whether `first` may also lead to `second` directly. The records cannot tell; False rules that link out.
+    """
+
+    first: str
+    second: str
+    direct: bool = True
+
+
+@dataclass(frozen=True)
 class Order:
     """Stages, early to late: a column may lead to columns of its own stage and of later ones.
 
     stages: (name, columns) pairs or Stages.  insist, rule_out: (source, target) links.
+    unrecorded: pairs of columns that share a cause which is in no column; within a stage they say which comes first.
     changeable: columns that may get a lever.  outcomes: column -> its better level or levels, or MORE or LESS.
 
-    Raises Refusal for a column in two places, for a column that no stage holds, for what is no stage, link or better
-    level, and for links that contradict the stages or each other.
+    Raises Refusal for a column in two places, for a column that no stage holds, for what is no stage, link, unrecorded
+    cause or better level, and for links and unrecorded causes that contradict the stages or each other.
     """
 
     stages: tuple[Stage, ...]
     insist: tuple[Link, ...] = ()
     rule_out: tuple[Link, ...] = ()
-    unrecorded: tuple[object, ...] = ()
+    unrecorded: tuple[Unrecorded, ...] = ()
     changeable: tuple[str, ...] = ()
     outcomes: Mapping[str, Better] = field(default_factory=dict)
     _places: Mapping[str, int] = field(init=False, repr=False, compare=False)
@@ -69,7 +82,7 @@ class Order:
         stages: Iterable[Stage | tuple[str, Iterable[str]]],
         insist: Iterable[Link] = (),
         rule_out: Iterable[Link] = (),
-        unrecorded: Iterable[object] = (),
+        unrecorded: Iterable[Unrecorded] = (),
         changeable: Iterable[str] = (),
         outcomes: Mapping[str, str | Direction | Iterable[str]] | None = None,
     ) -> None:
@@ -79,19 +92,14 @@ class Order:
         keep("stages", tuple(_stage(stage) for stage in stages))
         keep("insist", _links(insist, "insist"))
         keep("rule_out", _links(rule_out, "rule_out"))
-        keep("unrecorded", tuple(unrecorded))
+        keep("unrecorded", tuple(_unrecorded(given) for given in unrecorded))
         keep("changeable", tuple(dict.fromkeys(changeable)))
         keep("outcomes", {column: _better(column, better) for column, better in (outcomes or {}).items()})
-        if self.unrecorded:
-            raise Refusal(
-                "Unrecorded causes cannot be declared yet.",
-                where="unrecorded",
-                do="Leave them out of the order; the cautions speak of what was not recorded.",
-            )
         keep("_places", self._placed())
         self._check_names()
-        keep("_led", _reached(self.columns, self.insist))
+        keep("_led", _reached(self.columns, (*self.insist, *((each.first, each.second) for each in self.unrecorded))))
         self._check_links()
+        self._check_unrecorded()
 
     @property
     def columns(self) -> tuple[str, ...]:
@@ -134,8 +142,13 @@ class Order:
             return True, "you insist on it"
         if (source, target) in self.rule_out:
             return False, "you ruled it out"
+        for pair in self.unrecorded:
+            if (source, target) == (pair.first, pair.second) and not pair.direct:
+                return False, "you said that only something unrecorded ties them, no direct link"
+            if (source, target) == (pair.second, pair.first):
+                return False, f"you said that {pair.first} comes first"
         if source in self._led[target]:
-            return False, "it would close a circle with the links you insist on"
+            return False, "it would close a circle with what you said comes first"
         if early == late:
             return True, f"both are in {self.stages[early].name}"
         return True, f"{self.stages[early].name} comes before {self.stages[late].name}"
@@ -157,6 +170,7 @@ class Order:
     def _check_names(self) -> None:
         mentions = [("insist", name) for link in self.insist for name in link]
         mentions += [("rule_out", name) for link in self.rule_out for name in link]
+        mentions += [("unrecorded", name) for pair in self.unrecorded for name in (pair.first, pair.second)]
         mentions += [("changeable", name) for name in self.changeable]
         mentions += [("outcomes", name) for name in self.outcomes]
         for where, name in mentions:
@@ -164,7 +178,7 @@ class Order:
                 raise Refusal(
                     f"The column {quoted(name)} is in no stage of the order.",
                     where=where,
-                    do=f"Put it into a stage, or take it out of {where.replace('_', ' ')}.",
+                    do="Put it into a stage, or say nothing of it.",
                 )
 
     def _check_links(self) -> None:
@@ -187,10 +201,33 @@ class Order:
                 )
             if source in self._led[target]:
                 raise Refusal(
-                    f"The links you insist on run in a circle through {quoted(source)} and {quoted(target)}.",
+                    f"What you say comes first runs in a circle through {quoted(source)} and {quoted(target)}.",
                     where="insist",
                     do="Take one link of the circle out.",
                 )
+
+    def _check_unrecorded(self) -> None:
+        said: set[frozenset[str]] = set()
+        for pair in self.unrecorded:
+            first, second = quoted(pair.first), quoted(pair.second)
+            early, late = self._places[pair.first], self._places[pair.second]
+            wrong = do = None
+            if pair.first == pair.second:
+                wrong, do = f"{first} cannot share an unrecorded cause with itself.", "Name two columns."
+            elif frozenset((pair.first, pair.second)) in said:
+                wrong, do = f"The unrecorded cause of {first} and {second} is stated twice.", "State it once."
+            elif early > late:
+                after = f"{self.stages[early].name} comes after {self.stages[late].name}"
+                wrong, do = f"{first} is said to come before {second}, but {after}.", f"Name {second} first."
+            elif pair.first in self._led[pair.second]:
+                wrong = f"What you say comes first runs in a circle through {first} and {second}."
+                do = "Name the two in the other sequence, or take a link that you insist on out."
+            elif not pair.direct and (pair.first, pair.second) in self.insist:
+                wrong = f"You insist that {first} leads to {second} and say that it does not lead there directly."
+                do = "Keep one of the two."
+            if wrong is not None:
+                raise Refusal(wrong, where="unrecorded", do=do)
+            said.add(frozenset((pair.first, pair.second)))
 
 
 def _stage(stage: Stage | tuple[str, Iterable[str]]) -> Stage:
@@ -210,6 +247,16 @@ def _links(links: Iterable[Link], where: str) -> tuple[Link, ...]:
         if isinstance(link, str) or len(link) != 2:
             raise Refusal(f"{link!r} is no link.", where=where, do='Write ("earlier column", "later column").')
     return tuple(dict.fromkeys((source, target) for source, target in given))
+
+
+def _unrecorded(given: object) -> Unrecorded:
+    if not isinstance(given, Unrecorded) or not isinstance(given.direct, bool):
+        raise Refusal(
+            f"{given!r} is no unrecorded cause of two columns.",
+            where="unrecorded",
+            do='Write engine.Unrecorded("earlier column", "later column", direct=True).',
+        )
+    return given
 
 
 def _better(column: str, better: str | Direction | Iterable[str]) -> Better:

@@ -4,7 +4,7 @@ import pickle
 
 import pytest
 
-from engine.order import LESS, MORE, Order, better_levels
+from engine.order import LESS, MORE, Order, Unrecorded, better_levels
 from engine.refusal import Refusal
 
 STAGES = [("Background", ["age", "region"]), ("Programme", ["mentor", "hours"]), ("Outcome", ["passed"])]
@@ -36,6 +36,19 @@ def test_insisting_forbids_every_way_back():
     assert order.may_lead("a", "c") and order.may_lead("d", "a")
 
 
+def test_an_unrecorded_cause_says_which_comes_first_and_may_rule_the_direct_link_out():
+    order = Order(STAGES, unrecorded=[Unrecorded("mentor", "hours"), Unrecorded("mentor", "passed", direct=False)])
+    assert order.may_lead("mentor", "hours") and not order.may_lead("hours", "mentor")
+    assert order.why("hours", "mentor") == "you said that mentor comes first"
+    assert not order.may_lead("mentor", "passed") and order.may_lead("hours", "passed")
+    assert order.why("mentor", "passed") == "you said that only something unrecorded ties them, no direct link"
+
+
+def test_what_comes_first_closes_every_way_back():
+    order = Order([("All", ["a", "b", "c"])], insist=[("b", "c")], unrecorded=[Unrecorded("a", "b")])
+    assert not order.may_lead("c", "a") and order.may_lead("a", "c")
+
+
 def test_allows_lists_every_ordered_pair_once():
     order = Order(STAGES, insist=[("mentor", "passed")], rule_out=[("region", "passed")])
     allows = order.allows()
@@ -52,7 +65,9 @@ def test_an_outcome_is_a_level_several_levels_or_a_direction():
 
 
 def test_an_order_survives_pickling():
-    order = Order(STAGES, insist=[("mentor", "passed")], changeable=["mentor"], outcomes={"hours": LESS})
+    unrecorded = [Unrecorded("mentor", "hours", direct=False)]
+    more = {"changeable": ["mentor"], "outcomes": {"hours": LESS}, "unrecorded": unrecorded}
+    order = Order(STAGES, insist=[("mentor", "passed")], **more)
     assert pickle.loads(pickle.dumps(order)) == order
 
 
@@ -67,7 +82,15 @@ def test_an_order_survives_pickling():
         ({"insist": [("age", "passed")], "rule_out": [("age", "passed")]}, "rule it out as well"),
         ({"insist": [("age", "region"), ("region", "age")]}, "circle"),
         ({"insist": [("age", "age")]}, "itself"),
-        ({"unrecorded": [("age", "passed")]}, "cannot be declared yet"),
+        ({"unrecorded": [("age", "passed")]}, "is no unrecorded cause"),
+        ({"unrecorded": [Unrecorded("age", "passed", direct="no")]}, "is no unrecorded cause"),
+        ({"unrecorded": [Unrecorded("age", "nobody")]}, "“nobody” is in no stage"),
+        ({"unrecorded": [Unrecorded("age", "age")]}, "with itself"),
+        ({"unrecorded": [Unrecorded("age", "region"), Unrecorded("region", "age")]}, "in a circle"),
+        ({"unrecorded": [Unrecorded("age", "region"), Unrecorded("age", "region", False)]}, "stated twice"),
+        ({"unrecorded": [Unrecorded("passed", "mentor")]}, "Outcome comes after Programme"),
+        ({"unrecorded": [Unrecorded("age", "region")], "insist": [("region", "age")]}, "in a circle"),
+        ({"unrecorded": [Unrecorded("age", "passed", direct=False)], "insist": [("age", "passed")]}, "does not lead"),
         ({"insist": ["ab"]}, "'ab' is no link"),
         ({"rule_out": [("age",)]}, "is no link"),
         ({"outcomes": {"passed": []}}, "“passed” has no level that counts as better"),

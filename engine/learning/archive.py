@@ -12,7 +12,7 @@ from typing import Any
 
 import numpy as np
 
-from engine.order import Direction, Order
+from engine.order import Direction, Order, Unrecorded
 from engine.records.table import Coded
 from engine.refusal import Refusal
 
@@ -75,6 +75,7 @@ def order_described(order: Order) -> Described:
         "stages": [[stage.name, list(stage.columns)] for stage in order.stages],
         "insist": order.insist,
         "rule_out": order.rule_out,
+        "unrecorded": [[pair.first, pair.second, pair.direct] for pair in order.unrecorded],
         "changeable": order.changeable,
         "outcomes": {
             column: better.value if isinstance(better, Direction) else list(better)
@@ -88,6 +89,7 @@ def order_from(described: Described) -> Order:
         [(name, columns) for name, columns in described["stages"]],
         insist=[(source, target) for source, target in described["insist"]],
         rule_out=[(source, target) for source, target in described["rule_out"]],
+        unrecorded=[Unrecorded(*pair) for pair in described.get("unrecorded", ())],
         changeable=described["changeable"],
         outcomes={
             column: Direction(better) if isinstance(better, str) else better
