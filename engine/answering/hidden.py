@@ -33,11 +33,14 @@ def given_some(network: Network, rows: Rows, column: str, families: Sequence[str
     codes = np.column_stack([np.empty((rows.count, 0), dtype=np.int64), *(rows.codes[name] for name in fixed)])
     groups, which = np.unique(codes, axis=0, return_inverse=True)
     found: Floats | None = None
+    plan: exact_mixed.Plan | None = None
     for place, group in enumerate(groups):
         at = np.flatnonzero(which.ravel() == place)
         level = dict(zip(fixed, (int(code) for code in group), strict=True))
         values = {name: rows.values[name][at] for name in concerned if name in rows.values}
-        read = _read(network, nodes, column, hidden, level, values)
+        world, drawn = _group(network, nodes, column, hidden, level, values)
+        plan = plan or exact_mixed.plan(world)  # the same for every group
+        read = _read(plan, world, drawn, column, values)
         if found is None:
             found = np.empty((rows.count, read.shape[1]))
         found[at] = read
@@ -45,34 +48,40 @@ def given_some(network: Network, rows: Rows, column: str, families: Sequence[str
     return found
 
 
-def _read(
+def _group(
     network: Network,
     nodes: Sequence[Node],
     column: str,
     hidden: frozenset[str],
     level: dict[str, int],
     values: dict[str, Floats],
-) -> Floats:
-    """One group of rows, alike in `level`: their numbers take the place of draws."""
+) -> tuple[MixedWorld, dict[str, Parameters]]:
+    """One group of rows, alike in `level`: their numbers take the place of draws.
+
+    A category that is known is left with its one level, as likely as that is; a number less its own value is 0.
+    """
     made: list[Node] = []
     drawn: dict[str, Parameters] = {}
-    pins: dict[str, frozenset[int]] = {}
     seen: dict[str, float] = {}
     for node in nodes:
         if isinstance(node, Category):
             category = _category(node, hidden, level)
             made.append(category)
             drawn[node.name] = np.asarray(category.table)[..., None]
-            if node.name not in hidden:
-                pins[node.name] = frozenset([level[node.name]])
         else:
             number, drawn[node.name] = _number(network, node, hidden, level, values)
             made.append(number)
             if node.name not in hidden:
                 seen[node.name] = 0.0
+    pins = {node.name: frozenset([0]) for node in made if isinstance(node, Category) and node.name not in hidden}
+    return MixedWorld(tuple(made), pins, seen, {}, (column,)), drawn
+
+
+def _read(
+    plan: exact_mixed.Plan, world: MixedWorld, drawn: dict[str, Parameters], column: str, values: dict[str, Floats]
+) -> Floats:
+    """(rows, ...) of one group. Raises Refusal where that costs too much."""
     rows = len(next(iter(values.values()))) if values else 1  # without numbers they all read the same
-    world = MixedWorld(tuple(made), pins, seen, {}, (column,))
-    plan = exact_mixed.plan(world)
     if not plan.cells * rows <= LIMIT:
         why = plan.why or f"it would take {plan.cells * rows:.1e} table cells, where {LIMIT:.0e} is the most"
         raise Refusal(
@@ -90,7 +99,11 @@ def _category(node: Category, hidden: frozenset[str], level: dict[str, int]) -> 
     """The category with its table at what is known of its parents."""
     at = tuple(slice(None) if parent in hidden else level[parent] for parent in node.parents)
     parents = tuple(parent for parent in node.parents if parent in hidden)
-    return Category(node.name, node.levels, parents, np.asarray(node.table)[at])
+    table = np.asarray(node.table)[at]
+    if node.name in hidden:
+        return Category(node.name, node.levels, parents, table)
+    own = level[node.name]
+    return Category(node.name, node.levels[own : own + 1], parents, table[..., own : own + 1])
 
 
 def _number(
