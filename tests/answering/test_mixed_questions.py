@@ -107,14 +107,21 @@ def slow(nodes, before, levers, column, after=None):
     weights = np.array([math.exp(log - largest) for log, _, _ in found])
     log_evidence = largest + math.log(weights.sum())
     weights /= weights.sum()
-    shares = sum(weight * one.shares[name] for weight, (_, one, name) in zip(weights, found, strict=True))
-    if isinstance(next(node for node in nodes if node.name == column), Category):
+    node = next(node for node in nodes if node.name == column)
+    shares = sum(weight * shares_of(one, name, node) for weight, (_, one, name) in zip(weights, found, strict=True))
+    if isinstance(node, Category):
         return log_evidence, shares, None, None, None
     means = np.array([one.mean(name) for _, one, name in found])
     squares = np.array([one.sd(name) ** 2 + one.mean(name) ** 2 for _, one, name in found])
     below = [sum(w * one.below(name, x) for w, (_, one, name) in zip(weights, found, strict=True)) for x in GRID]
     mean = weights @ means
     return log_evidence, shares, mean, math.sqrt(max(weights @ squares - mean**2, 0.0)), below
+
+
+def shares_of(one, name, node):
+    if isinstance(node, Category):
+        return one.shares[name]
+    return np.diff([0.0, *(one.below(name, cut) for cut in node.bands), 1.0])
 
 
 @st.composite
@@ -194,7 +201,9 @@ def mixed_questions(draw, most=4, after=False):
     assume(not any(isinstance(wanted, float) for wanted in later.values()))
     acting = {parent for node in net.nodes if isinstance(node, Category) for parent in node.parents}
     ranged = {column for column, wanted in (pinned | later).items() if not isinstance(wanted, float)}
-    assume(len((acting | ranged) & set(net.numbers)) < 2)  # the slow truth takes long for more
+    boxed = (acting | ranged) & set(net.numbers)
+    copied = [column for column in chosen if column in acting or column in later]
+    assume(len(boxed) < 2 and len(boxed) + len(copied) < 3)  # the slow truth takes long for more
     return net, pinned, {column: draw(lever(net, column)) for column in chosen}, later
 
 
@@ -215,7 +224,7 @@ def ask(question, **more):
         raise
 
 
-@settings(max_examples=60, deadline=None)
+@settings(max_examples=30, deadline=None)
 @given(mixed_questions())
 def test_every_kind_of_lever_agrees_with_every_way_in_which_it_takes(question):
     net, pinned, set_to, _ = question
@@ -232,8 +241,8 @@ def test_every_kind_of_lever_agrees_with_every_way_in_which_it_takes(question):
         assert answer.log_evidence == pytest.approx(seen[net.names[0]][0], abs=1e-8)
 
 
-@settings(max_examples=30, deadline=None)
-@given(mixed_questions(after=True))
+@settings(max_examples=15, deadline=None)
+@given(mixed_questions(most=3, after=True))
 def test_pins_after_the_levers_agree_with_every_way_in_which_they_take(question):
     net, pinned, set_to, later = question
     expected = {
@@ -246,7 +255,7 @@ def test_pins_after_the_levers_agree_with_every_way_in_which_they_take(question)
         held_to(answer[column].set, expected[column])
 
 
-@settings(max_examples=25, deadline=None)
+@settings(max_examples=15, deadline=None)
 @given(mixed_questions(), st.data())
 def test_the_joint_of_columns_of_both_kinds_adds_up_to_each_of_them(question, data):
     net = question[0]
