@@ -1,4 +1,4 @@
-"""Measures learning from categories and numbers with one BLAS thread; prints JSON. Run by test_mixed_learning.py.
+"""Measures processor seconds of learning from categories and numbers; prints JSON. Run by test_mixed_learning.py.
 
 python -m tests.benchmarks.measured_mixed          37 columns, 10,000 records
 python -m tests.benchmarks.measured_mixed long     also 20 columns, 40,000 and 400,000 records
@@ -31,9 +31,9 @@ def records(columns: int, rows: int) -> tuple[Table, Truth]:
 
 
 def seconds(table: Table, truth: Truth, **how: bool) -> float:
-    began = time.perf_counter()
+    began = time.process_time()
     learn(table, truth.order, max_parents=PARENTS, **how)
-    return time.perf_counter() - began
+    return time.process_time() - began
 
 
 def regressed_score(frame, standard, categories, numbers, child):
@@ -70,7 +70,7 @@ def reference(table: Table, truth: Truth) -> tuple[int, float, float]:
     scale = coded.values.std(axis=0)
     standard = pd.DataFrame((coded.values - coded.values.mean(axis=0)) / scale, columns=list(coded.numbers))
     scores = []
-    began = time.perf_counter()
+    began = time.process_time()
     for child, parents in chosen:
         if child in coded.numbers:
             categories = [parent for parent in parents if parent not in coded.numbers]
@@ -78,7 +78,7 @@ def reference(table: Table, truth: Truth) -> tuple[int, float, float]:
             scores.append(regressed_score(frame, standard, categories, slopes, child))
         else:
             scores.append(grouped_score(frame, levels, child, parents))
-    spent = (time.perf_counter() - began) / SAMPLE * len(every)
+    spent = (time.process_time() - began) / SAMPLE * len(every)
     moments = moments_of(coded)
     assert moments is not None
     by_counts, by_moments = set_scores(counts_of(coded), PARENTS + 1), number_scores(moments, PARENTS + 1)
