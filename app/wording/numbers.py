@@ -6,7 +6,7 @@ import math
 from dataclasses import dataclass
 
 MINUS = "−"
-NEVER_FINER = 100  # a figure is told to a hundredth of what the values spread by, not finer
+NEVER_FINER = 20  # parts of what the values spread by: an interval narrower than one of them gets no more decimals
 MOST_MORE = 3  # decimals added at most, so that the figures of a change agree with each other
 CERTAIN = 1e-9  # a change this small beside the spread of the values is the rounding of sums
 
@@ -48,8 +48,8 @@ def round_value(value: float, width: float) -> float:
 class Move:
     """From one mean to another, with the interval of the change, in the number's own unit.
 
-    base: decimals to begin with.  The words agree with each other: when the change does not come out of the rounded
-    ends, or the decimals cannot show that the interval leaves 0 out, all get more.
+    base: decimals to begin with.  The words agree with each other: when the decimals cannot show that the interval
+    leaves 0 out all get more, and when the change does not come out of the rounded ends all get one less, or else more.
     """
 
     start: float
@@ -77,7 +77,8 @@ class Move:
     def decimals(self) -> int:
         tried = range(self.base, self.base + MOST_MORE + 1)
         shown = [decimals for decimals in tried if not self._hides(decimals)] or [tried[-1]]
-        return next((decimals for decimals in shown[:2] if self._adds_up(decimals)), shown[0])
+        fewer = [shown[0] - 1] if shown[0] > 0 and not self._hides(shown[0] - 1) else []
+        return next((decimals for decimals in (shown[0], *fewer, *shown[1:2]) if self._adds_up(decimals)), shown[0])
 
     @property
     def ends(self) -> tuple[str, str]:
