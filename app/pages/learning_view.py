@@ -8,18 +8,23 @@ from datetime import UTC, datetime
 from markupsafe import Markup
 
 from app.drawing.beam import progress
+from app.store import Study
 from app.store.progress import JobState
 from app.wording.amounts import plural
+from engine.records.table import Table
 
 SOON = 3.0  # seconds of work before an estimate of the time left is worth saying
-STEPS = (  # how learning tells its steps: the start of its words, the step's name, and what is done in it
-    ("Starting", "Starting", "a process of its own; this page may be closed"),
-    ("Opening", "Opening the records", "as they stand on the Records page"),
-    ("Counting", "Counting", "how often levels occur together"),
-    ("Finding", "The best model of every size", "exactly, among all that the order allows"),
-    ("Weighing", "Weighing every model", "how sure each link is"),
-    ("Scoring", "Trying it on records held out", "learning again without each part in turn"),
+STEPS = (  # how learning tells its steps: how its words may start, the step's name, and what is done in it
+    (("Starting",), "Starting", "a process of its own; this page may be closed"),
+    (("Opening", "Looking"), "Opening the records", "as they stand on the Records page"),
+    (("Counting", "Adding"), "Counting", "how often levels occur together, and how numbers vary"),
+    (("Finding",), "The best model of every size", "exactly, among all that the order allows"),
+    (("Weighing",), "Weighing every model", "how sure each link is"),
+    (("Scoring",), "Trying it on records held out", "learning again without each part in turn"),
+    (("Trying",), "Trying one parent more", "where a column has as many as were allowed"),
+    (("Done",), "Keeping the model", "it opens in a moment"),
 )
+TOLD = ("Looking", "Adding", "Scoring")  # words that say more of a step than its own
 
 
 @dataclass(frozen=True)
@@ -54,6 +59,27 @@ def view(state: JobState, now: datetime | None = None) -> LearningView:
     return LearningView(progress(state.fraction, state.words), words, left, steps, f"Learning: {said}.")
 
 
+def way_on(state: JobState, table: Table, study: Study) -> tuple[str, str] | None:
+    """Where what stopped a job can be mended: (address, words of the link); None where no page is better than another.
+
+    table: of the study as it stands now.
+    """
+    home, names = f"/study/{study.key}", list(table.columns)
+    if state.state != "failed" or state.where is None:
+        return None
+    if state.where in names:
+        place = names.index(state.where)
+        return f"{home}/records?open={place}#column-{place}", f"Go to {state.where} on Records"
+    if state.where == "insist" or state.where in [name for name, _ in study.plan.stages]:
+        return f"{home}/order", "Go to Order"
+    return f"{home}/records", "Go to Records"
+
+
+def mended(state: JobState, table: Table, study: Study) -> bool:
+    """Whether the column that stopped a job has left the order since."""
+    return state.where in table.columns and state.where not in study.plan.columns
+
+
 def ended(state: JobState) -> tuple[str, str] | None:
     """What to say of a job that ended without a model, and what to do; None for one that is done or under way."""
     match state.state:
@@ -75,7 +101,7 @@ def _steps(state: JobState) -> tuple[Step, ...]:
         return tuple(Step("done" if words != state.words else "now", words, "") for words in dict.fromkeys(told))
     steps = []
     for place, (_, name, what) in enumerate(STEPS):
-        now = state.words.rstrip(".") if place == at and state.words.startswith("Scoring") else what
+        now = state.words.rstrip(".") if place == at and state.words.startswith(TOLD) else what
         steps.append(Step("done" if place < at else "now" if place == at else "to come", name, now))
     return tuple(steps)
 

@@ -10,6 +10,7 @@ from fastapi.responses import RedirectResponse
 
 from app.pages import learning_view, model_view
 from app.store import ModelUnreadable, Study
+from engine.learning.checks import MOST_PARENTS
 from engine.refusal import Refusal
 
 router = APIRouter()
@@ -44,7 +45,10 @@ def progress(request: Request, key: str) -> Response:
 
 
 @router.post("/study/{key}/learn")
-def learn(request: Request, key: str) -> Response:
+def learn(request: Request, key: str, max_parents: Annotated[int | None, Form()] = None) -> Response:
+    """Start learning. max_parents: the most that a column may have from now on; None: as before."""
+    if max_parents is not None:
+        request.app.state.store.limit_parents(key, max_parents)
     request.app.state.jobs.start(key)
     return RedirectResponse(f"/study/{key}/model", status_code=303)
 
@@ -75,12 +79,13 @@ def _page(request: Request, key: str, template: str, links: str, column: str | N
     store, jobs = request.app.state.store, request.app.state.jobs
     study: Study = store.study(key)
     state = jobs.state(key)
-    learning = ended = view = None
+    learning = ended = view = way_on = None
     wanted = _size(links)
     if state is not None and state.state == "running":
         learning = learning_view.view(state)
     else:
-        ended = learning_view.ended(state) if state is not None else None
+        if state is not None and not learning_view.mended(state, store.table(key), study):
+            ended, way_on = learning_view.ended(state), learning_view.way_on(state, store.table(key), study)
         try:
             learned = store.learned(key)
         except ModelUnreadable as refusal:
@@ -95,6 +100,8 @@ def _page(request: Request, key: str, template: str, links: str, column: str | N
         "state": state,
         "learning": learning,
         "ended": ended,
+        "way_on": way_on,
+        "most_parents": MOST_PARENTS,
         "view": view,
         "headline": model_view.headline(view) if view else None,
         "deck": model_view.deck(view) if view else None,

@@ -34,6 +34,7 @@ class Line:
 class Account:
     """One column. leads: what it leads to, a sentence, or nothing.  note: what the table leaves out.
 
+    first: whether it is told before others that may be folded.
     number: whether its table tells means; then `parents` are its category parents, and `levels` what is told of it.
     """
 
@@ -46,6 +47,7 @@ class Account:
     levels: tuple[str, ...]
     lines: tuple[Line, ...]
     note: str
+    first: bool = False
     number: bool = False
 
 
@@ -56,10 +58,10 @@ def accounts(model: Model, picked: str | None) -> tuple[Account, ...]:
     def rank(name: str) -> tuple[bool, bool, bool]:
         return name != picked, name not in outcomes, model.order is not None and name not in model.changeable
 
-    return tuple(_account(model, name, picked) for name in sorted(model.network.names, key=rank))
+    return tuple(_account(model, name, picked, outcomes) for name in sorted(model.network.names, key=rank))
 
 
-def _account(model: Model, name: str, picked: str | None) -> Account:
+def _account(model: Model, name: str, picked: str | None, outcomes: tuple[str, ...]) -> Account:
     told, node = model.account(name, ROWS), model.network.node(name)
     leads = [target for source, target in model.links if source == name and (source, target) not in model.unsettled]
     said = (Said("It leads to "), *series([[Said(target, "name")] for target in leads], " and "), Said("."))
@@ -81,6 +83,7 @@ def _account(model: Model, name: str, picked: str | None) -> Account:
         levels=heads,
         lines=lines,
         note=_note(told.left_out, hidden),
+        first=name == picked or name in outcomes,
         number=number,
     )
 

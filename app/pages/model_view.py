@@ -6,21 +6,23 @@ import math
 from dataclasses import dataclass
 from urllib.parse import urlencode
 
+import numpy as np
 from markupsafe import Markup
 
 from app.drawing import arcs, curve
 from app.drawing.arcs import Arc
 from app.drawing.curve import Point, figure_words
 from app.pages.model_accounts import Account, accounts
+from app.pages.model_notes import Limit, limits, notes, settled_by_shape
 from app.store import Study
 from app.wording.amounts import plural
 from app.wording.links import SETTLED, doubted, strength, support, wide_stages
 from engine.learning.layers import WIDEST_LAYERED
 from engine.model import Learned, Model
 
-SHOWN_LINKS = 30  # rows of the links table before those with less support are folded
+SHOWN_LINKS = 20  # rows of the links table before those with less support are folded
 SUREST = 1.0  # where every support shown as "over 99%" stands in the table
-SHOWN_COLUMNS = 15  # columns told before the others are folded
+SHOWN_COLUMNS = 6  # columns told before the others are folded, and every outcome and picked column
 EXACT = 1e-6  # nats by which a bound may exceed the score it bounds, for rounding
 
 
@@ -58,6 +60,8 @@ class ModelView:
     fewer, more: addresses of the budgets beside it, None at an end.  picked: the column picked out, or None.
     unpicked: the address with nothing picked out.  program: the address of the model as a program.
     wide: what to know of support where a stage holds many columns.  doubted: of links with little, None without any.
+    shaped: why nobody settled some directions, None without such.  limits: columns that want more parents.
+    most: parents that were allowed.  worth: what the records count for, None where each counts for one.
     """
 
     links: int
@@ -80,6 +84,10 @@ class ModelView:
     addresses: dict[str, str]
     picked: str | None
     notes: tuple[str, ...]
+    shaped: str | None
+    limits: tuple[Limit, ...]
+    most: int
+    worth: int | None
     records: int
     unpicked: str
     program: str
@@ -95,11 +103,15 @@ class ModelView:
 
     @property
     def first_accounts(self) -> tuple[Account, ...]:
-        return self.accounts[:SHOWN_COLUMNS]
+        return self.accounts[: self._shown_accounts]
 
     @property
     def more_accounts(self) -> tuple[Account, ...]:
-        return self.accounts[SHOWN_COLUMNS:]
+        return self.accounts[self._shown_accounts :]
+
+    @property
+    def _shown_accounts(self) -> int:
+        return max(SHOWN_COLUMNS, sum(account.first for account in self.accounts))
 
     @property
     def is_in_use(self) -> bool:
@@ -142,7 +154,11 @@ def view(study: Study, learned: Learned, links: int | None = None, picked: str |
         accounts=accounts(model, picked),
         addresses=addresses,
         picked=picked,
-        notes=learned.notes,
+        notes=notes(learned),
+        shaped=settled_by_shape(learned, model, settled),
+        limits=limits(model, learned.max_parents),
+        most=learned.max_parents,
+        worth=worth if (worth := round(float(learned.coded.weights.sum()))) < learned.rows else None,
         records=learned.rows,
         unpicked=_address(study.key, shown, None),
         program=f"/study/{study.key}/model.py?{urlencode({'links': str(shown)})}",
@@ -179,7 +195,7 @@ def deck(view: ModelView) -> str:
 
 
 def _points(learned: Learned) -> list[Point]:
-    rows, table = max(learned.rows, 1), learned.curve
+    rows, table = float(learned.coded.weights.sum()), learned.curve
     return [
         Point(int(links), float(score) / rows, _measured(held_out), _measured(error))
         for links, score, held_out, error in zip(
@@ -240,7 +256,9 @@ def _rows(
     supports = {link: learned.support_of(*link) for link in model.links}
     said = {link: "100%" if link in learned.order.insist else support(supports[link]) for link in model.links}
     shown = {link: SUREST if said[link].startswith("over") else round(supports[link], 2) for link in model.links}
-    ordered = sorted(model.links, key=lambda link: (picked not in link, -shown[link], -strengths[link]))
+    scales = {name: float(np.std(learned.coded.values[:, place])) for place, name in enumerate(_numbers(learned))}
+    apart = {link: strengths[link] / scales.get(link[1], 1.0) for link in model.links}
+    ordered = sorted(model.links, key=lambda link: (picked not in link, -shown[link], -apart[link]))
     return tuple(
         LinkRow(
             source=source,
@@ -254,6 +272,10 @@ def _rows(
         )
         for source, target in ordered
     )
+
+
+def _numbers(learned: Learned) -> list[str]:
+    return [learned.coded.names[place] for place in learned.coded.numbers]
 
 
 def _doubted(learned: Learned, model: Model) -> str | None:

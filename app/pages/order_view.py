@@ -10,6 +10,7 @@ from app.store import Plan, Study
 from app.wording.amounts import count, listing, plural, small_word
 from engine.learning.search import check_widths
 from engine.order import Order
+from engine.records.spikes import own_reason
 from engine.records.table import Column, Table
 from engine.refusal import Refusal
 
@@ -127,7 +128,7 @@ def _may_come_from(stage: int, last: int) -> str:
 def _told(column: Column) -> str:
     levels = len(column.levels)
     if column.kind == "number":
-        return f"number, {levels} {plural(levels, 'band')}"
+        return "number" if own_reason(column) is None else f"number as {levels} {plural(levels, 'band')}"
     words = ", ".join(column.levels)
     if column.kind == "category" and len(words) <= 18:
         return words

@@ -46,7 +46,7 @@ def support(likely: float) -> str:
 def strength(moved: float, of_a_number: bool = False) -> str:
     """How far a link moves its child: a share, 0 to 1, in points; the mean of a number in its own unit."""
     if of_a_number:
-        return figure(float(f"{moved:.2g}"))
+        return f"{figure(float(f'{moved:.2g}'))} on average"
     if 0 < moved < 0.005:
         return "under 1 point"
     rounded = round(100 * moved)

@@ -44,7 +44,7 @@ def check(case: Case) -> Found | None:
     if most >= MOST_PARENTS:
         do = "No more parents can be learned. On the Order page, insist on the links that you know to matter."
     figures = {"columns": float(len(met)), "gain": met[0].gain, "parents": float(most)}
-    return (Caution("weakens", "cap", _odds(met[0].gain), text, do, figures, tuple(each.column for each in met)),)
+    return (Caution("weakens", "cap", odds(met[0].gain), text, do, figures, tuple(each.column for each in met)),)
 
 
 def _reaching(settings: Mapping[str, AnySetting] | None) -> list[str]:
@@ -65,7 +65,7 @@ def _missing(case: Case, found: Capped) -> str:
     return f"{new[0]}, too," if len(new) == 1 else "another column"
 
 
-def _odds(gain: float) -> str:
+def odds(gain: float) -> str:
     """A difference of log marginal likelihoods as odds, both models being as likely beforehand."""
-    odds = math.exp(min(gain, math.log(2.0 * MOST)))
-    return f"over {MOST:,.0f} to 1" if odds > MOST else f"{odds:,.0f} to 1"
+    ratio = math.exp(min(gain, math.log(2.0 * MOST)))
+    return f"over {MOST:,.0f} to 1" if ratio > MOST else f"{ratio:,.0f} to 1"

@@ -114,7 +114,7 @@ def learn_coded(
         recommended = judged.recommended
     say.begin("Trying one parent more where the limit was reached")
     cap = capped(coded, counts, moments, stages, found.parents[recommended], scores, max_parents, ess, say.within)
-    said = (*notes, *_left_out(stages, scores, max_parents), *_at_cap(cap, max_parents))
+    said = (*notes, *_left_out(stages, scores, max_parents), *at_cap(cap, max_parents))
     say.finish()
     return Learned(order, coded, curve, recommended, found.parents, sure, max_parents, seed, digest, said, cap)
 
@@ -147,7 +147,7 @@ def _left_out(stages: tuple[tuple[Candidates, ...], ...], scores: FamilyScores, 
     return (f"{what} left out: with their column they have more than {LARGEST:,} combinations of levels.",)
 
 
-def _at_cap(cap: Sequence[Capped], max_parents: int) -> tuple[str, ...]:
+def at_cap(cap: Sequence[Capped], max_parents: int) -> tuple[str, ...]:
     """A sentence about columns that want more parents than were allowed, if there are any."""
     if not cap:
         return ()

@@ -71,7 +71,7 @@ def test_the_shelf_counts_in_words() -> None:
 def test_learning_is_told_as_done_now_and_to_come() -> None:
     state = JobState("running", 0.25, "Counting how often levels occur together", ("Opening the records",), START)
     view = learning_view.view(state, START + timedelta(seconds=10))
-    assert [step.state for step in view.steps] == ["done", "done", "now", "to come", "to come", "to come"]
+    assert [step.state for step in view.steps] == ["done", "done", "now", *["to come"] * 5]
     assert view.left == "30 seconds"
     assert view.words.startswith("counting")
 
