@@ -1,4 +1,4 @@
-"""The Model page of a mixed table: how records were counted, limits reached, directions that only a shape could settle."""
+"""The Model page of a mixed table: how records were counted, limits that were reached, who settled directions."""
 
 from __future__ import annotations
 
@@ -73,7 +73,7 @@ def test_weights_and_groups_are_said_with_what_the_records_are_worth(client: Tes
     assert f"in nats for each of the {worth:,} cases that the records are worth" in told
     learned = app.state.store.learned(study.key)
     view = model_view.view(study, learned)
-    (shown,) = (size for size in view.all_sizes if size.links == 0)
+    (shown,) = (size for size in view.all_sizes if size.shown)
     assert float(shown.score.replace("−", "-")) == pytest.approx(float(shown.held_out.replace("−", "-")), rel=0.05)
 
 
@@ -105,7 +105,8 @@ def test_a_column_at_the_limit_is_said_and_one_button_learns_with_one_parent_mor
     page = client.get(address).text
     (missing,) = {"one", "two", "three"} - set(app.state.store.model(study.key).network.node("mark").parents)
     assert (
-        f"mark is at the limit of 2 parents; one more, {missing}, would describe it better: the odds are over 1,000 to 1."
+        f"mark is at the limit of 2 parents; one more, {missing}, would describe it better: "
+        "the odds are over 1,000 to 1."
     ) in words(page)
     assert "described better with 3 parents" not in words(page), "it is said once"
     assert "Learn again with up to 3 parents</button>" in page
