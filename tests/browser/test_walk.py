@@ -6,10 +6,12 @@ import re
 from collections.abc import Callable
 from pathlib import Path
 
+import numpy as np
 import pytest
 from playwright.sync_api import Page, expect
 
 from app import samples
+from tests.app.mixed_evening import mixed_evening
 from tests.browser.test_pages import bring
 from tests.browser.test_pages import csv as csv  # a fixture
 
@@ -136,3 +138,79 @@ def test_a_clicked_pin_keeps_focus_and_place(live, open_page: OpenPage) -> None:
     expect(pinned).to_be_focused()
     after = pinned.bounding_box()
     assert abs(after["y"] - before["y"]) <= 2 and abs(after["x"] - before["x"]) <= 2
+
+
+@pytest.fixture
+def mixed(tmp_path: Path) -> Path:
+    """500 invented learners in a file: categories, numbers, sites that belong together and a number that repeats."""
+    frame = mixed_evening()
+    rng = np.random.default_rng(9)
+    frame = frame.assign(fee=np.where(rng.random(len(frame)) < 0.5, 0.0, rng.normal(80.0, 9.0, len(frame)).round(1)))
+    path = tmp_path / "learners.csv"
+    frame.assign(site=[f"site {each:02d}" for each in rng.integers(0, 40, len(frame))]).to_csv(path, index=False)
+    return path
+
+
+def change(page: Page, column: str, then: str, **marks: str) -> None:
+    """Open the card of a column on Records, choose its kind or direction or tick it as changeable, and save it."""
+    card = page.get_by_role("form", name=column, exact=True)
+    card.locator("summary").click()
+    if "kind" in marks:
+        card.get_by_label(f"Kind of {column}").select_option(marks["kind"])
+    if "better" in marks:
+        card.get_by_label(f"More or less of {column}").select_option(marks["better"])
+    if "changeable" in marks:
+        card.get_by_label("changeable").check()
+    card.get_by_role("button", name=f"Save {column}").click()
+    expect(page.get_by_role("form", name=column, exact=True)).to_contain_text(then)
+
+
+@BOTH
+def test_from_a_file_with_numbers_to_a_mean_among_a_band_if_a_number_is_set(
+    open_page: OpenPage, mixed: Path, javascript: bool
+) -> None:
+    page = open_page(javascript=javascript)
+    bring(page, mixed, "Learners")
+    expect(page.get_by_role("form", name="travel time", exact=True)).to_contain_text("learned as a number")
+    expect(page.get_by_role("form", name="fee", exact=True)).to_contain_text("learned as bands")
+    change(page, "site", "40 groups", kind="group")
+    change(page, "mentor hours", "changeable", changeable="yes")
+    change(page, "mark", "more is better", better="more")
+    page.get_by_role("link", name="Go on to the order").click()
+    page.locator("#text").fill(
+        "Before: shift work, travel time, fee\nOffered: mentor\nDuring: mentor hours\nAfter: mark, passed"
+    )
+    page.get_by_role("button", name="Use this order").click()
+    page.get_by_role("button", name="Learn a model of this order").click()
+    expect(page.get_by_role("heading", level=1)).to_contain_text("unseen records", timeout=60_000)
+    expect(page.get_by_role("main")).to_contain_text("The records stand in 40 groups.")
+    expect(page.get_by_role("main")).to_contain_text("“fee” is taken as bands")
+    expect(page.get_by_role("main")).to_contain_text("Nobody settled this direction: mark goes with passed.")
+    expect(page.locator("table.links")).to_contain_text("on average")
+
+    page.get_by_role("link", name="Ask", exact=True).click()
+    expect(answer(page)).to_contain_text(re.compile(r"Across all 500 records mark is [\d.]+ on average"))
+    page.get_by_role("link", name=re.compile("^Open travel time")).click()
+    page.locator("[id^=pin-travel-time-under]").click()
+    expect(answer(page)).to_contain_text(re.compile(r"Among records with travel time under [\d.]+, mark is [\d.]+ on"))
+    hours = page.locator("#form-set-mentor-hours")
+    if not hours.is_visible():
+        page.get_by_role("link", name=re.compile("^Open mentor hours")).click()
+    hours.locator("input[name='set.mentor-hours']").fill("11.5")
+    hours.get_by_role("button", name="Set").click()
+    said = re.compile(
+        r"By this estimate.*, among records with travel time under [\d.]+, setting mentor hours to 11.5 "
+        r"would move mark from [\d.]+ to [\d.]+ on average \(\+[\d.]+, "
+    )
+    expect(answer(page)).to_contain_text(said)
+    assert "set=mentor-hours.to.11.5" in page.url
+    figures = re.search(r"from ([\d.]+) to ([\d.]+) on average", answer(page).inner_text())
+    assert figures is not None
+    before, after = map(float, figures.groups())
+    assert after - before > 2.0, "2 more for each hour, and hours are 7 on average"
+    expect(page.locator(".cautions")).to_contain_text("checks made")
+    sentence = answer(page).inner_text().split("(")[0]
+    page.reload()
+    assert answer(page).inner_text().split("(")[0] == sentence
+    page.get_by_role("link", name="Print this answer").click()
+    expect(page.get_by_role("heading", level=1)).to_contain_text(said)
