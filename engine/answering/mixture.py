@@ -41,12 +41,12 @@ class Mixture:
     low: Floats | None = None
     high: Floats | None = None
 
-    @property
+    @cached_property
     def means(self) -> Floats:
         """(draws,)"""
         return np.asarray((self.weight * self._moments[0]).sum(axis=0))
 
-    @property
+    @cached_property
     def sds(self) -> Floats:
         """(draws,) standard deviations."""
         mean, variance = self._moments
