@@ -120,8 +120,13 @@ def _line(row: Row, shown: list[int]) -> Line:
     return Line(
         given=row.given,
         common=share(row.weight),
-        shares=tuple((share(row.shares[place]), span(row.low[place], row.high[place])) for place in shown),
+        shares=tuple((share(row.shares[place]), _interval(row.low[place], row.high[place])) for place in shown),
     )
+
+
+def _interval(low: float, high: float) -> str:
+    """Once where both ends read alike: under 1%."""
+    return share(low) if share(low) == share(high) else span(low, high)
 
 
 def _note(rows: int, levels: int) -> str:

@@ -104,6 +104,14 @@ def test_a_long_table_shows_its_commonest_rows_and_levels_and_says_what_it_leave
     assert kind.note == "Not shown: six rarer combinations and two rarer levels; the program holds them."
 
 
+def test_an_interval_whose_ends_read_alike_is_told_once(app: FastAPI) -> None:
+    frame = pd.DataFrame({"town": ["rare", *["usual"] * 2_999], "passed": ["yes", "no"] * 1_500})
+    study = app.state.store.bring("Rare", frame, "rare.csv", plan=Plan(stages=(("All", ("town", "passed")),)))
+    keep_a_model(app.state.store, study)
+    told = {each.name: each for each in model_accounts.accounts(app.state.store.model(study.key), None)}
+    assert [line.shares[0] for line in told["town"].lines] == [("under 1%", "under 1%")]
+
+
 def test_the_picked_column_is_told_first_then_outcomes_then_what_may_be_changed(app: FastAPI, study: Study) -> None:
     model = app.state.store.model(study.key)
     assert [account.name for account in model_accounts.accounts(model, None)][:2] == ["passed", "mentor"]
