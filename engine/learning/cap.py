@@ -13,6 +13,7 @@ import numpy as np
 from engine.learning.families import Candidates, Families
 from engine.learning.gaussian import family_score as number_score
 from engine.learning.mixed import FamilyScores
+from engine.learning.scores import ESS
 from engine.learning.scores import family_score as category_score
 from engine.learning.search import Parents
 from engine.records.counts import LARGEST, ArrayCounts
@@ -46,7 +47,7 @@ def capped(
     chosen: Parents,
     scores: FamilyScores,
     max_parents: int,
-    ess: float = 1.0,
+    ess: float = ESS,
     tick: Callable[[float], None] = lambda part: None,
 ) -> tuple[Capped, ...]:
     """Columns of the model `chosen` that have `max_parents` parents and gain WORTH or more from another one.

@@ -21,7 +21,7 @@ from engine.learning.learned import Learned
 from engine.learning.mixed import FamilyScores, MixedScores, mixed_scores
 from engine.learning.posterior import posterior
 from engine.learning.progress import Looking, Progress, Saying
-from engine.learning.scores import set_scores
+from engine.learning.scores import ESS, set_scores
 from engine.learning.search import SizeCurve, size_curve
 from engine.order import Order
 from engine.records.counts import LARGEST, ArrayCounts
@@ -39,7 +39,7 @@ def learn(
     graphs: int = 200,
     seed: int = 0,
     progress: Progress | None = None,
-    ess: float = 1.0,
+    ess: float = ESS,
     folds: bool = True,
 ) -> Learned:
     """Find the best model at every number of links, and say which number predicts held-out records well enough.
@@ -71,7 +71,7 @@ def learn_coded(
     graphs: int = 200,
     seed: int = 0,
     progress: Progress | None = None,
-    ess: float = 1.0,
+    ess: float = ESS,
     folds: bool = True,
     notes: Sequence[str] = (),
 ) -> Learned:

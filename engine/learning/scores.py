@@ -15,6 +15,10 @@ from engine.records.counts import Block, Counts
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
 
+# Records that the prior of a table counts for in its score. With 1, links that 1,000 records show weakly are dropped
+# with false certainty: 90% intervals over plausible models held .08 to .82 of true changes, with 10 .73 to .97. More
+# takes in links between columns that have none: at 10 they get a support of .07 on average, at 20 of .09.
+ESS = 10.0
 _TABULATED = 32_768  # counts whose term is looked up; larger ones are computed
 
 
@@ -43,7 +47,7 @@ class SetScores:
         return self
 
 
-def set_scores(counts: Counts, size: int, ess: float = 1.0, tick: Callable[[float], None] | None = None) -> SetScores:
+def set_scores(counts: Counts, size: int, ess: float = ESS, tick: Callable[[float], None] | None = None) -> SetScores:
     """Dirichlet marginal likelihood with the BDeu prior (Heckerman, Geiger & Chickering 1995) of every set of columns.
 
     g(X) = sum over joint levels x of ln Gamma(N_x + ess/q) - ln Gamma(ess/q), q the number of joint levels.
@@ -66,7 +70,7 @@ def set_scores(counts: Counts, size: int, ess: float = 1.0, tick: Callable[[floa
     return SetScores(columns, grain, by_size)
 
 
-def family_score(counts: NDArray[np.number], ess: float = 1.0) -> float:
+def family_score(counts: NDArray[np.number], ess: float = ESS) -> float:
     """The score of one family, the difference of two set scores.  counts: (parent levels..., child levels)."""
     flat = counts.reshape(-1, counts.shape[-1])
     seen = np.asarray(flat[flat.sum(axis=1) > 0.0], dtype=np.float64)

@@ -7,6 +7,7 @@ from math import prod
 import numpy as np
 from scipy.special import gammaln
 
+from engine.learning.scores import ESS
 from engine.order import Order
 from engine.records.table import Coded
 
@@ -27,7 +28,7 @@ def coded_columns(names: Sequence[str], levels: Sequence[int], codes: np.ndarray
 
 
 def family_score(
-    codes: np.ndarray, levels: Sequence[int], child: int, parents: Sequence[int], ess: float = 1.0
+    codes: np.ndarray, levels: Sequence[int], child: int, parents: Sequence[int], ess: float = ESS
 ) -> float:
     """BDeu score of one family, configuration by configuration."""
     q, r = prod(levels[parent] for parent in parents), levels[child]
@@ -70,7 +71,7 @@ def links_of(graph: Graph) -> int:
 
 
 def best_by_links(
-    codes: np.ndarray, levels: Sequence[int], order: Order, max_parents: int, ess: float = 1.0
+    codes: np.ndarray, levels: Sequence[int], order: Order, max_parents: int, ess: float = ESS
 ) -> dict[int, float]:
     """Links -> best score, by trying every graph."""
     known: dict[tuple[int, tuple[int, ...]], float] = {}

@@ -105,10 +105,10 @@ def test_a_size_not_learned_is_refused():
 
 def test_every_link_is_settled_by_the_order_the_data_or_nobody():
     rng = np.random.default_rng(2)
-    a, b = rng.integers(0, 2, 2_000), rng.integers(0, 2, 2_000)
-    c = (rng.random(2_000) < 0.1 + 0.4 * a + 0.4 * b).astype(np.int64)
-    d = np.where(rng.random(2_000) < 0.7, a, rng.integers(0, 2, 2_000))
-    e = np.where(rng.random(2_000) < 0.7, c, rng.integers(0, 2, 2_000))
+    a, b = rng.integers(0, 2, 20_000), rng.integers(0, 2, 20_000)
+    c = (rng.random(20_000) < 0.1 + 0.4 * a + 0.4 * b).astype(np.int64)
+    d = np.where(rng.random(20_000) < 0.7, a, rng.integers(0, 2, 20_000))
+    e = np.where(rng.random(20_000) < 0.7, c, rng.integers(0, 2, 20_000))
     names = ("a", "b", "c", "d", "e")
     coded = with_codes(np.stack([a, b, c, d, e], axis=1), names, (2,) * 5)
     learned = learn_coded(coded, Order([("Early", names[:4]), ("Late", ["e"])]))

@@ -161,9 +161,9 @@ def test_a_link_inside_a_stage_between_a_category_and_a_number_is_settled_by_nob
 def test_a_direction_that_rests_on_the_shape_of_a_number_is_settled_by_nobody(number, told):
     """Two causes that do not go together settle their directions, unless one of them is a number."""
     rng = np.random.default_rng(2)
-    a, values = rng.integers(0, 2, 4_000), rng.normal(size=(4_000, 1))
+    a, values = rng.integers(0, 2, 20_000), rng.normal(size=(20_000, 1))
     high = values[:, 0] > 0.0
-    c = (rng.random(4_000) < 0.1 + 0.4 * a + 0.4 * high).astype(int)
+    c = (rng.random(20_000) < 0.1 + 0.4 * a + 0.4 * high).astype(int)
     codes = np.column_stack([a, high, c])
     coded = plainly.coded_mixed("abc", codes, values if number else values[:, :0], (1,) if number else (), bands=2)
     learned = learn_coded(coded, Order([("All", ["a", "b", "c"])]), folds=False)

@@ -43,7 +43,7 @@ def test_a_family_scores_as_configuration_by_configuration(ess):
 
 def test_a_family_scores_as_the_product_of_one_step_predictions():
     codes, levels = some_records(rows=60)
-    found = set_scores(ArrayCounts(codes, levels), 3)
+    found = set_scores(ArrayCounts(codes, levels), 3, 1.0)
     for child, parents in [(0, ()), (1, (0,)), (2, (0, 3)), (3, (0,))]:
         configurations = int(np.prod([levels[parent] for parent in parents]))
         told = 0.0
@@ -95,7 +95,7 @@ def test_a_set_of_too_many_levels_has_no_score():
     rng = np.random.default_rng(0)
     levels = (50, 50, 50, 50, 2)
     codes = np.stack([rng.integers(0, count, 300) for count in levels], axis=1)
-    found = set_scores(ArrayCounts(codes, levels), 4)
+    found = set_scores(ArrayCounts(codes, levels), 4, 1.0)
     for chosen in combinations(range(5), 4):
         too_large = np.prod([levels[column] for column in chosen]) > 1_000_000
         assert np.isneginf(found.by_size[4][0, rank(chosen)]) == too_large
