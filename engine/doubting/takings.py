@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
+from itertools import islice
 
 import numpy as np
 
@@ -73,7 +74,14 @@ def ways(graph: Graph, asked: Asked) -> tuple[Way, ...] | Hedge:
 
     found: list[Way] = []
     before = frozenset(asked.before)
-    for taking in _takings(asked):
+    worlds = tuple(islice(_takings(asked), MOST_WORLDS + 1))
+    if len(worlds) > MOST_WORLDS:
+        raise Refusal(
+            "These levers can take in too many ways to read each beside unrecorded causes.",
+            where=", ".join(asked.settings),
+            do="Set fewer levers at once, or fix them instead of mixing.",
+        )
+    for taking in worlds:
         acting, seen = frozenset(taking.at), frozenset(taking.seen)
         outcomes = identified(frozenset(asked.outcomes), acting, before | seen)
         if isinstance(outcomes, Hedge):
@@ -85,12 +93,6 @@ def ways(graph: Graph, asked: Asked) -> tuple[Way, ...] | Hedge:
         if isinstance(own, Hedge):
             return own
         found.append(Way(taking, outcomes, own))
-        if len(found) > MOST_WORLDS:
-            raise Refusal(
-                "These levers can take in too many ways to read each beside unrecorded causes.",
-                where=", ".join(asked.settings),
-                do="Set fewer levers at once, or fix them instead of mixing.",
-            )
     return tuple(found)
 
 
@@ -141,13 +143,14 @@ def _grown(asked: Asked, levers: list[str], so_far: Taking) -> Iterator[Taking]:
         return
     lever, rest = levers[0], levers[1:]
     for share, position, seen in _decided(asked, lever, so_far):
-        at = so_far.at if position is None else {**so_far.at, lever: position}
+        changes = position is not None and asked.pins.get(lever) != frozenset((position,))
+        at = so_far.at if position is None or not changes else {**so_far.at, lever: position}
         if share > 0.0:
             yield from _grown(asked, rest, Taking(so_far.share * share, at, seen))
 
 
 def _decided(asked: Asked, lever: str, so_far: Taking) -> Iterator[tuple[float, int | None, Positions]]:
-    """(share, position it is set to or None, seen) for every way in which one lever can take."""
+    """(share, position it is set to or None for its own, seen) for every way in which one lever can take."""
     setting = asked.settings[lever]
     if isinstance(setting, Setting):
         yield setting.reach, setting.position, so_far.seen
