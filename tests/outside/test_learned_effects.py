@@ -56,8 +56,9 @@ def smokers_learned(max_parents, insist=(), folds=True):
     return engine.learn(engine.Table.from_frame(named, numbers), order, max_parents=max_parents, graphs=50, folds=folds)
 
 
-def stopping(model):
-    return model.ask(levers={"qsmk": engine.Fix("1")}, watch=["wt82_71"], against={"qsmk": engine.Fix("0")}, exact=True)
+def stopping(model, draws=200):
+    on, off = ({"qsmk": engine.Fix(level)} for level in ("1", "0"))
+    return model.ask(levers=on, watch=["wt82_71"], against=off, draws=draws, exact=True)
 
 
 @pytest.fixture(scope="module")
@@ -84,7 +85,7 @@ def test_the_effect_of_stopping_on_weight_is_learned_as_published(smokers):
 def test_the_doubt_about_stopping_overlaps_the_published_interval(smokers):
     _, figures = study("weight_gain")
     from_, to = figures["published 95% interval"]["value"]
-    answer = stopping(smokers.model()).with_doubt()
+    answer = stopping(smokers.model()).with_doubt(graphs=30)
     change, low, high = answer.change("wt82_71")
     assert answer.doubted
     assert low <= change <= high
@@ -102,6 +103,19 @@ def test_the_effect_lies_between_those_of_the_added_and_the_crossed_regression(s
     added, crossed = (effect_by_least_squares(frame, "wt82_71", "qsmk", others, each) for each in (False, True))
     assert abs(added - crossed) > 0.01
     assert min(added, crossed) - 0.02 < stopping(model).change("wt82_71")[0] < max(added, crossed) + 0.02
+
+
+def test_the_interval_is_as_wide_as_that_of_the_added_regression(smokers):
+    frame, _ = study("weight_gain")
+    model = smokers.model()
+    design = np.column_stack([np.ones(len(frame)), *(frame[name] for name in model.network.node("wt82_71").parents)])
+    away = frame["wt82_71"] - design @ np.linalg.lstsq(design, frame["wt82_71"], rcond=None)[0]
+    left = len(frame) - design.shape[1]
+    at = 1 + model.network.node("wt82_71").parents.index("qsmk")
+    error = np.sqrt((away**2).sum() / left * np.linalg.inv(design.T @ design)[at, at])
+    _, low, high = stopping(model, draws=400).change("wt82_71")
+    # Those who stopped and the others differ a little in their slopes and their spread, and draws add noise.
+    assert high - low == pytest.approx(2.0 * t.ppf(0.95, left) * error, rel=0.15)
 
 
 # Spending on food, by one number alone (Koenker & Bassett 1982): least squares, for the prior of a slope is flat.
