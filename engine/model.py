@@ -20,7 +20,10 @@ from engine.answering.planner import Planner
 from engine.answering.predicting import predict
 from engine.answering.question import Question, question
 from engine.doubting.case import Case
+from engine.doubting.declared import declared
+from engine.doubting.graph import Graph
 from engine.doubting.register import cautions
+from engine.doubting.rereading import Rereading
 from engine.learning import learn as learning
 from engine.learning import learned as learnt
 from engine.learning.cap import Capped
@@ -34,7 +37,7 @@ from engine.network.scoring import log_score
 from engine.network.story import Story, rules, touches
 from engine.network.strength import category_strength, number_strength
 from engine.network.typical import Typical, invented, recorded
-from engine.order import Order, better_levels
+from engine.order import Order, Unrecorded, better_levels
 from engine.records.table import Coded, Table
 from engine.refusal import Refusal, quoted
 
@@ -51,6 +54,7 @@ class Model:
     coded: the records it was learned from, None without.  unsettled: links whose direction nobody settled.
     plausible: so many graphs drawn from the posterior, to ask the same of; None without.
     capped: columns that want more parents than learning allowed; None where no such limit is known.
+    unrecorded: causes stated of two columns each, beside which what a lever does is read from what is seen alone.
     """
 
     network: Network
@@ -59,19 +63,37 @@ class Model:
     unsettled: frozenset[tuple[str, str]] = frozenset()
     plausible: Callable[[int], Plausible] | None = None
     capped: tuple[Capped, ...] | None = None
+    unrecorded: tuple[Unrecorded, ...] = ()
 
     @classmethod
-    def from_network(cls, nodes: Iterable[Node]) -> Model:
-        """A model of parameters known exactly: every column may be changed, intervals are points.
+    def from_network(
+        cls, nodes: Iterable[Node], unrecorded: Iterable[Unrecorded] = (), order: Order | None = None
+    ) -> Model:
+        """A model of parameters known exactly: intervals are points.
 
-        Raises Refusal as engine.network.network.network does.
+        unrecorded: causes that are in no column, beside those that the order states. Where such a cause ties a column
+        to an earlier one, its table has the earlier one among its parents, so that the network holds all that is seen.
+        order: what may be changed and which levels are better; None: every column may be changed.
+        Raises Refusal as engine.network.network.network and engine.doubting.declared.declared do, and for a link that
+        the order does not allow.
         """
-        return cls(network(nodes))
+        stated = (*(() if order is None else order.unrecorded), *unrecorded)
+        model = cls(network(nodes), order, unrecorded=stated)
+        for source, target in model.links:
+            if order is not None and not order.may_lead(source, target):
+                raise Refusal(
+                    f"{quoted(source)} leads to {quoted(target)}, but {order.why(source, target)}.",
+                    where=target,
+                    do="Take out that link, or state another order.",
+                )
+        return model
 
     @property
     def links(self) -> tuple[tuple[str, str], ...]:
-        """(source, target), parents before children."""
-        return self.network.links
+        """(source, target), parents before children; not those that are in the tables for an unrecorded cause alone."""
+        if self._declared is None:
+            return self.network.links
+        return tuple(link for link in self.network.links if link in self._declared.links)
 
     @property
     def changeable(self) -> tuple[str, ...]:
@@ -109,13 +131,15 @@ class Model:
             return question(network, *given)
 
         def checked(answer: Answer) -> Answer:
-            found, made = cautions(
-                Case(self.network, self.order, self._records, asked, answer, self.unsettled, self.capped)
-            )
+            case = Case(self.network, self.order, self._records, asked, answer, self.unsettled, self.capped, reread)
+            found, made = cautions(case)
             return replace(answer, cautions=found, checks_made=made)
 
         asked = question_in(self.network)
+        reread = None if self._declared is None else Rereading(self._declared, self.network, asked)
         answer = ask(self._planner, self._records, asked, draws, seed, exact)
+        if reread is not None:
+            answer = reread.of(answer, draws, seed)
         if self.plausible is None:
             return checked(answer)
         return doubtable(answer, self.plausible, question_in, seed, exact, checked)
@@ -236,6 +260,10 @@ class Model:
     @cached_property
     def _joints(self) -> Kept[tuple[str, ...], np.ndarray]:
         return Kept(JOINTS, lambda shares: shares.nbytes)
+
+    @cached_property
+    def _declared(self) -> Graph | None:
+        return declared(self.network, self.unrecorded)
 
     @cached_property
     def _planner(self) -> Planner:

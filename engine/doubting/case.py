@@ -13,6 +13,7 @@ from engine.answering.counting import Records
 from engine.answering.question import Question
 from engine.answering.settings import AnySetting
 from engine.doubting.aims import Aim, aim
+from engine.doubting.rereading import Rereading
 from engine.learning.cap import Capped
 from engine.network.network import Network
 from engine.order import Order, better_levels
@@ -30,6 +31,7 @@ class Case:
 
     order and records are None for a network given as it is.  unsettled: links whose direction the support leaves open.
     capped: columns that want more parents than learning allowed; None where no such limit is known.
+    beside: the question beside the unrecorded causes that were stated, None without any.
     """
 
     network: Network
@@ -39,6 +41,7 @@ class Case:
     answer: Answer
     unsettled: frozenset[tuple[str, str]] = frozenset()
     capped: tuple[Capped, ...] | None = None
+    beside: Rereading | None = None
 
     @cached_property
     def matching(self) -> np.ndarray:

@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 from engine.answering.answer import Caution
-from engine.doubting import blanks, cap, counted, direction, models, outside, overlap, thin
+from engine.doubting import blanks, cap, counted, direction, models, outside, overlap, thin, unidentified
 from engine.doubting.case import Case, Check
 
 CHECKS: tuple[Check, ...] = (
+    unidentified.check,
     overlap.check,
     outside.check,
     thin.check,
