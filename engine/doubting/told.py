@@ -15,7 +15,7 @@ BETWEEN = 2  # columns that a way through is sought by, at most: more make no se
 
 @dataclass(frozen=True)
 class Told:
-    """kind: "seen", "alike", "through" or "parts".  columns: those it is told by.  text: goes on from "read"."""
+    """kind: "nothing", "seen", "alike", "through" or "parts".  columns: told by these.  text: goes on from "read"."""
 
     kind: str
     columns: tuple[str, ...]
@@ -24,6 +24,8 @@ class Told:
 
 def told(graph: Graph, outcome: str, levers: Collection[str], pins: Collection[str] = ()) -> Told:
     """How an identified answer follows: by the back door, by the front door (Pearl 1995), or in parts."""
+    if outcome not in graph.descendants(levers):
+        return Told("nothing", (), f"as it is among these: no link leads there from {named(graph.sorted(levers))}")
     if len(levers) == 1:
         (lever,) = levers
         found = _alike(graph, outcome, lever, frozenset(pins)) or _through(graph, outcome, lever, frozenset(pins))

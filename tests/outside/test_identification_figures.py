@@ -98,6 +98,22 @@ def test_smoking_turns_round_through_the_front_door():
     assert seen == pytest.approx([0.0975, 0.8525], abs=1e-9)
 
 
+def test_smoking_asked_of_a_model():
+    order = engine.Order(
+        **ORDER,
+        unrecorded=[engine.Unrecorded("smoker", "cancer", direct=False)],
+        changeable=["smoker"],
+        outcomes={"cancer": "yes"},
+    )
+    model = engine.Model.from_network(smoking().network.nodes, order=order)
+    on, off = engine.Fix("yes"), engine.Fix("no")
+    answer = model.ask(levers={"smoker": on}, against={"smoker": off})
+    assert answer.change("cancer", "yes")[0] == pytest.approx(-0.045, abs=1e-9) and not answer.blocked
+    order = engine.Order(**ORDER, unrecorded=[engine.Unrecorded("smoker", "cancer")], changeable=["smoker"])
+    model = engine.Model.from_network(smoking().network.nodes, order=order)
+    assert model.ask(levers={"smoker": on}, watch=["cancer"]).blocked
+
+
 def test_a_direct_link_beside_the_unrecorded_cause_closes_the_front_door():
     order = engine.Order(**ORDER, unrecorded=[engine.Unrecorded("smoker", "cancer")])
     found = identify(of(order), ["cancer"], ["smoker"])
