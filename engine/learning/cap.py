@@ -22,10 +22,10 @@ from engine.records.spikes import CONSTANT, EXACT
 from engine.records.table import Coded
 
 WORTH = 3.0  # nats, odds of 20 to 1: strong evidence by Kass & Raftery (1995)
-SCREENED = 10_000  # records by which sets of parents are compared; the best few by all records
-EVERY = 1_500  # sets of parents up to which all are tried
-BEST = 15  # else those that hold one of so many best smaller sets
-CONFIRMED = 3
+SCREENED = 5_000  # records by which sets of parents are compared; the best few by all records
+EVERY = 500  # sets of parents up to which all are tried
+BEST = 5  # else those that hold one of so many best smaller sets
+CONFIRMED = 5
 
 
 class Capped(NamedTuple):
