@@ -16,7 +16,7 @@ Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
 
 # Records that the prior of a table counts for in its score. With 1, links that 1,000 records show weakly are dropped
-# with false certainty: 90% intervals over plausible models held .08 to .82 of true changes, with 10 .73 to .97. More
+# with false certainty: 90% intervals over plausible models held .08 to .82 of true changes, with 10 .61 to .93. More
 # takes in links between columns that have none: at 10 they get a support of .07 on average, at 20 of .09.
 ESS = 10.0
 _TABULATED = 32_768  # counts whose term is looked up; larger ones are computed

@@ -7,10 +7,10 @@ Prints, as JSON, for two priors of the tables (see engine.network.parameters.WEI
 
 Measured with 1,000 tables of (a) and 200 of (b), 4,000 records each: (a) .902 with the prior known, .834 where its
 shares are taken from the records; (b) over the five effects .87 to .93 with doubt and .87 to .92 within the model;
-with heavier priors, up to 256 records a configuration, .84 to .91 and .84 to .90. Of 1,000 records each, where most
-of these effects run through links that so few records do not show, (b) holds far less often: .08 to .82 with doubt.
-Scored with an equivalent sample size of 20 instead of 1 (learn_coded(ess=20)) it held .85 to .95 there (40 tables),
-and .85 to .98 with 4,000 records each (60 tables).
+with heavier priors, up to 256 records a configuration, .85 to .91 and .84 to .90. Of 1,000 records each (100 tables),
+where some of these effects run through links that so few records hardly show, .61 to .93 with doubt and .55 to .92
+within the model; with heavier priors .40 to .80. Scored with an equivalent sample size of 1 instead of 10 it was .08
+to .82 there, with 20 .83 to .97 (30 tables).
 """
 
 from __future__ import annotations
