@@ -5,8 +5,8 @@ from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
 from engine.answering.weighting import weigh
-from tests.answering.mixed_generated import in_boxes, mixed_worlds, only_possible, own_parameters, shaken_parameters
-from tests.answering.mixed_plainly import truth
+from tests.answering.mixed_generated import mixed_worlds, only_possible, own_parameters, shaken_parameters
+from tests.answering.mixed_plainly import in_boxes, truth
 
 ERRORS = 4.5  # standard errors that an estimate may be off by: hundreds are looked at
 FEW = 150.0  # effective particles below which a standard error says little; an answer carries a caution under 50
