@@ -140,7 +140,7 @@ def _below(h: Floats, k: Floats, lean: Floats, rest: Floats) -> Floats:
     if np.any(finite):
         y, x, lean, rest = h[finite], k[finite], lean[finite], rest[finite]
         inner = 0.5 * (ndtr(y) + ndtr(x)) - _owen(y, x, lean, rest) - _owen(x, y, lean, rest)
-        opposite = (y * x < 0.0) | ((y * x == 0.0) & (y + x < 0.0))
+        opposite = (np.sign(y) * np.sign(x) < 0.0) | (((y == 0.0) | (x == 0.0)) & (np.minimum(y, x) < 0.0))
         inner = np.where(opposite, inner - 0.5, inner)
         nothing = (y == 0.0) & (x == 0.0)
         found[finite] = np.where(nothing, 0.25 + np.arctan2(lean, rest) / (2.0 * np.pi), inner)
@@ -150,9 +150,11 @@ def _below(h: Floats, k: Floats, lean: Floats, rest: Floats) -> Floats:
 def _owen(h: Floats, k: Floats, lean: Floats, rest: Floats) -> Floats:
     """T(h, (k - lean h) / (h rest)); at h = 0 the slope is infinite, with the sign of its numerator."""
     sign = np.where(lean < 0.0, -1.0, 1.0)
-    numerator = (k - sign * h) + sign * h * (rest * rest / (1.0 + np.abs(lean)))  # no digits lost where lean is near 1
     zero = h == 0.0
     with np.errstate(over="ignore"):
+        numerator = (k - sign * h) + sign * h * (
+            rest * rest / (1.0 + np.abs(lean))
+        )  # keeps digits where lean is near 1
         slope = np.where(zero, np.copysign(np.inf, numerator), numerator / np.where(zero, 1.0, h * rest))
     return np.asarray(owens_t(h, slope))
 
@@ -161,7 +163,8 @@ def _likely(box: Rectangle, left: Floats, right: Floats) -> tuple[Floats, Floats
     """The part of [left, right] where X has a chance that is above 1e-340; all of it if there is none."""
     flat = box.lean == 0.0
     lean = np.where(flat, 1.0, box.lean)
-    one, other = (box.low - REACH * box.rest) / lean, (box.high + REACH * box.rest) / lean
+    with np.errstate(over="ignore"):
+        one, other = (box.low - REACH * box.rest) / lean, (box.high + REACH * box.rest) / lean
     start, end = np.minimum(one, other), np.maximum(one, other)
     start, end = np.where(flat, left, start), np.where(flat, right, end)
     some = (start < right) & (end > left)
@@ -187,7 +190,7 @@ def _by_quadrature(box: Rectangle) -> tuple[Floats, Floats, Floats]:
         lean, rest = box.lean[(..., *extra)], box.rest[(..., *extra)]
         with np.errstate(over="ignore"):
             low, high = (box.low[(..., *extra)] - lean * y) / rest, (box.high[(..., *extra)] - lean * y) / rest
-        return np.asarray(-0.5 * y * y - HALF_LOG_TWO_PI + log_between(low, high))
+            return np.asarray(-0.5 * y * y - HALF_LOG_TWO_PI + log_between(low, high))
 
     low, high = _likely(box, left, right)
     inner, outer = high - GOLDEN * (high - low), low + GOLDEN * (high - low)
@@ -213,8 +216,9 @@ def _by_quadrature(box: Rectangle) -> tuple[Floats, Floats, Floats]:
     lean = np.where(box.lean == 0.0, np.inf, box.lean)
     crossings = [0.5 * (lowest + peak), peak, 0.5 * (highest + peak)]
     for end in (box.low, box.high):  # where X is as likely on one side of this end as on the other, and about there
-        crossing = np.where(np.isfinite(end), end, 0.0) / lean
-        crossings += [crossing + step * box.rest / lean for step in STEPS]
+        crossing = np.where(np.isfinite(end), end, 0.0)
+        with np.errstate(over="ignore"):
+            crossings += [(crossing + step * box.rest) / lean for step in STEPS]
     edges = np.sort(np.stack([lowest, *(np.clip(each, lowest, highest) for each in crossings), highest], axis=-1))
     half = 0.5 * np.diff(edges)
     y = 0.5 * (edges[:, 1:] + edges[:, :-1])[..., None] + half[..., None] * _NODES

@@ -43,16 +43,17 @@ def log_between(start: Floats, end: Floats) -> Floats:
     upper = start > -end
     low, high = np.where(upper, -end, start), np.where(upper, -start, end)  # now the nearer end is `high`
     log_high = log_ndtr(high)
-    with np.errstate(divide="ignore", invalid="ignore"):
+    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
         found = log_high + np.log(-np.expm1(log_ndtr(low) - log_high))
         width = high - low
         middle = 0.5 * (high + low)
-    narrow = (width > 0.0) & (width * (1.0 + np.abs(middle)) < 1e-2)
+        narrow = (width > 0.0) & (width * (1.0 + np.abs(middle)) < 1e-2)
     if np.any(narrow):  # by the Taylor series about the middle, where a difference would lose digits
-        c, w = np.where(narrow, middle, 0.0) ** 2, np.where(narrow, width, 1.0) ** 2
+        c, wide = np.where(narrow, middle, 0.0) ** 2, np.where(narrow, width, 1.0)
+        w = wide**2
         series = np.log1p((c - 1.0) * w / 24.0 + ((c - 6.0) * c + 3.0) * w * w / 1920.0)
-        found = np.where(narrow, -0.5 * c - HALF_LOG_TWO_PI + 0.5 * np.log(w) + series, found)
-    return np.where(end > start, found, -np.inf)
+        found = np.where(narrow, -0.5 * c - HALF_LOG_TWO_PI + np.log(wide) + series, found)
+    return np.where((end > start) & (log_high > -np.inf), found, -np.inf)
 
 
 def moments_between(start: Floats, end: Floats) -> tuple[Floats, Floats]:
@@ -72,7 +73,7 @@ def moments_between(start: Floats, end: Floats) -> tuple[Floats, Floats]:
         mean = at_low - at_high
         variance = 1.0 + np.where(at_low > 0.0, low, 0.0) * at_low - np.where(at_high > 0.0, high, 0.0) * at_high
         variance = variance - mean * mean
-    width = np.where(empty, 0.0, high) - np.where(empty, 0.0, low)
+        width = np.where(empty, 0.0, high) - np.where(empty, 0.0, low)
     close = ~empty & np.isfinite(low) & ((low > _TAIL) | (width < _NARROW / (1.0 + np.maximum(low, 1.0))))
     if np.any(close):
         mean, variance = np.array(mean), np.array(variance)

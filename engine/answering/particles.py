@@ -35,7 +35,8 @@ class Rows:
         if self.per_draw == 1:
             return np.asarray(weight.sum(axis=1, keepdims=True))
         at = np.broadcast_to(self.at, weight.shape).ravel()
-        return np.bincount(at, weight.ravel(), len(weight) * self.per_draw).reshape(len(weight), -1)
+        summed = np.bincount(at, weight.ravel(), len(weight) * self.per_draw)
+        return np.asarray(summed.reshape(len(weight), -1), dtype=np.float64)
 
 
 class Case:
@@ -221,7 +222,7 @@ def _kept_inside(intervals: tuple[Interval, ...], mean: Floats, sd: Floats, unif
 
     One uniform number picks the interval and, by what is left of it, the place inside.
     """
-    ends = [standardised(np.float64(low), np.float64(high), mean, sd) for low, high in intervals]
+    ends = [standardised(np.full(1, low), np.full(1, high), mean, sd) for low, high in intervals]
     with np.errstate(invalid="ignore"):  # the whole line has no middle
         logs = np.stack([log_between(low, high) for low, high in ends])
     largest = logs.max(axis=0)

@@ -71,7 +71,7 @@ class Sampler:
     @cached_property
     def intervals(self) -> dict[str, tuple[Interval, ...]]:
         """Numbers kept inside intervals, ascending and apart."""
-        found = {}
+        found: dict[str, tuple[Interval, ...]] = {}
         for name, interval in self.world.ranges.items():
             if interval != WHOLE:
                 found[name] = (interval,)

@@ -20,7 +20,7 @@ from engine.network.network import Network
 from engine.network.nodes import Category
 
 LIMIT = 1e9  # table cells times draws that are summed exactly
-CHUNK = 64e6  # bytes of tables held at once
+CHUNK = 16e6  # bytes of tables held at once, so many that they stay near the processor
 DRAWING = 20.0  # a drawn cell counts as so many summed ones: it takes 20 to 60 times as long, and room of its own
 HEAVY = 1e6  # drawn cells of one table; a larger one is drawn only for what cannot be read without it
 PLANS, DRAWS = 256, 3  # plans, and numbers of draws whose recorded world is kept

@@ -8,7 +8,7 @@ pins; outward gives every marginal, without any division, so that tables may hol
 from __future__ import annotations
 
 import string
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from functools import cached_property
 
@@ -17,6 +17,7 @@ import numpy as np
 from engine.answering.orders import Scopes, elimination_order
 
 Scope = tuple[int, ...]
+Entry = tuple[int, tuple[int, ...], int | None, str]
 DRAWS = "Z"  # the letter of the draws' axis; other letters stand for columns
 LETTERS = string.ascii_letters.replace(DRAWS, "")
 SAFE = 1e-150  # a probability of the pins above this met no cell that mattered below the smallest float
@@ -29,6 +30,10 @@ class Step:
     left: int
     right: int | None
     out: int
+
+    @property
+    def sides(self) -> tuple[int, ...]:
+        return (self.left,) if self.right is None else (self.left, self.right)
 
 
 @dataclass(frozen=True)
@@ -122,25 +127,27 @@ def _tree(
     watched: Sequence[int],
     wholes: tuple[int, ...],
 ) -> Tree:
-    """Choose where each watched label is read, and which outward messages that needs."""
-    parent = {table: step for step in steps for table in (step.left, step.right) if table is not None}
+    """Choose where each watched label is read, and which outward messages that needs.
+
+    A label is read where it is summed out: on a side that hears from outside anyway, else on the smaller one.
+    """
     wanted = set(watched)
-    reads: dict[int, int] = {}
-    for step in steps:
-        sides = (step.left,) if step.right is None else (step.left, step.right)
-        by_cells = sorted(sides, key=lambda side: _cells(scopes[side], sizes), reverse=True)
-        for side in by_cells:  # the smaller of two sides that hold a label comes last and is kept
-            reads.update(dict.fromkeys(wanted.intersection(scopes[side]).difference(scopes[step.out]), side))
+    hearing = set(wholes)  # tables from which something is read, or from what was contracted into them
     outward: set[int] = set()
-    for table in (*reads.values(), *wholes):
-        while table not in outward and table in parent:
-            outward.add(table)
-            table = parent[table].out
+    reads: dict[int, int] = {}
     cells = 0.0
     for step in steps:
-        sides = (step.left,) if step.right is None else (step.left, step.right)
-        union = _cells({label for side in sides for label in scopes[side]}, sizes)
-        cells += union * (1 + sum(side in outward for side in sides))
+        union = {label for side in step.sides for label in scopes[side]}
+        sides = sorted(step.sides, key=lambda side: _cells(scopes[side], sizes))
+        needed = hearing.intersection(sides)
+        for label in wanted.intersection(union).difference(scopes[step.out]):
+            holding = [side for side in sides if label in scopes[side]]
+            reads[label] = next((side for side in holding if side in needed), holding[0])
+            needed.add(reads[label])
+        if needed:
+            hearing.add(step.out)
+            outward |= needed
+        cells += _cells(union, sizes) * (1 + len(needed))
     stored = sum(_cells(scope, sizes) for scope in scopes) + sum(_cells(scopes[table], sizes) for table in outward)
     return Tree(axes, tuple(scopes), tuple(steps), roots, reads, wholes, frozenset(outward), cells, stored)
 
@@ -169,40 +176,42 @@ class Read:
 
 
 class Programme:
-    """A tree's contractions, written out once as subscripts for numpy.einsum."""
+    """A tree's contractions, written out once as subscripts for numpy.einsum.
+
+    Every entry: the table that is made, or read; inward messages and an outward one that go into it; subscripts. An
+    outward message that is one everywhere, as at the roots, is left out.
+    """
 
     def __init__(self, tree: Tree) -> None:
         self.tree = tree
         scopes = tree.scopes
-        received: dict[int, Scope] = {root: () for root in tree.roots}
-        self.inward = [(step, self._inward(step)) for step in tree.steps]
-        self.outward: list[tuple[int, int | None, int, str]] = []  # receiver, sibling, from, subscripts
-        for step in reversed(tree.steps):
-            above = received.get(step.out, ())
-            for side, sibling in ((step.left, step.right), (step.right, step.left)):
-                if side is None or side not in tree.outward:
-                    continue
-                around = above if sibling is None else (*scopes[sibling], *above)
-                received[side] = tuple(label for label in scopes[side] if label in around)
-                sources = [above] if sibling is None else [scopes[sibling], above]
-                self.outward.append((side, sibling, step.out, _subscripts(sources, received[side])))
-        self.reads = [
-            (label, table, _subscripts([scopes[table], received[table]], (label,)))
-            for label, table in tree.reads.items()
+        write = _Writer({label for scope in scopes for label in scope})
+        self.inward = [
+            (step.sides, write([scopes[side] for side in step.sides], scopes[step.out])) for step in tree.steps
         ]
+        told: dict[int, Scope] = {}  # table -> scope of its outward message
+        self.outward: list[Entry] = []
+        for step in reversed(tree.steps):
+            above = step.out if step.out in told else None
+            for side in step.sides:
+                beside = tuple(other for other in step.sides if other != side)
+                if side not in tree.outward or (above is None and not beside):
+                    continue
+                sources = [scopes[other] for other in beside] + ([] if above is None else [told[above]])
+                around = set().union(*sources)
+                told[side] = tuple([label for label in scopes[side] if label in around])
+                self.outward.append((side, beside, above, write(sources, told[side])))
+
+        def read(table: int, scope: Scope) -> Entry:
+            if table not in told:
+                return table, (table,), None, write([scopes[table]], scope)
+            return table, (table,), table, write([scopes[table], told[table]], scope)
+
+        self.reads = [(label, read(table, (label,))) for label, table in tree.reads.items()]
         self.wholes = [
-            (
-                table,
-                _subscripts([scopes[table], received.get(table, ())], scopes[table]),
-                (*np.argsort(tree.axes[table]).tolist(), len(scopes[table])),
-            )
+            (read(table, scopes[table]), (*np.argsort(tree.axes[table]).tolist(), len(scopes[table])))
             for table in tree.wholes
         ]
-
-    def _inward(self, step: Step) -> str:
-        scopes = self.tree.scopes
-        sources = [scopes[step.left]] if step.right is None else [scopes[step.left], scopes[step.right]]
-        return _subscripts(sources, scopes[step.out])
 
     def run(self, tables: Sequence[np.ndarray], scaled: bool = False) -> Read:
         """Contract `tables`, one per leaf: (levels in the leaf's order..., draws or 1).
@@ -222,29 +231,31 @@ class Programme:
             for table, axes in zip(tables, tree.axes, strict=True)
         ]
         log_constant: np.ndarray | float = 0.0
-        for step, subscripts in self.inward:
-            sources = [inward[step.left]] if step.right is None else [inward[step.left], inward[step.right]]
-            message = np.einsum(subscripts, *sources)
+        for sides, subscripts in self.inward:
+            message = np.einsum(subscripts, *(inward[side] for side in sides))
             if scaled:
                 message, log_scale = _scaled(message)
                 log_constant = log_constant + log_scale
             inward.append(message)
-        one = np.ones(1)
-        outward: dict[int, np.ndarray] = dict.fromkeys(tree.roots, one)
-        for side, sibling, source, subscripts in self.outward:
-            above = outward[source]
-            message = np.einsum(subscripts, *([above] if sibling is None else [inward[sibling], above]))
-            outward[side] = _scaled(message)[0] if scaled else message
+        outward: dict[int | None, np.ndarray] = {}
+
+        def made(entry: Entry) -> np.ndarray:
+            _, beside, above, subscripts = entry
+            sources = [inward[table] for table in beside]
+            return np.asarray(np.einsum(subscripts, *sources, *([] if above is None else [outward[above]])))
+
+        for entry in self.outward:
+            outward[entry[0]] = _scaled(made(entry))[0] if scaled else made(entry)
         marginals: dict[int, np.ndarray] = {}
         with np.errstate(invalid="ignore", divide="ignore"):
-            for label, table, subscripts in self.reads:
-                belief = np.einsum(subscripts, inward[table], outward[table])
+            for label, entry in self.reads:
+                belief = made(entry)
                 marginals[label] = belief / belief.sum(axis=0)
             wholes: dict[int, np.ndarray] = {}
-            for table, subscripts, back in self.wholes:
-                belief = np.einsum(subscripts, inward[table], outward[table])
+            for entry, back in self.wholes:
+                belief = made(entry)
                 total = belief.reshape(-1, belief.shape[-1]).sum(axis=0)
-                wholes[table] = np.transpose(belief / total, back)
+                wholes[entry[0]] = np.transpose(belief / total, back)
             log_total = log_constant
             for root in tree.roots:
                 total = inward[root]
@@ -260,7 +271,24 @@ def _scaled(message: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
     return message / divisor, np.log(divisor)
 
 
-def _subscripts(sources: Sequence[Scope], out: Scope) -> str:
-    letters = dict(zip(dict.fromkeys(label for scope in sources for label in scope), LETTERS, strict=False))
-    words = ["".join(letters[label] for label in scope) + DRAWS for scope in (*sources, out)]
-    return ",".join(words[:-1]) + "->" + words[-1]
+class _Writer:
+    """Writes contractions as subscripts, every label with the same letter throughout where there are enough."""
+
+    def __init__(self, labels: Iterable[int]) -> None:
+        every = sorted(labels)
+        self._letters = dict(zip(every, LETTERS, strict=False)) if len(every) <= len(LETTERS) else None
+        self._words: dict[Scope, str] = {}
+
+    def __call__(self, sources: Sequence[Scope], out: Scope) -> str:
+        letters = self._letters
+        if letters is None:
+            letters = dict(zip(dict.fromkeys(label for scope in sources for label in scope), LETTERS, strict=False))
+            words = ["".join([letters[label] for label in scope]) + DRAWS for scope in (*sources, out)]
+        else:
+            words = [self._word(scope, letters) for scope in (*sources, out)]
+        return ",".join(words[:-1]) + "->" + words[-1]
+
+    def _word(self, scope: Scope, letters: Mapping[int, str]) -> str:
+        if scope not in self._words:
+            self._words[scope] = "".join([letters[label] for label in scope]) + DRAWS
+        return self._words[scope]

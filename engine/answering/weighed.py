@@ -10,7 +10,8 @@ from engine.answering.mixed import MixedRead
 from engine.answering.mixture import Mixture
 from engine.answering.particles import Case, Rows
 from engine.answering.sampling import Batch, Sampler
-from engine.answering.tallies import Blend, Floats, Tally, calmed
+from engine.answering.tallies import Blend, Tally, calmed
+from engine.answering.truncated import Floats
 from engine.network.nodes import Number
 
 ENOUGH = 0.2  # of half an interval's width is what a standard error may be

@@ -7,7 +7,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 import engine
-from engine.answering import planner as planning
+from engine.answering import summing
 from engine.answering.orders import elimination_order
 from engine.answering.tree import plan
 from engine.model import Model
@@ -53,12 +53,12 @@ def test_an_order_names_every_label_once_and_is_the_same_each_time(net):
 @given(networks(certain=False))
 def test_chunks_of_draws_join_to_the_same_answer(net):
     whole = Model(net).ask(watch=net.names, pins={net.names[0]: net.nodes[0].levels[0]}, draws=23)
-    kept = planning.CHUNK
+    kept = summing.CHUNK
     try:
-        planning.CHUNK = 1.0
+        summing.CHUNK = 1.0
         chunked = Model(net).ask(watch=net.names, pins={net.names[0]: net.nodes[0].levels[0]}, draws=23)
     finally:
-        planning.CHUNK = kept
+        summing.CHUNK = kept
     for name in net.names:
         np.testing.assert_allclose(chunked[name].among.draws, whole[name].among.draws, rtol=0, atol=1e-12)
         np.testing.assert_allclose(chunked[name].recorded.point, whole[name].recorded.point, rtol=0, atol=1e-12)
@@ -67,7 +67,7 @@ def test_chunks_of_draws_join_to_the_same_answer(net):
 def test_columns_are_summed_one_by_one_where_all_at_once_is_too_wide(chain_of_forty, monkeypatch):
     asked = {"watch": ["c20", "c30"], "draws": 20}
     together = Model(chain_of_forty).ask(**asked)
-    monkeypatch.setattr(planning, "LIMIT", together.cost - 1.0)
+    monkeypatch.setattr(summing, "LIMIT", together.cost - 1.0)
     apart = Model(chain_of_forty).ask(**asked)
     assert apart.cost != together.cost
     for name in ("c20", "c30"):
