@@ -66,8 +66,8 @@ def moments_between(start: Floats, end: Floats) -> tuple[Floats, Floats]:
     low, high = np.where(upper, start, -end), np.where(upper, end, -start)  # now the nearer end is `low`
     log_mass = log_between(low, high)
     empty = ~(high > low)
-    safe = np.where(np.isfinite(log_mass), log_mass, 0.0)
-    with np.errstate(over="ignore"):
+    safe = np.where(np.isfinite(log_mass), log_mass, np.inf)
+    with np.errstate(over="ignore", invalid="ignore"):
         at_low = _density_over(low, safe)
         at_high = _density_over(high, safe)
         mean = at_low - at_high
