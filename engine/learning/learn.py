@@ -58,7 +58,7 @@ def learn(
     check_rows(table.rows)
     look = Looking(progress)
     numbers, notes = numbers_to_learn(table, order, max_parents, look.within)
-    coded = table.coded(order.columns, numbers)
+    coded = table.coded(order.columns, numbers, partial(_linked, order))
     return learn_coded(coded, order, table.digest, max_links, max_parents, graphs, seed, look.after, ess, folds, notes)
 
 
@@ -117,6 +117,10 @@ def learn_coded(
     said = (*notes, *_left_out(stages, scores, max_parents), *at_cap(cap, max_parents))
     say.finish()
     return Learned(order, coded, curve, recommended, found.parents, sure, max_parents, seed, digest, said, cap)
+
+
+def _linked(order: Order, one: str, other: str) -> bool:
+    return order.may_lead(one, other) or order.may_lead(other, one)
 
 
 def _scores(counts: ArrayCounts, moments: ArrayMoments | None, size: int, ess: float, say: Saying) -> MixedScores:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Callable, Collection, Iterable, Mapping
 from dataclasses import dataclass
 
 import numpy as np
@@ -19,37 +19,61 @@ class DesignEffect:
     """How far groups lower the effective number of records.
 
     groups: how many there are.  size: the mean size of the group that a record finds itself in, by weight, at least 1.
-    alike: the mean intraclass correlation of the columns, at most 1; under 0 where groups differ less than by chance.
-    same: columns that never vary inside a group.
+    alike: column -> its intraclass correlation, at most 1; under 0 where groups differ less than by chance. A column
+    that never varies, and one of which nothing can be said, is not there.
     """
 
     groups: int
     size: float
-    alike: float
-    same: tuple[str, ...] = ()
+    alike: Mapping[str, float]
 
     @property
-    def factor(self) -> float:
-        """What the effective number of records is divided by: 1 + (size - 1) x alike (Kish 1965), at least 1."""
-        return max(1.0, 1.0 + (self.size - 1.0) * self.alike)
+    def same(self) -> tuple[str, ...]:
+        """Columns that never vary inside a group."""
+        return tuple(name for name, each in self.alike.items() if each >= 1.0 - 1e-9)
+
+    def correlation(
+        self, names: Collection[str] | None = None, linked: Callable[[str, str], bool] = lambda one, other: True
+    ) -> float:
+        """The correlation that the records count by when the columns `names` are learned together, 0 to 1.
+
+        names: None for all.  linked: whether two columns may be parent and child, either way round.
+
+        Groups of size m raise the variance of the coefficient of x in a model of y by 1 + (m - 1) r_x r_y (Kish 1965
+        for means; Moulton 1990 for coefficients): in full where both are the same all through a group, and not at all
+        where one of them varies as if there were no groups. So it takes a pair to make links falsely certain, and one
+        alike pair is enough, however many other columns there are. Of every pair that may be linked, the lesser of
+        the two is at least their product, and is what a share of that column needs; the largest of these serves all
+        counts, since they belong to all columns together. Columns without a pair are only told the shares of: then
+        the largest of all.
+        """
+        found = sorted(
+            ((each, name) for name, each in self.alike.items() if names is None or name in names), reverse=True
+        )
+        for place, (lesser, name) in enumerate(found):
+            if any(linked(other, name) for _, other in found[:place]):
+                return max(0.0, lesser)
+        return max(0.0, found[0][0]) if found else 0.0
+
+    def factor(
+        self, names: Collection[str] | None = None, linked: Callable[[str, str], bool] = lambda one, other: True
+    ) -> float:
+        """What the effective number of records is divided by: 1 + (size - 1) x `correlation`, at least 1."""
+        return 1.0 + (self.size - 1.0) * self.correlation(names, linked)
 
 
 def design_effect(group: Ints, weights: Floats, columns: Iterable[Column]) -> DesignEffect:
-    """The design effect of `group`, (rows,) 0 to groups - 1, for tables that are learned from as a whole.
+    """The design effect of `group`, (rows,) 0 to groups - 1.
 
     weights: (rows,) over 0, of any sum.  columns: those that a model may be learned from, of the same rows.
-    The counts of a table belong to all of its columns together, so one factor serves them all, and the correlation in
-    it is the mean over the columns: one column that never varies inside a group does not by itself make a case of each
-    group. The size is the sum of squared group weights by the sum of squared weights (Gabler, Häder & Lahiri 1999),
-    which for equal weights is Kish's sum of squared sizes by the sum of sizes.
+    The size is the sum of squared group weights by the sum of squared weights (Gabler, Häder & Lahiri 1999), which for
+    equal weights is Kish's sum of squared sizes by the sum of sizes.
     """
     together = np.bincount(group, weights)
     size = float((together**2).sum() / (weights**2).sum())
     found = {column.name: alike(group, column) for column in columns}
     correlations = {name: each for name, each in found.items() if each is not None}
-    mean = float(np.mean(list(correlations.values()))) if correlations else 0.0
-    same = tuple(name for name, each in correlations.items() if each >= 1.0 - 1e-9)
-    return DesignEffect(int(together.size), max(1.0, size), mean, same)
+    return DesignEffect(int(together.size), max(1.0, size), correlations)
 
 
 def alike(group: Ints, column: Column) -> float | None:

@@ -20,15 +20,17 @@ Kept = NDArray[np.bool_]
 
 @dataclass(frozen=True)
 class Standing:
-    """What each record counts for in learning.
+    """What each record counts for.
 
-    weights: (rows,) float64, summing to the effective number of records.  group: (rows,) int32 from 0, or None.
-    said: sentences on what weights and groups do to that number.
+    weights: (rows,) float64, summing to the effective number of records as if none belonged together.
+    group: (rows,) int32 from 0, or None.  effect: what groups do to that number, None without.
+    said: sentences on what weights and groups do to it.
     """
 
     weights: NDArray[np.float64]
     group: NDArray[np.int32] | None
     said: tuple[str, ...]
+    effect: DesignEffect | None = None
 
 
 def weights_of(name: str, cells: Cells, kept: Kept) -> NDArray[np.float64]:
@@ -77,8 +79,9 @@ def groups_of(name: str, cells: Cells, kept: Kept) -> NDArray[np.int32]:
 def standing(columns: Mapping[str, Column], rows: int) -> Standing:
     """What each of the `rows` kept records counts for.
 
-    Weights are scaled to sum to Kish's effective size, the squared sum by the sum of squares (Kish 1965), and then
-    divided by the design effect of the groups; without both columns every record counts for 1.
+    Weights are scaled to sum to Kish's effective size, the squared sum by the sum of squares (Kish 1965); without a
+    weight every record counts for 1. Groups lower that number by how alike the columns are that are learned together,
+    so it is divided when these are known.
     Raises Refusal when two columns are taken as the weight, or as the group.
     """
     weight, group = _only(columns, "weight"), _only(columns, "group")
@@ -95,9 +98,8 @@ def standing(columns: Mapping[str, Column], rows: int) -> Standing:
         return Standing(weights, None, tuple(said))
     used = [column for column in columns.values() if column.used]
     effect = design_effect(group.codes, weights, used)
-    weights = weights / effect.factor
-    said += _grouped(group, effect, rows, float(weights.sum()))
-    return Standing(weights, group.codes, tuple(said))
+    said += _grouped(group, effect, rows, float(weights.sum()) / effect.factor())
+    return Standing(weights, group.codes, tuple(said), effect)
 
 
 def _only(columns: Mapping[str, Column], kind: str) -> Column | None:
@@ -113,22 +115,23 @@ def _only(columns: Mapping[str, Column], kind: str) -> Column | None:
 
 
 def _grouped(group: Column, effect: DesignEffect, rows: int, worth: float) -> list[str]:
-    """What a group does to the effective number of records, in sentences."""
+    """What a group does to the effective number of records, in sentences.  worth: when all columns are learned from."""
     name = quoted(group.name)
     said = []
     if effect.groups == rows:
         said.append(f"Every record is a group of its own by {name}, so grouping changes nothing.")
-    elif effect.factor == 1.0:
+    elif not any(each > 0.0 for each in effect.alike.values()):
         said.append(
             f"The records stand in {_people(effect.groups)} groups by {name}. Those of one group are no more alike "
             "than others, so each counts as a case of its own."
         )
     else:
-        correlation = f"{effect.alike:.2f}"
-        alike = f"alike (intraclass correlation {correlation} on average)" if float(correlation) else "a little alike"
+        correlation = f"{effect.correlation():.2f}"
+        where = " or more in two columns" if len(effect.alike) > 1 else ""
+        alike = f"alike (intraclass correlation {correlation}{where})" if float(correlation) else "a little alike"
         said.append(
             f"The records stand in {_people(effect.groups)} groups by {name}. Those of one group are {alike}, so that "
-            f"all of them are worth {_worth(worth)} separate cases."
+            f"all of them are worth {_worth(worth)} separate cases when all columns are learned from."
         )
         if effect.same:
             told = listing([quoted(each) for each in effect.same])

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import hashlib
 import json
-from collections.abc import Collection, Mapping, Sequence
+from collections.abc import Callable, Collection, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -16,6 +16,7 @@ from engine.records.bands import is_range, level_positions, range_ends
 from engine.records.cells import Cells, cells
 from engine.records.column import SMALL_COUNT, Coded, Column, Kind
 from engine.records.columns import Choice, column_of, take
+from engine.records.design_effect import DesignEffect
 from engine.records.standing import standing
 from engine.records.wording import listing, people
 from engine.refusal import Refusal, quoted
@@ -30,8 +31,9 @@ class Table:
     frame: every row and column as read.  kept: (rows read,) True where no column made the row drop.
     columns: name -> Column, in file order.  dropped: column -> rows that are blank there and so were dropped.
     rows: rows kept.  warnings: sentences about the table as a whole.
-    weights: (rows,) float64, what each record counts for in learning: they sum to the effective number of records, and
-    are 1 without a weight and a group.  group: (rows,) int32 from 0, which rows belong together, or None.
+    weights: (rows,) float64, what each record counts for as if none belonged together: they sum to Kish's effective
+    number of records, and are 1 without a weight.  group: (rows,) int32 from 0, which rows belong together, or None.
+    effect: what groups do to that number, by the columns learned together; None without.
     """
 
     name: str
@@ -42,6 +44,7 @@ class Table:
     weights: NDArray[np.float64]
     warnings: tuple[str, ...] = ()
     group: NDArray[np.int32] | None = None
+    effect: DesignEffect | None = None
 
     @classmethod
     def from_frame(
@@ -84,7 +87,8 @@ class Table:
         columns = {column: column_of(each, kept) for column, each in taken.items()}
         counting = standing(columns, rows)
         said = (*warnings, *_rows_left_out(kept, dropped), *counting.said)
-        return cls(name, frame.copy(deep=False), columns, kept, dropped, counting.weights, said, group=counting.group)
+        weights, group, effect = counting.weights, counting.group, counting.effect
+        return cls(name, frame.copy(deep=False), columns, kept, dropped, weights, said, group=group, effect=effect)
 
     @property
     def rows(self) -> int:
@@ -118,9 +122,16 @@ class Table:
         positions = level_positions(made.levels, made.kind, made.cuts, wanted, column)
         return np.isin(made.codes, list(positions))
 
-    def coded(self, names: Sequence[str], numbers: Collection[str] = ()) -> Coded:
+    def coded(
+        self,
+        names: Sequence[str],
+        numbers: Collection[str] = (),
+        linked: Callable[[str, str], bool] = lambda one, other: True,
+    ) -> Coded:
         """Those columns as level positions, and the values of those in `numbers`, which no record leaves blank.
 
+        The weights are those of the table by the design effect of the groups on these columns.
+        linked: whether one column may be a parent of the other, either way round.
         Raises Refusal for an unknown column and one that is left out.
         """
         made = [self._used(name) for name in names]
@@ -131,6 +142,7 @@ class Table:
         codes = np.empty((self.rows, len(made)), dtype=np.int32, order="F")
         for place, column in enumerate(made):
             codes[:, place] = column.codes
+        factor = 1.0 if self.effect is None else self.effect.factor(names, linked)
         return Coded(
             names=tuple(names),
             kinds=tuple(column.kind for column in made),
@@ -138,7 +150,7 @@ class Table:
             cuts=tuple(column.cuts for column in made),
             has_blank=tuple(column.has_blank for column in made),
             codes=codes,
-            weights=self.weights,
+            weights=self.weights / factor,
             group=self.group,
             numbers=tuple(held),
             values=values,

@@ -59,12 +59,14 @@ def test_weights_and_groups_are_said_with_what_the_records_are_worth(client: Tes
     rng = np.random.default_rng(3)
     frame = mixed_evening(600)
     site = rng.integers(0, 30, 600)
-    frame["mark"] = np.round(frame["mark"] + rng.normal(0.0, 9.0, 30)[site], 1)
+    for alike in ("mark", "travel time"):
+        frame[alike] = np.round(frame[alike] + rng.normal(0.0, 9.0, 30)[site], 1)
     frame = frame.assign(site=[f"site {each}" for each in site], counts=rng.choice([0.5, 1.0, 3.0], 600))
     study = kept(app, frame, MIXED_PLAN, {"site": "group", "counts": "weight"})
     table = app.state.store.table(study.key)
     equal = frame["counts"].sum() ** 2 / (frame["counts"] ** 2).sum()
-    worth = round(float(table.weights.sum()))
+    order = MIXED_PLAN.order()
+    worth = round(float(table.coded(order.columns, (), order.may_lead).weights.sum()))
     assert worth < equal < 600
     told = words(client.get(f"/study/{study.key}/model").text)
     assert f"By their weights the 600 records are worth {round(equal):,} of equal weight" in told
