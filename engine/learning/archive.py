@@ -106,6 +106,7 @@ def coded_described(coded: Coded) -> Described:
         "cuts": coded.cuts,
         "has_blank": coded.has_blank,
         "numbers": coded.numbers,
+        "units": coded.units,
     }
 
 
@@ -131,4 +132,5 @@ def coded_from(described: Described, arrays: Mapping[str, np.ndarray]) -> Coded:
         numbers=tuple(described["numbers"]),
         values=arrays.get("values", np.empty((len(arrays["codes"]), 0))),
         group=arrays.get("group"),
+        units=tuple(described.get("units", ())),
     )

@@ -81,6 +81,7 @@ def family_node(
             means.variance,
             coded.cuts[child],
             regression,
+            coded.units[child],
         )
     posterior = dirichlet_posterior(counts.family(parents, child)[0])
     return Category(
@@ -92,4 +93,5 @@ def family_node(
         coded.kinds[child],
         coded.cuts[child],
         coded.has_blank[child],
+        coded.units[child],
     )

@@ -10,6 +10,7 @@ import numpy as np
 
 from engine.network.regression import Regression
 from engine.records.bands import band_levels, checked_cuts
+from engine.records.units import checked_unit
 from engine.refusal import Refusal, quoted
 
 
@@ -19,8 +20,8 @@ class Category:
 
     table: float64, one axis per parent in order, own levels last; each row sums to 1.
     dirichlet: posterior Dirichlet parameters, same shape as `table`; None when the table is known exactly.
-    kind, cuts, has_blank: as in engine.records.Column (a number here acts through its bands).
-    Raises Refusal when the table is not an array of numbers.
+    kind, cuts, has_blank, unit: as in engine.records.Column (a number here acts through its bands).
+    Raises Refusal when the table is not an array of numbers, or the unit no short text.
     """
 
     name: str
@@ -31,6 +32,7 @@ class Category:
     kind: str = "category"
     cuts: tuple[float, ...] = ()
     has_blank: bool = False
+    unit: str = ""
 
     def __post_init__(self) -> None:
         for what, given in (("levels", self.levels), ("parents", self.parents)):
@@ -40,6 +42,7 @@ class Category:
                     where=self.name,
                     do=f"Write [{given!r}].",
                 )
+        object.__setattr__(self, "unit", checked_unit(self.name, self.unit))
         object.__setattr__(self, "levels", tuple(self.levels))
         object.__setattr__(self, "parents", tuple(self.parents))
         try:
@@ -63,7 +66,8 @@ class Number:
     variance of 0 means that the number follows exactly.
     bands: inner cuts, ascending, through which it acts on categories: band i holds bands[i-1] <= x < bands[i].
     regression: the posterior; None when the number's parameters are known exactly.
-    Raises Refusal when one of them is not an array of numbers, and for cuts that do not rise.
+    unit: what it is measured in, "" where none is stated.
+    Raises Refusal when one of them is not an array of numbers, for cuts that do not rise and a unit of no short text.
     """
 
     name: str
@@ -73,6 +77,7 @@ class Number:
     variance: np.ndarray | Sequence[object] | float = 1.0
     bands: tuple[float, ...] = ()
     regression: Regression | None = None
+    unit: str = ""
 
     def __post_init__(self) -> None:
         if isinstance(self.parents, str):
@@ -97,6 +102,7 @@ class Number:
         for what, array in arrays.items():
             object.__setattr__(self, what, array)
         object.__setattr__(self, "bands", checked_cuts(self.name, self.bands))
+        object.__setattr__(self, "unit", checked_unit(self.name, self.unit))
 
     @property
     def levels(self) -> tuple[str, ...]:

@@ -121,7 +121,7 @@ def program(network: Network, order: Order | None = None, units: Mapping[str, st
             parts.append(f"\n# {heading}\n")
         for node in nodes:
             if isinstance(node, Category):
-                parts.append(_category(node, network))
+                parts.append(_category(node, network, (units or {}).get(node.name)))
             else:
                 parts.append(_number(node, network, (units or {}).get(node.name)))
     return "\n".join([*parts, TAIL])
@@ -144,9 +144,10 @@ def _stages(network: Network, order: Order | None) -> Iterator[tuple[str, list[N
             yield f"Stage {number}: {_remark(stage.name)}", nodes
 
 
-def _category(node: Category, network: Network) -> str:
+def _category(node: Category, network: Network, unit: str | None) -> str:
+    kind = f"{KINDS[node.kind]}, in {_remark(unit)}" if unit else KINDS[node.kind]
     lines = [
-        f"# {_remark(node.name)}. {KINDS[node.kind]}; {_comes(node)}.",
+        f"# {_remark(node.name)}. {kind}; {_comes(node)}.",
         "category(",
         f"    {node.name!r},",
         *_list("levels", [repr(level) for level in node.levels]),

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from collections.abc import Mapping
+from dataclasses import dataclass, field, replace
 from typing import Literal
 
 import numpy as np
@@ -27,6 +28,7 @@ class Column:
     blank: what a blank means, "level" (in a group: a case by itself) or "drop row".
     blanks: blank cells among the rows read.
     warnings: sentences for the Records page.
+    unit: what a number is measured in, "" where none is stated; nothing that is learned depends on it.
     """
 
     name: str
@@ -39,6 +41,7 @@ class Column:
     blank: Literal["level", "drop row"] = "level"
     blanks: int = 0
     warnings: tuple[str, ...] = ()
+    unit: str = ""
 
     @property
     def used(self) -> bool:
@@ -61,6 +64,7 @@ class Coded:
     numbers: positions of the columns learned as numbers, ascending; the codes of these are their bands.
     values: (rows, numbers) float64 in their own units, finite.
     group: (rows,) int32, which rows belong together; None when each record is a case by itself.
+    units: one entry per column, as in `Column`.
     """
 
     names: tuple[str, ...]
@@ -73,3 +77,14 @@ class Coded:
     numbers: tuple[int, ...] = ()
     values: np.ndarray = field(default_factory=lambda: np.empty((0, 0)))
     group: np.ndarray | None = None
+    units: tuple[str, ...] = ()
+
+    def __post_init__(self) -> None:
+        if not self.units:
+            object.__setattr__(self, "units", ("",) * len(self.names))
+
+    def in_units(self, units: Mapping[str, str]) -> Coded:
+        """The same numbers with these units and no others; this object where nothing changes."""
+        kinds = zip(self.names, self.kinds, strict=True)
+        wanted = tuple(units.get(name, "") if kind == "number" else "" for name, kind in kinds)
+        return self if wanted == self.units else replace(self, units=wanted)

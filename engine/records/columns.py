@@ -14,6 +14,7 @@ from engine.records.cells import Cells, as_numbers, level_text
 from engine.records.column import BLANK, SMALL_COUNT, Column, Kind
 from engine.records.kinds import MOST_LEVELS, Guess, category_levels, grade_levels, guess
 from engine.records.standing import groups_of, weights_of
+from engine.records.units import checked_unit
 from engine.records.wording import cited, listing, per_cent
 from engine.refusal import Refusal, quoted
 
@@ -30,6 +31,7 @@ class Choice:
     cuts: Sequence[float] | None = None
     grades: Sequence[str] | None = None
     blank: str | None = None
+    unit: str | None = None
 
 
 @dataclass(frozen=True)
@@ -43,6 +45,7 @@ class Taken:
     blank: Literal["level", "drop row"]
     why: str
     warnings: tuple[str, ...]
+    unit: str = ""
 
     @property
     def drops(self) -> bool:
@@ -59,7 +62,7 @@ def take(name: str, cells: Cells, choice: Choice) -> Taken:
     else:
         why = f"You chose it. {guessed.why}" if kind == guessed.kind else "You chose it."
     warnings = guessed.warnings if kind == guessed.kind else ()
-    return Taken(name, cells, choice, kind, _blank(name, choice), why, warnings)
+    return Taken(name, cells, choice, kind, _blank(name, choice), why, warnings, _unit(name, choice, kind))
 
 
 def column_of(taken: Taken, kept: NDArray[np.bool_]) -> Column:
@@ -98,7 +101,10 @@ def column_of(taken: Taken, kept: NDArray[np.bool_]) -> Column:
         warnings.append("Every record that is kept has the same value.")
     if cells.blanks and taken.blank == "level":
         codes, levels = _with_blank(codes, levels)
-    return Column(name, taken.kind, taken.why, levels, codes, cuts, numbers, taken.blank, cells.blanks, tuple(warnings))
+    return Column(
+        *(name, taken.kind, taken.why, levels, codes, cuts, numbers, taken.blank, cells.blanks, tuple(warnings)),
+        unit=taken.unit,
+    )
 
 
 def _kind(name: str, choice: Choice, guessed: Guess) -> Kind:
@@ -140,6 +146,18 @@ def _blank(name: str, choice: Choice) -> Literal["level", "drop row"]:
         where=name,
         do=f"Choose among {', '.join(BLANKS)}.",
     )
+
+
+def _unit(name: str, choice: Choice, kind: Kind) -> str:
+    """The unit of a number, "" where none is stated and for a column that is left out."""
+    unit = "" if choice.unit is None else checked_unit(name, choice.unit)
+    if unit and kind not in ("number", "left out"):
+        raise Refusal(
+            f"{quoted(name)} has a unit, {quoted(unit)}, but is taken as a {kind}; only a number has one.",
+            where=name,
+            do="Make it a number, or take the unit away.",
+        )
+    return unit if kind == "number" else ""
 
 
 def _banded(taken: Taken, kept: NDArray[np.bool_]) -> tuple[NDArray[np.float64], tuple[float, ...]]:

@@ -33,6 +33,7 @@ def read_table(
     bands: Mapping[str, Sequence[float]] | None = None,
     grades: Mapping[str, Sequence[str]] | None = None,
     blanks: Mapping[str, str] | None = None,
+    units: Mapping[str, str] | None = None,
 ) -> Table:
     """Read a CSV, TSV, XLSX or Parquet file and decide every column's kind (see Table.from_frame).
 
@@ -40,7 +41,7 @@ def read_table(
     cannot be read.
     """
     frame, warnings = read_frame(source, name)
-    return Table.from_frame(frame, kinds, bands, grades, blanks, _called(source, name), warnings)
+    return Table.from_frame(frame, kinds, bands, grades, blanks, _called(source, name), warnings, units)
 
 
 def read_frame(source: Source, name: str | None = None) -> tuple[pd.DataFrame, tuple[str, ...]]:

@@ -56,21 +56,23 @@ class Table:
         blanks: Mapping[str, str] | None = None,
         name: str = "",
         warnings: Sequence[str] = (),
+        units: Mapping[str, str] | None = None,
     ) -> Table:
         """Decide every column's kind: as given, else guessed from its cells.
 
         kinds: column -> "category", "grade", "number" or "left out"; of one column each "weight", what every record
         counts for, and "group", which records belong together.  bands: column -> inner cuts, ascending.
         grades: column -> levels, low to high.  blanks: column -> "level" or "drop row".
+        units: number -> what it is measured in, a short text; the digest does not change with it.
         Raises Refusal for a choice about an unknown column, one that its cells do not bear, a second weight or group,
         and fewer than two rows or columns left.
         """
-        kinds, bands, grades, blanks = kinds or {}, bands or {}, grades or {}, blanks or {}
-        _check(frame, {"kinds": kinds, "bands": bands, "grades": grades, "blanks": blanks})
+        kinds, bands, grades, blanks, units = kinds or {}, bands or {}, grades or {}, blanks or {}, units or {}
+        _check(frame, {"kinds": kinds, "bands": bands, "grades": grades, "blanks": blanks, "units": units})
         taken = {}
         for column in frame.columns:
-            choice = Choice(kinds.get(column), bands.get(column), grades.get(column), blanks.get(column))
-            taken[column] = take(column, cells(column, frame[column]), choice)
+            own = (kinds.get(column), bands.get(column), grades.get(column), blanks.get(column), units.get(column))
+            taken[column] = take(column, cells(column, frame[column]), Choice(*own))
         kept = np.ones(len(frame), dtype=np.bool_)
         dropped = {}
         for column, each in taken.items():
@@ -154,6 +156,7 @@ class Table:
             group=self.group,
             numbers=tuple(held),
             values=values,
+            units=tuple(column.unit for column in made),
         )
 
     def _used(self, name: str) -> Column:
