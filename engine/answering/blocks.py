@@ -18,6 +18,7 @@ from engine.network.regression import Coefficients
 
 Floats = NDArray[np.float64]
 
+FAINT = -300.0  # natural log below which a cell may underflow beside others
 EXACTLY = 230.0  # natural log that a value counts for where its number could be nothing else: more than any density
 
 
@@ -111,7 +112,7 @@ def restricted(
 
 
 def factor(solved: Solved, world: MixedWorld, layout: Layout, finely: bool) -> tuple[Floats, Floats, Floats]:
-    """(scope..., draws) of a block, largest cell of every draw at 1, and the natural log of what was divided out.
+    """(scope..., draws) natural logs of a block, largest cell of every draw at 0, and what was taken from all of them.
 
     Third, (draws,) how much of that comes from small probabilities of two numbers in their cells, 0 or less.
     finely: small probabilities of two numbers in their cells have all their digits, too.
@@ -129,7 +130,34 @@ def factor(solved: Solved, world: MixedWorld, layout: Layout, finely: bool) -> t
     sure = solved.open(solved.given.certain.astype(np.float64))
     lifted = EXACTLY * sure.reshape(-1, sure.shape[-1]).max(axis=0)
     rare = largest - np.where(density > -np.inf, density, 0.0) if len(block.gates) > 1 else np.zeros(1)
-    return np.exp(flat - largest), largest - lifted, rare
+    return flat - largest, largest - lifted, rare
+
+
+def gathered(logs: Sequence[Floats], scopes: Sequence[Sequence[int]]) -> tuple[list[Floats], Floats]:
+    """Factors by their natural logs, so that those that contradict each other do not underflow before they meet.
+
+    What a factor says of the labels that it shares with a later one, at its likeliest there, is handed on to that one:
+    the product of all stays the same. Also the natural log of what was taken from every cell, by draw.
+    """
+    found, taken = list(logs), np.zeros(1)
+    for place, scope in enumerate(scopes):
+        later = (other for other in range(place + 1, len(scopes)) if set(scope) & set(scopes[other]))
+        to = next(later, None)
+        if to is not None and np.any((found[place] < FAINT) & (found[place] > -np.inf)):
+            apart = tuple(axis for axis, label in enumerate(scope) if label not in scopes[to])
+            best = found[place].max(axis=apart, keepdims=True)
+            best = np.where(best > -np.inf, best, 0.0)
+            found[place] = found[place] - best
+            shared = [label for label in scope if label in scopes[to]]
+            handed = np.squeeze(best, axis=apart)
+            order = sorted(range(len(shared)), key=lambda axis: scopes[to].index(shared[axis]))
+            sizes = {label: handed.shape[axis] for axis, label in enumerate(shared)}
+            handed = np.transpose(handed, (*order, len(shared)))
+            total = found[to] + handed.reshape((*(sizes.get(label, 1) for label in scopes[to]), handed.shape[-1]))
+            largest = total.reshape(-1, total.shape[-1]).max(axis=0)
+            largest = np.where(largest > -np.inf, largest, 0.0)
+            found[to], taken = total - largest, taken + largest
+    return found, taken
 
 
 def _intervals(solved: Solved, world: MixedWorld, layout: Layout) -> dict[str | None, tuple[Floats, Floats]]:

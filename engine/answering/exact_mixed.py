@@ -188,14 +188,18 @@ def _read(reading: Reading, world: MixedWorld, drawn: Drawn, width: int, finely:
             solved[block.names] = blocks.solve(block, world, drawn, keep.get(block.names, ()))
     log_constant: Floats = np.zeros(1)
     rare: Floats = np.zeros(1)
+    logs: list[Floats] = []
     for block in laid.factors:
         cells, log_scale, small = blocks.factor(solved[block.names], world, laid, finely)
-        tables.append(cells)
+        logs.append(cells)
         log_constant, rare = log_constant + log_scale, rare + small
+    logs, taken = blocks.gathered(logs, [block.scope for block in laid.factors])
+    log_constant = log_constant + taken
+    tables.extend(np.exp(cells) for cells in logs)
     tables.extend(np.ones((*(laid.sizes[label] for label in scope), 1)) for scope in reading.ones)
     read = reading.tree.programme.run(tables)
     coarse = not finely and any(len(block.gates) > 1 for block in laid.factors)
-    if coarse and not np.all(read.log_evidence + rare > np.log(LIKELY)):
+    if coarse and not np.all(read.log_evidence + taken + rare > np.log(LIKELY)):
         return _read(reading, world, drawn, width, finely=True)
     shares: dict[str, Floats] = {}
     numbers: dict[str, Mixture] = {}

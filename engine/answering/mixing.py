@@ -63,6 +63,7 @@ class Mixing:
         self._plans: Kept[Hashable, exact_mixed.Plan] = Kept(PLANS)
         self._worlds: Kept[Hashable, Split] = Kept(PLANS)
         self._recorded: Kept[Hashable, Seen] = Kept(RECORDED)
+        self._sampled: Kept[Hashable, list[Seen]] = Kept(RECORDED)
 
     def divided(self, scene: Scene, count: int) -> tuple[list[tuple[str, ...]], tuple[str, ...], NotExactError | None]:
         """Columns to read exactly, in groups, those to sample, and why these cannot be read exactly.
@@ -70,9 +71,8 @@ class Mixing:
         Without pins and levers the groups do not hang on what was asked. Raises NotExactError when there are no columns
         and the probability of the pins by itself cannot be had exactly.
         """
-        bare = not (scene.before.columns or scene.levers)
-        whole = tuple(node.name for node in self.network.nodes) if bare else scene.columns
-        if self._cost(scene.reading(whole), count) <= (AT_ONCE if bare else LIMIT):
+        whole = tuple(node.name for node in self.network.nodes) if scene.bare else scene.columns
+        if self._cost(scene.reading(whole), count) <= (AT_ONCE if scene.bare else LIMIT):
             return [whole], (), None
         exact: list[tuple[str, ...]] = []
         sampled: list[str] = []
@@ -89,17 +89,19 @@ class Mixing:
                 reason = reason or NotExactError((column,), cost, self._planned(alone).plan.why)
         return exact, tuple(sampled), reason
 
-    def read(self, scene: Scene, count: int, seed: int, keep: bool) -> tuple[Seen, float]:
-        """Read a world exactly, and what it cost. keep: for the next question."""
+    def read(self, scene: Scene, count: int, seed: int) -> tuple[Seen, float]:
+        """Read a world exactly, and what it cost. The recorded world is kept for the next question."""
         planned = self._planned(scene)
         make = partial(self._read, scene, planned, count, seed)
-        seen = self._recorded.get((scene.key, count, seed), make) if keep else make()
+        seen = self._recorded.get((scene.key, count, seed), make) if scene.bare else make()
         return seen, self._cost(scene, count)
 
-    def sampled(self, scene: Scene, count: int, seed: int, keep: bool) -> Seen:
-        """Read a world by weighting. keep: for the next question."""
-        make = partial(self._sample, scene, count, seed)
-        return self._recorded.get((scene.key, count, seed, "sampled"), make) if keep else make()
+    def sampled(self, scenes: tuple[Scene, ...], count: int, seed: int) -> list[Seen]:
+        """Read worlds of one question by weighting, on the same particles. The recorded world is kept."""
+        make = partial(self._sample, scenes, count, seed)
+        if len(scenes) == 1 and scenes[0].bare:
+            return self._sampled.get((scenes[0].key, count, seed), make)
+        return make() if scenes else []
 
     def _cost(self, scene: Scene, count: int) -> float:
         """Cells times draws to sum, infinite when there is no exact route, and those to draw as so many more."""
@@ -133,10 +135,12 @@ class Mixing:
         apart = planned.split
         return _seen(scene, apart, planned.plan.read(apart.world, _drawn(apart, count, seed), count))
 
-    def _sample(self, scene: Scene, count: int, seed: int) -> Seen:
-        apart = self._apart(scene)
+    def _sample(self, scenes: tuple[Scene, ...], count: int, seed: int) -> list[Seen]:
+        parts = [self._apart(scene) for scene in scenes]
+        worlds = [(apart.world, _drawn(apart, count, seed)) for apart in parts]
         particles = (weighting.PARTICLES, weighting.MOST) if self._whole else (weighting.a_draw(count),) * 2
-        return _seen(scene, apart, weighting.weigh(apart.world, _drawn(apart, count, seed), count, seed, *particles))
+        reads = weighting.weigh_together(worlds, count, seed, *particles)
+        return [_seen(scene, apart, read) for scene, apart, read in zip(scenes, parts, reads, strict=True)]
 
     def _planned(self, scene: Scene) -> Planned:
         """The world and its plan; another value pinned or set in the same columns needs no new plan."""

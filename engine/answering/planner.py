@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from functools import reduce
 
 import numpy as np
 
@@ -21,6 +22,7 @@ from engine.refusal import Refusal, quoted
 TREE = "by one tree over the columns that bear on the question"
 MIXED = "by every configuration of the categories that touch its numbers"
 WEIGHTING = "by likelihood weighting"
+SET = ("set", "against")  # worlds with levers
 FEW = 3  # sampled columns that are named
 
 
@@ -74,6 +76,20 @@ class Turn:
     reads: dict[str, None] = field(default_factory=dict)
 
 
+@dataclass
+class Begun:
+    """A world read so far: what was read of it exactly, and the columns left to sample, None where nothing is."""
+
+    scene: Scene
+    parts: list[Seen] = field(default_factory=list)
+    left: tuple[str, ...] | None = None
+
+    @property
+    def possible(self) -> bool:
+        """Whether the pins can be, as far as that is known yet."""
+        return all(part.possible for part in self.parts)
+
+
 class Planner:
     """Answers questions of one network; keeps its plans and its recorded world.  plans, whole: as in `Summing`."""
 
@@ -90,22 +106,34 @@ class Planner:
         """
         turn = Turn(draws if self.network.drawable else 0, seed, exact)
         recorded = self._read(Scene(Pins(), {}, asked.columns), turn)
-        among, log_evidence = recorded, 0.0
+        begun: dict[str, Begun] = {}
         if asked.pinned:
-            among = self._read(Scene(asked.before, {}, asked.columns), turn)
-            log_evidence = float(among.log_evidence[0])
-            if not (asked.values or among.error):
-                log_evidence = min(log_evidence, 0.0)  # rounding may lift certainty above it
-            if not among.possible:
+            begun["among"] = self._begin(Scene(asked.before, {}, asked.columns), turn)
+            if not begun["among"].possible:
                 raise self._impossible(Scene(asked.before, {}, ()), turn)
-        set_world, against, had = None, None, None
-        if asked.levers:
-            set_world = self._set(asked, asked.levers, among, turn)
-            had = self._had(asked, turn)
-        if asked.against is not None:
-            against = self._set(asked, asked.against, among, turn)
+        for name, levers in zip(SET, (asked.levers, asked.against or {}), strict=True):
+            scene = self._moved(asked, levers)
+            if scene.columns:
+                begun[name] = self._begin(scene, turn)
+        had = self._pins_of_had(asked) if asked.levers else None
+        if had is not None:
+            begun["had"] = self._begin(Scene(had, {}, asked.watch), turn)
+        read = self._finish(begun, turn)
+        among = read.get("among", recorded)
+        log_evidence = float(among.log_evidence[0]) if asked.pinned else 0.0
+        if not (asked.values or among.error):
+            log_evidence = min(log_evidence, 0.0)  # rounding may lift certainty above it
+        if asked.pinned and not among.possible:
+            raise self._impossible(Scene(asked.before, {}, ()), turn)
+        for name in [name for name in SET if name in read]:
+            if asked.after.columns and not read[name].possible:
+                raise self._impossible(begun[name].scene.reading(()), turn)
+        set_world, against = (read[name].over(among, asked.columns) if name in read else among for name in SET)
+        seen = read["had"] if "had" in read and read["had"].possible else None
+        told = set_world if asked.levers else None
+        held = against if asked.against is not None else None
         cost = turn.cells + self._summing.total(turn.work, turn.count)
-        return Worlds(recorded, among, set_world, had, against, log_evidence, cost, _method(turn))
+        return Worlds(recorded, among, told, seen, held, log_evidence, cost, _method(turn))
 
     def joint(self, columns: tuple[str, ...]) -> np.ndarray:
         """(levels or bands of each column in order...) joint shares at the posterior mean, as recorded.
@@ -146,19 +174,13 @@ class Planner:
                 raise reason.refusal() from None
         return self._mixing.joint_sampled(scene, count, seed), True
 
-    def _set(self, asked: Question, levers: Mapping[str, AnySetting], among: Seen, turn: Turn) -> Seen:
-        """The world with levers; what none of them moves is as among these, to the last digit."""
+    def _moved(self, asked: Question, levers: Mapping[str, AnySetting]) -> Scene:
+        """The world with levers, and the columns that they move; the others are as among these, to the last digit."""
         splits = self._splits(asked, levers)
         moved = self.network.descendants(splits) | splits.keys()
-        after = asked.after.columns
-        columns = tuple(column for column in asked.columns if after or column in moved)
-        if not columns:
-            return among
-        scene = Scene(asked.before, splits, columns, asked.after)
-        found = self._read(scene, turn)
-        if after and not found.possible:
-            raise self._impossible(scene.reading(()), turn)
-        return found.over(among, asked.columns)
+        after = asked.after if levers else Pins()
+        columns = tuple(column for column in asked.columns if column in moved or (levers and after.columns))
+        return Scene(asked.before, splits, columns, after)
 
     def _splits(self, asked: Question, levers: Mapping[str, AnySetting]) -> dict[str, AnySetting]:
         """The levers that reach anyone; a column pinned before and after is split even where nothing is set."""
@@ -170,8 +192,8 @@ class Planner:
                 found[column] = idle
         return found
 
-    def _had(self, asked: Question, turn: Turn) -> Seen | None:
-        """The columns in question among those who had the levers' values anyway."""
+    def _pins_of_had(self, asked: Question) -> Pins | None:
+        """The pins, and the levers' values as pins; None where these are not all fixed, or nobody can have them."""
         pins: Pins | None = asked.before
         for column, setting in asked.levers.items():
             node = self.network.node(column)
@@ -183,66 +205,69 @@ class Planner:
                 pins = pins.at_value(node, setting.values[0])
             else:
                 return None
-        if pins is None:
-            return None
-        found = self._read(Scene(pins, {}, asked.watch), turn)
-        return found if found.possible else None
+        return pins
 
     def _read(self, scene: Scene, turn: Turn) -> Seen:
-        """Read one world by the routes that cost least; the recorded world is kept."""
+        """Read one world by the routes that cost least."""
+        return self._finish({"": self._begin(scene, turn)}, turn)[""]
+
+    def _begin(self, scene: Scene, turn: Turn) -> Begun:
+        """Read of one world what can be read exactly; the recorded world is kept."""
         turn.reads.update(dict.fromkeys(scene.columns))
-        bare = not (scene.before.columns or scene.levers or scene.after.columns)
         if turn.exact is False:
-            return self._sampled(scene, turn, bare)
+            return Begun(scene, left=scene.columns)
+        begun = Begun(scene)
         if not self._fits(scene):
-            return self._with_numbers(scene, turn, bare)
+            self._with_numbers(begun, scene.columns, turn)
+            return begun
         inside = tuple(column for column in scene.columns if column in self.categories.index)
         rest = tuple(column for column in scene.columns if column not in self.categories.index)
-        found: Seen | None = None
         if inside or not rest:
             try:
-                found = self._summed(scene.reading(inside), turn, bare)
+                begun.parts.append(self._summed(scene.reading(inside), turn))
             except TooWideError as wide:
                 if turn.exact:
                     raise _too_wide(wide.cost) from None
-                found = self._sampled(scene.reading(inside), turn, bare)
-        if not rest:
-            assert found is not None
-            return found
-        other = self._with_numbers(scene.reading(rest), turn, bare)
-        return other if found is None else found.with_other(other)
+                begun.left = inside
+        if rest:
+            self._with_numbers(begun, rest, turn)
+        return begun
 
-    def _summed(self, scene: Scene, turn: Turn, bare: bool) -> Seen:
+    def _summed(self, scene: Scene, turn: Turn) -> Seen:
         turn.tree = True
-        if bare:
+        if scene.bare:
             return Seen(self._summing.recorded(scene.columns, turn.count, turn.seed, turn.work))
         return self._summing.read(scene, turn.count, turn.seed, turn.work)
 
-    def _with_numbers(self, scene: Scene, turn: Turn, bare: bool) -> Seen:
-        """Exactly where that can be, column by column where not all of them can be; the others sampled."""
-        exact, sampled, reason = self._mixing.divided(scene, turn.count)
+    def _with_numbers(self, begun: Begun, columns: tuple[str, ...], turn: Turn) -> None:
+        """Exactly where that can be, column by column where not all of them can be; the others are left to sample."""
+        exact, sampled, reason = self._mixing.divided(begun.scene.reading(columns), turn.count)
         if sampled and turn.exact:
             assert reason is not None
             raise reason.refusal()
-        found: Seen | None = None
-        for columns in exact:
+        for group in exact:
             turn.mixed = True
-            part, cells = self._mixing.read(scene.reading(columns), turn.count, turn.seed, bare)
+            part, cells = self._mixing.read(begun.scene.reading(group), turn.count, turn.seed)
             turn.cells += cells
-            found = part if found is None else found.with_other(part)
+            begun.parts.append(part)
         if sampled:
-            part = self._sampled(scene.reading(sampled), turn, bare)
-            found = part if found is None else found.with_other(part)
-        assert found is not None
-        return found
+            begun.left = (*(begun.left or ()), *sampled)
 
-    def _sampled(self, scene: Scene, turn: Turn, bare: bool) -> Seen:
-        cells = self._mixing.cells_drawn(scene, turn.count)
-        if cells > LIMIT:
-            raise _too_wide(cells)
-        turn.sampled.update(dict.fromkeys(scene.columns))
-        turn.cells += cells
-        return self._mixing.sampled(scene, turn.count, turn.seed, bare)
+    def _finish(self, begun: Mapping[str, Begun], turn: Turn) -> dict[str, Seen]:
+        """Sample what is left of worlds of one question, all on the same particles."""
+        left = {name: each.scene.reading(each.left) for name, each in begun.items() if each.left is not None}
+        cells = [self._mixing.cells_drawn(scene, turn.count) for scene in left.values()]
+        if cells and max(cells) > LIMIT:
+            raise _too_wide(max(cells))
+        turn.cells += sum(cells)
+        for scene in left.values():
+            turn.sampled.update(dict.fromkeys(scene.columns))
+        sampled = dict(zip(left, self._mixing.sampled(tuple(left.values()), turn.count, turn.seed), strict=True))
+        found: dict[str, Seen] = {}
+        for name, each in begun.items():
+            parts = [*each.parts, *([sampled[name]] if name in sampled else [])]
+            found[name] = reduce(Seen.with_other, parts)
+        return found
 
     def _fits(self, scene: Scene) -> bool:
         """Whether pins and levers lie among the categories that no number leads to."""

@@ -26,6 +26,11 @@ class Scene:
         """The same for the same world."""
         return self.before.key, tuple(self.levers.items()), self.columns, self.after.key
 
+    @property
+    def bare(self) -> bool:
+        """Whether this is the recorded world: nothing seen, nothing set."""
+        return not (self.before.columns or self.levers or self.after.columns)
+
     def reading(self, columns: tuple[str, ...]) -> Scene:
         return replace(self, columns=columns)
 

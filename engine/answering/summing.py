@@ -21,6 +21,7 @@ from engine.network.nodes import Category
 
 LIMIT = 1e9  # table cells times draws that are summed exactly
 CHUNK = 16e6  # bytes of tables held at once, so many that they stay near the processor
+AMONG = 16e6  # bytes of worlds without levers, kept for the next question
 DRAWING = 20.0  # a drawn cell counts as so many summed ones: it takes 20 to 60 times as long, and room of its own
 HEAVY = 1e6  # drawn cells of one table; a larger one is drawn only for what cannot be read without it
 PLANS, DRAWS = 256, 3  # plans, and numbers of draws whose recorded world is kept
@@ -58,6 +59,7 @@ class Summing:
         self._plans = Plans(PLANS) if plans is None else plans
         self._whole = whole
         self._worlds: Kept[Hashable, tuple[World, Tree]] = Kept(PLANS)
+        self._among: Kept[Hashable, Seen] = Kept(AMONG, lambda seen: sum(each.nbytes for each in seen.shares.values()))
         self._grouped: Kept[int, list[dict[str, None]]] = Kept(DRAWS)
         self._recorded: Kept[tuple[int, int, tuple[str, ...]], tuple[Mapping[str, np.ndarray], Work]] = Kept(
             DRAWS * (1 + len(network.nodes))
@@ -71,9 +73,14 @@ class Summing:
             raise TooWideError(cost)
         work.summed += tree.cells * (1 + count)
         work.families.update(here.families)
-        read = self._run(here, tree, count, seed)
-        shares = {column: here.spread_out(column, read.marginals, 1 + count) for column in here.reads}
-        return Seen(shares, log_evidence=read.log_evidence)
+
+        def make() -> Seen:
+            read = self._run(here, tree, count, seed)
+            shares = {column: here.spread_out(column, read.marginals, 1 + count) for column in here.reads}
+            return Seen(shares, log_evidence=read.log_evidence)
+
+        # the next question mostly has the same pins, and other levers
+        return make() if scene.levers or not self._whole else self._among.get((scene.key, count, seed), make)
 
     def recorded(self, columns: Sequence[str], count: int, seed: int, work: Work) -> dict[str, np.ndarray]:
         """The world without pins: all columns in one tree where that can be, so that no digit hangs on what was asked

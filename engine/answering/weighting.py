@@ -13,9 +13,9 @@ from engine.answering.mixed import Drawn, MixedRead, MixedWorld
 from engine.answering.sampling import Batch, Sampler
 from engine.answering.weighed import Weighed
 
-PARTICLES = 100_000  # sampled at first: half for the point answer, half spread over the draws
-MOST = 400_000  # sampled at most, in batches that double what there is
-A_DRAW = 250  # of every draw where 200 draws have PARTICLES together
+PARTICLES = 40_000  # sampled at first: half for the point answer, half spread over the draws
+MOST = 100_000  # sampled at most, in batches that double what there is: for an answer within a click
+A_DRAW = 100  # of every draw where 200 draws have PARTICLES together
 AT_ONCE = 16_384  # particles in memory at once: 64 MB in a world of 400 columns
 
 
@@ -28,21 +28,21 @@ def weigh(
     world: MixedWorld, drawn: Drawn, count: int, seed: int, particles: int = PARTICLES, most: int = MOST
 ) -> MixedRead:
     """Read one world; see `weigh_together`."""
-    return weigh_together([world], drawn, count, seed, particles, most)[0]
+    return weigh_together([(world, drawn)], count, seed, particles, most)[0]
 
 
 def weigh_together(
-    worlds: Sequence[MixedWorld], drawn: Drawn, count: int, seed: int, particles: int = PARTICLES, most: int = MOST
+    worlds: Sequence[tuple[MixedWorld, Drawn]], count: int, seed: int, particles: int = PARTICLES, most: int = MOST
 ) -> list[MixedRead]:
     """Read worlds of one question on the same particles, for as long as any of them needs more.
 
-    drawn: 1 + count draws of every node of every world, the posterior mean first.
+    worlds: each with 1 + count draws of every node of it, the posterior mean first.
     The particles double until every standard error of a watched column is under a fifth of half its 90 % interval's
     width, or they would be more than `most`; both are counts, so that the same question has the same digits anywhere.
     The draws are calmed (see `tallies.calmed`). A draw in which no particle fits what was seen has log evidence -inf
     and is told like the point answer; where no particle of the point answer fits, everything is nan.
     """
-    readings = [Weighed(Sampler(world, drawn, seed), 1 + count) for world in worlds]
+    readings = [Weighed(Sampler(world, drawn, seed), 1 + count) for world, drawn in worlds]
     total, added, turn = 0, particles, 0
     while True:
         for batch in batches(added, count, turn):

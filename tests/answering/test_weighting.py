@@ -296,10 +296,9 @@ def test_columns_that_no_lever_reaches_read_the_same_in_every_world_to_the_last_
     tables = {**drawn_of(nodes, 20), "c2 set": drawn(lever, 20, 0)}
     among, moved = weigh_together(
         [
-            world(nodes, ["c0", "c1", "c5"], pins={"c1": [0]}),
-            world([*nodes[:3], lever, *late], ["c0", "c1", "c5"], pins={"c1": [0]}),
+            (world(nodes, ["c0", "c1", "c5"], pins={"c1": [0]}), tables),
+            (world([*nodes[:3], lever, *late], ["c0", "c1", "c5"], pins={"c1": [0]}), tables),
         ],
-        tables,
         20,
         7,
         4000,

@@ -36,8 +36,9 @@ def test_shares_means_and_evidence_are_within_their_errors(world, seed):
             mixture = found.numbers[name]
             mean = mixture.means[0]
             assert abs(mean - exact.mean(name)) <= ERRORS * found.error[name] * max(exact.sd(name), 1e-9) * 1.2 + 1e-9
-            away = np.abs(found.shares[name][:, 0] - exact.shares[name])
-            assert away.max() <= ERRORS * 0.5 / np.sqrt(found.effective)
+            if name in exact.shares:  # the slow truth leaves out bands of a number beside two others in boxes
+                away = np.abs(found.shares[name][:, 0] - exact.shares[name])
+                assert away.max() <= ERRORS * 0.5 / np.sqrt(found.effective)
         else:
             away = np.abs(found.shares[name][:, 0] - exact.shares[name])
             assert away.max() <= ERRORS * found.error[name] + 1e-9
