@@ -27,17 +27,14 @@ from engine.doubting.rereading import Rereading
 from engine.learning import learn as learning
 from engine.learning import learned as learnt
 from engine.learning.cap import Capped
-from engine.network import conditional
 from engine.network.network import Network, network
 from engine.network.nodes import Node
-from engine.network.number_rules import number_rules
 from engine.network.program import program
 from engine.network.sampling import sample
 from engine.network.scoring import log_score
-from engine.network.story import Story, rules, touches
-from engine.network.strength import category_strength, number_strength
-from engine.network.typical import Typical, invented, recorded
-from engine.order import Order, Unrecorded, better_levels
+from engine.network.story import Story
+from engine.network.telling import Telling
+from engine.order import Order, Unrecorded
 from engine.records.table import Coded, Table
 from engine.refusal import Refusal, quoted
 
@@ -160,9 +157,7 @@ class Model:
                 where=target,
                 do="Ask for one of model.links.",
             )
-        if target in self.network.numbers:
-            return number_strength(self.network, source, target, self._joint, lambda: self._typical)
-        return category_strength(self.network, source, target, self._better(target), self._joint)
+        return self._telling.strength(source, target)
 
     def story(self, column: str) -> str:
         """How a column comes about: what it comes from or goes with, and its rules in plain words.
@@ -176,21 +171,7 @@ class Model:
 
         Raises Refusal for an unknown column.
         """
-        if column not in self.network.index:
-            raise Refusal(
-                f"This model has no column {quoted(column)}.", where=column, do="Ask for one of model.network.names."
-            )
-        said = touches(self.network, column, self.unsettled)
-        if column in self.network.numbers:
-            common = self._joint(self.network.category_parents(column))
-            beside = self._beside(column)
-            means = conditional.number_rows(self.network, column, common, beside, most)
-            told = number_rules(self.network, column, common, beside, lambda number: self._typical.sd(number))
-            return Story(said, told, (), common.size - len(means), means)
-        common = self._joint(self.network.node(column).parents)
-        better = self._better(column) if self.order is not None and column in self.order.outcomes else None
-        rows = conditional.rows(self.network, column, common, most)
-        return Story(said, rules(self.network, column, common, better), rows, common.size - len(rows))
+        return self._telling.account(column, most)
 
     def log_score(self, frame: pd.DataFrame) -> np.ndarray:
         """(rows,) natural log of the probability or density of each row, by the posterior predictive; -inf where it
@@ -226,36 +207,10 @@ class Model:
         named = () if self.order is None else tuple(self.order.outcomes)
         return tuple(column for column in named if column in self.network.index) or self.network.names
 
-    def _better(self, column: str) -> list[int]:
-        """Positions of the better levels of an outcome, else of the commonest level."""
-        node = self.network.node(column)
-        better = None if self.order is None else self.order.outcomes.get(column)
-        found = better_levels(better, node.levels, node.has_blank)
-        return [node.levels.index(level) for level in found] or [int(np.argmax(self._joint((column,))))]
-
-    def _joint(self, columns: tuple[str, ...]) -> np.ndarray:
-        """(levels, or bands, of each column...) joint shares; kept, for a page asks for the same ones again.
-
-        By the model; where it has numbers and there are records, by the records, which need no working out.
-        """
-        return self._joints.get(columns, lambda: self._common(columns))
-
-    def _common(self, columns: tuple[str, ...]) -> np.ndarray:
-        if self.network.numbers and self.coded is not None:
-            return self._typical.joint(self.network, columns)
-        return self._planner.joint(columns)
-
-    def _beside(self, column: str) -> np.ndarray:
-        """(category parents' levels..., number parents) means of a number's number parents in each configuration."""
-        categories, numbers = self.network.category_parents(column), self.network.number_parents(column)
-        if not numbers:
-            return np.zeros((*(len(self.network.node(parent).levels) for parent in categories), 0))
-        return self._typical.means(self.network, numbers, categories)
-
     @cached_property
-    def _typical(self) -> Typical:
-        """What stands for all cases where values of numbers come in: the records, else rows always invented alike."""
-        return invented(self.network) if self.coded is None else recorded(self.coded)
+    def _telling(self) -> Telling:
+        order, coded, unsettled = self.order, self.coded, self.unsettled
+        return Telling(self.network, order, coded, unsettled, self._planner.joint, self._joints.get)
 
     @cached_property
     def _joints(self) -> Kept[tuple[str, ...], np.ndarray]:

@@ -36,6 +36,7 @@ class Account:
 
     first: whether it is told before others that may be folded.
     number: whether its table tells means; then `parents` are its category parents, and `levels` what is told of it.
+    held: the values of its number parents at which its means are told; nothing without such.
     """
 
     name: str
@@ -45,6 +46,7 @@ class Account:
     leads: Words
     parents: tuple[str, ...]
     levels: tuple[str, ...]
+    held: Words
     lines: tuple[Line, ...]
     note: str
     first: bool = False
@@ -81,6 +83,7 @@ def _account(model: Model, name: str, picked: str | None, outcomes: tuple[str, .
         leads=said if leads else (),
         parents=parents,
         levels=heads,
+        held=told.held,
         lines=lines,
         note=_note(told.left_out, hidden),
         first=name == picked or name in outcomes,
@@ -90,7 +93,7 @@ def _account(model: Model, name: str, picked: str | None, outcomes: tuple[str, .
 
 def _heads(numbers: tuple[str, ...]) -> tuple[str, ...]:
     """What is told of a number in each row."""
-    return ("on average", "9 in 10 lie within", *(f"for each 1 more of {number}" for number in numbers))
+    return ("on average", "9 in 10 expected within", *(f"for each 1 more of {number}" for number in numbers))
 
 
 def _number_lines(rows: tuple[NumberRow, ...]) -> tuple[Line, ...]:

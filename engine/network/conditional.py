@@ -35,7 +35,7 @@ class NumberRow:
     """One configuration of the category parents of a number.
 
     given: the level of each.  weight: how common it is, 0 to 1.
-    mean: of the number where its number parents are as they usually are there.  low, high: the interval of that mean.
+    mean: of the number, at values of its number parents that are the same in every row.  low, high: its interval.
     sd: around its line.  slopes: (number parents,) change in the mean for each 1 more of the parent.
     """
 
@@ -73,22 +73,21 @@ def rows(network: Network, column: str, weights: Floats, most: int, coverage: fl
 
 
 def number_rows(
-    network: Network, column: str, weights: Floats, beside: Floats, most: int, coverage: float = 0.90
+    network: Network, column: str, weights: Floats, at: Floats, most: int, coverage: float = 0.90
 ) -> tuple[NumberRow, ...]:
     """The `most` commonest configurations of the category parents of a number, in the order of their levels.
 
-    weights: (category parents' levels...) how common each is.  beside: (category parents' levels..., number parents)
-    the values of the number parents at which the mean is told. What is known exactly has points.
+    weights: (category parents' levels...) how common each is.  at: (number parents,) the value of each at which all
+    means are told, so that rows differ by their levels alone. What is known exactly has points.
     """
     node, categories = network.number(column), network.category_parents(column)
     configurations, common, kept = _commonest(network, categories, weights, most)
-    at = beside.reshape(common.size, -1)[kept]
-    slopes = np.asarray(node.slopes).reshape(common.size, at.shape[1])[kept]
-    mean = np.asarray(node.intercept).reshape(-1)[kept] + (slopes * at).sum(axis=1)
+    slopes = np.asarray(node.slopes).reshape(common.size, at.size)[kept]
+    mean = np.asarray(node.intercept).reshape(-1)[kept] + slopes @ at
     low = high = mean
     if node.regression is not None:
         codes = np.stack(np.unravel_index(kept, weights.shape), axis=1) if categories else np.empty((kept.size, 0), int)
-        low, high = node.regression.mean_interval(codes, at, coverage)
+        low, high = node.regression.mean_interval(codes, np.tile(at, (kept.size, 1)), coverage)
     sd = np.sqrt(np.asarray(node.variance)).reshape(-1)[kept]
     return tuple(
         NumberRow(

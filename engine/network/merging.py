@@ -124,3 +124,16 @@ def conditions(parents: Sequence[Node], part: Part) -> Words:
         if len(levels) < len(parent.levels)
     ]
     return series(conditions, " and ") if conditions else ()
+
+
+def whatever(parents: Sequence[Node]) -> Words:
+    """, whatever site and shift are"""
+    names = series([[name(parent.name)] for parent in parents], " and ")
+    return (Said(", whatever "), *names, Said(" is" if len(parents) == 1 else " are"))
+
+
+def varying(parents: Sequence[Node], part: Part, low: str, high: str) -> Words:
+    """How far the configurations of a part differ, from `low` to `high`, and with what: (10 to 40 depending on site)"""
+    with_what = [[name(parent.name)] for parent, held in zip(parents, part.held, strict=True) if len(held) > 1]
+    ends = (Said(low, "figure"), Said(" to "), Said(high, "figure"))
+    return (Said(" ("), *ends, Said(" depending on "), *series(with_what, " and "), Said(")"))

@@ -9,7 +9,7 @@ from math import floor, isfinite, log10
 import numpy as np
 from numpy.typing import NDArray
 
-from engine.network.merging import RARE, Part, conditions, parts
+from engine.network.merging import RARE, Part, conditions, parts, varying, whatever
 from engine.network.network import Network
 from engine.network.nodes import Node, Number
 from engine.network.said import Said, Words, name, series
@@ -23,6 +23,7 @@ UNIT = 4.0  # standard deviations that count as a share of 1 does, when configur
 APART = 0.4  # standard deviations: what differs by more inside a part is told as a range
 LIKE = 0.2  # standard deviations: slopes that move the number by less are told as one
 WIDER = 1.5  # times: spreads that differ by less are told as one
+DIGITS = 12  # most digits of a value that is told
 NINE_IN_TEN = 1.6448536269514722  # standard deviations around the mean of a normal that hold 9 in 10
 
 
@@ -34,36 +35,60 @@ class Line:
     sds: tuple[float, float, float]
 
 
+def held_at(network: Network, column: str, at: Floats, spread: Callable[[str], float]) -> Words:
+    """The values at which the means of a number are told: hours at 12 and age at 45 (their means).
+
+    at: (number parents,) the mean of each.  spread: number -> its standard deviation over all.
+    """
+    numbers = network.number_parents(column)
+    told = [
+        (name(parent), Said(" at "), _amount(network.number(parent), value, spread(parent)))
+        for parent, value in zip(numbers, at.tolist(), strict=True)
+    ]
+    return (*series(told, " and "), Said(" (its mean)" if len(told) == 1 else " (their means)")) if told else ()
+
+
 def number_rules(
-    network: Network, column: str, weights: Floats, beside: Floats, spread: Callable[[str], float]
+    network: Network,
+    column: str,
+    weights: Floats,
+    at: Floats,
+    spread: Callable[[str], float],
+    reach: tuple[float, float] | None = None,
 ) -> Rules:
     """How the mean of a number differs, by how much it moves with other numbers, and how far it spreads around that.
 
+    Configurations are told at the same values of the number parents: what differs between them is then theirs alone.
     weights: (category parents' levels...) how common each configuration is, summing to 1.
-    beside: (category parents' levels..., number parents) means of the number parents in each.
+    at: (number parents,) the mean of each over all.
     spread: number -> its standard deviation over all; asked for only where there are number parents.
+    reach: between which two values 9 in 10 records lie, told of a number without parents; None without records.
     """
     node = network.number(column)
     categories = tuple(network.node(parent) for parent in network.category_parents(column))
     numbers = network.number_parents(column)
     slopes, variance = np.asarray(node.slopes), np.asarray(node.variance)
-    means = np.asarray(node.intercept) + (slopes * beside).sum(axis=-1)
+    means = np.asarray(node.intercept) + slopes @ at
     overall = float((weights * means).sum())
     around = float((weights * (variance + (means - overall) ** 2)).sum())
     sd = spread(column) if numbers else float(np.sqrt(around))
     told = _Told(node, numbers, tuple(spread(parent) for parent in numbers), sd)
+    if reach is not None and not node.parents and around > 0.0:
+        return Rules((Said("It is on average"),), ((told.amount(overall), *told.between(*reach)),))
     found = parts(categories, (means - overall) / (UNIT * told.scale), weights)
     found.sort(key=lambda part: (-part.share, part.held))
     lines = [_line(part, slopes, variance, weights) for part in found]
     averages = [overall + UNIT * told.scale * part.share for part in found]
-    lead = Said("It is on average")
+    lead: Words = (Said("It is on average"),)
+    if numbers and categories:
+        lead = (Said("With "), *held_at(network, column, at, spread), Said(" it is on average"))
     if len(found) == 1:
         only: Words = (told.amount(averages[0]),)
         if varies := _varies(told, categories, found[0], overall):
             only = (*only, *varies)
         elif categories:
-            only = (Said("about "), *only, *_whatever(categories))
-        return Rules((lead,), (_joined(only, told.told(lines[0]), bool(numbers)),), "; ")
+            only = (Said("about "), *only, *whatever(categories))
+        return Rules(lead, (_joined(only, told.told(lines[0]), bool(numbers)),), "; ")
     alike_slopes, alike_sds = told.alike_slopes(lines), told.alike_sds(lines)
     common = max(found, key=lambda part: part.weight)
     clauses: list[Words] = []
@@ -74,7 +99,7 @@ def number_rules(
         own = told.told(line, not alike_slopes, not alike_sds)
         clauses.append(_joined(clause, own, bool(numbers) and not alike_slopes))
     shared = told.told(_whole(slopes, variance, weights), alike_slopes, alike_sds)
-    return Rules((lead,), tuple(clauses), "; ", (Said("In each case "), *shared, Said(".")) if shared else ())
+    return Rules(lead, tuple(clauses), "; ", (Said("In each case "), *shared, Said(".")) if shared else ())
 
 
 @dataclass(frozen=True)
@@ -96,10 +121,10 @@ class _Told:
 
     def amount(self, value: float) -> Said:
         """A mean, to two digits of the standard deviation."""
-        return Said(_rounded(value, 1 - floor(log10(self.scale)), not _years(self.node)), "figure")
+        return _amount(self.node, value, self.scale)
 
     def told(self, line: Line, slopes: bool = True, sds: bool = True) -> Words:
-        """Slopes, and the spread: 2 more for each 1 more of hours, and 9 in 10 lie within 5 of that."""
+        """Slopes, and the spread: 2 more for each 1 more of hours, and the model expects 9 in 10 within 5."""
         moves = [self._more(place, line.slopes[place].tolist()) for place in range(len(self.numbers))]
         clauses = [series(moves, " and ")] if slopes and moves else []
         return series([*clauses, self._within(line.sds)] if sds else clauses, ", and ")
@@ -128,13 +153,20 @@ class _Told:
         near, far = sorted((low, high), key=abs)
         return (Said(_digits(abs(near)), "figure"), Said(" to "), *_change(far), *each)
 
+    def between(self, low: float, high: float) -> Words:
+        """, and 9 in 10 records lie between 2 and 40"""
+        ends, most = (self.amount(low), self.amount(high)), Said("9 in 10", "figure")
+        if ends[0] == ends[1]:
+            return (Said(", and "), most, Said(" records are "), ends[0])
+        return (Said(", and "), most, Said(" records lie between "), ends[0], Said(" and "), ends[1])
+
     def _within(self, sds: tuple[float, float, float]) -> Words:
         low, usual, high = (NINE_IN_TEN * sd for sd in sds)
         if high == 0.0:
             return (Said("always exactly that"),)
         near = (Said(_digits(low), "figure"), Said(" to ")) if high > WIDER * low else ()
         width = Said(_digits(high if near else usual), "figure")
-        return (Said("9 in 10", "figure"), Said(" lie within "), *near, width, Said(" of that"))
+        return (Said("the model expects "), Said("9 in 10", "figure"), Said(" within "), *near, width, Said(" of that"))
 
 
 def _line(part: Part, slopes: Floats, variance: Floats, weights: Floats) -> Line:
@@ -160,19 +192,21 @@ def _joined(clause: Words, more: Words, slopes: bool) -> Words:
     return (*clause, Said(", " if slopes else ", and "), *more) if more else clause
 
 
-def _whatever(categories: Sequence[Node]) -> Words:
-    """, whatever site and shift are"""
-    names = series([[name(parent.name)] for parent in categories], " and ")
-    return (Said(", whatever "), *names, Said(" is" if len(categories) == 1 else " are"))
-
-
 def _varies(told: _Told, categories: Sequence[Node], part: Part, overall: float) -> Words:
     """How far the configurations of a part differ, where they differ much, and with what."""
     if (part.high - part.low) * UNIT <= APART:
         return ()
-    with_what = [[name(each.name)] for each, held in zip(categories, part.held, strict=True) if len(held) > 1]
-    low, high = (told.amount(overall + UNIT * told.scale * end) for end in (part.low, part.high))
-    return (Said(" ("), low, Said(" to "), high, Said(" depending on "), *series(with_what, " and "), Said(")"))
+    low, high = (told.amount(overall + UNIT * told.scale * end).text for end in (part.low, part.high))
+    return varying(categories, part, low, high)
+
+
+def _amount(node: Number, value: float, sd: float) -> Said:
+    """A value, to two digits of the standard deviation, but never to more digits than are read."""
+    scale = sd if sd > 0.0 and isfinite(sd) else 1.0
+    decimals = 1 - floor(log10(scale))
+    if value != 0.0:
+        decimals = min(decimals, DIGITS - 1 - floor(log10(abs(value))))
+    return Said(_rounded(value, decimals, not _years(node)), "figure")
 
 
 def _change(moved: float) -> Words:

@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from engine.network.conditional import NumberRow, Row
-from engine.network.merging import Part, conditions, parts
+from engine.network.merging import Part, conditions, parts, varying, whatever
 from engine.network.network import Network
 from engine.network.nodes import Category, Node
 from engine.network.said import Said, Words, figure, in_hundred, name, plain, series, these
@@ -27,7 +27,8 @@ class Story:
 
     touches: what it comes from and goes with, a sentence.  rules: how its shares, or its mean, differ.
     rows: the table of a category, a row for each configuration of its parents.  left_out: rarer configurations
-    without a row.  means: of a number, a row for each configuration of its category parents.
+    without a row.  means: of a number, a row for each configuration of its category parents, at one value of each
+    number parent; held: those values, in words, nothing without number parents.
     """
 
     touches: Words
@@ -35,6 +36,7 @@ class Story:
     rows: tuple[Row, ...]
     left_out: int
     means: tuple[NumberRow, ...] = ()
+    held: Words = ()
 
     @property
     def text(self) -> str:
@@ -99,9 +101,7 @@ def rules(network: Network, column: str, weights: Floats, better: Sequence[int] 
         among = figure(found[0].share)
         if varies := _varies(parents, found[0]):
             return Rules(lead, ((among, *varies),))
-        names = series([[name(parent.name)] for parent in parents], " and ")
-        verb = "is" if len(parents) == 1 else "are"
-        return Rules(lead, ((Said("about "), among, Said(", whatever "), *names, Said(f" {verb}")),))
+        return Rules(lead, ((Said("about "), among, *whatever(parents)),))
     common = max(found, key=lambda part: part.weight)
     clauses: list[Words] = []
     for part in sorted(found, key=lambda part: (-part.share, part.held)):
@@ -149,6 +149,5 @@ def _varies(parents: Sequence[Node], part: Part) -> Words:
     """How far the configurations of a part differ, where they differ much, and with what."""
     if part.high - part.low <= APART:
         return ()
-    with_what = [[name(parent.name)] for parent, levels in zip(parents, part.held, strict=True) if len(levels) > 1]
-    low, high = in_hundred(part.low).removesuffix(" in 100"), in_hundred(part.high).removesuffix(" in 100")
-    return (Said(f" ({low} to {high} depending on "), *series(with_what, " and "), Said(")"))
+    low, high = (in_hundred(end).removesuffix(" in 100") for end in (part.low, part.high))
+    return varying(parents, part, low, high)

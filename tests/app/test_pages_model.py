@@ -220,7 +220,8 @@ def test_the_table_of_a_number_holds_means_intervals_spreads_and_slopes() -> Non
     model = engine.Model.from_network([site, hours, pay])
     found = {each.name: each for each in model_accounts.accounts(model, None)}
     assert found["pay"].parents == ("site",) and found["pay"].number and not found["site"].number
-    assert found["pay"].levels == ("on average", "9 in 10 lie within", "for each 1 more of hours")
+    assert "".join(part.text for part in found["pay"].held) == "hours at 11 (its mean)" and found["hours"].held == ()
+    assert found["pay"].levels == ("on average", "9 in 10 expected within", "for each 1 more of hours")
     assert [line.given for line in found["pay"].lines] == [("north",), ("south",)]
     assert [line.shares[1:] for line in found["pay"].lines] == [
         (("160 of that", ""), ("+100", "")),
