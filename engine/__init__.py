@@ -5,6 +5,8 @@ These names are the way in for scripts, tests and the app.
 
 from engine.answering.answer import Answer, Caution, Counted, Marginal, Reading
 from engine.answering.levers import Fix, Mix, Rule, Shift
+from engine.judging.judge import judge
+from engine.judging.judgement import Judgement
 from engine.model import Learned, Model, learn, open_learned
 from engine.network.nodes import Category, Number
 from engine.order import LESS, MORE, Order, Stage, Unrecorded
@@ -20,6 +22,7 @@ __all__ = [
     "Caution",
     "Counted",
     "Fix",
+    "Judgement",
     "Learned",
     "Marginal",
     "Mix",
@@ -33,6 +36,7 @@ __all__ = [
     "Stage",
     "Table",
     "Unrecorded",
+    "judge",
     "learn",
     "open_learned",
     "read_frame",

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.special import gammaln, stdtrit
+from scipy.special import gammaln, stdtr, stdtrit
 
 from engine.network.additive import Additive, Sharing, by_configuration, from_configuration
 from engine.network.conjugate import Posterior, conjugate
@@ -95,6 +95,13 @@ class Regression:
             - (half + 0.5) * np.log1p(away * away / (2.0 * half * square))
             - np.log(self.scale[-1])
         )
+
+    def below(self, codes: NDArray[np.integer], parents: Floats, values: Floats) -> Floats:
+        """(rows,) how much of the predictive Student t lies below each value; arguments as in `log_density`."""
+        at, expected, own, common = self._expected(codes, parents)
+        away = (values - self.centre[-1]) / self.scale[-1] - expected
+        square = self.rate[at] / self.shape[at] * (1.0 + own) + common
+        return np.asarray(stdtr(2.0 * self.shape[at], away / np.sqrt(square)))
 
     def mean_interval(
         self, codes: NDArray[np.integer], parents: Floats, coverage: float = 0.90

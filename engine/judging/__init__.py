@@ -1,0 +1,1 @@
+"""Judging: does the model describe the records it was learned from well enough?"""
