@@ -226,7 +226,7 @@ def ask(question, **more):
         raise
 
 
-@settings(max_examples=30, deadline=None)
+@settings(max_examples=20, deadline=None)
 @given(mixed_questions())
 def test_every_kind_of_lever_agrees_with_every_way_in_which_it_takes(question):
     net, pinned, set_to, _ = question
