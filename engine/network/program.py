@@ -4,14 +4,19 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from itertools import product
+from math import floor, log10
 
 import numpy as np
 
 from engine.network.network import Network
 from engine.network.nodes import Category, Node, Number
+from engine.network.sampling import drawn_rows
 from engine.order import Order
+from engine.records.wording import number_text
 
 WIDTH = 110  # characters in a line before a list is written one item a line
+LYING = 1_000  # rows that tell about where numbers lie
+EXACT = 1e-15  # of a value: a smaller spread is that of rounding
 LONGEST = 32  # characters of a name in a remark; names in the code itself are whole
 KINDS = {"category": "A category", "grade": "A grade, low to high", "number": "A number in bands"}
 
@@ -33,8 +38,8 @@ fastest, and in it a share for each level. Shares are rounded to about four digi
 BOTH_KINDS = """\
 A category is drawn from a table: a row for each combination of its parents' levels, the last parent changing fastest,
 and in it a share for each level, rounded to about four digits. A number among its parents acts through its bands.
-A number is drawn from a normal distribution around a line: for each combination of its category parents' levels an
-intercept, a slope for each number parent, and a standard deviation."""
+A number is drawn from a normal distribution around a line: for each combination of its category parents' levels its
+mean where each number parent is at its centre, a slope for each number parent, and a standard deviation."""
 
 CODE = '''
 import csv
@@ -68,14 +73,15 @@ def category(name, levels, parents, shares):
 '''
 
 NUMBER = '''
-def number(name, categories, numbers, lines, bands=()):
-    """A column of numbers. lines: a row per combination of the categories' levels: intercept, a slope for each of
-    the numbers, standard deviation. bands: the cuts between its bands."""
+def number(name, categories, numbers, centres, lines, bands=()):
+    """A column of numbers. centres: a value of each of the numbers. lines: a row per combination of the categories'
+    levels: mean at the centres, a slope for each of the numbers, standard deviation. bands: the cuts between bands."""
     lines = np.array(lines, dtype=float)
 
     def draw(rows, rng, drawn):
         line = lines[combination(categories, rows, drawn)]
-        mean = line[:, 0] + sum(line[:, at] * drawn[each] for at, each in enumerate(numbers, start=1))
+        moved = [drawn[each] - centre for each, centre in zip(numbers, centres)]
+        mean = line[:, 0] + sum(line[:, at] * more for at, more in enumerate(moved, start=1))
         return mean + line[:, -1] * rng.standard_normal(rows)
 
     def place(values):
@@ -116,6 +122,7 @@ def program(network: Network, order: Order | None = None, units: Mapping[str, st
     units: number -> what it is measured in, told in its remark where it is known.
     """
     parts = [_head(bool(network.numbers))]
+    lies = _lies(network)
     for heading, nodes in _stages(network, order):
         if heading:
             parts.append(f"\n# {heading}\n")
@@ -123,7 +130,7 @@ def program(network: Network, order: Order | None = None, units: Mapping[str, st
             if isinstance(node, Category):
                 parts.append(_category(node, network, (units or {}).get(node.name)))
             else:
-                parts.append(_number(node, network, (units or {}).get(node.name)))
+                parts.append(_number(node, network, lies, (units or {}).get(node.name)))
     return "\n".join([*parts, TAIL])
 
 
@@ -162,10 +169,26 @@ def _category(node: Category, network: Network, unit: str | None) -> str:
     return "\n".join([*lines, "    ],", ")", ""])
 
 
-def _number(node: Number, network: Network, unit: str | None) -> str:
+def _lies(network: Network) -> dict[str, tuple[float, float]]:
+    """Number -> about where it lies, rounded to be read, and how far it spreads: by rows that are always the same."""
+    if not network.numbers:
+        return {}
+    values = drawn_rows(network, LYING, seed=0).values
+    return {name: _centre(float(np.mean(values[name])), float(np.std(values[name]))) for name in network.numbers}
+
+
+def _centre(mean: float, sd: float) -> tuple[float, float]:
+    return (round(mean, -floor(log10(sd))) if sd > abs(mean) * EXACT else mean), sd
+
+
+def _number(node: Number, network: Network, lies: Mapping[str, tuple[float, float]], unit: str | None) -> str:
     categories, numbers = network.category_parents(node.name), network.number_parents(node.name)
     kind = f"A number, in {_remark(unit)}" if unit else "A number"
-    columns = ["intercept", *(f"slope of {_remark(parent)}" for parent in numbers), "standard deviation"]
+    columns = [
+        "mean at the centres" if numbers else "mean",
+        *(f"slope of {_remark(parent)}" for parent in numbers),
+        "standard deviation",
+    ]
     of = f"; {', '.join(_remark(parent) for parent in categories)}" if categories else ""
     lines = [
         f"# {_remark(node.name)}. {kind}; {_comes(node)}.",
@@ -173,14 +196,16 @@ def _number(node: Number, network: Network, unit: str | None) -> str:
         f"    {node.name!r},",
         *_list("categories", [repr(parent) for parent in categories]),
         *_list("numbers", [repr(parent) for parent in numbers]),
+        *_list("centres", [number_text(lies[parent][0]) for parent in numbers]),
         "    lines=[",
         f"        # each row: {', '.join(columns)}{of}",
     ]
     intercept = np.asarray(node.intercept).reshape(-1)
     slopes = np.asarray(node.slopes).reshape(intercept.size, len(numbers))
+    means = intercept + slopes @ np.array([lies[parent][0] for parent in numbers])
     sds = np.sqrt(np.asarray(node.variance)).reshape(-1)
     for at, given in enumerate(_configurations(network, categories)):
-        row = [*map(_coefficient, (intercept[at], *slopes[at])), f"{sds[at]:.4g}"]
+        row = [_mean(means[at], sds[at] or lies[node.name][1]), *map(_slope, slopes[at]), f"{sds[at]:.4g}"]
         lines.append(f"        [{', '.join(row)}],{given}")
     lines.append("    ],")
     if any(isinstance(child, Category) and node.name in child.parents for child in network.nodes):
@@ -210,8 +235,16 @@ def _share(share: float) -> str:
     return f"{share:.4f}" if share >= 0.001 else f"{share:.1e}"
 
 
-def _coefficient(value: float) -> str:
-    """Seven digits: a slope is multiplied by numbers that may lie far from 0."""
+def _mean(value: float, sd: float) -> str:
+    """To a millionth of the standard deviation, and seven digits at least: it may lie far from 0."""
+    if not sd > abs(value) * EXACT:
+        return number_text(float(value))
+    far = floor(log10(abs(value) / sd)) if value != 0.0 else 0
+    return f"{value:.{min(max(7, far + 7), 17)}g}"
+
+
+def _slope(value: float) -> str:
+    """Seven digits: it is multiplied by what its parent is away from its centre."""
     return f"{value:.7g}"
 
 

@@ -54,6 +54,32 @@ def test_numbers_follow_their_parents_row_by_row():
     assert np.mean(away) == pytest.approx(0.0, abs=0.15) and np.std(away) == pytest.approx(1.0, abs=0.15)
 
 
+@pytest.mark.parametrize(
+    ("origin", "sd", "slope"), [(1.6e9, 1_000.0, 1 / 600), (1e9, 1e-3, 1_000.0), (-1e12, 1.0, 2.0), (0.0, 1e-9, 1e9)]
+)
+def test_a_program_draws_as_the_model_does_however_far_from_0_its_numbers_lie(origin, sd, slope):
+    site = engine.Category("site", ["a", "b"], [], [0.5, 0.5])
+    start = engine.Number("start", [], origin, [], sd**2, [origin])
+    took = engine.Number(
+        "took", ["site", "start"], [3.0 - slope * origin, -slope * origin], [[slope], [slope]], [0.09, 0.09]
+    )
+    again = engine.Number("again", ["start"], 2.0, [1.0], 0.0)
+    late = engine.Category("late", ["no", "yes"], ["start"], [[1.0, 0.0], [0.0, 1.0]])
+    net = network([site, start, took, again, late])
+    found = drawn(program(net), ROWS, 3)
+    spread = np.hypot(slope * sd, 0.3)
+    for place, level in enumerate("ab"):
+        here = found["site"] == level
+        assert found["took"][here].mean() == pytest.approx((3.0, 0.0)[place], abs=5.5 * spread / np.sqrt(ROWS / 2))
+        left = found["took"][here] - (3.0, 0.0)[place] - slope * (found["start"][here] - origin)
+        assert left.mean() == pytest.approx(0.0, abs=5.5 * 0.3 / np.sqrt(ROWS / 2) + 1e-3)
+        assert left.std() == pytest.approx(0.3, rel=0.05)
+    assert (found["start"].mean() - origin) / sd == pytest.approx(0.0, abs=5.5 / np.sqrt(ROWS))
+    assert found["start"].std() == pytest.approx(sd, rel=0.05)
+    np.testing.assert_allclose(found["again"] - found["start"], 2.0, atol=1e-3 * sd + 1e-15 * abs(origin))
+    assert ((found["late"] == "yes") == (found["start"] >= origin)).all()
+
+
 def test_it_runs_by_itself_and_its_rows_are_as_likely_as_the_models_own(tmp_path):
     net = school(2_000)[1]
     path = tmp_path / "program.py"
@@ -112,8 +138,9 @@ number(
     'flow',
     categories=['rain'],
     numbers=[],
+    centres=[],
     lines=[
-        # each row: intercept, standard deviation; rain
+        # each row: mean, standard deviation; rain
         [1, 1],  # no
         [5, 1.414],  # yes
     ],
@@ -129,10 +156,11 @@ number(
     'depth',
     categories=['rain'],
     numbers=['flow'],
+    centres=[2],
     lines=[
-        # each row: intercept, slope of flow, standard deviation; rain
-        [0.5, 2, 1],  # no
-        [1, 3, 0],  # yes
+        # each row: mean at the centres, slope of flow, standard deviation; rain
+        [4.5, 2, 1],  # no
+        [7, 3, 0],  # yes
     ],
 )
 """
@@ -143,4 +171,4 @@ number(
 
 def test_a_program_without_numbers_says_nothing_of_them():
     text = program(network([RAIN]))
-    assert "number(" not in text and "intercept" not in text
+    assert "number(" not in text and "centre" not in text
