@@ -283,6 +283,7 @@ def study() -> dict[str, object]:
             "bands": {node.name: node.cuts for node in NETWORK if node.cuts},
             "grades": {node.name: node.levels for node in NETWORK if node.grade},
             "blanks": {node.name: "level" for node in NETWORK if node.blank},
+            "units": {node.name: node.unit for node in NETWORK if node.unit},
         },
         "plan": {
             "stages": list(stages.items()),

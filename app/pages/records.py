@@ -10,6 +10,7 @@ from fastapi.responses import RedirectResponse
 
 from app.pages import records_form, records_view
 from app.pages.records_view import SHOWS, Typed
+from engine.records.units import LONGEST
 from engine.refusal import Refusal
 
 router = APIRouter()
@@ -29,7 +30,8 @@ def save(
     mark: Annotated[str, Form()],
     kind: Annotated[str, Form()],
     blank: Annotated[str | None, Form()] = None,
-    cuts: Annotated[str | None, Form()] = None,
+    cuts: Annotated[str, Form()] = "",
+    unit: Annotated[str, Form()] = "",
     grades: Annotated[str | None, Form()] = None,
     changeable: Annotated[bool, Form()] = False,
     direction: Annotated[str, Form()] = "",
@@ -49,7 +51,8 @@ def save(
     typed = Typed(
         kind=kind,
         blank=before.blank if blank is None else blank,
-        cuts=before.cuts if cuts is None else cuts,
+        cuts=cuts,
+        unit=unit,
         grades=records_form.moved(before.grades if grades is None else grades, move),
         changeable=changeable,
         direction=direction,
@@ -92,6 +95,7 @@ def _page(
         "view": records_view.view(study, table, find, show, opened, refused),
         "kinds": records_view.KINDS,
         "shows": SHOWS,
+        "longest_unit": LONGEST,
         "blank_kept": records_view.BLANK_KEPT,
         "refused": next(iter(refused.values()))[1] if refused else None,
     }

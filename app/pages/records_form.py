@@ -13,6 +13,7 @@ from app.store import Choices, Plan, Study
 from engine.order import Better, Direction
 from engine.records.bands import checked_cuts
 from engine.records.table import Column
+from engine.records.units import checked_unit
 from engine.refusal import Refusal
 
 Kept = TypeVar("Kept")
@@ -29,7 +30,8 @@ class Change:
 def change(study: Study, column: Column, typed: Typed) -> Change:
     """The study's choices and plan with what was typed for `column`.
 
-    What still reads as before stays guessed. Raises Refusal for cuts that are no numbers and grades that are no order.
+    What still reads as before stays guessed. Raises Refusal for cuts that are no numbers, a unit that is no short text
+    and grades that are no order.
     """
     before = saved(study, column)
     choices = study.choices
@@ -41,12 +43,17 @@ def change(study: Study, column: Column, typed: Typed) -> Change:
         choices = replace(choices, kinds={**choices.kinds, column.name: typed.kind})
         choices = replace(choices, bands=_without(choices.bands, column.name))
         choices = replace(choices, grades=_without(choices.grades, column.name))
+        choices = replace(choices, units=_without(choices.units, column.name))
     if typed.blank != before.blank:
         choices = replace(choices, blanks={**choices.blanks, column.name: typed.blank})
     if typed.kind == before.kind == "number" and _words(typed.cuts) != _words(before.cuts):
         choices = replace(choices, bands=_without(choices.bands, column.name))
         if cuts := read_cuts(typed.cuts, column.name):
             choices = replace(choices, bands={**choices.bands, column.name: cuts})
+    if typed.kind == before.kind == "number":
+        unit = checked_unit(column.name, typed.unit)
+        stated = {column.name: unit} if unit else {}
+        choices = replace(choices, units={**_without(choices.units, column.name), **stated})
     if typed.kind == before.kind == "grade" and _lines(typed.grades) != _lines(before.grades):
         grades = read_grades(typed.grades, column)
         choices = replace(choices, grades={**choices.grades, column.name: grades})

@@ -47,6 +47,7 @@ class Typed:
     kind: str
     blank: str
     cuts: str
+    unit: str
     grades: str
     changeable: bool
     direction: str
@@ -138,8 +139,8 @@ def view(
 
 
 def mark(column: Column) -> str:
-    """Changes whenever what a card's form can tick has changed."""
-    words = json.dumps([column.name, column.kind, list(column.levels)])
+    """Changes whenever what a card's form can tick or would overwrite has changed."""
+    words = json.dumps([column.name, column.kind, list(column.levels), column.unit])
     return hashlib.sha256(words.encode()).hexdigest()[:12]
 
 
@@ -155,6 +156,7 @@ def saved(study: Study, column: Column) -> Typed:
         kind=column.kind,
         blank=column.blank,
         cuts=", ".join(f"{cut:.12g}" for cut in column.cuts),
+        unit=column.unit,
         grades="\n".join(grade_levels(column)),
         changeable=column.name in study.plan.changeable,
         direction=wanted.value if isinstance(wanted, Direction) else "",

@@ -45,5 +45,6 @@ def table_of(frame: pd.DataFrame, choices: Choices, name: str) -> Table:
         bands={column: list(cuts) for column, cuts in choices.bands.items()},
         grades={column: list(levels) for column, levels in choices.grades.items()},
         blanks=dict(choices.blanks),
+        units=dict(choices.units),
         name=name,
     )

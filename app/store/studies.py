@@ -8,7 +8,7 @@ import shutil
 import sqlite3
 import time
 import unicodedata
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping
 from datetime import UTC, datetime
 from pathlib import Path
 
@@ -180,7 +180,7 @@ class Store:
             files.put_in_place(path, kept)
         try:
             with self.database.writing() as database:
-                row = database.execute("SELECT learned_file FROM studies WHERE key = ?", (key,)).fetchone()
+                row = database.execute("SELECT learned_file, choices FROM studies WHERE key = ?", (key,)).fetchone()
                 if row is None:
                     raise NoSuchStudy(key)
                 database.execute(
@@ -191,7 +191,8 @@ class Store:
         except BaseException:
             kept.unlink(missing_ok=True)
             raise
-        self._learned.put((key, kept.name), learned)
+        units = Choices.from_json(row["choices"]).units
+        self._learned.put((key, kept.name, _sorted(units)), learned.in_units(units))
         if row["learned_file"]:
             (self.files(key) / row["learned_file"]).unlink(missing_ok=True)
 
@@ -203,13 +204,18 @@ class Store:
         return self.study(key)
 
     def learned(self, key: str) -> engine.Learned | None:
-        """What was learned last, current or old; None before the first time. Raises NoSuchStudy and ModelUnreadable."""
+        """What was learned last, current or old, in the units that are stated now; None before the first time.
+
+        Raises NoSuchStudy and ModelUnreadable.
+        """
         with self.database.reading() as database:
-            row = database.execute("SELECT learned_file FROM studies WHERE key = ?", (key,)).fetchone()
+            row = database.execute("SELECT learned_file, choices FROM studies WHERE key = ?", (key,)).fetchone()
         if row is None:
             raise NoSuchStudy(key)
-        name = row["learned_file"]
-        return None if name is None else self._learned.get((key, name), lambda: self._open_learned(key, name))
+        name, units = row["learned_file"], Choices.from_json(row["choices"]).units
+        if name is None:
+            return None
+        return self._learned.get((key, name, _sorted(units)), lambda: self._open_learned(key, name).in_units(units))
 
     def model(self, key: str) -> engine.Model:
         """The model at the accepted budget, else at the recommended one. Raises NoModelYet and NoSuchStudy."""
@@ -301,3 +307,7 @@ class Store:
                 shutil.rmtree(path, ignore_errors=True)
             else:
                 path.unlink(missing_ok=True)
+
+
+def _sorted(units: Mapping[str, str]) -> tuple[tuple[str, str], ...]:
+    return tuple(sorted(units.items()))

@@ -20,21 +20,30 @@ class Choices:
 
     kinds: column -> kind.  bands: column -> inner cuts, ascending.  grades: column -> levels low to high.
     blanks: column -> "level" or "drop row".  A column that is not named is guessed.
+    units: number -> what it is measured in; nothing that is learned depends on it.
     """
 
     kinds: Mapping[str, str] = field(default_factory=dict)
     bands: Mapping[str, tuple[float, ...]] = field(default_factory=dict)
     grades: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
     blanks: Mapping[str, str] = field(default_factory=dict)
+    units: Mapping[str, str] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
         _keep(self, "kinds", dict(self.kinds))
         _keep(self, "bands", {name: tuple(float(cut) for cut in cuts) for name, cuts in self.bands.items()})
         _keep(self, "grades", {name: tuple(levels) for name, levels in self.grades.items()})
         _keep(self, "blanks", dict(self.blanks))
+        _keep(self, "units", dict(self.units))
+
+    @property
+    def learned_from(self) -> str:
+        """What a model depends on, as JSON: all but the units."""
+        return _text({"kinds": self.kinds, "bands": self.bands, "grades": self.grades, "blanks": self.blanks})
 
     def to_json(self) -> str:
-        return _text({"kinds": self.kinds, "bands": self.bands, "grades": self.grades, "blanks": self.blanks})
+        held = {"kinds": self.kinds, "bands": self.bands, "grades": self.grades, "blanks": self.blanks}
+        return _text({**held, "units": self.units})
 
     @classmethod
     def from_json(cls, text: str) -> Choices:
@@ -158,8 +167,8 @@ class Study:
 
 
 def basis(digest: str, choices: Choices, plan: Plan) -> str:
-    """sha256 of the records, the choices and the plan, hex."""
-    return hashlib.sha256(_text([digest, choices.to_json(), plan.to_json()]).encode()).hexdigest()
+    """sha256 of the records, the choices that matter to a model and the plan, hex."""
+    return hashlib.sha256(_text([digest, choices.learned_from, plan.to_json()]).encode()).hexdigest()
 
 
 def _keep(value: object, name: str, kept: object) -> None:

@@ -9,6 +9,7 @@ import numpy as np
 
 from app.wording.amounts import count, listing, number, people, plural
 from app.wording.figures import share
+from app.wording.units import behind
 from engine.records.small_counts import hidden_levels
 from engine.records.spikes import own_reason
 from engine.records.steps import recording_step
@@ -82,13 +83,13 @@ def small_levels(column: Column, counts: Shown, small: int) -> str | None:
 
 
 def span(column: Column) -> str:
-    """A number's range, middle, the step it was recorded to, and its bands if it has any."""
+    """A number's range in its unit, middle, the step it was recorded to, and its bands if it has any."""
     present = np.asarray(column.values, dtype=np.float64)
     present = present[np.isfinite(present)]
     if present.size == 0:
         return "no values"
     low, high, middle = number(float(present.min())), number(float(present.max())), number(float(np.median(present)))
-    said = f"{low} to {high}, middle {middle}" + (f", {_steps(present)}" if low != high else "")
+    said = f"{low} to {high}{behind(column.unit)}, middle {middle}" + (f", {_steps(present)}" if low != high else "")
     bands = column.levels[: len(column.cuts) + 1] if column.kind == "number" else ()
     return f"{said}; bands: {', '.join(bands)}" if bands else said
 

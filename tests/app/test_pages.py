@@ -149,7 +149,39 @@ def test_a_number_gets_cuts_and_a_direction(client: TestClient, study: Study, sh
     client.post(address, data={**fields, "cuts": "30, 50", "direction": "more"})
     assert shelf.study(study.key).choices.bands == {"age": (30.0, 50.0)}
     assert shelf.study(study.key).plan.outcomes == {"age": MORE}
-    assert "under 30" in client.get(address).text
+    page = client.get(address).text
+    assert "under 30" in page
+    client.post(address, data={**form_of(page, "age"), "cuts": "", "direction": "more"})
+    assert shelf.study(study.key).choices.bands == {}
+
+
+def test_a_unit_stands_behind_the_range_and_is_never_markup(client: TestClient, study: Study, shelf: Store) -> None:
+    address = f"/study/{study.key}/records"
+    for unit, shown in (("years", "years"), ("<b>&\"'%", "&lt;b&gt;&amp;&#34;&#39;%")):
+        fields = form_of(client.get(address).text, "age")
+        answer = client.post(address, data={**fields, "unit": unit})
+        assert shelf.study(study.key).choices.units == {"age": unit}
+        assert re.search(rf" to [\d.]+ {re.escape(shown)}, middle", answer.text)
+        assert f'name="unit" value="{shown}"' in answer.text
+    client.post(address, data={**form_of(answer.text, "age"), "unit": ""})
+    assert shelf.study(study.key).choices.units == {}
+
+
+def test_a_unit_that_is_too_long_is_refused_and_stays_typed(client: TestClient, study: Study, shelf: Store) -> None:
+    address, unit = f"/study/{study.key}/records", "years since the first visit"
+    answer = client.post(address, data={**form_of(client.get(address).text, "age"), "unit": unit})
+    assert answer.status_code == 422 and "at most 20 fit behind a figure" in answer.text
+    assert f'value="{unit}"' in answer.text and shelf.study(study.key) == study
+
+
+def test_a_form_from_before_a_unit_was_stated_does_not_take_it_away(
+    client: TestClient, study: Study, shelf: Store
+) -> None:
+    address = f"/study/{study.key}/records"
+    early = form_of(client.get(address).text, "age")
+    client.post(address, data={**early, "unit": "years"})
+    assert client.post(address, data=early).status_code == 422
+    assert shelf.study(study.key).choices.units == {"age": "years"}
 
 
 def test_a_refused_form_keeps_what_was_typed_and_saves_nothing(client: TestClient, study: Study, shelf: Store) -> None:

@@ -82,8 +82,21 @@ def test_cuts_that_are_no_rising_numbers_are_refused(cuts: str, words: str) -> N
     assert refused.value.where == "hours"
 
 
-def test_another_kind_lets_go_of_the_cuts_and_grades_of_the_kind_before() -> None:
-    choices = Choices(bands={"hours": (5.0,)}, grades={"age": ("a", "b")})
+def test_a_typed_unit_is_kept_without_spaces_around_it_and_an_empty_one_lets_go_of_it() -> None:
+    others = Choices(units={"travel": "minutes"})
+    changed = records_form.change(study(choices=others), HOURS, typed(HOURS, unit=" hours a week "))
+    assert changed.choices == Choices(units={"travel": "minutes", "hours": "hours a week"})
+    back = records_form.change(study(choices=changed.choices), HOURS, typed(HOURS, unit=" "))
+    assert back.choices == others
+
+
+def test_a_unit_that_is_no_short_text_is_refused() -> None:
+    with pytest.raises(Refusal, match="unit of “hours” is 30 characters long"):
+        records_form.change(study(), HOURS, typed(HOURS, unit="h" * 30))
+
+
+def test_another_kind_lets_go_of_the_cuts_unit_and_grades_of_the_kind_before() -> None:
+    choices = Choices(bands={"hours": (5.0,)}, grades={"age": ("a", "b")}, units={"hours": "h"})
     changed = records_form.change(study(choices=choices), HOURS, typed(HOURS, kind="category"))
     assert changed.choices == Choices(kinds={"hours": "category"}, grades={"age": ("a", "b")})
 

@@ -195,6 +195,16 @@ class TestModels:
         assert store.study(study.key).model == "old"
         assert store.learned(study.key) is not None
 
+    def test_a_changed_unit_leaves_the_model_current_and_is_told_at_once(self, store, study):
+        store.keep_learned(study.key, learned_file(store, study), study.basis)
+        for unit in ("years", "y"):
+            changed = store.save_choices(study.key, Choices(units={"age": unit}))
+            assert (changed.model, changed.digest) == ("current", study.digest)
+            assert store.model(study.key).network.node("age").unit == unit
+            assert store.learned(study.key) is store.learned(study.key)
+        store.save_choices(study.key, Choices())
+        assert store.model(study.key).network.node("age").unit == ""
+
     def test_a_model_answers_the_same_after_the_store_is_reopened(self, store, study):
         store.keep_learned(study.key, learned_file(store, study), study.basis)
         pins, levers = {"shift": "nights"}, {"mentor": engine.Fix("yes")}

@@ -1,5 +1,9 @@
 """What the store keeps comes back from JSON as it was."""
 
+import hashlib
+import json
+from dataclasses import replace
+
 from hypothesis import given
 from hypothesis import strategies as st
 
@@ -17,6 +21,7 @@ choices = st.builds(
     bands=st.dictionaries(names, cuts, max_size=2),
     grades=st.dictionaries(names, st.lists(names, max_size=3), max_size=2),
     blanks=st.dictionaries(names, st.sampled_from(["level", "drop row"]), max_size=2),
+    units=st.dictionaries(names, names, max_size=2),
 )
 plans = st.builds(
     Plan,
@@ -31,6 +36,23 @@ plans = st.builds(
 @given(choices)
 def test_choices_come_back_as_they_were(value):
     assert Choices.from_json(value.to_json()) == value
+
+
+def test_choices_kept_before_units_could_be_stated_have_none():
+    early = '{"kinds":{"age":"number"},"bands":{},"grades":{},"blanks":{}}'
+    assert Choices.from_json(early) == Choices(kinds={"age": "number"})
+    assert basis("d", Choices.from_json(early), Plan()) == early_basis("d", early, Plan())
+
+
+def early_basis(digest, choices, plan):
+    """As it was written then: over the whole text of the choices."""
+    told = json.dumps([digest, choices, plan.to_json()], separators=(",", ":"))
+    return hashlib.sha256(told.encode()).hexdigest()
+
+
+@given(choices, st.dictionaries(names, names, max_size=2), plans)
+def test_units_are_no_part_of_what_a_model_is_learned_from(value, units, plan):
+    assert basis("d", value, plan) == basis("d", replace(value, units=units), plan)
 
 
 @given(plans)
