@@ -178,8 +178,9 @@ class Model:
         cannot be.
 
         frame: every column of the model; levels as texts, numbers as numbers, a number taken as bands as either a
-        number or the name of a band.
-        Raises Refusal for a missing or unknown column, an unknown level, and a blank that no level stands for.
+        number or the name of a band. A blank that no level stands for is summed out, so that a row scores what it does
+        hold; columns that the model does not have (a name, a weight) are not looked at.
+        Raises Refusal for a missing column, an unknown level, and a blank number that a known column comes from.
         """
         return log_score(self.network, frame)
 

@@ -33,6 +33,11 @@ class Rows:
     codes: Mapping[str, Codes]
     values: Mapping[str, NDArray[np.float64]]
 
+    def some(self, places: Codes) -> Rows:
+        """The rows at those places."""
+        codes = {name: column[places] for name, column in self.codes.items()}
+        return Rows(len(places), codes, {name: column[places] for name, column in self.values.items()})
+
     def configurations(self, network: Network, parents: tuple[str, ...]) -> Codes:
         """(rows,) which configuration of `parents` each row is in, the last parent changing fastest."""
         at = np.zeros(self.count, dtype=np.int64)
@@ -46,29 +51,42 @@ class Rows:
 
 
 def read_rows(network: Network, frame: pd.DataFrame) -> Rows:
-    """Every column of `network` from a table as it was brought.
+    """As `read_with_blanks`. Raises Refusal for a blank where no level stands for it, too."""
+    rows, blanks = read_with_blanks(network, frame)
+    for name, blank in blanks.items():
+        raise refused_blank(name, blank, "no level of this model stands for a blank there")
+    return rows
+
+
+def read_with_blanks(network: Network, frame: pd.DataFrame) -> tuple[Rows, dict[str, NDArray[np.bool_]]]:
+    """Every column of `network` from a table as it was brought, and which cells of which columns are blank.
 
     Levels are texts, numbers numbers or texts that spell them; a number taken as bands is either a number or the name
-    of a band. Raises Refusal for a missing column, one that the network does not have, a level that it does not know,
-    a blank where no level stands for it, and what is no finite number.
+    of a band. A blank for which a level stands is that level; of any other, what the rows hold means nothing. Columns
+    without such a blank are not among the blanks.
+    Raises Refusal for a missing column, one that the network does not have, a level that it does not know, and what
+    is no finite number.
     """
     if not isinstance(frame, pd.DataFrame):
         raise Refusal("The rows are no DataFrame.", where="rows", do="Bring them as a pandas DataFrame.")
     _check_columns(network, frame)
     codes: dict[str, Codes] = {}
     values: dict[str, NDArray[np.float64]] = {}
+    blanks: dict[str, NDArray[np.bool_]] = {}
     for node in network.nodes:
         held = cells(node.name, frame[node.name])
         if isinstance(node, Number):
             read = as_numbers(node.name, held).values
             assert read is not None
-            if np.isnan(read).any():
-                raise _blank(node.name, np.isnan(read))
-            values[node.name] = read
-            codes[node.name] = band_codes(read, node.bands)
+            blank = np.isnan(read)
+            values[node.name] = np.where(blank, 0.0, read)
+            codes[node.name] = band_codes(values[node.name], node.bands)
         else:
+            blank = np.zeros(len(frame), dtype=bool) if node.has_blank else held.blank
             codes[node.name] = _levels(node, held)
-    return Rows(len(frame), codes, values)
+        if blank.any():
+            blanks[node.name] = blank
+    return Rows(len(frame), codes, values), blanks
 
 
 def _check_columns(network: Network, frame: pd.DataFrame) -> None:
@@ -91,7 +109,7 @@ def _check_columns(network: Network, frame: pd.DataFrame) -> None:
 
 
 def _levels(node: Category, held: Cells) -> Codes:
-    """(rows,) level positions."""
+    """(rows,) level positions; 0 for a blank that no level stands for."""
     places = np.full(held.different + 1, -1, dtype=np.int64)
     known = {level: place for place, level in enumerate(node.levels)}
     for at, text in enumerate(held.texts):
@@ -105,10 +123,7 @@ def _levels(node: Category, held: Cells) -> Codes:
             where=node.name,
             do=f"Its levels are {listing(node.levels, 12)}.",
         )
-    if node.has_blank:
-        places[-1] = len(node.levels) - 1
-    elif held.blanks:
-        raise _blank(node.name, held.blank)
+    places[-1] = len(node.levels) - 1 if node.has_blank else 0
     return np.asarray(places[held.codes])
 
 
@@ -123,11 +138,14 @@ def _band(node: Category, text: str) -> int:
     return int(band_codes(np.array([value]), node.cuts)[0]) if np.isfinite(value) else -1
 
 
-def _blank(name: str, blank: NDArray[np.bool_]) -> Refusal:
+def refused_blank(name: str, blank: NDArray[np.bool_], why: str) -> Refusal:
+    """blank: (rows,) where the column is."""
     return Refusal(
-        f"{quoted(name)} is blank in {_named(blank)}, and no level of this model stands for a blank there.",
+        f"{quoted(name)} is blank in {_named(blank)}, and {why}.",
         where=name,
-        do="Fill that cell in, or leave the row out.",
+        do="Fill that cell in, or leave the row out."
+        if blank.sum() == 1
+        else "Fill those cells in, or leave the rows out.",
     )
 
 

@@ -1,19 +1,26 @@
-"""How likely rows are under a network: the posterior predictive of each."""
+"""How likely rows are under a network: the posterior predictive of each, its blanks summed out."""
 
 from __future__ import annotations
+
+from collections.abc import Collection, Mapping
+from dataclasses import replace
+from itertools import product
+from math import prod
 
 import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
 from engine.network.network import Network
-from engine.network.nodes import Category, Number
-from engine.network.rows import Rows, read_rows
+from engine.network.nodes import Category, Node, Number
+from engine.network.rows import Rows, read_with_blanks, refused_blank
+from engine.refusal import quoted
 
 Floats = NDArray[np.float64]
 
 EXACTLY = 1e-9  # of the size of its terms: how near a number without variance must be to what it follows
 BLOCK = 65_536  # rows scored at once
+COMBINATIONS = 10_000  # of levels of blank categories, over which a row is summed
 
 
 def log_score(network: Network, frame: pd.DataFrame) -> Floats:
@@ -21,14 +28,79 @@ def log_score(network: Network, frame: pd.DataFrame) -> Floats:
 
     A category counts its posterior predictive share, a number its predictive Student t density (a normal one where
     its parameters are known exactly). A number that follows its parents exactly, with variance 0, has no density: it
-    counts as a category would, 1 where it is as it must be and 0 elsewhere.
-    Raises Refusal as engine.network.rows.read_rows does.
+    counts as a category would, 1 where it is as it must be and 0 elsewhere. A blank that no level stands for is summed
+    out: a row then has the probability or density of what it does hold. Columns that the network does not have are
+    not looked at: none of its own may be missing, so that a name spelt wrongly is found all the same.
+    Raises Refusal as engine.network.rows.read_with_blanks does, for a blank number that a known column comes from, and
+    for blank categories of too many combinations.
     """
-    rows = read_rows(network, frame)
+    if isinstance(frame, pd.DataFrame):
+        frame = frame.loc[:, [name in network.index for name in frame.columns]]
+    rows, blanks = read_with_blanks(network, frame)
+    if not blanks:
+        return _all(network, network.nodes, rows)
+    patterns, which = np.unique(np.column_stack(list(blanks.values())), axis=0, return_inverse=True)
+    total = np.empty(rows.count)
+    for place, pattern in enumerate(patterns):
+        hidden = frozenset(name for name, blank in zip(blanks, pattern.tolist(), strict=True) if blank)
+        here = which.ravel() == place
+        total[here] = _summed(network, rows.some(np.flatnonzero(here)), hidden, here)
+    return total
+
+
+def _all(network: Network, nodes: Collection[Node], rows: Rows) -> Floats:
+    """(rows,) natural log of the product of what each of `nodes` gives."""
     total = np.zeros(rows.count)
-    for node in network.nodes:
+    for node in nodes:
         total += log_shares(network, node, rows) if isinstance(node, Category) else log_densities(network, node, rows)
     return total
+
+
+def _summed(network: Network, rows: Rows, hidden: frozenset[str], here: NDArray[np.bool_]) -> Floats:
+    """(rows,) the same, with the columns `hidden` summed out. here: where in the table these rows are, for refusals."""
+    bearing = _bearing(network, hidden)
+    total = _all(network, [node for node, unknown in bearing.items() if not unknown], rows)
+    left = {node: unknown for node, unknown in bearing.items() if unknown}
+    while left:
+        together, nodes = _joined(left)
+        for name in together:
+            if name in network.numbers:
+                children = [node.name for node in nodes if name in node.parents]
+                why = f"{quoted(children[0])} comes from it: a blank number is summed out only where nothing does"
+                raise refused_blank(name, here, why)
+        sizes = [len(network.node(name).levels) for name in together]
+        if prod(sizes) > COMBINATIONS:
+            why = f"with what else is blank that is {prod(sizes):,} combinations, more than {COMBINATIONS:,}"
+            raise refused_blank(together[0], here, why)
+        found = np.full(rows.count, -np.inf)
+        for levels in product(*map(range, sizes)):
+            filled = {name: np.full(rows.count, level) for name, level in zip(together, levels, strict=True)}
+            found = np.logaddexp(found, _all(network, nodes, replace(rows, codes={**rows.codes, **filled})))
+        total += found
+        left = {node: unknown for node, unknown in left.items() if node not in nodes}
+    return total
+
+
+def _bearing(network: Network, hidden: frozenset[str]) -> Mapping[Node, frozenset[str]]:
+    """Each column that bears on what is known, and which of it and its parents are hidden.
+
+    A hidden column from which nothing known comes sums to one by itself.
+    """
+    bearing: dict[Node, frozenset[str]] = {}
+    wanted: set[str] = set()
+    for node in reversed(network.nodes):
+        if node.name not in hidden or node.name in wanted:
+            wanted.update(node.parents)
+            bearing[node] = hidden & {node.name, *node.parents}
+    return bearing
+
+
+def _joined(left: Mapping[Node, frozenset[str]]) -> tuple[list[str], list[Node]]:
+    """Hidden columns that have to be summed together, and the columns that hang on them."""
+    together = set(next(iter(left.values())))
+    while more := set().union(*(unknown for unknown in left.values() if unknown & together)) - together:
+        together |= more
+    return sorted(together), [node for node, unknown in left.items() if unknown & together]
 
 
 def log_shares(network: Network, node: Category, rows: Rows) -> Floats:

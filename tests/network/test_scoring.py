@@ -116,11 +116,14 @@ def test_levels_that_look_like_numbers_are_found_whatever_holds_them():
     ("change", "message", "where"),
     [
         (lambda rows: rows.drop(columns="flow"), "The rows have no column “flow”", "flow"),
-        (lambda rows: rows.assign(snow=1), "This model has no column “snow”", "snow"),
         (lambda rows: pd.concat([rows, rows["wet"]], axis=1), "have the column “wet” twice", "wet"),
         (lambda rows: rows.assign(rain=["no", "hail", "sleet"]), "holds “hail” and “sleet” in rows 2 and 3", "rain"),
-        (lambda rows: rows.assign(rain=["no", None, "no"]), "“rain” is blank in row 2", "rain"),
-        (lambda rows: rows.assign(flow=[1.0, np.nan, np.nan]), "“flow” is blank in rows 2 and 3", "flow"),
+        (
+            lambda rows: rows.assign(flow=[1.0, np.nan, np.nan]),
+            "“flow” is blank in rows 2 and 3, and “depth” co",
+            "flow",
+        ),
+        (lambda rows: rows.assign(flow=[1.0, 2.0, None], depth=None), "blank in row 3, and “wet” comes", "flow"),
         (lambda rows: rows.assign(flow=["1", "fast", "2"]), "cannot be a number: record 2 holds “fast”", "flow"),
         (lambda rows: rows.assign(flow=[1.0, np.inf, 2.0]), "“flow” holds a number that is infinite", "flow"),
         (lambda rows: rows.to_dict("list"), "no DataFrame", "rows"),
@@ -130,6 +133,58 @@ def test_rows_that_cannot_be_read_are_refused_where_they_stand(change, message, 
     with pytest.raises(Refusal, match=message) as refusal:
         MODEL.log_score(change(ROWS))
     assert refusal.value.where == where and refusal.value.do
+
+
+@settings(max_examples=60, deadline=None)
+@given(mixed_networks(), st.integers(0, 99), st.data())
+def test_blank_categories_and_last_numbers_are_summed_out(net, seed, data):
+    """Against the sum, by hand, over every way of filling them in."""
+    parents = {source for source, _ in net.links}
+    can = [name for name in net.names if name not in net.numbers or name not in parents]
+    rows = engine.Model(net).sample(6, seed).astype(object)
+    blank = [data.draw(st.sets(st.sampled_from(can)) if can else st.just(set())) for _ in range(len(rows))]
+    expected = []
+    for place, (row, gone) in enumerate(zip(rows.to_dict("records"), blank, strict=True)):
+        categories = [name for name in net.names if name in gone and name not in net.numbers]
+        ways = product(*(net.node(name).levels for name in categories))
+        rest = [node for node in net.nodes if node.name not in gone or node.name in categories]
+        filled = [row | dict(zip(categories, way, strict=True)) for way in ways]
+        scores = [sum(plainly.log_factor(net, node, each) for node in rest) for each in filled]
+        expected.append(np.logaddexp.reduce(scores))
+        for name in gone:
+            rows.iloc[place, list(rows.columns).index(name)] = None
+    np.testing.assert_allclose(log_score(net, rows), expected, rtol=1e-9, atol=1e-9)
+
+
+def test_a_blank_with_a_level_of_its_own_is_that_level_and_is_not_summed_out():
+    told = engine.Model.from_network([BANDED]).log_score(pd.DataFrame({"hours": [np.nan]}))
+    assert np.exp(told) == pytest.approx([0.1])
+
+
+def test_blank_learned_categories_sum_to_what_every_level_gives():
+    frame, net = school()
+    row = frame.iloc[[0, 0, 0]].assign(site=["north", "south", "west"])
+    expected = np.logaddexp.reduce(log_score(net, row))
+    assert log_score(net, row.iloc[:1].assign(site=None, passed="yes"))[0] == pytest.approx(
+        np.logaddexp.reduce(log_score(net, row.assign(passed="yes")))
+    )
+    assert log_score(net, row.iloc[:1].assign(site=None))[0] == pytest.approx(expected)
+
+
+def test_blanks_of_too_many_combinations_are_refused():
+    levels = [f"l{place}" for place in range(101)]
+    even = np.full(101, 1 / 101)
+    nodes = [engine.Category("a", levels, [], even), engine.Category("b", levels, [], even)]
+    child = engine.Category("c", ["no", "yes"], ["a", "b"], np.full((101, 101, 2), 0.5))
+    rows = pd.DataFrame({"a": [None, "l1"], "b": [None, "l1"], "c": ["yes", "no"]})
+    with pytest.raises(Refusal, match="“a” is blank in row 1, and with what else is blank that is 10,201 combinations"):
+        engine.Model.from_network([*nodes, child]).log_score(rows)
+    np.testing.assert_allclose(np.exp(engine.Model.from_network(nodes).log_score(rows)), [1.0, 1 / 101**2])
+
+
+def test_columns_that_the_model_does_not_have_are_not_looked_at():
+    more = ROWS.assign(weight=[1, None, 3], name=["x", "y", "z"])
+    np.testing.assert_array_equal(MODEL.log_score(more), MODEL.log_score(ROWS))
 
 
 def test_a_refusal_names_the_first_few_rows_and_counts_the_others():
