@@ -51,16 +51,26 @@ def family_score(sums: FamilySums) -> float:
     """The score of one number given its parents, from all records: the difference of two set scores."""
     products = sums.part(0)
     products = products[products[:, 0, 0] > 0.0]
-    count, first = products[:, 0, 0], products[:, 0, 1:]
     places = list(sums.columns)
-    held = len(places)
-    scatter = products[:, 1:, 1:] - first[:, :, None] * first[:, None, :] / (count + MEAN_WEIGHT)[:, None, None]
-    rounding = sums.numbers.rounding[places]
-    scatter += (count[:, None] * rounding + SCATTER)[:, None, :] * np.eye(held)
-    logs = np.linalg.slogdet(scatter)[1], np.linalg.slogdet(scatter[:, :-1, :-1])[1]
+    return float(
+        configuration_scores(products, sums.numbers.rounding[places], float(sums.numbers.scale[places[-1]])).sum()
+    )
+
+
+def configuration_scores(products: Floats, rounding: Floats, scale: float) -> Floats:
+    """(...,) what each configuration with records adds to the score of a number given its number parents.
+
+    products: (..., terms, terms) sums of products of (1, number parents, child), standardised.
+    rounding: (..., terms - 1) variances that rounding adds.  scale: of the child.
+    """
+    count, first = products[..., 0, 0], products[..., 0, 1:]
+    held = first.shape[-1]
+    scatter = products[..., 1:, 1:] - first[..., :, None] * first[..., None, :] / (count + MEAN_WEIGHT)[..., None, None]
+    scatter += (count[..., None] * rounding + SCATTER)[..., None, :] * np.eye(held)
+    logs = 2.0 * np.log(np.diagonal(np.linalg.cholesky(scatter), axis1=-2, axis2=-1))
     with_child, without = (-0.5 * (count + shape + MEAN_WEIGHT + 1.0) for shape in (held, held - 1))
-    score = _one_more(count, held) + with_child * logs[0] - without * logs[1]
-    return float(score.sum() - count.sum() * np.log(sums.numbers.scale[places[-1]]))
+    score = _one_more(count, held) + with_child * logs.sum(axis=-1) - without * logs[..., :-1].sum(axis=-1)
+    return np.asarray(score - count * np.log(scale))
 
 
 def coarsened(scores: SetScores, grain: float) -> SetScores:

@@ -227,12 +227,10 @@ class ArrayMoments:
         for low in range(0, self.rows, _ROWS):
             high = min(low + _ROWS, self.rows)
             code = self._joint(categories, low, high) + np.int32(configurations) * self.fold[low:high]
-            row = np.empty((high - low, terms))
-            row[:, 0] = 1.0
-            for term, place in enumerate(places, start=1):
-                row[:, term] = self.numbers.values[low:high, place]
-            laid = np.empty((high - low, one.size))
-            _pairs(row, laid)
+            term = np.empty((terms, high - low))
+            term[0] = 1.0
+            term[1:] = self.numbers.values[low:high, places].T
+            laid = np.ascontiguousarray((term[one] * term[other]).T)
             ends = np.arange(high - low + 1, dtype=np.int32)
             sums += csc_matrix((self.weights[low:high], code, ends), shape=(sums.shape[0], high - low)) @ laid
         products = np.empty((sums.shape[0], terms, terms))
