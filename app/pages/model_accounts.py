@@ -54,11 +54,16 @@ class Account:
 
 
 def accounts(model: Model, picked: str | None) -> tuple[Account, ...]:
-    """Every column: the picked one, outcomes, those that may be changed, and the others, parents before children."""
-    outcomes = () if model.order is None else tuple(model.order.outcomes)
+    """Every column: the picked one, outcomes, those with links, of these first those that may be changed.
 
-    def rank(name: str) -> tuple[bool, bool, bool]:
-        return name != picked, name not in outcomes, model.order is not None and name not in model.changeable
+    Parents before children.
+    """
+    outcomes = () if model.order is None else tuple(model.order.outcomes)
+    linked = {name for link in model.links for name in link}
+
+    def rank(name: str) -> tuple[bool, bool, bool, bool]:
+        fixed = model.order is not None and name not in model.changeable
+        return name != picked, name not in outcomes, name not in linked, fixed
 
     return tuple(_account(model, name, picked, outcomes) for name in sorted(model.network.names, key=rank))
 

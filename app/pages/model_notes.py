@@ -42,6 +42,16 @@ def limits(model: Model, most: int) -> tuple[Limit, ...]:
     )
 
 
+def supports(learned: Learned, model: Model, settled: Mapping[tuple[str, str], str]) -> dict[tuple[str, str], float]:
+    """How likely each link of `model` is, 0 to 1; one that nobody settled in either direction."""
+    found = {}
+    for source, target in model.links:
+        found[source, target] = learned.support_of(source, target)
+        if settled[source, target] == "nobody":
+            found[source, target] = min(found[source, target] + learned.support_of(target, source), 1.0)
+    return found
+
+
 def settled_by_shape(learned: Learned, model: Model, settled: Mapping[tuple[str, str], str]) -> str | None:
     """Why nobody settled the links between a category and a number; None without such."""
     numbers, order = set(model.network.numbers), learned.order

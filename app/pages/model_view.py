@@ -13,15 +13,17 @@ from app.drawing import arcs, curve
 from app.drawing.arcs import Arc
 from app.drawing.curve import Point, figure_words
 from app.pages.model_accounts import Account, accounts
-from app.pages.model_notes import Limit, limits, notes, settled_by_shape
+from app.pages.model_notes import Limit, limits, notes, settled_by_shape, supports
 from app.store import Study
 from app.wording.amounts import plural
 from app.wording.links import SETTLED, doubted, strength, support, wide_stages
 from engine.learning.layers import WIDEST_LAYERED
 from engine.model import Learned, Model
 
+Link = tuple[str, str]
+
 SHOWN_LINKS = 20  # rows of the links table before those with less support are folded
-SUREST = 1.0  # where every support shown as "over 99%" stands in the table
+SUREST = 1.0  # where every support shown as "over 99%" stands in the table; "under 1%" stands at none
 SHOWN_COLUMNS = 6  # columns told before the others are folded, and every outcome and picked column
 EXACT = 1e-6  # nats by which a bound may exceed the score it bounds, for rounding
 
@@ -133,6 +135,7 @@ def view(study: Study, learned: Learned, links: int | None = None, picked: str |
         (str(source), str(target)): str(by)
         for source, target, by in zip(found["source"], found["target"], found["settled"], strict=True)
     }
+    likely = supports(learned, model, settled)
     sizes = tuple(_size(study.key, point, learned.recommended, best, shown, picked) for point in points)
     return ModelView(
         links=shown,
@@ -146,11 +149,11 @@ def view(study: Study, learned: Learned, links: int | None = None, picked: str |
         all_sizes=sizes,
         fewer=_address(study.key, budgets[place - 1], picked) if place else None,
         more=_address(study.key, budgets[place + 1], picked) if place + 1 < len(budgets) else None,
-        arcs=_arcs(learned, model, settled, addresses, picked),
+        arcs=_arcs(learned, model, settled, likely, addresses, picked),
         arc_key=arcs.key(),
-        rows=_rows(learned, model, settled, picked),
+        rows=_rows(learned, model, settled, likely, picked),
         wide=_wide(learned),
-        doubted=_doubted(learned, model),
+        doubted=_doubted(learned, likely),
         accounts=accounts(model, picked),
         addresses=addresses,
         picked=picked,
@@ -237,25 +240,27 @@ def _telling(budgets: list[int], shown: int, recommended: int, best: int | None)
 
 
 def _arcs(
-    learned: Learned, model: Model, settled: dict[tuple[str, str], str], addresses: dict[str, str], picked: str | None
+    learned: Learned,
+    model: Model,
+    settled: dict[Link, str],
+    likely: dict[Link, float],
+    addresses: dict[str, str],
+    picked: str | None,
 ) -> Markup:
     sequence = {name: place for place, name in enumerate(model.network.names)}  # parents stand before their children
     stages = [(stage.name, sorted(stage.columns, key=lambda name: sequence[name])) for stage in learned.order.stages]
-    drawn = [
-        Arc(source, target, settled[source, target], learned.support_of(source, target))
-        for source, target in model.links
-    ]
+    drawn = [Arc(*link, settled[link], likely[link]) for link in model.links]
     return arcs.arcs([stage for stage in stages if stage[1]], drawn, addresses, picked)
 
 
 def _rows(
-    learned: Learned, model: Model, settled: dict[tuple[str, str], str], picked: str | None
+    learned: Learned, model: Model, settled: dict[Link, str], likely: dict[Link, float], picked: str | None
 ) -> tuple[LinkRow, ...]:
     """Links of the picked column first, then by support as it is shown, the strongest first within equal."""
     strengths = {link: model.strength(*link) for link in model.links}
-    supports = {link: learned.support_of(*link) for link in model.links}
-    said = {link: "100%" if link in learned.order.insist else support(supports[link]) for link in model.links}
-    shown = {link: SUREST if said[link].startswith("over") else round(supports[link], 2) for link in model.links}
+    said = {link: "100%" if link in learned.order.insist else support(likely[link]) for link in model.links}
+    ends = {"over": SUREST, "under": 0.0}
+    shown = {link: ends.get(said[link].split()[0], round(likely[link], 2)) for link in model.links}
     scales = {name: float(np.std(learned.coded.values[:, place])) for place, name in enumerate(_numbers(learned))}
     apart = {link: strengths[link] / scales.get(link[1], 1.0) for link in model.links}
     ordered = sorted(model.links, key=lambda link: (picked not in link, -shown[link], -apart[link]))
@@ -265,7 +270,7 @@ def _rows(
             verb="goes with" if settled[source, target] == "nobody" else "leads to",
             target=target,
             support=said[source, target],
-            bar=arcs.support_bar(supports[source, target]),
+            bar=arcs.support_bar(likely[source, target]),
             strength=strength(strengths[source, target], target in model.network.numbers),
             settled=SETTLED[settled[source, target]],
             picked=picked in (source, target),
@@ -278,8 +283,8 @@ def _numbers(learned: Learned) -> list[str]:
     return [learned.coded.names[place] for place in learned.coded.numbers]
 
 
-def _doubted(learned: Learned, model: Model) -> str | None:
-    few = sum(learned.support_of(*link) < 0.5 for link in model.links if link not in learned.order.insist)
+def _doubted(learned: Learned, likely: dict[Link, float]) -> str | None:
+    few = sum(support < 0.5 for link, support in likely.items() if link not in learned.order.insist)
     return doubted(few) if few else None
 
 

@@ -68,6 +68,26 @@ def test_who_settled_a_direction_is_said_with_its_condition(app: FastAPI, study:
     assert all((row.verb == "goes with") == (row.settled == "nobody") for row in view.rows)
 
 
+def test_a_link_that_nobody_settled_has_the_support_of_both_directions(study: Study) -> None:
+    rng = np.random.default_rng(4)
+    first = rng.choice(["no", "yes"], 400)
+    second = np.where(rng.random(400) < 0.85, first, rng.choice(["no", "yes"], 400))
+    table = engine.Table.from_frame(pd.DataFrame({"first": first, "second": second}))
+    learned = engine.learn(table, engine.Order([("All", ["first", "second"])]))
+    view = model_view.view(study, learned, 1)
+    (row,) = view.rows
+    one, other = learned.support_of("first", "second"), learned.support_of("second", "first")
+    assert row.verb == "goes with" and 0.3 < one < 0.7 and one + other > 0.99
+    assert row.support == "over 99%" and view.doubted is None
+
+
+def test_columns_with_links_are_told_before_those_without() -> None:
+    nodes = [engine.Category(f"c{place}", ["no", "yes"], [], [0.5, 0.5]) for place in range(9)]
+    late = engine.Category("late", ["no", "yes"], ["c8"], [[0.9, 0.1], [0.2, 0.8]])
+    told = [each.name for each in model_accounts.accounts(engine.Model.from_network([*nodes, late]), None)]
+    assert told[:2] == ["c8", "late"]
+
+
 def test_each_column_is_told_in_words_with_its_table_on_demand(client: TestClient, app: FastAPI, study: Study) -> None:
     model = app.state.store.model(study.key)
     page = client.get(f"/study/{study.key}/model").text
