@@ -65,6 +65,8 @@ def test_numbers_that_act_through_bands_or_lie_in_ranges_are_cut(world):
 @given(set_worlds(most=4))
 def test_a_set_copy_follows_its_number_to_the_last_digit(world):
     assume(len(in_boxes(world)) < 3)
+    cuts = {cut for node in world.nodes if isinstance(node, Number) for cut in node.bands}
+    assume(not cuts & set(world.values.values()))  # the slow truth spreads a copy a little to either side of its value
     assume(np.isfinite(plan(world).cells))
     true = truth(world)
     assume(true.log_evidence > -50.0 or true.log_evidence == -np.inf)
