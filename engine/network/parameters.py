@@ -8,9 +8,12 @@ from scipy.special import gammaln
 
 Floats = NDArray[np.float64]
 
-# Prior records per configuration that are tried. Heavier priors pull sparse configurations, which lie to one side of
-# the column as a whole, towards it: with up to 8 records, 90% intervals of a change held 75 to 81 of 100 truths on
-# tables of 1,000 and 4,000 rows; with at most one record 87 to 88, and the error was smaller too.
+# Prior records per configuration that are tried. They are light for the sake of the intervals, at a price in error.
+# Heavier priors pull sparse configurations, which lie to one side of the column as a whole, towards it: with up to 8
+# records, 90% intervals of a change held 75 to 81 of 100 truths on tables of 1,000 and 4,000 rows; with at most one
+# record 87 to 88. Where parents act additively a heavier prior is nearer the truth: with 48 configurations and 300 rows
+# its Kullback-Leibler divergence from it was .043 against .133, but 90% intervals of a cell held .79 to .91 of the
+# truths against .89 to .92.
 WEIGHTS = (0.3, 0.5, 1.0)
 
 

@@ -18,7 +18,7 @@ Floats = NDArray[np.float64]
 Link = tuple[str, str]
 
 APART = 0.10  # a part whose configurations differ by more says so
-LISTED = 4  # levels told of a column without parents
+LISTED = 6  # levels told of a column without parents
 
 
 @dataclass(frozen=True)
@@ -140,8 +140,9 @@ def _distribution(node: Category, overall: Floats, better: tuple[int, ...] | Non
     shown = ranked[:most] if node.kind == "category" else sorted(ranked[:most])
     clauses: list[Words] = [(name(node.levels[place]), Said(" for "), figure(float(overall[place]))) for place in shown]
     if rest := ranked[most:]:
-        others = "another level" if len(rest) == 1 else f"one of {len(rest)} other levels"
-        clauses.append((Said(f"{others} for "), figure(float(overall[rest].sum()))))
+        together = float(overall[rest].sum())
+        rarer = ", none commoner," if together >= overall[ranked[most - 1]] else ""
+        clauses.append((Said(f"one of {len(rest)} other levels{rarer} for "), figure(together)))
     return Rules((Said("It is"),), (series(clauses, " and "),))
 
 

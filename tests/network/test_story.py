@@ -176,12 +176,17 @@ def test_a_column_without_parents_is_told_by_its_levels():
         "stands alone: no link of this model touches it. "
         "It is primary for 30 in 100, lower for 40 in 100 and upper for 30 in 100."
     )
-    many = engine.Category("site", list("abcdef"), [], [0.05, 0.3, 0.1, 0.25, 0.2, 0.1])
+    many = engine.Category("site", list("abcdefgh"), [], [0.05, 0.25, 0.1, 0.2, 0.2, 0.1, 0.06, 0.04])
     assert (
         model(many)
         .story("site")
-        .endswith("It is b for 30 in 100, d for 25 in 100, e for 20 in 100 and one of 3 other levels for 25 in 100.")
+        .endswith(
+            "It is b for 25 in 100, d for 20 in 100, e for 20 in 100, c for 10 in 100, f for 10 in 100 "
+            "and one of 3 other levels, none commoner, for 15 in 100."
+        )
     )
+    even = engine.Category("site", list("abcde"), [], [0.25, 0.22, 0.2, 0.17, 0.16])
+    assert "d for 17 in 100 and e for 16 in 100." in model(even).story("site")
     assert model(engine.Category("passed", NO_YES, [], [0.4, 0.6])).story("passed").endswith("It is yes for 60 in 100.")
 
 
