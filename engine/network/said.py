@@ -66,7 +66,7 @@ def these(node: Node, positions: Sequence[int]) -> Words:
     graded = last + 1 - int(node.has_blank)
     told = _run(node, real, graded)
     if told is not None:
-        return series([told, *blank], " or ")
+        return series([told, *blank], " or " if told[-1].style == "name" else ", or ")
     missing = [place for place in range(len(node.levels)) if place not in positions]
     if len(positions) > NAMED:
         if 0 < len(missing) < NAMED:
@@ -86,4 +86,6 @@ def _run(node: Node, real: Sequence[int], graded: int) -> Words | None:
         return (name(band_levels(ends)[1 if low else 0]),)
     if low and high < graded - 1:
         return (Said("from "), name(node.levels[low]), Said(" to "), name(node.levels[high]))
-    return (name(node.levels[low if low else high]), Said(" or above" if low else " or below"))
+    level = node.levels[low if low else high]
+    pause = "," if " or " in level else ""  # one or two, or above
+    return (name(level), Said(f"{pause} or above" if low else f"{pause} or below"))

@@ -106,6 +106,18 @@ def test_graded_parents_are_parted_at_a_threshold_and_never_by_odd_levels():
     )
 
 
+def test_grades_and_blanks_are_told_apart_by_a_pause():
+    levels = ["none", "one or two", "three or more", "blank"]
+    children = engine.Category("children", levels, [], [0.25] * 4, kind="grade", has_blank=True)
+    told = model(children, engine.Category("passed", NO_YES, ["children"], yes(0.2, 0.6, 0.6, 0.6))).story("passed")
+    assert told == (
+        "comes from children. It is yes for 60 in 100 where children is one or two, or above, or blank; "
+        "for 20 in 100 where children is none."
+    )
+    told = model(children, engine.Category("passed", NO_YES, ["children"], yes(0.2, 0.2, 0.6, 0.2))).story("passed")
+    assert "for 20 in 100 where children is one or two, or below, or blank" in told
+
+
 def test_bands_next_to_each_other_are_told_as_one_band_and_a_blank_goes_with_either_side():
     told = model(HOURS, engine.Category("passed", NO_YES, ["hours"], yes(0.2, 0.6, 0.6, 0.21))).story("passed")
     assert told == (
