@@ -9,6 +9,7 @@ import numpy as np
 import pandas as pd
 
 from engine.learning.cap import Capped, capped
+from engine.learning.cap import seconds as trying_seconds
 from engine.learning.checks import check_coded, check_groups, check_limits, check_rows, check_table, numbers_to_learn
 from engine.learning.cuts import banded, number_cuts
 from engine.learning.evidence import counts_of, moments_of
@@ -99,6 +100,8 @@ def learn_coded(
             where="insist",
             do="Insist on fewer links, or raise the most links or parents allowed.",
         )
+    likeliest = found.parents[max(found.parents, key=lambda links: float(found.scores[links]))]
+    say.expect_of_last(trying_seconds(counts.rows, coded.numbers, stages, likeliest, max_parents))
     say.begin("Weighing every model that the order allows")
     sure = posterior(stages, scores, max_parents, graphs, np.random.default_rng([seed, 1]), say.within)
     curve = _curve(found)

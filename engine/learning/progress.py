@@ -3,8 +3,10 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
+from math import comb
 
 from engine.learning.families import Candidates
+from engine.learning.layers import WIDEST_LAYERED
 from engine.records.counts import ArrayCounts
 from engine.records.moments import ArrayMoments
 
@@ -55,12 +57,13 @@ class Saying:
         thousands = max(1.0, counts.rows / 1_000)
         counting = counts.seconds(size) * (2.0 if parts else 1.5)
         summing = [] if moments is None else [moments.seconds(size)]
-        searching = sum(len(stage) * 2.0 ** len(stage) * columns * 2e-8 for stage in stages) + 0.02 * columns / 10
+        families = 1e-6 * columns * comb(columns, size - 1)
+        searching = sum(len(stage) * 2.0 ** len(stage) * columns * 2e-8 for stage in stages) + families
         scoring = 0.001 * columns * max_parents + 1.5e-4 * columns * thousands
         if moments is not None:
-            scoring += len(moments.numbers.columns) * max_parents * (0.006 + 0.0003 * thousands)
-        weighing = sum(len(stage) * (4.0 ** min(len(stage), 10)) * 2e-7 for stage in stages) + 0.003 * columns
-        trying = 0.003 * columns * min(thousands, 20.0)
+            scoring += len(moments.numbers.columns) * max_parents * (0.0015 + 0.0001 * thousands)
+        weighing = sum(_weighing(len(stage)) for stage in stages) + families
+        trying = 0.002 * columns * min(thousands, 5.0)
         self.steps = [counting, *summing, searching, weighing, *[searching + scoring] * parts, trying]
         self.at = -1
         self.words = ""
@@ -77,6 +80,10 @@ class Saying:
         self.fraction = min(max(done / sum(self.steps), self.fraction), 1.0)
         self.still()
 
+    def expect_of_last(self, seconds: float) -> None:
+        """The last step takes about so long."""
+        self.steps[-1] = seconds
+
     def still(self) -> None:
         """No further yet, but a chance to cancel."""
         if self.progress is not None:
@@ -85,3 +92,9 @@ class Saying:
     def finish(self) -> None:
         self.fraction, self.words = 1.0, "Done"
         self.still()
+
+
+def _weighing(width: int) -> float:
+    """Roughly how long a stage of `width` columns takes to weigh, with graphs drawn."""
+    sums = 1.7e-6 * width * 3.0**width if width <= WIDEST_LAYERED else 1.6e-7 * width * 2.0**width
+    return sums + 0.012 * width
