@@ -23,7 +23,7 @@ UNIT = 4.0  # standard deviations that count as a share of 1 does, when configur
 APART = 0.4  # standard deviations: what differs by more inside a part is told as a range
 LIKE = 0.2  # standard deviations: slopes that move the number by less are told as one
 WIDER = 1.5  # times: spreads that differ by less are told as one
-DIGITS = 12  # most digits of a value that is told
+DIGITS = 14  # most digits of a value that is told: no record is kept with many more
 NINE_IN_TEN = 1.6448536269514722  # standard deviations around the mean of a normal that hold 9 in 10
 
 
@@ -69,12 +69,13 @@ def number_rules(
     numbers = network.number_parents(column)
     slopes, variance = np.asarray(node.slopes), np.asarray(node.variance)
     means = np.asarray(node.intercept) + slopes @ at
-    overall = float((weights * means).sum())
+    first = float(means.flat[0])  # far from 0 the rounding of the weights' sum would count
+    overall = first + float((weights * (means - first)).sum())
     around = float((weights * (variance + (means - overall) ** 2)).sum())
     sd = spread(column) if numbers else float(np.sqrt(around))
     told = _Told(node, numbers, tuple(spread(parent) for parent in numbers), sd)
     if reach is not None and not node.parents and around > 0.0:
-        return Rules((Said("It is on average"),), ((told.amount(overall), *told.between(*reach)),))
+        return Rules((Said("It is on average"),), ((told.amount(overall), *told.between(*reach, overall)),))
     found = parts(categories, (means - overall) / (UNIT * told.scale), weights)
     found.sort(key=lambda part: (-part.share, part.held))
     lines = [_line(part, slopes, variance, weights) for part in found]
@@ -153,12 +154,15 @@ class _Told:
         near, far = sorted((low, high), key=abs)
         return (Said(_digits(abs(near)), "figure"), Said(" to "), *_change(far), *each)
 
-    def between(self, low: float, high: float) -> Words:
-        """, and 9 in 10 records lie between 2 and 40"""
-        ends, most = (self.amount(low), self.amount(high)), Said("9 in 10", "figure")
+    def between(self, low: float, high: float, mean: float) -> Words:
+        """, and 9 in 10 records lie between 2 and 40; within 1 of the mean where both read alike, far from 0."""
+        ends, most = (self.amount(low), self.amount(high)), (Said(", and "), Said("9 in 10", "figure"))
+        if low == high:
+            return (*most, Said(" records are "), ends[0])
         if ends[0] == ends[1]:
-            return (Said(", and "), most, Said(" records are "), ends[0])
-        return (Said(", and "), most, Said(" records lie between "), ends[0], Said(" and "), ends[1])
+            width = Said(_digits(max(high - mean, mean - low)), "figure")
+            return (*most, Said(" records lie within "), width, Said(" of that"))
+        return (*most, Said(" records lie between "), ends[0], Said(" and "), ends[1])
 
     def _within(self, sds: tuple[float, float, float]) -> Words:
         low, usual, high = (NINE_IN_TEN * sd for sd in sds)

@@ -41,7 +41,8 @@ class Typical:
 
     def mean(self, number: str) -> float:
         """The mean of a number."""
-        return float(self.weights @ self.rows.values[number])
+        values = self.rows.values[number]
+        return float(values[0] + self.weights @ (values - values[0]))  # the weights' sum is rounded: it may lie far off
 
     def sd(self, number: str) -> float:
         """The standard deviation of a number."""

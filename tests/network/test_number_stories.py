@@ -10,6 +10,7 @@ import engine
 from engine.network.conditional import number_rows
 from engine.network.drawn import drawn
 from engine.network.merging import MOST
+from engine.network.number_rules import number_rules
 from tests.network.mixed_made import mixed_networks, school
 from tests.network.test_mixed_networks import DEPTH, FLOW, RAIN, WET
 
@@ -114,6 +115,21 @@ def test_records_tell_where_nine_in_ten_lie_of_a_number_without_parents():
     model = engine.learn(engine.Table.from_frame(frame), engine.Order([("A", ["g", "x"])]), folds=False).model(0)
     low, high = np.quantile(values, [0.05, 0.95], method="inverted_cdf")
     assert f"and 9 in 10 records lie between {low:.1f} and {high:.1f}." in model.story("x")
+
+
+@pytest.mark.parametrize(
+    ("mean", "sd", "reach", "words"),
+    [
+        (1e9, 1e-3, (1e9 - 1.6e-3, 1e9 + 1.6e-3), "lie between 999,999,999.9984 and 1,000,000,000.0016"),
+        (1e15, 1.0, (1e15 - 2.0, 1e15 + 1.0), "lie within 2 of that"),
+        (3.0, 1.0, (3.0, 3.0), "are 3"),
+    ],
+)
+def test_where_nine_in_ten_records_lie_is_told_to_what_their_spread_supports(mean, sd, reach, words):
+    net = engine.Model.from_network([engine.Number("x", [], mean, [], sd**2)]).network
+    assert number_rules(net, "x", np.ones(()), np.zeros(0), lambda name: sd, reach).text == (
+        f"It is on average {mean:,.0f}, and 9 in 10 records {words}."
+    )
 
 
 def test_a_figure_far_from_0_has_no_more_digits_than_are_read():
