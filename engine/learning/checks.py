@@ -12,13 +12,17 @@ from engine.learning.folds import FOLDS
 from engine.learning.search import check_widths
 from engine.order import Direction, Order
 from engine.records.spikes import refuse_collinear, taken_as_bands
-from engine.records.table import Coded, Column, Table
+from engine.records.table import SMALL_COUNT, Coded, Column, Table
+from engine.records.wording import people
 from engine.refusal import Refusal, quoted, whole
 
 FEWEST_ROWS = 30
 MOST_LEVELS = 50
 MOST_PARENTS = 5
 SMALLEST, LARGEST = 1e-100, 1e100
+DIGITS = 1e-10  # of its mean that a number must vary by: a float has 16 digits, and products of it need some
+KEEP = "Bring more records, or keep those that blanks have dropped."
+CHOSEN = "You chose it."  # all that a column says of why it is left out when only the user's choice speaks for it
 
 
 def check_table(table: Table, order: Order) -> None:
@@ -41,10 +45,11 @@ def check_table(table: Table, order: Order) -> None:
                 do="Take it out of the order.",
             )
         if table.columns[name].kind == "left out":
+            why = table.columns[name].why
             raise Refusal(
-                f"The column {quoted(name)} is left out of the records but stands in the order.",
+                f"The column {quoted(name)} is left out of the records but stands in the order. {why}",
                 where=name,
-                do="Take it out of the order, or give it a kind.",
+                do="Take it out of the order, or give it a kind." if why == CHOSEN else "Take it out of the order.",
             )
         if not table.columns[name].used:
             raise Refusal(
@@ -69,13 +74,32 @@ def check_limits(max_links: int | None, max_parents: int, graphs: int, seed: int
     whole(seed, "seed", 0, "Give a whole number, 0 or more.")
 
 
-def check_rows(rows: int) -> None:
-    """Raises Refusal for fewer records than FEWEST_ROWS."""
+def check_rows(table: Table) -> None:
+    """Raises Refusal for fewer records than FEWEST_ROWS, and for records whose weights make them worth fewer."""
+    _check_count(table.rows, "Bring more records." if not any(table.dropped.values()) else KEEP)
+    weight = next((name for name, column in table.columns.items() if column.kind == "weight"), "weight")
+    _check_worth(table.weights, weight)
+
+
+def _check_count(rows: int, do: str) -> None:
     if rows < FEWEST_ROWS:
         raise Refusal(
-            f"There are {rows} records to learn from; at least {FEWEST_ROWS} are needed.",
+            f"There are {people(rows, SMALL_COUNT)} records to learn from; at least {FEWEST_ROWS} are needed.",
             where="records",
-            do="Bring more records, or keep those that blanks have dropped.",
+            do=do,
+        )
+
+
+def _check_worth(weights: np.ndarray, where: str) -> None:
+    """By Kish's effective size, which the scale of the weights does not change."""
+    shares = weights / weights.max()
+    worth = float(shares.sum() ** 2 / (shares**2).sum())
+    if worth < FEWEST_ROWS * (1.0 - 1e-9):
+        raise Refusal(
+            f"By their weights the {weights.size:,} records are worth {people(int(worth), SMALL_COUNT)} of equal "
+            f"weight; at least {FEWEST_ROWS} are needed to learn from.",
+            where=where,
+            do="Bring more records, or give them weights that are nearer to each other.",
         )
 
 
@@ -85,7 +109,8 @@ def check_coded(coded: Coded, order: Order) -> None:
         raise AssertionError("the coded columns are not those of the order")
     if not coded.names:
         raise Refusal("The order holds no column.", where="stages", do="Put at least one column into a stage.")
-    check_rows(coded.codes.shape[0])
+    _check_count(coded.codes.shape[0], "Bring more records.")
+    _check_worth(coded.weights, "weight")
     for place, (name, levels) in enumerate(zip(coded.names, coded.levels, strict=True)):
         if place in coded.numbers:
             _check_values(name, coded.values[:, coded.numbers.index(place)])
@@ -114,9 +139,9 @@ def check_groups(group: np.ndarray | None) -> None:
     groups = FOLDS if group is None else int(np.unique(group).size)
     if groups < FOLDS:
         raise Refusal(
-            f"The records belong to {groups} groups; at least {FOLDS} are needed to hold out parts of them.",
+            f"The records belong to too few groups to hold out {FOLDS} parts of them.",
             where="group",
-            do="Take another column as the group, or none.",
+            do=f"Take a column of at least {FOLDS} groups, or none.",
         )
 
 
@@ -140,7 +165,7 @@ def numbers_to_learn(
 
 
 def _check_size(column: Column) -> None:
-    """Raises Refusal where squares of a number, or of its differences, leave what a float holds."""
+    """Raises Refusal where squares of a number, or of its differences, leave what a float holds or its digits."""
     values = np.asarray(column.values)
     apart, largest = float(values.max() / 2 - values.min() / 2), float(np.abs(values).max())
     if apart < SMALLEST or largest > LARGEST:
@@ -149,6 +174,12 @@ def _check_size(column: Column) -> None:
             "learned from as numbers.",
             where=column.name,
             do="Give them in another unit.",
+        )
+    if 0.0 < float(values.std()) < DIGITS * abs(float(values.mean())):
+        raise Refusal(
+            f"The values of {quoted(column.name)} are too close together for their size to be learned from as numbers.",
+            where=column.name,
+            do="Take the same amount off each of them.",
         )
 
 

@@ -56,7 +56,7 @@ def learn(
     """
     check_table(table, order)
     check_limits(max_links, max_parents, graphs, seed)
-    check_rows(table.rows)
+    check_rows(table)
     look = Looking(progress)
     numbers, notes = numbers_to_learn(table, order, max_parents, look.within)
     coded = table.coded(order.columns, numbers, partial(_linked, order))

@@ -45,6 +45,28 @@ def test_an_order_with_a_column_that_cannot_be_learned_is_refused(evening_school
     assert refused.value.where == column and refused.value.do
 
 
+@pytest.mark.parametrize(
+    ("kind", "says", "do"),
+    [
+        (None, "It holds dates", "Take it out of the order."),
+        ("left out", "You chose it. It holds dates", "Take it out of the order."),
+    ],
+)
+def test_a_column_left_out_is_refused_with_the_reason(evening_school, kind, says, do):
+    frame = evening_school.frame.assign(day=[f"2020-{1 + n % 12:02}-{1 + n % 28:02}" for n in range(300)])
+    table = Table.from_frame(frame, kinds={} if kind is None else {"day": kind})
+    with pytest.raises(Refusal, match=says) as refused:
+        learn(table, Order([("Life", ["shift", "day"])]))
+    assert refused.value.where == "day" and refused.value.do == do
+
+
+def test_a_column_that_was_only_chosen_to_be_left_out_may_be_given_a_kind(evening_school):
+    table = Table.from_frame(evening_school.frame, kinds={"shift": "left out"})
+    with pytest.raises(Refusal, match=r"stands in the order\. You chose it\.") as refused:
+        learn(table, Order([("Life", ["shift", "hours"])]))
+    assert "give it a kind" in refused.value.do
+
+
 @pytest.mark.parametrize("better", [MORE, LESS])
 def test_more_or_less_of_a_plain_category_is_refused(evening_school, better):
     stages = [("Life", ["shift", "hours"]), ("Result", ["passed"])]

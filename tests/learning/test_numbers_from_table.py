@@ -68,6 +68,7 @@ def test_the_users_cuts_are_the_bands_through_which_a_number_acts():
         ({"minutes": np.full(400, 3.5)}, "same value in “minutes”", "minutes"),
         ({"minutes": night_bus()["minutes"] * 1e120}, "“minutes” are too large", "minutes"),
         ({"minutes": night_bus()["minutes"] * 1e-120}, "“minutes” are too close together", "minutes"),
+        ({"minutes": night_bus()["minutes"] + 1e15}, "“minutes” are too close together for their size", "minutes"),
         ({"fare": night_bus()["minutes"] * 2.0 + 1.0}, "follows exactly from “minutes”", "fare"),
     ],
 )
@@ -80,8 +81,26 @@ def test_numbers_that_cannot_be_learned_from_are_refused_by_name(change, says, w
 
 
 def test_too_few_records_of_numbers_are_refused():
-    with pytest.raises(Refusal, match="29 records"):
+    with pytest.raises(Refusal, match="29 records") as refused:
         learn(Table.from_frame(night_bus(29), kinds={"minutes": "number"}), ORDER)
+    assert "blanks" not in refused.value.do
+    dropping = Table.from_frame(night_bus(30), kinds={"minutes": "number"}, blanks={"waited": "drop row"})
+    assert dropping.rows < 30
+    with pytest.raises(Refusal) as refused:
+        learn(dropping, ORDER)
+    assert "keep those that blanks have dropped" in refused.value.do
+
+
+def test_a_number_that_varies_enough_for_its_size_is_learned():
+    frame = night_bus().assign(minutes=night_bus()["minutes"] + 1e9)
+    assert learn(Table.from_frame(frame, kinds={"minutes": "number"}), ORDER, folds=False).rows == 400
+
+
+def test_weights_that_leave_too_little_are_refused_by_their_column():
+    frame = night_bus().assign(counts=np.r_[np.full(12, 1e6), np.ones(388)])
+    with pytest.raises(Refusal, match="the 400 records are worth 12 of equal weight") as refused:
+        learn(Table.from_frame(frame, kinds={"counts": "weight"}), ORDER)
+    assert refused.value.where == "counts" and refused.value.do
 
 
 def test_an_outcome_may_be_more_of_a_number_or_its_bands():
@@ -101,7 +120,8 @@ def test_a_column_that_says_how_records_count_is_not_learned_from(kind):
         learn(table, Order([("All", ("counts", *COLUMNS))]))
     assert refused.value.where == "counts" and refused.value.do
     learned = learn(table, ORDER)
-    assert np.array_equal(learned.coded.weights, table.weights)
+    used = table.coded(ORDER.columns, (), lambda one, other: ORDER.may_lead(one, other) or ORDER.may_lead(other, one))
+    assert np.array_equal(learned.coded.weights, used.weights)
     assert (learned.coded.group is None) == (kind == "weight")
 
 

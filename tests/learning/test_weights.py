@@ -38,11 +38,29 @@ def test_a_weight_counts_as_that_many_records(numbers):
             assert getattr(left, what, 0.0) == pytest.approx(getattr(right, what, 0.0), rel=1e-9, abs=1e-9)
 
 
-def test_halving_every_weight_makes_support_less_sure():
-    coded = records(rows=60, seed=3)
-    sure = learn_coded(coded, ORDERS[1], folds=False).posterior.support
-    less = learn_coded(replace(coded, weights=np.full(60, 0.25)), ORDERS[1], folds=False).posterior.support
-    assert less.max() < sure.max()
+@pytest.mark.parametrize("numbers", [(), (1, 3)])
+def test_two_records_of_half_a_weight_are_learned_from_as_one(numbers):
+    coded = records(rows=60, seed=3, numbers=numbers)
+    twice = np.tile(np.arange(60), 2)
+    halves = replace(coded, codes=coded.codes[twice], values=coded.values[twice], weights=np.full(120, 0.5))
+    one, other, double = (
+        learn_coded(each, ORDERS[1], folds=False).posterior.support
+        for each in (coded, halves, replace(halves, weights=np.ones(120)))
+    )
+    assert other == pytest.approx(one, abs=1e-8)
+    assert abs(double - one).max() > 0.01  # so the weights are looked at
+
+
+@pytest.mark.parametrize("scale", [1e-3, 1.0])
+def test_weights_that_make_the_records_worth_too_few_are_refused(scale):
+    coded = weighted((), scale * np.r_[np.full(25, 100.0), np.full(75, 0.01)])
+    with pytest.raises(Refusal, match="the 100 records are worth 25 of equal weight; at least 30") as refused:
+        learn_coded(coded, ORDERS[0])
+    assert refused.value.where and refused.value.do
+    few = weighted((), np.r_[1e6, np.ones(99)])
+    with pytest.raises(Refusal, match="worth under 10 of equal weight"):
+        learn_coded(few, ORDERS[0])
+    assert learn_coded(weighted((), scale * np.r_[np.full(30, 100.0), np.full(70, 0.01)]), ORDERS[0]).rows == 100
 
 
 @pytest.mark.parametrize("block", [7, 16_384])
@@ -103,7 +121,7 @@ def test_learning_holds_groups_out_whole():
 
 def test_fewer_groups_than_parts_to_hold_out_are_refused():
     coded = replace(records(rows=80), group=np.arange(80, dtype=np.int32) % 4)
-    with pytest.raises(Refusal, match="belong to 4 groups; at least 5") as refused:
+    with pytest.raises(Refusal, match="too few groups to hold out 5 parts") as refused:
         learn_coded(coded, ORDERS[0])
     assert refused.value.where and refused.value.do
     assert learn_coded(coded, ORDERS[0], folds=False).rows == 80
