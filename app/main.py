@@ -13,7 +13,8 @@ from starlette.exceptions import HTTPException
 from app import assets
 from app.guard import Guard
 from app.jobs import Jobs
-from app.pages import answer, ask, model, order, records, shelf
+from app.judging import JudgingJobs
+from app.pages import answer, ask, model, order, records, shelf, trust
 from app.refusing import refuse, refuse_address, refuse_values
 from app.settings import Settings
 from app.store import Store
@@ -26,10 +27,11 @@ def create_app(settings: Settings) -> FastAPI:
     app.state.settings = settings
     app.state.store = Store(settings.data)
     app.state.jobs = Jobs(app.state.store)
+    app.state.judging = JudgingJobs(app.state.store)
     app.state.templates = assets.templates()
 
     app.add_middleware(Guard, settings=settings)
-    for page in (shelf, records, order, model, ask, answer):
+    for page in (shelf, records, order, model, trust, ask, answer):
         for route in page.router.routes:
             if isinstance(route, APIRoute) and route.methods and "GET" in route.methods:
                 route.methods.add("HEAD")  # as every other route answers it
@@ -47,4 +49,5 @@ async def _running(app: FastAPI) -> AsyncIterator[None]:
     app.state.jobs.warm()
     yield
     app.state.jobs.close()
+    app.state.judging.close()
     app.state.store.close()

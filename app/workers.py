@@ -1,4 +1,4 @@
-"""What runs in processes of its own: learning, and reading files that nobody vouches for.
+"""What runs in processes of its own: learning, judging, and reading files that nobody vouches for.
 
 A process can be ended at any moment without harm to the server. Where the system allows, children are forked from a
 small server that has the engine loaded already; elsewhere each starts afresh and takes a second or so longer.
@@ -25,6 +25,7 @@ import pandas as pd
 import engine
 from app.store.rows import table_of
 from app.store.values import Choices, Plan
+from engine.judging.archive import as_text
 from engine.records import read_frame
 from engine.refusal import Refusal
 
@@ -72,6 +73,24 @@ def learn_study(
         return ("done",)
 
     report(pipe, learn)
+
+
+def judge_study(
+    pipe: Connection, records: Path, name: str, choices: str, learned: Path, links: int | None, out: Path
+) -> None:
+    """Judge the model of `links` links in the learned file and write the judgement to `out`. Runs in a child."""
+
+    def judge() -> Report:
+        def progress(fraction: float, words: str) -> None:
+            pipe.send(("progress", float(fraction), str(words)))
+
+        progress(0.0, "Opening the records")
+        table = table_of(pd.read_parquet(records), Choices.from_json(choices), name)
+        judgement = engine.judge(engine.open_learned(learned), table, progress, links)
+        out.write_text(as_text(judgement), encoding="utf-8")
+        return ("done",)
+
+    report(pipe, judge)
 
 
 def parse_upload(pipe: Connection, path: Path, name: str, out: Path, memory: int) -> None:

@@ -9,7 +9,7 @@ from typing import Literal
 
 from markupsafe import Markup
 
-from app.drawing.scale import PER_CENT, Scale
+from app.drawing.scale import PER_CENT, Scale, Tick
 from app.drawing.svg import INK, LINE, PAPER, join, percent, tag
 
 World = Literal["recorded", "among", "set"]
@@ -20,6 +20,7 @@ WIDE = 0.23  # of the width that the longest label takes on a wide page
 NARROW = {"recorded": 0.46, "among": 0.46, "set": 0.27}  # and on 360 px
 FIGURE = 0.18  # of 360 px that the figure alone takes
 LETTERS, WIDER = 4, (0.011, 0.026)  # of a figure, all told in the above; what each more takes, wide and at 360 px
+LETTER = 0.0115, 0.026  # of the width that a letter of a figure takes under the rule, wide and at 360 px
 ROOM = 80  # letters of figures that stand clear of each other under the rule
 
 
@@ -74,17 +75,24 @@ def graduation(rule: int, scale: Scale = PER_CENT) -> Markup:
         x = f"{100 * tick.place:.6g}%"
         drawn.append(_line(x, x, rule, rule + length, width, shown=narrow))
     figures = [tick for tick in ticks if not tick.rank]
-    crowded = sum(len(tick.words) + 1 for tick in figures) > ROOM
+    crowded = sum(len(tick.words) + 1 for tick in figures) - len(scale.behind) > ROOM
+    last = len(figures) - 1
     for place, tick in enumerate(figures):
-        last = len(figures) - 1
         odd = (last - place) % 2 == 1 and place > 0
-        if odd and crowded:
+        covered = [place < last and _covered(tick, figures[last], letter) for letter in LETTER]
+        if (odd and crowded) or covered[0]:
             continue
         anchor = "start" if place == 0 else "end" if place == last else "middle"
-        classes = "figure t10" if odd else "figure"
+        classes = "figure t10" if odd or covered[1] else "figure"
         x = f"{100 * tick.place:.6g}%"
         drawn.append(tag("text", tick.words, class_=classes, x=x, y=rule + FIGURES, text_anchor=anchor))
     return join(drawn)
+
+
+def _covered(tick: Tick, last: Tick, letter: float) -> bool:
+    """Whether the last figure, which ends on the end of the rule, comes within a letter of this one."""
+    own = len(tick.words) * (1.0 if tick.place == 0.0 else 0.5)
+    return tick.place + (own + 1) * letter > 1.0 - len(last.words) * letter
 
 
 def _line(x1: str, x2: str, y1: float, y2: float, width: float, colour: str = INK, shown: str = "") -> Markup:

@@ -29,6 +29,7 @@ class Scale:
 
     step: in the unit of the values.  fine: ticks to a step; where they are even the middle one is longer.
     times: what figures are told in; sign: of the last, and of the first when it is 0.
+    behind: what follows the last figure alone.
     """
 
     first: int
@@ -37,6 +38,7 @@ class Scale:
     fine: int = 10
     times: float = 1.0
     sign: str = ""
+    behind: str = ""
 
     @property
     def low(self) -> float:
@@ -62,6 +64,7 @@ class Scale:
                 continue
             whole = count // self.fine
             sign = self.sign if whole == self.last or (whole == self.first and not whole) else ""
+            sign += self.behind if whole == self.last else ""
             found.append(Tick(place, 0, f"{figure(_exact(whole, self.step * self.times), commas=not years)}{sign}"))
         return found
 
@@ -69,8 +72,8 @@ class Scale:
 PER_CENT = Scale(0, 10, 0.1, 10, 100.0, "%")
 
 
-def rounded_outward(low: float, high: float, also: Iterable[float] = ()) -> Scale:
-    """An axis over low to high and everything in `also`, its ends on round numbers.
+def rounded_outward(low: float, high: float, also: Iterable[float] = (), behind: str = "") -> Scale:
+    """An axis over low to high and everything in `also`, its ends on round numbers; `behind` follows its last figure.
 
     A step is 1, 2 or 5 of a power of ten, the widest that leaves FIGURES of them.
     """
@@ -80,7 +83,8 @@ def rounded_outward(low: float, high: float, also: Iterable[float] = ()) -> Scal
         room = size / 10 if size >= TINY else 1.0
         low, high = low - room, high + room
     step = round_step((high - low) / FIGURES)
-    return Scale(math.floor(low / step + 1e-9), math.ceil(high / step - 1e-9), step, FINE[f"{step:e}"[0]])
+    first, last = math.floor(low / step + 1e-9), math.ceil(high / step - 1e-9)
+    return Scale(first, last, step, FINE[f"{step:e}"[0]], behind=behind)
 
 
 def round_step(most: float) -> float:

@@ -9,7 +9,7 @@ from importlib import metadata
 from itertools import combinations
 
 from app.drawing.answer_beam import World
-from app.pages.ask_view import RANKS, WORDS
+from app.pages.ask_view import RANKS, WORDS, heading
 from app.pages.asking import DRAWS, EACH, SEED, Asked
 from app.store import Study
 from app.wording.amounts import listing
@@ -19,6 +19,7 @@ from app.wording.figures import counted, records, share
 from app.wording.links import SETTLED, strength
 from app.wording.numbers import amount
 from app.wording.parts import plain
+from app.wording.units import of_change
 from app.wording.values import either, had_before, value
 from engine.answering.answer import Caution
 from engine.doubting.direction import between
@@ -60,7 +61,7 @@ def today() -> str:
 
 def watched_words(asked: Asked) -> str:
     wanted = asked.wanted(asked.watch)
-    return plain(value(asked.spine.nodes[asked.watch], wanted)) if wanted else f"{asked.watch}, on average"
+    return plain(value(asked.spine.nodes[asked.watch], wanted)) if wanted else heading(asked)
 
 
 def numbers(asked: Asked) -> list[Line]:
@@ -80,9 +81,10 @@ def numbers(asked: Asked) -> list[Line]:
     change = found.gap if not question.levers else None if asked.blocked else found.change
     if change is not None and question.touched:
         words = "Change if set" if question.levers else "Difference to all records"
-        unit = "" if found.of_a_number else ", points"
+        unit = of_change(found.unit) if found.of_a_number else "points"
         known = "" if change.known else change.interval
-        lines.append(Line(f"{words}{unit}", change.difference.split()[0], known, look="sum"))
+        label = f"{words}, {unit}" if unit else words
+        lines.append(Line(label, change.difference.split()[0], known, look="sum"))
     if told := _counted(asked):
         lines.append(Line(f"Counted in the records{', among these' if question.pins else ''}", told, "", look="after"))
     pins = [(column, had_before(setting)) for column, (setting, _) in question.levers.items()]
@@ -189,7 +191,8 @@ def _reached(start: set[str], links: Sequence[tuple[str, str]]) -> set[str]:
 
 def _told(asked: Asked, source: str, target: str) -> Link:
     spine = asked.spine
-    words = strength(spine.model.strength(source, target), target in spine.numbers)
+    moved = spine.model.strength(source, target)
+    words = strength(moved, target in spine.numbers, spine.nodes[target].unit)
     settled = spine.settled_by(source, target)
     return Link(source, "goes with" if settled == "nobody" else "leads to", target, words, SETTLED[settled])
 

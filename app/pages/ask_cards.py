@@ -16,6 +16,7 @@ from app.typed import per_cent
 from app.wording.estimates import Estimate, level_estimates
 from app.wording.figures import column_figure, matching_of
 from app.wording.questions import reach_words
+from app.wording.units import behind
 from app.wording.values import either, held, setting_words
 from engine.network.nodes import Node, Number
 from engine.order import Direction
@@ -86,7 +87,7 @@ class Card:
 
 def card_of(asked: Asked, address: Address, column: str) -> Card:
     question, slug = asked.question, asked.spine.names.slugs[column]
-    number = column in asked.spine.numbers
+    number, node = column in asked.spine.numbers, asked.spine.nodes[column]
     shown, more = _shown_levels(asked, column)
     pinned, lever = question.pins.get(column), question.levers.get(column)
     whole = replace(question, whole=question.whole | {column})
@@ -94,7 +95,7 @@ def card_of(asked: Asked, address: Address, column: str) -> Card:
         name=column,
         slug=slug,
         action=address(Question()),
-        pinned=None if pinned is None else _pinned_words(asked, pinned),
+        pinned=None if pinned is None else _pinned_words(asked, node, pinned),
         set_to=None if lever is None else _set_words(asked, column, *lever),
         state=_state(asked, column),
         told=_told(asked, address, column),
@@ -107,15 +108,17 @@ def card_of(asked: Asked, address: Address, column: str) -> Card:
         else Act(f"watch-{slug}", address(question.watching(column)), f"Watch {column}"),
         lever=None if lever is None or number else _lever_line(asked, column, lever[1]),
         number=number_part(asked, column) if number else None,
-        unpin=Act(f"unpin-{slug}", address(question.unpinned(column)), f"Pinned at {held(pinned)}, take out", True)
+        unpin=_out(f"unpin-{slug}", address(question.unpinned(column)), f"Pinned at {held(node, pinned)}")
         if isinstance(pinned, Within)
         else None,
-        unset=Act(
-            f"unset-{slug}", address(question.without_lever(column)), f"Set {setting_words(lever[0])}, take out", True
-        )
+        unset=_out(f"unset-{slug}", address(question.without_lever(column)), f"Set {setting_words(node, lever[0])}")
         if number and lever is not None
         else None,
     )
+
+
+def _out(id: str, address: str, says: str) -> Act:
+    return Act(id, address, f"{says}, take out", True)
 
 
 def _shown_levels(asked: Asked, column: str) -> tuple[list[str], int]:
@@ -200,9 +203,9 @@ def _diamond(asked: Asked, address: Address, column: str, level: str, place: str
     return Act(f"set-{place}", address(question.with_lever(column, level, reach)), f"Set to {level}")
 
 
-def _pinned_words(asked: Asked, pin: Pin) -> str:
+def _pinned_words(asked: Asked, node: Node, pin: Pin) -> str:
     """The count stands here only for a single pin: with more of them one count could give another away."""
-    words = f"at {held(pin)}"
+    words = f"at {held(node, pin)}"
     matching = asked.answer.matching
     if matching is None or len(asked.question.pins) > 1 or asked.refusal is not None:
         return words
@@ -210,10 +213,10 @@ def _pinned_words(asked: Asked, pin: Pin) -> str:
 
 
 def _set_words(asked: Asked, column: str, setting: Setting, reach: float) -> str:
-    words = f"{setting_words(setting)} for {reach_words(reach)}"
+    words = f"{setting_words(asked.spine.nodes[column], setting)} for {reach_words(reach)}"
     if asked.beyond(column, setting):
-        usual = asked.usual(column)
-        words += f" · beyond every record, which run from {figure(usual.least)} to {figure(usual.most)}"
+        usual, unit = asked.usual(column), behind(asked.spine.nodes[column].unit)
+        words += f" · beyond every record, which run from {figure(usual.least)} to {figure(usual.most)}{unit}"
     return f"{words} · its effect is withheld" if asked.blocked else words
 
 

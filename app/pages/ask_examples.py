@@ -91,5 +91,8 @@ def _first_setting(asked: Asked, column: str) -> Setting:
 
 def _words(spine: Spine, question: Question) -> str:
     pins = [plain(value(spine.nodes[column], pin)) for column, pin in question.pins.items()]
-    levers = [f"{column} set {setting_words(setting)}" for column, (setting, _) in question.levers.items()]
+    levers = [
+        f"{column} set {setting_words(spine.nodes[column], setting)}"
+        for column, (setting, _) in question.levers.items()
+    ]
     return ", ".join([*pins, *levers])

@@ -15,6 +15,7 @@ from app.question import By, Question, To, Within, query
 from app.typed import per_cent, written
 from app.wording.estimates import Estimate
 from app.wording.numbers import round_value
+from app.wording.units import of_change
 from engine.answering.answer import Marginal
 from engine.answering.cutting import Gate
 from engine.answering.mixture import Mixture
@@ -53,20 +54,28 @@ class LeverForm:
 
 @dataclass(frozen=True)
 class NumberPart:
-    """means: as recorded, among these, if set; None where there is none.  levers: empty where it is not changeable."""
+    """means: as recorded, among these, if set; None where there is none.  levers: empty where it is not changeable.
+
+    unit, shift_unit: what follows a value, and the amount of a shift; empty where none is stated.
+    """
 
     strip: Markup
     means: tuple[str, str | None, str | None]
     pin: PinForm
     levers: tuple[LeverForm, ...]
+    unit: str
+    shift_unit: str
 
 
 def number_part(asked: Asked, column: str) -> NumberPart:
+    unit = asked.spine.nodes[column].unit
     return NumberPart(
         strip=_strip(asked, column),
         means=means(asked, column),
         pin=_pin_form(asked, column),
         levers=_lever_forms(asked, column) if column in asked.spine.changeable else (),
+        unit=unit,
+        shift_unit=of_change(unit),
     )
 
 

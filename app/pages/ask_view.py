@@ -55,7 +55,8 @@ def heading(asked: Asked) -> str:
     """The column in question as the key strip and the beam name it."""
     wanted = asked.wanted(asked.watch)
     if not wanted:
-        return f"{asked.watch}, on average"
+        unit = asked.spine.nodes[asked.watch].unit
+        return f"{asked.watch}, {f'{unit} ' if unit else ''}on average"
     return asked.watch if is_yes(wanted) else f"{asked.watch}: {either(wanted)}"
 
 

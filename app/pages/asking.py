@@ -15,6 +15,7 @@ from app.question import By, Pin, Question, Setting, To, Within
 from app.wording.answers import Said, answer_sentence
 from app.wording.estimates import Estimates, estimates
 from app.wording.questions import question_sentence
+from app.wording.units import behind
 from app.wording.values import Words, in_question
 from engine.answering.answer import Answer, Marginal, Reading
 from engine.answering.kept import Kept
@@ -171,9 +172,8 @@ class Asked:
         found, usual = self.estimates(column), self.usual(column)
         shown = [found.recorded, *([found.among] if self.shows_among else ())]
         shown += [found.set] if self.shows_set and found.set is not None else []
-        return rounded_outward(
-            usual.low, usual.high, [end for each in shown for end in (each.point, each.low, each.high)]
-        )
+        ends = [end for each in shown for end in (each.point, each.low, each.high)]
+        return rounded_outward(usual.low, usual.high, ends, behind(found.unit))
 
     def wanted(self, column: str) -> tuple[str, ...]:
         """The levels of a column whose share answers the question; none where its mean does."""
@@ -184,6 +184,7 @@ class Asked:
         if column not in self._estimates:
             found = estimates(self.answer[column], self.wanted(column), self.within.get(column))
             beyond = any(self.beyond(lever, setting) for lever, (setting, _) in self.question.levers.items())
+            found = replace(found, unit=self.spine.nodes[column].unit)
             self._estimates[column] = replace(found, had=None) if beyond else found
         return self._estimates[column]
 

@@ -1,4 +1,4 @@
-"""How learning stands, written down so that a reload, a second server or a restart finds it."""
+"""How learning or judging stands, written down so that a reload, a second server or a restart finds it."""
 
 from __future__ import annotations
 
@@ -17,7 +17,7 @@ SILENCE = 5.0  # seconds without a sign of life after which the server that ran 
 
 @dataclass(frozen=True)
 class JobState:
-    """How the learning of one study stands.
+    """How the learning, or the judging, of one study stands.
 
     fraction: 0 to 1.  words: what is being done.  done: what was done before, oldest first.
     started: with its time zone.  message, where, do: why it failed or stopped, as in Refusal; None while it did not.
@@ -45,21 +45,27 @@ class JobState:
         return replace(self, state=end, message=refusal.message, where=refusal.where, do=refusal.do)
 
 
-def closed() -> Refusal:
-    return Refusal("Steelyard was closed while this was learning; the study is as it was.", do="Start learning again.")
+def closed(doing: str = "learning") -> Refusal:
+    """The program ended during that work."""
+    return Refusal(f"Steelyard was closed while this was {doing}; the study is as it was.", do=f"Start {doing} again.")
 
 
 class Progress:
-    """The job of each study as the database has it, at most one a study."""
+    """The job of one kind of each study as the database has it, at most one a study.
 
-    def __init__(self, database: Database) -> None:
+    table: of the kind.  doing: the kind of work, in a word.
+    """
+
+    def __init__(self, database: Database, table: Literal["jobs", "judging"] = "jobs", doing: str = "learning") -> None:
         self._database = database
+        self._table = table
+        self._doing = doing
 
     def begin(self, key: str, state: JobState) -> None:
         """Write a new job down in place of the last one."""
         with self._database.writing() as database:
             database.execute(
-                "INSERT OR REPLACE INTO jobs (study, state, fraction, words, done, started, beat) "
+                f"INSERT OR REPLACE INTO {self._table} (study, state, fraction, words, done, started, beat) "
                 "VALUES (?, ?, ?, ?, ?, ?, ?)",
                 (key, state.state, state.fraction, state.words, "[]", state.started.isoformat(), time.time()),
             )
@@ -68,8 +74,8 @@ class Progress:
         """Write how this job stands, as a sign of life too. False when it was ended or replaced in the database."""
         with self._database.writing() as database:
             found = database.execute(
-                "UPDATE jobs SET state = ?, fraction = ?, words = ?, done = ?, beat = ?, message = ?, place = ?, "
-                "advice = ? WHERE study = ? AND started = ? AND state = 'running'",
+                f"UPDATE {self._table} SET state = ?, fraction = ?, words = ?, done = ?, beat = ?, message = ?, "
+                "place = ?, advice = ? WHERE study = ? AND started = ? AND state = 'running'",
                 (
                     *(state.state, state.fraction, state.words, json.dumps(state.done), time.time()),
                     *(state.message, state.where, state.do, key, state.started.isoformat()),
@@ -80,7 +86,7 @@ class Progress:
     def read(self, key: str) -> JobState | None:
         """How the job stands; one that runs but has been silent too long has died with its server."""
         with self._database.reading() as database:
-            row = database.execute("SELECT * FROM jobs WHERE study = ?", (key,)).fetchone()
+            row = database.execute(f"SELECT * FROM {self._table} WHERE study = ?", (key,)).fetchone()
         if row is None:
             return None
         state = JobState(
@@ -94,14 +100,16 @@ class Progress:
             do=row["advice"],
         )
         if state.state == "running" and time.time() - row["beat"] > SILENCE:
-            return state.ended("died", closed())
+            return state.ended("died", closed(self._doing))
         return state
 
     def cancel(self, key: str) -> None:
         """Mark a job of whichever server as cancelled; its own server looks here at every sign of life."""
         with self._database.writing() as database:
-            database.execute("UPDATE jobs SET state = 'cancelled' WHERE study = ? AND state = 'running'", (key,))
+            database.execute(
+                f"UPDATE {self._table} SET state = 'cancelled' WHERE study = ? AND state = 'running'", (key,)
+            )
 
     def forget(self, key: str) -> None:
         with self._database.writing() as database:
-            database.execute("DELETE FROM jobs WHERE study = ?", (key,))
+            database.execute(f"DELETE FROM {self._table} WHERE study = ?", (key,))

@@ -10,7 +10,7 @@ from pathlib import Path
 
 from engine.refusal import Refusal
 
-VERSION = 2
+VERSION = 4
 PATIENCE = 10.0  # seconds to wait for another process that is writing
 
 TABLES = """
@@ -47,9 +47,29 @@ CREATE TABLE jobs (
     place TEXT,
     advice TEXT
 ) STRICT;
+CREATE TABLE judging (
+    study TEXT PRIMARY KEY REFERENCES studies (key),
+    state TEXT NOT NULL,
+    fraction REAL NOT NULL,
+    words TEXT NOT NULL,
+    done TEXT NOT NULL,
+    started TEXT NOT NULL,
+    beat REAL NOT NULL,
+    message TEXT,
+    place TEXT,
+    advice TEXT
+) STRICT;
+CREATE TABLE judgements (
+    study TEXT PRIMARY KEY REFERENCES studies (key),
+    learned_file TEXT NOT NULL,
+    judgement TEXT NOT NULL
+) STRICT;
 """
+_TABLES = dict(zip(("studies", "jobs", "judging", "judgements"), TABLES.split(";"), strict=False))
 STEPS = {  # what brings the tables of the version before to this one
     2: "ALTER TABLE studies ADD COLUMN max_parents INTEGER NOT NULL DEFAULT 3",
+    3: _TABLES["judging"],
+    4: _TABLES["judgements"],
 }
 
 

@@ -12,6 +12,7 @@ from app.wording.figures import Change, counted, gives_away
 from app.wording.numbers import Move, amount
 from app.wording.parts import Clause, Part, name, plain, say, series
 from app.wording.questions import Nodes, among
+from app.wording.units import apart, behind, of_change
 from app.wording.values import Words, had_before, is_at, is_yes, set_to, subject, value
 from engine.answering.answer import Counted
 from engine.network.nodes import Node
@@ -101,7 +102,8 @@ def counted_sentence(
     if not wanted:
         mean = "" if count.mean is None else amount(count.mean, decimals)
         told = Part(mean, "recorded")
-        return say("Counted in the records: mean ", told, f" over {count.rows:,} records.") if mean else []
+        over = f"{behind(nodes[watch].unit)} over {count.rows:,} records."
+        return say("Counted in the records: mean ", told, over) if mean else []
     have = say("have ", value(nodes[watch], wanted))
     if not count.tellable(wanted):
         return say("How many records ", have, f" is not shown: it would give a count under {small} away.")
@@ -130,10 +132,9 @@ def also_sentence(
 
 
 def bracket(found: Estimates, change: Change | Move) -> str:
-    """(+9 points, 90% interval +1 to +17)"""
-    if change.known:
-        return f"({change.difference})"
-    return f"({change.difference}, {found.interval} {change.interval})"
+    """(+9 points, 90% interval +1 to +17), of a mean (+2.1 hours, 90% interval +0.4 to +3.8)"""
+    difference = apart(change.difference, found.unit) if found.of_a_number else change.difference
+    return f"({difference})" if change.known else f"({difference}, {found.interval} {change.interval})"
 
 
 def _moved(question: Question, watch: str, wanted: tuple[str, ...], found: Estimates, nodes: Nodes, thin: bool) -> Said:
@@ -142,7 +143,7 @@ def _moved(question: Question, watch: str, wanted: tuple[str, ...], found: Estim
     start, end = found.change.ends
     from_to = say("from ", Part(start, "among" if question.pins else "recorded"), " to ", Part(end, "set"))
     estimate = "By this estimate, most of it filled in by the model, " if thin else "By this estimate, "
-    opening = say(estimate, _group(question, nodes), _settings(question))
+    opening = say(estimate, _group(question, nodes), _settings(question, nodes))
     moving = (" would move ", what, " ") if found.change.moves else (" may not move ", what, ": ")
     return _said(say(opening, *moving, from_to, _mean(found)), f"{bracket(found, found.change)}.")
 
@@ -156,7 +157,7 @@ def _unmoved(
     apart: Collection[str],
 ) -> Said:
     """What no lever can move: nothing leads there from those that reach anyone who has not the value already."""
-    opening = _capital(say(_group(question, nodes), _settings(question, reaches=False)))
+    opening = _capital(say(_group(question, nodes), _settings(question, nodes, reaches=False)))
     away = [name(column) for column in question.levers if column in apart]
     idle = [name(column) for column, (_, reach) in question.levers.items() if column not in apart and not reach]
     kept = [column for column, (_, reach) in question.levers.items() if column not in apart and reach]
@@ -179,7 +180,7 @@ def _unmoved(
         why = say(why, ", and ", series(idle), f" {'is' if len(idle) == 1 else 'are'} set for 0% of {whom}")
     stays = say(" stays at ", Part(found.figure(found.among), "set"), _mean(found))
     if found.doubted and found.change is not None and not found.change.known:
-        unit = "" if found.of_a_number else " points"
+        unit = behind(of_change(found.unit)) if found.of_a_number else " points"
         stays = say(stays, f" in this model; {found.interval} over sampled models {found.change.interval}{unit}")
     still = say("(", subject(nodes[watch], wanted), stays, ")")
     return _said(say(opening, " would not move ", name(watch), ": ", why, "."), still)
@@ -189,7 +190,7 @@ def _withheld(
     question: Question, watch: str, wanted: tuple[str, ...], found: Estimates, nodes: Nodes, records: int | None
 ) -> Said:
     what = subject(nodes[watch], wanted)
-    words = say("These records cannot say what ", _settings(question), " would do to ", what, ".")
+    words = say("These records cannot say what ", _settings(question, nodes), " would do to ", what, ".")
     it_is = "it is " if is_yes(wanted) or found.of_a_number else "that is "
     if question.pins:
         recorded, here = found.gap.ends
@@ -209,13 +210,14 @@ def _group(question: Question, nodes: Nodes) -> Words:
     return say(among(question, nodes), ", ") if question.pins else []
 
 
-def _settings(question: Question, reaches: bool = True) -> Words:
+def _settings(question: Question, nodes: Nodes, reaches: bool = True) -> Words:
     """setting *L* to *l* for 80% of them and *M* to *m*, raising *N* by *n*: a verb stands once for those it rules."""
     whom = "them" if question.pins else "all records"
     by_verb: dict[str, list[Words]] = {}
     for column, (setting, reach) in question.levers.items():
         part_of = "" if reach == 1.0 or not reaches else f" for {per_cent(reach)}% of {whom}"
-        words = say(name(column), " by " if isinstance(setting, By) else " to ", name(set_to(setting)), part_of)
+        to = name(set_to(nodes[column], setting))
+        words = say(name(column), " by " if isinstance(setting, By) else " to ", to, part_of)
         by_verb.setdefault(_verb(setting), []).append(words)
     return series([say(f"{verb} ", series(found)) for verb, found in by_verb.items()])
 
@@ -227,12 +229,15 @@ def _verb(setting: Setting) -> str:
 
 
 def _is(node: Node, wanted: tuple[str, ...], here: Part) -> Words:
-    """*Y* is *y* for 61%; *hours* is 12.3 on average"""
-    return say(is_at(node, wanted), " for ", here) if wanted else say(name(node.name), " is ", here, " on average")
+    """*Y* is *y* for 61%; *hours* is 12.3 a week on average"""
+    if wanted:
+        return say(is_at(node, wanted), " for ", here)
+    return say(name(node.name), " is ", here, f"{behind(node.unit)} on average")
 
 
 def _mean(found: Estimates) -> str:
-    return " on average" if found.of_a_number else ""
+    """What follows the last figure of a mean: its unit, and what it is."""
+    return f"{behind(found.unit)} on average" if found.of_a_number else ""
 
 
 def _against(recorded: str, found: Estimates) -> str:

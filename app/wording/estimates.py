@@ -40,6 +40,7 @@ class Estimates:
 
     gap: from as recorded to among these.  change: from among these to if set; None without levers.
     decimals: of a mean; None for shares.  doubted: whether the intervals are over sampled models.
+    unit: of the number, which its figures leave to the sentence.
     """
 
     recorded: Estimate
@@ -50,6 +51,7 @@ class Estimates:
     change: Change | Move | None = None
     decimals: int | None = None
     doubted: bool = False
+    unit: str = ""
 
     @property
     def interval(self) -> str:

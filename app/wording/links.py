@@ -6,6 +6,7 @@ from collections.abc import Sequence
 
 from app.wording.amounts import count, listing, plural, small_word
 from app.wording.figures import share
+from app.wording.units import apart
 from engine.records.wording import figure
 
 SETTLED = {
@@ -43,10 +44,10 @@ def support(likely: float) -> str:
     return share(min(max(likely, 1e-6), 1 - 1e-6))
 
 
-def strength(moved: float, of_a_number: bool = False) -> str:
+def strength(moved: float, of_a_number: bool = False, unit: str = "") -> str:
     """How far a link moves its child: a share, 0 to 1, in points; the mean of a number in its own unit."""
     if of_a_number:
-        return f"{figure(float(f'{moved:.2g}'))} on average"
+        return f"{apart(figure(float(f'{moved:.2g}')), unit)} on average"
     if 0 < moved < 0.005:
         return "under 1 point"
     rounded = round(100 * moved)

@@ -41,7 +41,7 @@ def _levers(levers: Mapping[str, Lever], nodes: Nodes) -> Words:
     found: list[Words] = []
     for column, (setting, reach) in levers.items():
         verb = f" were {'raised' if setting.amount > 0 else 'lowered'} by " if isinstance(setting, By) else " were "
-        parts = (name(column), Part(verb), name(set_to(setting)))
+        parts = (name(column), Part(verb), name(set_to(nodes[column], setting)))
         found.append(say(Clause("set", column, parts), f" for {reach_words(reach)}"))
     return series(found)
 

@@ -20,7 +20,7 @@ def apart(difference: str, unit: str) -> str:
     return f"{difference} {'point' if difference.lstrip('+−') == '1' else 'points'}"
 
 
-def between(unit: str) -> str:
+def of_change(unit: str) -> str:
     """The unit of a difference, by itself: minutes; points for per cent."""
     return "points" if unit.startswith("%") else unit
 

@@ -1,4 +1,4 @@
-"""A column at a value, in words: shift work = nights or mixed; travel time 20 to under 45."""
+"""A column at a value, in words: shift work = nights or mixed; travel time 20 to under 45 minutes."""
 
 from __future__ import annotations
 
@@ -6,6 +6,7 @@ from collections.abc import Sequence
 
 from app.question import By, Pin, Setting, To, Within
 from app.wording.parts import Clause, Part, name
+from app.wording.units import apart, band, behind
 from engine.network.nodes import Node, Number
 from engine.order import Better, better_levels
 from engine.records.wording import figure
@@ -17,37 +18,41 @@ YES = ("yes",)
 def value(node: Node, pin: Pin) -> Words:
     """The column at these levels, or in this range."""
     if pin.value is None if isinstance(pin, Within) else _is_range(node, pin):
-        return [name(node.name), Part(f" {held(pin)}")]
-    return [name(f"{node.name} = {held(pin)}")]
+        return [name(node.name), Part(f" {held(node, pin)}")]
+    return [name(f"{node.name} = {held(node, pin)}")]
 
 
-def held(pin: Pin) -> str:
-    """What a pin sees: nights or mixed; 5 to under 12; 7."""
+def held(node: Node, pin: Pin) -> str:
+    """What a pin sees: nights or mixed; 5 to under 12 hours; 7 hours."""
     if not isinstance(pin, Within):
-        return either(pin)
+        return band(either(pin), node.unit) if _is_range(node, pin) else either(pin)
     if pin.value is not None:
-        return figure(pin.value)
+        return f"{figure(pin.value)}{behind(node.unit)}"
+    return band(_range(pin), node.unit)
+
+
+def _range(pin: Within) -> str:
     if pin.low is None or pin.high is None:
         return f"{figure(pin.low)} and over" if pin.low is not None else f"under {figure(pin.high or 0.0)}"
     return f"{figure(pin.low)} to under {figure(pin.high)}"
 
 
-def set_to(setting: Setting) -> str:
-    """What a lever sets: yes; 12; of a shift the amount, without its sign."""
+def set_to(node: Node, setting: Setting) -> str:
+    """What a lever sets: yes; 12 hours; of a shift the amount, without its sign."""
     match setting:
         case To(number):
-            return figure(number)
+            return f"{figure(number)}{behind(node.unit)}"
         case By(amount):
-            return figure(abs(amount))
+            return apart(figure(abs(amount)), node.unit)
         case level:
             return level
 
 
-def setting_words(setting: Setting) -> str:
-    """A lever after "set": to yes; to 12; 2 higher."""
+def setting_words(node: Node, setting: Setting) -> str:
+    """A lever after "set": to yes; to 12 hours; 2 hours higher."""
     if isinstance(setting, By):
-        return f"{set_to(setting)} {'higher' if setting.amount > 0 else 'lower'}"
-    return f"to {set_to(setting)}"
+        return f"{set_to(node, setting)} {'higher' if setting.amount > 0 else 'lower'}"
+    return f"to {set_to(node, setting)}"
 
 
 def had_before(setting: Setting) -> Pin | None:
@@ -63,7 +68,7 @@ def had_before(setting: Setting) -> Pin | None:
 
 def is_at(node: Node, levels: Sequence[str], verb: str = "is") -> Words:
     """The column is at these levels, as the verb of a sentence."""
-    words = Part(either(levels)) if _is_range(node, levels) else name(either(levels))
+    words = Part(held(node, tuple(levels))) if _is_range(node, levels) else name(either(levels))
     return [name(node.name), Part(f" {verb} "), words]
 
 

@@ -46,6 +46,7 @@ def judge(learned: Learned, table: Table, progress: Progress | None = None, link
             where="table",
             do="Learn again, then judge.",
         )
+    import sklearn.ensemble  # noqa: F401  loaded first, for only threads of what is loaded are limited
     from threadpoolctl import threadpool_limits
 
     with threadpool_limits(1):  # threads that wait for each other cost more than they bring
@@ -78,7 +79,10 @@ def _judged(learned: Learned, table: Table, size: int, say: _Saying) -> Judgemen
 
 
 def _scores(again: Relearned, order: Order, say: _Saying) -> tuple[tuple[ColumnScore, ...], tuple[str, ...]]:
-    """Outcomes first, then changeable columns, then the others, each as the order lists them."""
+    """Outcomes first, then the others, as the order lists them; and columns that the yardstick was not tried on.
+
+    It is tried on outcomes first, then on changeable columns.
+    """
     coded = again.coded
     names = coded.names
     listed = sorted(
@@ -107,23 +111,20 @@ def _scores(again: Relearned, order: Order, say: _Saying) -> tuple[tuple[ColumnS
             lead=lead,
         )
     left = tuple(names[at] for at in listed if at not in measured and yardstick.before(0, at))
-    return tuple(found[at] for at in listed), left
+    return tuple(found[at] for at in sorted(listed, key=lambda at: (names[at] not in order.outcomes, at))), left
 
 
 def _reliability(again: Relearned, order: Order, seed: int) -> tuple[Reliability, ...]:
-    """Outcomes, as the order names them, then the other numbers."""
+    """Outcomes, then the other numbers."""
     coded = again.coded
     found = []
-    for name, better in order.outcomes.items():
-        at = coded.names.index(name)
-        if at not in coded.numbers:
-            levels = better_levels(better, coded.levels[at], coded.has_blank[at])
+    for at, name in enumerate(coded.names):
+        if at in coded.numbers:
+            found.append(Reliability(name, name in order.outcomes, (), spread(again.below(at), coded.weights)))
+        elif name in order.outcomes:
+            levels = better_levels(order.outcomes[name], coded.levels[at], coded.has_blank[at])
             found.append(_of_levels(again, at, levels, seed))
-    numbers = sorted(coded.numbers, key=lambda at: coded.names[at] not in order.outcomes)
-    for at in numbers:
-        parts = spread(again.below(at), coded.weights)
-        found.append(Reliability(coded.names[at], coded.names[at] in order.outcomes, (), parts))
-    return tuple(found)
+    return tuple(sorted(found, key=lambda each: not each.outcome))
 
 
 def _of_levels(again: Relearned, at: int, levels: tuple[str, ...], seed: int) -> Reliability:

@@ -49,3 +49,11 @@ def leaves_a_damaged_file(pipe, records, name, choices, plan, max_parents, out):
         return ("done",)
 
     workers.report(pipe, work)
+
+
+def waits_judging(pipe, records, name, choices, learned, links, out):
+    waits(pipe, records, name, choices, "", 3, out)
+
+
+def breaks_judging(pipe, records, name, choices, learned, links, out):
+    breaks(pipe, records, name, choices, "", 3, out)

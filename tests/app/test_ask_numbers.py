@@ -273,3 +273,40 @@ def test_hostile_names_of_numbers_stay_text(client, store):
         assert not re.search(r"\sstyle=|<style|<script(?! src=)|\son\w+=\"|javascript:", text)
     assert f"setting {SCRIPT} to 7" in sentence(page)
     assert dict(parse_qsl(query))["set"] == "script-alert-1-script.to.7"
+
+
+@pytest.fixture
+def with_units(store: Store, study: Study) -> Iterator[None]:
+    """The study's numbers in units, one of them hostile, without learning again."""
+    units = {"mark": "<b>&\"'", "mentor hours": "hours a week", "travel time": "minutes"}
+    store.save_choices(study.key, Choices(units=units))
+    assert store.study(study.key).model == "current"
+    yield
+    store.save_choices(study.key, Choices())
+
+
+@pytest.mark.usefixtures("with_units")
+@pytest.mark.parametrize("page", ["ask", "answer"])
+def test_units_stand_in_the_sentences_and_on_the_axis(ask, page):
+    shown = html.unescape(ask(f"{HIGHER}&watch=mentor-hours", page=page))
+    plain = re.sub(r"<[^>]+>", "", shown)
+    assert re.search(
+        r"raising mentor hours by 2 hours a week would move mentor hours from [\d.]+ to [\d.]+ hours", plain
+    )
+    assert re.search(r">[\d.]+ hours a week</text>", shown)
+    assert "Counted in the records" not in plain or re.search(r"mean [\d.]+ hours a week", plain) or page == "answer"
+
+
+@pytest.mark.usefixtures("with_units")
+@pytest.mark.parametrize("page", ["ask", "answer"])
+def test_a_hostile_unit_is_text_everywhere(ask, page):
+    shown = ask("pin=shift-work.nights&watch=mark", page=page)
+    assert "<b>&" not in shown and "&lt;b&gt;&amp;&#34;&#39; on average" in shown
+
+
+@pytest.mark.usefixtures("with_units")
+def test_the_fields_of_a_number_tell_its_unit(ask):
+    shown = ask("pin=travel-time.from.20.under.30&watch=mentor-hours&open=travel-time")
+    for element in ("form-set-mentor-hours", "form-shift-mentor-hours"):
+        assert re.search(rf'id="{element}".*? hours a week</span>.*?</form>', shown, re.DOTALL), element
+    assert "mean, hours a week" in shown and 'pinned</span> <span class="quiet">at 20 to under 30 minutes' in shown

@@ -369,6 +369,8 @@ class TestFolder:
         store.close()
         with sqlite3.connect(store.folder / "steelyard.db") as database:
             database.execute("ALTER TABLE studies DROP COLUMN max_parents")
+            database.execute("DROP TABLE judging")
+            database.execute("DROP TABLE judgements")
             database.execute("PRAGMA user_version = 1")
         database.close()
         reopened = Store(store.folder)

@@ -10,6 +10,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from app.drawing.answer_beam import Mark, answer_beam, graduation
+from app.drawing.scale import rounded_outward
 
 RECORDED = Mark("recorded", "as recorded", "61%", 0.61, 0.59, 0.63)
 AMONG = Mark("among", "among these", "54%", 0.54, 0.51, 0.57)
@@ -135,3 +136,22 @@ def test_the_rule_runs_from_none_to_all():
 def test_a_hostile_name_is_text_in_the_drawing(name):
     drawing = ElementTree.fromstring(answer_beam([RECORDED], f"{name}: <b>&\"'"))
     assert drawing.get("aria-label") == f"{name}: <b>&\"'".replace("\t", " ")
+
+
+@pytest.mark.parametrize("unit", ["", " min", " minutes", " hours of every week"])
+@pytest.mark.parametrize(("low", "high"), [(3.0, 119.0), (0.4, 28.7), (-3.0, 8.0), (41_000.0, 99_000.0), (0.11, 0.32)])
+def test_no_figure_runs_into_the_last_one_and_its_unit(low, high, unit):
+    for width, letter in ((620.0, 7.4), (328.0, 7.4)):
+        drawn = ElementTree.fromstring(f"<g>{graduation(40, rounded_outward(low, high, (), unit))}</g>")
+        texts = [text for text in drawn.iter("text") if width > 600 or "t10" not in text.get("class").split()]
+        *others, last = texts
+        assert last.text.endswith(unit) and last.get("text-anchor") == "end" and len(texts) > 1
+        starts = width - letter * len(last.text)
+        for text in others:
+            half = len(text.text) * letter * (1.0 if text.get("text-anchor") == "start" else 0.5)
+            assert width * float(text.get("x").rstrip("%")) / 100 + half < starts
+
+
+def test_a_unit_is_text_and_never_markup():
+    drawn = graduation(40, rounded_outward(0.0, 10.0, (), " </text><script>"))
+    assert "<script>" not in drawn and "10 &lt;/text&gt;&lt;script&gt;" in drawn

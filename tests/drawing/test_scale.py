@@ -58,3 +58,9 @@ def test_ticks_rise_from_end_to_end(low, high):
     places = [tick.place for tick in ticks]
     assert places == sorted(places) and places[0] == 0 and places[-1] == 1
     assert ticks[0].words and ticks[-1].words
+
+
+@given(values, values)
+def test_the_unit_stands_on_the_last_figure_alone(one, other):
+    bare, told = (rounded_outward(min(one, other), max(one, other), (), behind) for behind in ("", " minutes"))
+    assert figures(told) == [*figures(bare)[:-1], f"{figures(bare)[-1]} minutes"]

@@ -66,8 +66,8 @@ def test_a_model_of_the_true_structure_passes_all_four_tests(judged):
     assert judgement.verdict == "yes" and all(each.met for each in judgement.tests)
 
 
-def test_columns_are_told_outcomes_first_then_changeable_ones(judged):
-    assert [each.column for each in judged[2].columns] == ["passed", "mentor", "shift", "distance"]
+def test_columns_are_told_outcomes_first_then_as_the_order_lists_them(judged):
+    assert [each.column for each in judged[2].columns] == ["passed", "shift", "distance", "mentor"]
 
 
 def test_the_same_records_and_seed_give_the_same_judgement(judged):
