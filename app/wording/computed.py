@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
+import math
+
 from app.wording.figures import share
 from engine.answering.answer import Answer
+from engine.answering.weighed import FEWEST
 
 COVERAGE = 0.90
 SPARE = 0.95  # of the sampled models: fewer independent ones than this share are told
@@ -15,7 +18,19 @@ def method(answer: Answer) -> str:
         how = f"Exactly{answer.method.removeprefix('exact')}"
     else:
         how = answer.method[:1].upper() + answer.method[1:]
-    return f"{how}, in {milliseconds(answer.milliseconds)}."
+    return f"{how}, in {milliseconds(answer.milliseconds)}.{sampling(answer)}"
+
+
+def sampling(answer: Answer) -> str:
+    """How far sampling may be off; empty for an answer summed exactly."""
+    if math.isinf(answer.effective):
+        return ""
+    if not math.isfinite(answer.mc_error) or answer.effective < FEWEST:
+        return " How far sampling is off cannot be told."
+    return (
+        f" Sampling has a standard error of at most {100 * answer.mc_error:.1f} points in a share, and of as many "
+        "hundredths of its own spread in a mean."
+    )
 
 
 def milliseconds(time: float) -> str:

@@ -17,6 +17,8 @@ from engine.network.nodes import Number
 ENOUGH = 0.2  # of half an interval's width is what a standard error may be
 FINE = 0.002  # and what it may be where nothing is drawn, so that there is no interval
 ROUNDING = 1e-12  # an error below this is what summing leaves
+FEW = 50.0  # effective particles below which an answer is told with a caution, and sampling goes on
+FEWEST = 10.0  # and below which they cannot tell how far off they are
 _TAILS = [0.05, 0.95]
 
 
@@ -61,7 +63,7 @@ class Weighed:
 
     def settled(self) -> bool:
         """Whether the point answer of every watched column is as exact as its interval asks for."""
-        if self._weight[0] == 0.0:
+        if self._effective() < FEW:
             return False
         for name, tally in self._shares.items():
             if not self._enough(tally, 1.0):
@@ -173,10 +175,16 @@ class Weighed:
                 numbers[name], error[name] = self._number(name)
             else:
                 error[name] = float(self._errors(tally).max())
+        effective = self._effective()
+        if effective < FEWEST:  # so few cannot tell their own error: it is that of not knowing
+            error = {name: max(each, 1.0 if name in numbers else 0.5) for name, each in error.items()}
         with np.errstate(divide="ignore", invalid="ignore"):
             log_evidence = self._scale + np.log(self._weight / self._size)
-        effective = float(self._weight[0] ** 2 / self._square[0]) if self._square[0] > 0.0 else 0.0
         return MixedRead(log_evidence, shares, numbers, error, effective)
+
+    def _effective(self) -> float:
+        """Kish's effective number of the particles of the point answer."""
+        return float(self._weight[0] ** 2 / self._square[0]) if self._square[0] > 0.0 else 0.0
 
     def _number(self, name: str) -> tuple[Mixture, float]:
         """The distribution of a number, and the standard error of its mean in sds of its own."""

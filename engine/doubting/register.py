@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from engine.answering.answer import Caution
-from engine.doubting import blanks, cap, counted, direction, models, outside, overlap, thin, unidentified
+from engine.doubting import blanks, cap, counted, direction, models, outside, overlap, sampled, thin, unidentified
 from engine.doubting.case import Case, Check
 
 CHECKS: tuple[Check, ...] = (
     unidentified.check,
+    sampled.check,
     overlap.check,
     outside.check,
     thin.check,
