@@ -2,6 +2,7 @@
 
 python -m tests.benchmarks.measured_mixed          37 columns, 10,000 records
 python -m tests.benchmarks.measured_mixed long     also 20 columns, 40,000 and 400,000 records
+python -m tests.benchmarks.measured_mixed growth   10 columns, 10,000 and 100,000 records
 """
 
 import json
@@ -30,7 +31,7 @@ def records(columns: int, rows: int) -> tuple[Table, Truth]:
     return Table.from_frame(truth.frame(truth.sample(rows, np.random.default_rng(0)))), truth
 
 
-def seconds(table: Table, truth: Truth, **how: bool) -> float:
+def seconds(table: Table, truth: Truth, **how: int) -> float:
     began = time.process_time()
     learn(table, truth.order, max_parents=PARENTS, **how)
     return time.process_time() - began
@@ -111,5 +112,12 @@ def measure(long: bool) -> dict[str, float]:
     return found
 
 
+def growth() -> dict[str, float]:
+    """Seconds with held-out folds, without drawn graphs, so that the records are most of the work."""
+    seconds(*records(10, 300))
+    tables = {rows: records(10, rows) for rows in (10_000, 100_000)}
+    return {f"seconds_{rows}": min(seconds(*made, graphs=0) for _ in range(2)) for rows, made in tables.items()}
+
+
 if __name__ == "__main__":
-    print(json.dumps(measure("long" in sys.argv[1:])))
+    print(json.dumps(growth() if "growth" in sys.argv[1:] else measure("long" in sys.argv[1:])))

@@ -12,6 +12,7 @@ import pytest
 
 ALL = os.environ.get("STEELYARD_BENCHMARKS") == "all"
 AIM, MARGIN = 100.0, 3.0  # times faster; what other work on the machine may cost
+FOLDS = 12.0 / 6.0  # times as long with held-out folds as without
 SHARE, SHORT = 0.99, 0.03  # of the generating model's gain; nats a row
 
 
@@ -44,9 +45,22 @@ def test_learning_numbers_beats_scoring_one_family_at_a_time(capsys):
             )
     assert found["apart"] < 1e-6
     assert ratio > AIM / MARGIN
+    assert found["with_folds"] / found["seconds"] < FOLDS * MARGIN
     if ALL:
         assert found["seconds_400000"] / found["seconds_40000"] < 10.0 * MARGIN
         assert found["peak"] < 1_000.0
+
+
+@pytest.mark.benchmark
+def test_ten_times_the_records_take_no_more_than_ten_times_as_long(capsys):
+    (found,) = measured("measured_mixed", "growth")
+    ratio = found["seconds_100000"] / found["seconds_10000"]
+    with capsys.disabled():
+        print(
+            f"\n10 mixed columns with held-out folds: {found['seconds_10000']:.2f} s of 10,000 records, "
+            f"{found['seconds_100000']:.2f} s of 100,000, {ratio:.1f} times"
+        )
+    assert ratio < 10.0
 
 
 @pytest.mark.benchmark
