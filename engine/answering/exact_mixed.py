@@ -132,7 +132,7 @@ def _reading(world: MixedWorld, names: tuple[str, ...]) -> Reading:
         at[name] = min(holding, key=lambda place: _product(scopes[place], laid.sizes))
     watched = [laid.labels[name] for name in names if name in laid.labels and name in laid.kept]
     tree = tree_plan(scopes, laid.sizes, watched, wholes=tuple(at.values()))
-    why = next((_why_not(block, None) for block in laid.factors if len(block.gates) > 1), "")
+    why = next((_why_not(block, None) for block in laid.factors if len(block.gates) > 2), "")
     for name, block in laid.watched.items():
         why = why or _why_not(block, name) * (len(set(block.gates) - {laid.roots[name]}) > 1)
     cells, stored = tree.cells + STEP * len(tree.steps), tree.stored

@@ -4,7 +4,9 @@ import numpy as np
 import pytest
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
+from scipy.stats import norm
 
+import engine
 from engine.answering.exact_mixed import plan
 from engine.answering.mixed import MixedWorld
 from engine.network.nodes import Category, Number
@@ -184,3 +186,29 @@ def test_a_density_is_what_the_share_below_grows_by(world):
         if name not in in_boxes(world) and name not in world.values and true.log_evidence > -np.inf:
             value = true.mean(name) + 0.3
             assert mixture.density([value])[0, 0] == pytest.approx(true.density(name, value), rel=1e-6, abs=1e-9)
+
+
+def test_two_numbers_that_act_through_bands_are_summed_exactly_and_three_are_not():
+    share = [[0.9, 0.1], [0.3, 0.7]]
+    nodes = [
+        engine.Number("x", bands=[0.0]),
+        engine.Number("y", parents=["x"], slopes=[1.0], bands=[0.5]),
+        engine.Category("c", ["n", "p"], ["x"], share),
+        engine.Category("d", ["n", "p"], ["y"], share),
+    ]
+    model = engine.Model.from_network(nodes)
+    exact = model.ask(pins={"c": "p"}, watch=["d"], exact=True)
+    assert exact.method.startswith("exact")
+    # By one-dimensional quadrature over x: y given x is normal with mean x and variance 1.
+    x = (np.arange(-90_000, 90_000) + 0.5) / 10_000.0  # midpoints, none of them on a cut
+    weight = norm.pdf(x) * np.where(x < 0.0, 0.1, 0.7)
+    high = 1.0 - norm.cdf(0.5 - x)
+    told = float((weight * (0.1 * (1.0 - high) + 0.7 * high)).sum() / weight.sum())
+    assert exact["d"].among.share("p") == pytest.approx(told, abs=1e-8)
+    third = [
+        engine.Number("z", parents=["y"], slopes=[1.0], bands=[0.0]),
+        engine.Category("e", ["n", "p"], ["z"], share),
+    ]
+    wider = engine.Model.from_network([*nodes, *third])
+    with pytest.raises(engine.Refusal, match="hang together"):
+        wider.ask(pins={"c": "p", "e": "p"}, watch=["d"], exact=True)
