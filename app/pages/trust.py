@@ -37,6 +37,14 @@ def cancel(request: Request, key: str) -> Response:
     return RedirectResponse(f"/study/{key}/trust", status_code=303)
 
 
+@router.post("/study/{key}/judge/forget")
+def forget(request: Request, key: str) -> Response:
+    """Say no more of a job that ended without a judgement."""
+    request.app.state.store.study(key)
+    request.app.state.judging.forget(key)
+    return RedirectResponse(f"/study/{key}/trust", status_code=303)
+
+
 def _page(request: Request, key: str, template: str, column: str | None) -> Response:
     store = request.app.state.store
     study: Study = store.study(key)

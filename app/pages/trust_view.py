@@ -16,6 +16,7 @@ from app.wording.amounts import count, listing, plural
 from app.wording.figures import share
 from app.wording.parts import Part
 from engine.judging.judgement import ColumnScore, Judgement, Reliability
+from engine.judging.rule import comes_true
 from engine.records.table import SMALL_COUNT
 
 SHOWN = 6  # dependences told at once
@@ -80,7 +81,8 @@ def view(kept: Kept, column: str | None) -> TrustView:
     shown = _picked(judgement, column)
     scores = [each for each in judgement.columns if each.linked or each.gain.mean or each.outcome]
     points = gains.scale(scores)
-    missing = [Line(wording.missed_figure(each), *_pair(wording.missed(each))) for each in judgement.dependences.missed]
+    found = sorted(judgement.dependences.missed, key=lambda each: not each.counts)
+    missing = [Line(wording.missed_figure(each), *_pair(wording.missed(each))) for each in found]
     return TrustView(
         verdict=wording.VERDICTS.get(judgement.verdict or "", "No outcome is marked."),
         deck=_deck(judgement),
@@ -205,6 +207,8 @@ def _told(said: Reliability) -> Told:
             "Each held-out record's value is placed in what was foreseen for that record; where the shape of the model "
             "is right, every tenth holds 10 in 100. The intervals hold all ten at once in 90 of 100 cases."
         )
+        if not comes_true(said):
+            note = f"{wording.another_shape(said)} {note}"
         rows = (("Seen", tuple(_cell(each.seen) for each in tenths)),)
         drawing = reliability.spread(tenths, f"Shares of the records in each tenth foreseen of {said.column}: {words}.")
         along, up = "along: tenths of what was foreseen, low to high", "up: how many in 100 fell into each"
@@ -225,7 +229,7 @@ def _cell(part: float) -> str:
 
 
 def _signed(value: float) -> str:
-    return f"{value:.4f}".replace("-", "−")
+    return f"{round(value, 4) + 0.0:.4f}".replace("-", "−")
 
 
 def _pair(found: tuple[list[Part], str]) -> tuple[tuple[Part, ...], str]:

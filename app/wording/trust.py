@@ -98,6 +98,14 @@ def come_true(said: Reliability) -> Said:
     )
 
 
+def another_shape(said: Reliability) -> str:
+    """What to do about a number whose values do not spread as foreseen."""
+    return (
+        f"Said and seen agree in {said.agree} of {len(said.tenths)} tenths: {said.column} is spread in another shape "
+        "than the model takes for it. Lean on its mean, not on shares of its ends; or take it as a grade on Records."
+    )
+
+
 def missed_figure(missed: Missed) -> str:
     return "" if math.isnan(missed.seen) else share(missed.seen)
 

@@ -71,7 +71,7 @@ def test_a_study_is_judged_in_a_process_of_its_own_and_the_page_tells_what_was_f
     assert said.count(" met ") >= 4 and "Brier score" in said
 
 
-def test_a_page_while_judging_tells_how_far_it_is_and_can_be_cancelled(client, monkeypatch):
+def test_a_page_while_judging_tells_how_far_it_is_and_can_be_cancelled(client, monkeypatch, judgement):
     study = brought(client)
     jobs = client.app.state.judging
     monkeypatch.setattr(jobs, "_work", slow_work.waits_judging)
@@ -87,6 +87,10 @@ def test_a_page_while_judging_tells_how_far_it_is_and_can_be_cancelled(client, m
     client.post(f"/study/{study.key}/judge/cancel")
     assert jobs.state(study.key).state == "cancelled"
     assert "Judging was cancelled." in client.get(f"/study/{study.key}/trust").text
+    keep(client.app.state.store, study, judgement)
+    assert "Judging was cancelled." in client.get(f"/study/{study.key}/trust").text
+    client.post(f"/study/{study.key}/judge/forget")
+    assert "Judging was cancelled." not in client.get(f"/study/{study.key}/trust").text
 
 
 def test_another_model_makes_what_was_found_old(client, judgement):
