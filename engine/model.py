@@ -167,10 +167,7 @@ class Model:
         return self.account(column).text
 
     def account(self, column: str, most: int = 24) -> Story:
-        """The same in sentences made of parts, with the table behind it: its `most` commonest configurations.
-
-        Raises Refusal for an unknown column.
-        """
+        """The same in parts, with the table behind it: its `most` commonest configurations. Raises Refusal as `story`."""
         return self._telling.account(column, most)
 
     def log_score(self, frame: pd.DataFrame) -> np.ndarray:
@@ -178,9 +175,8 @@ class Model:
         cannot be.
 
         frame: every column of the model; levels as texts, numbers as numbers, a number taken as bands as either a
-        number or the name of a band. A blank that no level stands for is summed out, so that a row scores what it does
-        hold; columns that the model does not have (a name, a weight) are not looked at.
-        Raises Refusal for a missing column, an unknown level, and a blank number that a known column comes from.
+        number or the name of a band. A blank that no level stands for is summed out; further columns are not looked at.
+        Raises Refusal for a missing column, an unknown level, and a blank number that a known number comes from.
         """
         return log_score(self.network, frame)
 

@@ -10,6 +10,7 @@ from math import prod
 import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
+from scipy.special import ndtr
 
 from engine.network.network import Network
 from engine.network.nodes import Category, Node, Number
@@ -29,10 +30,11 @@ def log_score(network: Network, frame: pd.DataFrame) -> Floats:
     A category counts its posterior predictive share, a number its predictive Student t density (a normal one where
     its parameters are known exactly). A number that follows its parents exactly, with variance 0, has no density: it
     counts as a category would, 1 where it is as it must be and 0 elsewhere. A blank that no level stands for is summed
-    out: a row then has the probability or density of what it does hold. Columns that the network does not have are
-    not looked at: none of its own may be missing, so that a name spelt wrongly is found all the same.
-    Raises Refusal as engine.network.rows.read_with_blanks does, for a blank number that a known column comes from, and
-    for blank categories of too many combinations.
+    out, a number with categories that come from it over its bands: a row then has the probability or density of what
+    it does hold. Columns that the network does not have are not looked at: none of its own may be missing, so that a
+    name spelt wrongly is found all the same.
+    Raises Refusal as engine.network.rows.read_with_blanks does, for a blank number that a known number comes from, and
+    for blanks of too many combinations.
     """
     if isinstance(frame, pd.DataFrame):
         frame = frame.loc[:, [name in network.index for name in frame.columns]]
@@ -48,11 +50,14 @@ def log_score(network: Network, frame: pd.DataFrame) -> Floats:
     return total
 
 
-def _all(network: Network, nodes: Collection[Node], rows: Rows) -> Floats:
-    """(rows,) natural log of the product of what each of `nodes` gives."""
+def _all(network: Network, nodes: Collection[Node], rows: Rows, hidden: Collection[str] = ()) -> Floats:
+    """(rows,) natural log of the product of what each of `nodes` gives; a number of `hidden` counts by its band."""
     total = np.zeros(rows.count)
     for node in nodes:
-        total += log_shares(network, node, rows) if isinstance(node, Category) else log_densities(network, node, rows)
+        if isinstance(node, Category):
+            total += log_shares(network, node, rows)
+        else:
+            total += (log_bands if node.name in hidden else log_densities)(network, node, rows)
     return total
 
 
@@ -63,11 +68,10 @@ def _summed(network: Network, rows: Rows, hidden: frozenset[str], here: NDArray[
     left = {node: unknown for node, unknown in bearing.items() if unknown}
     while left:
         together, nodes = _joined(left)
-        for name in together:
-            if name in network.numbers:
-                children = [node.name for node in nodes if name in node.parents]
-                why = f"{quoted(children[0])} comes from it: a blank number is summed out only where nothing does"
-                raise refused_blank(name, here, why)
+        for node in nodes:
+            if isinstance(node, Number) and (moving := hidden & set(network.number_parents(node.name))):
+                why = f"{quoted(node.name)} comes from it: a blank number is summed out only where no number does"
+                raise refused_blank(min(moving), here, why)
         sizes = [len(network.node(name).levels) for name in together]
         if prod(sizes) > COMBINATIONS:
             why = f"with what else is blank that is {prod(sizes):,} combinations, more than {COMBINATIONS:,}"
@@ -75,7 +79,7 @@ def _summed(network: Network, rows: Rows, hidden: frozenset[str], here: NDArray[
         found = np.full(rows.count, -np.inf)
         for levels in product(*map(range, sizes)):
             filled = {name: np.full(rows.count, level) for name, level in zip(together, levels, strict=True)}
-            found = np.logaddexp(found, _all(network, nodes, replace(rows, codes={**rows.codes, **filled})))
+            found = np.logaddexp(found, _all(network, nodes, replace(rows, codes={**rows.codes, **filled}), hidden))
         total += found
         left = {node: unknown for node, unknown in left.items() if node not in nodes}
     return total
@@ -120,6 +124,26 @@ def log_densities(network: Network, node: Number, rows: Rows) -> Floats:
     parts = [slice(start, start + BLOCK) for start in range(0, rows.count, BLOCK)]
     found = [node.regression.log_density(codes[part], beside[part], values[part]) for part in parts]
     return np.concatenate(found) if found else np.empty(0)
+
+
+def log_bands(network: Network, node: Number, rows: Rows) -> Floats:
+    """(rows,) natural log of the share of each row's band of a number, given its parents."""
+    categories, beside = network.category_parents(node.name), rows.numbers(network.number_parents(node.name))
+    ends = np.array([-np.inf, *node.bands, np.inf])
+    low, high = ends[rows.codes[node.name]], ends[rows.codes[node.name] + 1]
+    if node.regression is not None:
+        codes = np.column_stack([np.empty((rows.count, 0), dtype=np.int64), *(rows.codes[name] for name in categories)])
+        shares = node.regression.below(codes, beside, high) - node.regression.below(codes, beside, low)
+    else:
+        at = rows.configurations(network, categories)
+        slopes = np.asarray(node.slopes).reshape(np.asarray(node.intercept).size, beside.shape[1])[at]
+        mean = np.asarray(node.intercept).reshape(-1)[at] + (slopes * beside).sum(axis=1)
+        sd = np.sqrt(np.asarray(node.variance).reshape(-1)[at])
+        wide = np.where(sd > 0.0, sd, 1.0)
+        inside = ((low <= mean) & (mean < high)).astype(np.float64)
+        shares = np.where(sd > 0.0, ndtr((high - mean) / wide) - ndtr((low - mean) / wide), inside)
+    with np.errstate(divide="ignore"):
+        return np.asarray(np.log(np.maximum(shares, 0.0)))
 
 
 def _normal(node: Number, at: NDArray[np.integer], beside: Floats, values: Floats) -> Floats:

@@ -123,7 +123,6 @@ def test_levels_that_look_like_numbers_are_found_whatever_holds_them():
             "“flow” is blank in rows 2 and 3, and “depth” co",
             "flow",
         ),
-        (lambda rows: rows.assign(flow=[1.0, 2.0, None], depth=None), "blank in row 3, and “wet” comes", "flow"),
         (lambda rows: rows.assign(flow=["1", "fast", "2"]), "cannot be a number: record 2 holds “fast”", "flow"),
         (lambda rows: rows.assign(flow=[1.0, np.inf, 2.0]), "“flow” holds a number that is infinite", "flow"),
         (lambda rows: rows.to_dict("list"), "no DataFrame", "rows"),
@@ -154,6 +153,30 @@ def test_blank_categories_and_last_numbers_are_summed_out(net, seed, data):
         for name in gone:
             rows.iloc[place, list(rows.columns).index(name)] = None
     np.testing.assert_allclose(log_score(net, rows), expected, rtol=1e-9, atol=1e-9)
+
+
+def test_a_blank_number_with_categories_that_come_from_it_is_summed_over_its_bands():
+    found = MODEL.log_score(ROWS.assign(flow=None, depth=None))
+    for place, (rain, wet) in enumerate(zip(ROWS["rain"], ROWS["wet"], strict=True)):
+        r, w = ["no", "yes"].index(rain), ["no", "yes"].index(wet)
+        upto = norm.cdf([-np.inf, 2.0, 4.0, np.inf], FLOW.intercept[r], np.sqrt(FLOW.variance[r]))
+        assert np.exp(found[place]) == pytest.approx(RAIN.table[r] * np.diff(upto) @ WET.table[r, :, w])
+    exact = engine.Number("flow", ["rain"], [1.0, 4.0], [], [0.0, 0.0], bands=[2.0, 4.0])
+    rows = ROWS.assign(flow=None).drop(columns="depth")
+    told = engine.Model.from_network([RAIN, exact, WET]).log_score(rows)
+    np.testing.assert_allclose(np.exp(told), [0.8 * 0.9, 0.2 * 0.8, 0.2 * 0.2])
+
+
+def test_a_blank_learned_number_is_summed_out_of_its_predictive_density():
+    frame, net = school()
+    row = frame.iloc[:1]
+    values = np.linspace(-100.0, 250.0, 350_001)
+    every = log_score(net, pd.concat([row] * len(values), ignore_index=True).assign(score=values))
+    assert np.exp(log_score(net, row.assign(score=None))) == pytest.approx(
+        np.exp(every).sum() * (values[1] - values[0]), rel=1e-3
+    )
+    with pytest.raises(Refusal, match="“hours” is blank in row 1, and “score” comes from it"):
+        log_score(net, row.assign(hours=None))
 
 
 def test_a_blank_with_a_level_of_its_own_is_that_level_and_is_not_summed_out():
