@@ -167,7 +167,7 @@ class Model:
         return self.account(column).text
 
     def account(self, column: str, most: int = 24) -> Story:
-        """The same in parts, with the table behind it: its `most` commonest configurations. Raises Refusal as `story`."""
+        """Its parts, and the table behind it: the `most` commonest configurations. Raises Refusal as `story`."""
         return self._telling.account(column, most)
 
     def log_score(self, frame: pd.DataFrame) -> np.ndarray:
