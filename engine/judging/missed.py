@@ -98,14 +98,20 @@ class _Looking:
         self.coded = again.coded
         self.order = order
         self.invented = self._rows(again, seed, tick)
-        self.pools = [self._pool(place) for place in range(len(self.coded.names))]
+        pools = [self._pool(place) for place in range(len(self.coded.names))]
+        self.sizes = [int(pool.max()) + 1 for pool in pools]
+        self.pooled = [
+            np.asfortranarray(np.column_stack([pool[of[:, at]] for at, pool in enumerate(pools)]))
+            for of in (self.coded.codes, self.invented)
+        ]
 
     def judged(self, columns: tuple[int, ...]) -> tuple[float, int, float] | None:
         """As `departure`; None where the table is too thin, or has nothing to depend on."""
-        sizes = [len(set(self.pools[column].tolist())) for column in columns]
+        sizes = [self.sizes[column] for column in columns]
         if min(sizes) < 2 or self.coded.weights.sum() < _CELL * prod(sizes):
             return None
-        seen, foreseen = (self._table(columns, of, pooled=True) for of in (self.coded.codes, self.invented))
+        seen = _table(columns, sizes, self.pooled[0], self.coded.weights)
+        foreseen = _table(columns, sizes, self.pooled[1])
         found = departure(seen, foreseen + 0.5, float(len(self.invented)))
         return found if found[1] > 0 else None
 
@@ -115,8 +121,9 @@ class _Looking:
         names = self.coded.names
         given = (earlier, *others)
         order = (*given, later)
-        seen, foreseen = (self._table(order, of, pooled=False) for of in (self.coded.codes, self.invented))
-        people = self._table(order, self.coded.codes, pooled=False, weighted=False)
+        sizes = [len(self.coded.levels[column]) for column in order]
+        seen = _table(order, sizes, self.coded.codes, self.coded.weights)
+        foreseen, people = (_table(order, sizes, of) for of in (self.invented, self.coded.codes))
         best: tuple[float, tuple[int, ...], tuple[int, ...], float, float, int] | None = None
         for levels in self._compared(later):
             yes, all_of, said_of = (part[..., list(levels)].sum(axis=-1) for part in (people, seen, foreseen))
@@ -144,16 +151,6 @@ class _Looking:
             return [tuple(levels.index(level) for level in better)]
         return [(level,) for level in range(len(levels))]
 
-    def _table(self, columns: tuple[int, ...], of: NDArray[np.integer], pooled: bool, weighted: bool = True) -> Floats:
-        """(levels of each column...) the records, by weight, or the invented rows, in every combination."""
-        shape = [int(self.pools[column].max()) + 1 if pooled else len(self.coded.levels[column]) for column in columns]
-        at = np.zeros(len(of), dtype=np.int64)
-        for column, size in zip(columns, shape, strict=True):
-            codes = of[:, column]
-            at = at * size + (self.pools[column][codes] if pooled else codes)
-        weights = self.coded.weights if of is self.coded.codes and weighted else None
-        return np.bincount(at, weights, prod(shape)).astype(np.float64).reshape(shape)
-
     def _pool(self, column: int) -> Ints:
         """(levels,) which part of the table each level belongs to: those with few records share the last."""
         count = len(self.coded.levels[column])
@@ -178,3 +175,13 @@ class _Looking:
             for column, name in enumerate(self.coded.names):
                 found[part * (count // parts) : (part + 1) * (count // parts), column] = rows.codes[name]
         return found
+
+
+def _table(
+    columns: tuple[int, ...], sizes: list[int], codes: NDArray[np.integer], weights: Floats | None = None
+) -> Floats:
+    """(levels of each column...) rows in every combination, or the sum of their weights."""
+    at = codes[:, columns[0]].astype(np.int64)
+    for column, size in zip(columns[1:], sizes[1:], strict=True):
+        at = at * size + codes[:, column]
+    return np.bincount(at, weights, prod(sizes)).astype(np.float64).reshape(sizes)
