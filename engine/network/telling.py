@@ -40,7 +40,7 @@ class Telling:
         """As engine.model.Model.strength, of a link that there is."""
         if target in self.network.numbers:
             return number_strength(self.network, source, target, self._joint, lambda: self._typical)
-        return category_strength(self.network, source, target, self._better(target), self._joint)
+        return category_strength(self.network, source, target, self.better(target), self._joint)
 
     def account(self, column: str, most: int) -> Story:
         """As engine.model.Model.account. Raises Refusal for an unknown column."""
@@ -52,7 +52,7 @@ class Telling:
         if column in self.network.numbers:
             return self._number(column, most)
         common = self._joint(self.network.node(column).parents)
-        better = self._better(column) if self.order is not None and column in self.order.outcomes else None
+        better = self.better(column) if self.order is not None and column in self.order.outcomes else None
         rows = conditional.rows(self.network, column, common, most)
         return Story(said, rules(self.network, column, common, better), rows, common.size - len(rows))
 
@@ -68,7 +68,7 @@ class Telling:
     def _spread(self, number: str) -> float:
         return self._typical.sd(number)
 
-    def _better(self, column: str) -> list[int]:
+    def better(self, column: str) -> list[int]:
         """Positions of the better levels of an outcome, else of the commonest level."""
         node = self.network.node(column)
         better = None if self.order is None else self.order.outcomes.get(column)

@@ -20,7 +20,7 @@ def fixes(levers):
     return {column: engine.Fix(level, reach) for column, (level, reach) in levers.items()}
 
 
-@settings(max_examples=120, deadline=None)
+@settings(max_examples=60, deadline=None)
 @given(questions())
 def test_every_world_agrees_with_counting_out_every_case(asked):
     net, pinned, levers = asked
@@ -53,7 +53,7 @@ def at(marginal, draw):
     return marginal.point if draw == 0 else marginal.draws[:, draw - 1]
 
 
-@settings(max_examples=80, deadline=None)
+@settings(max_examples=50, deadline=None)
 @given(st.data())
 def test_impossible_pins_are_refused_by_their_smallest_contradiction(data):
     net = data.draw(networks(certain=True, holes=True))

@@ -28,7 +28,7 @@ def asked(question, **more):
         raise
 
 
-@settings(max_examples=150, deadline=None)
+@settings(max_examples=60, deadline=None)
 @given(lever_questions())
 def test_every_kind_of_lever_agrees_with_counting_out_two_worlds(question):
     net, pinned, levers, against, after = question

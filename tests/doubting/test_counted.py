@@ -70,7 +70,7 @@ def test_the_count_of_more_or_less_is_that_of_the_levels_the_model_speaks_of(bet
     model = marked(better, blank)
     caution = only(model.ask({"a": "x"}), "counted")
     assert f"have out = {level} when counted" in caution.text
-    assert [model.network.node("out").levels[place] for place in model._better("out")] == [level]
+    assert [model.network.node("out").levels[place] for place in model._telling.better("out")] == [level]
 
 
 def test_a_count_that_the_model_agrees_with_is_not_told():
