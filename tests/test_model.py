@@ -142,7 +142,7 @@ def test_what_is_no_question_is_refused(school):
     refused("no lever", "engine.Fix", lambda: school.ask(levers={"mentor": "yes"}))
     refused("one text, not a list", "passed", lambda: school.ask(watch="passed"))
     refused("watches no column", "at least one", lambda: school.ask(watch=[]))
-    refused("pins of a question", "region", lambda: school.ask(pins=["region"]))
+    refused("pins of a question", "a column", lambda: school.ask(pins=["region"]))
     refused("exact = 1 is no choice", "True, False or None", lambda: school.ask(exact=1))
     refused("seed = 1.5 is no whole number of 0 or more", "0 or more", lambda: school.ask(seed=1.5))
 

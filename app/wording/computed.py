@@ -48,6 +48,8 @@ def intervals(answer: Answer, draws: int, each: int) -> str:
     doubt = answer.doubt
     if doubt is not None and answer.doubted:
         others = f", {doubt.different:,} of them different" if doubt.different < doubt.graphs else ""
+        if doubt.different == 1 < doubt.graphs:
+            others = ", all alike"
         if doubt.effective < SPARE * doubt.graphs:
             others += f", worth {doubt.effective:,.0f} independent ones"
         return (

@@ -62,11 +62,11 @@ class Marginal:
 
     def density(self, grid: Iterable[float]) -> np.ndarray:
         """(values,) density of a number at each value of `grid`."""
-        return np.asarray(self._number.density(np.asarray(list(grid), dtype=np.float64))[:, 0])
+        return np.asarray(self._number.density(_values(grid))[:, 0])
 
     def below(self, grid: Iterable[float]) -> np.ndarray:
         """(values,) share of a number below each value of `grid`."""
-        return np.asarray(self._number.below(np.asarray(list(grid), dtype=np.float64))[:, 0])
+        return np.asarray(self._number.below(_values(grid))[:, 0])
 
     @property
     def _number(self) -> Mixture:
@@ -89,11 +89,24 @@ class Marginal:
         return spread(self.share_draws(wanted), self.share(wanted), coverage)
 
     def _rows(self, wanted: Wanted) -> list[int]:
+        if not isinstance(wanted, Iterable):
+            raise Refusal(f"There is no level {quoted(wanted)} here.", do=f"The levels are {', '.join(self.levels)}.")
         names = [wanted] if isinstance(wanted, str) else list(dict.fromkeys(wanted))
         for name in names:
             if name not in self.levels:
                 raise Refusal(f"There is no level {quoted(name)} here.", do=f"The levels are {', '.join(self.levels)}.")
         return [self.levels.index(name) for name in names]
+
+
+def _values(grid: Iterable[float]) -> np.ndarray:
+    """Values as an array. Raises Refusal for what are no finite numbers."""
+    try:
+        found = np.asarray(list(grid), dtype=np.float64)
+    except (TypeError, ValueError):
+        found = np.array([np.nan])
+    if found.ndim != 1 or not np.isfinite(found).all():
+        raise Refusal("These are no values of a number.", where="grid", do="Give a list of finite numbers.")
+    return found
 
 
 def spread(draws: np.ndarray, point: float, coverage: float) -> tuple[float, float]:

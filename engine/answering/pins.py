@@ -94,18 +94,30 @@ def checked_pins(network: Network, pins: Mapping[str, object] | None) -> Pins:
 
 
 def _names_bands(wanted: object) -> bool:
-    return isinstance(wanted, str) or (isinstance(wanted, Iterable) and all(isinstance(each, str) for each in wanted))
+    if isinstance(wanted, str):
+        return True
+    try:
+        return all(isinstance(each, str) for each in wanted)  # type: ignore[attr-defined]
+    except TypeError:  # nothing that can be gone through, such as a number
+        return False
 
 
 def finite(node: Node, value: object, what: str) -> float:
     """A value of a number. what: "pinned to" or "set to". Raises Refusal for anything that is no finite number."""
-    if isinstance(value, bool) or not isinstance(value, Real) or not math.isfinite(value):
+    if isinstance(value, bool) or not isinstance(value, Real) or not _fits_a_float(value):
         do = "Give one number, or a (low, high) range" if what == "pinned to" else "Give one number"
         bands = f", or some of its bands: {listed(node.levels)}." if what == "pinned to" and node.cuts else "."
         raise Refusal(
             f"{quoted(node.name)} is a number and cannot be {what} {quoted(value)}.", where=node.name, do=do + bands
         )
     return float(value) + 0.0
+
+
+def _fits_a_float(value: Real) -> bool:
+    try:
+        return math.isfinite(value)
+    except OverflowError:
+        return False
 
 
 def pinned_levels(node: Node, wanted: object) -> frozenset[int]:

@@ -70,19 +70,25 @@ def question(
     Raises Refusal for an unknown column or level, what is no pin or no lever, a lever that is not changeable, rules in
     a circle, a pin downstream of a lever, one for after the levers that no lever moves, nothing to watch.
     """
-    example = 'Write {"region": "north"}.'
     for what, given in (("pins", pins), ("levers", levers), ("levers against", against), ("pins after", pins_after)):
         if given is not None and not isinstance(given, Mapping):
-            raise Refusal(f"The {what} of a question are a dictionary, column to value.", do=example)
+            example = '{"a column": engine.Fix("a level")}' if what.startswith("levers") else '{"a column": "a level"}'
+            raise Refusal(
+                f"The {what} of a question are a dictionary, column to value.", where=what, do=f"Write {example}."
+            )
     for what, names in (("watch", watch), ("beside", beside)):
+        told = "to watch" if what == "watch" else "to read beside"
         if isinstance(names, str):
-            raise Refusal(f"The columns to {what} are one text, not a list.", where=what, do=f"Write [{names!r}].")
+            raise Refusal(f"The columns {told} are one text, not a list.", where=what, do=f"Write [{names!r}].")
+        if not isinstance(names, Iterable):
+            raise Refusal(f"The columns {told} are no list of names.", where=what, do='Write ["a column"].')
+    watch, beside = list(watch), list(beside)
     before = checked_pins(network, pins)
     found = Question(
         pins=before.positions,
         levers=_settings(network, levers, changeable),
-        watch=tuple(known(network, column).name for column in dict.fromkeys(watch)),
-        beside=tuple(known(network, column).name for column in dict.fromkeys(beside)),
+        watch=tuple(dict.fromkeys(known(network, column).name for column in watch)),
+        beside=tuple(dict.fromkeys(known(network, column).name for column in beside)),
         values=before.values,
         ranges=before.ranges,
         against=_settings(network, against, changeable) if against else None,

@@ -301,7 +301,9 @@ def test_pins_around_levers_are_refused_with_both_ways_out(programme):
     )
     refused("no lever for a pin to come after", "Set a lever", lambda: programme.ask(pins_after={"need": "no"}))
     refused("nothing to hold against", "Set a lever first", lambda: programme.ask(against=fix))
-    refused("levers against of a question are a dictionary", "north", lambda: programme.ask({}, fix, against=["offer"]))
+    refused(
+        "levers against of a question are a dictionary", "engine.Fix", lambda: programme.ask({}, fix, against=["offer"])
+    )
     refused("No column is named", "passed", lambda: programme.ask({}, fix, ["passed"]).joint([]))
     refused("“need” was not asked for", "passed", lambda: programme.ask({}, fix, ["passed"]).joint(["need"]))
 
