@@ -220,14 +220,6 @@ def _set_words(asked: Asked, column: str, setting: Setting, reach: float) -> str
     return f"{words} · its effect is withheld" if asked.blocked else words
 
 
-def _watch(asked: Asked, address: Address, column: str) -> Act | None:
-    """Make this the column of the answer sentence; None where it is."""
-    if column == asked.watch:
-        return None
-    slug = asked.spine.names.slugs[column]
-    return Act(f"watch-{slug}", address(asked.question.watching(column)), f"Watch {column}")
-
-
 def _state(asked: Asked, column: str) -> str:
     """What the column is to the question: watched, an outcome, changeable; else its kind."""
     better = asked.spine.order.outcomes.get(column)

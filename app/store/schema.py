@@ -13,7 +13,19 @@ from engine.refusal import Refusal
 VERSION = 4
 PATIENCE = 10.0  # seconds to wait for another process that is writing
 
-TABLES = """
+_JOB = """
+    study TEXT PRIMARY KEY REFERENCES studies (key),
+    state TEXT NOT NULL,
+    fraction REAL NOT NULL,
+    words TEXT NOT NULL,
+    done TEXT NOT NULL,
+    started TEXT NOT NULL,
+    beat REAL NOT NULL,
+    message TEXT,
+    place TEXT,
+    advice TEXT
+"""
+TABLES = f"""
 CREATE TABLE studies (
     key TEXT PRIMARY KEY,
     name TEXT NOT NULL,
@@ -35,30 +47,8 @@ CREATE TABLE studies (
     asked INTEGER NOT NULL DEFAULT 0,
     last TEXT
 ) STRICT;
-CREATE TABLE jobs (
-    study TEXT PRIMARY KEY REFERENCES studies (key),
-    state TEXT NOT NULL,
-    fraction REAL NOT NULL,
-    words TEXT NOT NULL,
-    done TEXT NOT NULL,
-    started TEXT NOT NULL,
-    beat REAL NOT NULL,
-    message TEXT,
-    place TEXT,
-    advice TEXT
-) STRICT;
-CREATE TABLE judging (
-    study TEXT PRIMARY KEY REFERENCES studies (key),
-    state TEXT NOT NULL,
-    fraction REAL NOT NULL,
-    words TEXT NOT NULL,
-    done TEXT NOT NULL,
-    started TEXT NOT NULL,
-    beat REAL NOT NULL,
-    message TEXT,
-    place TEXT,
-    advice TEXT
-) STRICT;
+CREATE TABLE jobs ({_JOB}) STRICT;
+CREATE TABLE judging ({_JOB}) STRICT;
 CREATE TABLE judgements (
     study TEXT PRIMARY KEY REFERENCES studies (key),
     learned_file TEXT NOT NULL,

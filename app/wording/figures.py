@@ -53,12 +53,8 @@ def signed_span(low: float, high: float, decimals: int = 0) -> str:
 
 
 @dataclass(frozen=True)
-class Change:
-    """From one share to another, with the interval of the change: shares 0 to 1.
-
-    The words agree with each other: when the change does not come out of the rounded ends, or whole figures cannot
-    show the width of the interval or that it leaves 0 out, all get one decimal.
-    """
+class Between:
+    """From one figure to another, with the interval of the change."""
 
     start: float
     end: float
@@ -79,6 +75,15 @@ class Change:
     def known(self) -> bool:
         """Whether the change is a point, known without doubt in this model."""
         return self.low == self.high
+
+
+@dataclass(frozen=True)
+class Change(Between):
+    """From one share to another, with the interval of the change: shares 0 to 1.
+
+    The words agree with each other: when the change does not come out of the rounded ends, or whole figures cannot
+    show the width of the interval or that it leaves 0 out, all get one decimal.
+    """
 
     @property
     def decimals(self) -> int:

@@ -5,7 +5,8 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 
-MINUS = "−"
+from app.wording.figures import MINUS, Between
+
 NEVER_FINER = 20  # parts of what the values spread by: an interval narrower than one of them gets no more decimals
 MOST_MORE = 3  # decimals added at most, so that the figures of a change agree with each other
 CERTAIN = 1e-9  # a change this small beside the spread of the values is the rounding of sums
@@ -45,33 +46,14 @@ def round_value(value: float, width: float) -> float:
 
 
 @dataclass(frozen=True)
-class Move:
+class Move(Between):
     """From one mean to another, with the interval of the change, in the number's own unit.
 
     base: decimals to begin with.  The words agree with each other: when the decimals cannot show that the interval
     leaves 0 out all get more, and when the change does not come out of the rounded ends all get one less, or else more.
     """
 
-    start: float
-    end: float
-    low: float
-    high: float
     base: int = 0
-
-    @property
-    def moves(self) -> bool:
-        """Whether the interval leaves 0 out."""
-        return self.low > 0 or self.high < 0
-
-    @property
-    def still(self) -> bool:
-        """Whether nothing changes, in this model and beyond doubt."""
-        return self.known and self.start == self.end
-
-    @property
-    def known(self) -> bool:
-        """Whether the change is a point, known without doubt in this model."""
-        return self.low == self.high
 
     @property
     def decimals(self) -> int:

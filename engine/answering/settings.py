@@ -7,13 +7,10 @@ from dataclasses import dataclass
 import numpy as np
 
 
-@dataclass(frozen=True)
-class Setting:
-    """A category fixed: the level's position, the probability that the lever takes, and the level's name."""
+class Unruled:
+    """What levers have in common that go by no other column. reach: the probability that the lever takes."""
 
-    position: int
     reach: float
-    level: str
 
     @property
     def ruler(self) -> str | None:
@@ -25,6 +22,15 @@ class Setting:
         """Whether what is shown does not hang on the natural value."""
         return self.reach == 1.0
 
+
+@dataclass(frozen=True)
+class Setting(Unruled):
+    """A category fixed: the level's position, the probability that the lever takes, and the level's name."""
+
+    position: int
+    reach: float
+    level: str
+
     def copy(self, levels: int) -> np.ndarray:
         """(levels, levels) probability of what is shown, the last axis, given the natural level; (levels,) if it
         `forgets` that."""
@@ -32,19 +38,11 @@ class Setting:
 
 
 @dataclass(frozen=True)
-class MixSetting:
+class MixSetting(Unruled):
     """A category mixed: the share of every level, and the probability that the lever takes."""
 
     shares: tuple[float, ...]
     reach: float
-
-    @property
-    def ruler(self) -> str | None:
-        return None
-
-    @property
-    def forgets(self) -> bool:
-        return self.reach == 1.0
 
     def copy(self, levels: int) -> np.ndarray:
         """As `Setting.copy`."""
@@ -75,32 +73,20 @@ class RuleSetting:
 
 
 @dataclass(frozen=True)
-class ValueSetting:
+class ValueSetting(Unruled):
     """A number fixed at one value, or at one of several with a share each; and the probability that the lever takes."""
 
     values: tuple[float, ...]
     shares: tuple[float, ...]
     reach: float
 
-    @property
-    def ruler(self) -> str | None:
-        return None
-
-    @property
-    def forgets(self) -> bool:
-        return self.reach == 1.0
-
 
 @dataclass(frozen=True)
-class ShiftSetting:
+class ShiftSetting(Unruled):
     """A number shifted by an amount, and the probability that the lever takes."""
 
     amount: float
     reach: float
-
-    @property
-    def ruler(self) -> str | None:
-        return None
 
     @property
     def forgets(self) -> bool:

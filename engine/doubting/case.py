@@ -18,7 +18,7 @@ from engine.learning.cap import Capped
 from engine.network.network import Network
 from engine.order import Order, better_levels
 from engine.records.table import SMALL_COUNT
-from engine.records.wording import listing
+from engine.records.wording import figure, listing
 
 Found = tuple[Caution, ...]
 Check = Callable[["Case"], Found | None]  # None: this check cannot be made of this question
@@ -126,6 +126,11 @@ def out_of(part: int, whole: int) -> str:
 def named(names: Iterable[str], joint: str = "and") -> str:
     """Names in a sentence: "a", "a and b", "a, b and c"."""
     return listing(list(names), None, joint)
+
+
+def rounded(value: float, digits: int = 4) -> str:
+    """A number to so many digits, as people read it."""
+    return figure(float(f"{value:.{digits}g}"))
 
 
 def per_cent(share: float) -> str:

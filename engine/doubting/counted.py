@@ -5,9 +5,9 @@ from __future__ import annotations
 import math
 
 from engine.answering.answer import Caution, Counted, Marginal
-from engine.doubting.case import Case, Found, named, per_cent
+from engine.doubting.case import Case, Found, named, per_cent, rounded
+from engine.records.intervals import wilson
 from engine.records.table import SMALL_COUNT
-from engine.records.wording import figure
 
 COVERAGE = 0.90
 ENOUGH = 100  # records: among fewer, a share that chance explains is not worth knowing
@@ -70,26 +70,13 @@ def _of_mean(case: Case, column: str, among: Marginal, count: Counted, mean: flo
     if by_chance and count.rows < ENOUGH:
         return []
     text = (
-        f"is the mean of {column} when {case.these} are counted; the model says {_short(among.mean)}, between "
-        f"{_short(low)} and {_short(high)}."
+        f"is the mean of {column} when {case.these} are counted; the model says {rounded(among.mean)}, between "
+        f"{rounded(low)} and {rounded(high)}."
     )
     do = "For how things are, go by the count; on the Model page, see whether more links bring the two together."
     figures = {"counted": mean, "model": among.mean, "low": low, "high": high, "rows": count.rows}
     rank = "know" if by_chance else "weakens"
-    return [Caution(rank, "counted", _short(mean), text, do, figures, (column, *case.asked.pinned))]
-
-
-def _short(value: float) -> str:
-    """To four digits, as people read it."""
-    return figure(float(f"{value:.4g}"))
-
-
-def wilson(held: float, rows: int) -> tuple[float, float]:
-    """90 % score interval of a share counted as `held` of `rows`, rows at least 1 (Wilson 1927)."""
-    share, square = held / rows, DEVIATION**2
-    middle = (share + square / (2.0 * rows)) / (1.0 + square / rows)
-    half = DEVIATION / (1.0 + square / rows) * math.sqrt(share * (1.0 - share) / rows + square / (4.0 * rows**2))
-    return middle - half, middle + half
+    return [Caution(rank, "counted", rounded(mean), text, do, figures, (column, *case.asked.pinned))]
 
 
 def _counted(held: float, rows: int) -> str:

@@ -35,9 +35,6 @@ class Graph:
     def without_links_from(self, columns: Collection[str]) -> Graph:
         return Graph(self.columns, frozenset(link for link in self.links if link[0] not in columns), self.pairs)
 
-    def without_pairs(self, pairs: Collection[Columns]) -> Graph:
-        return Graph(self.columns, self.links, self.pairs - frozenset(pairs))
-
     def sorted(self, columns: Collection[str]) -> tuple[str, ...]:
         """Some of its columns, parents before children."""
         return tuple(column for column in self.columns if column in columns)

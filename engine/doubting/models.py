@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
+from functools import partial
+
 from engine.answering.answer import Caution, Doubt
-from engine.doubting.case import Case, Found, named, per_cent
-from engine.records.wording import figure
+from engine.doubting.case import Case, Found, named, per_cent, rounded
 
 COVERAGE = 0.90
 FEW = 0.05  # of the plausible models: fewer than this share are not told of
@@ -82,7 +83,7 @@ def _outside(case: Case, column: str) -> list[Caution]:
     hair = ROUNDING * (1.0 if wanted is not None else reading.recorded.sd)
     if low - hair <= said <= high + hair:
         return []
-    told = _value if wanted is None else _points if changes else per_cent
+    told = partial(rounded, digits=3) if wanted is None else _points if changes else per_cent
     kind = "change" if changes else "mean" if wanted is None else "share"
     what = f"the {kind} of {column}" if wanted is None else f"the {kind} for {column} = {named(wanted, 'or')}"
     unit = " points" if changes and wanted is not None else ""
@@ -98,11 +99,6 @@ def _outside(case: Case, column: str) -> list[Caution]:
             (column, *case.asked.levers),
         )
     ]
-
-
-def _value(value: float) -> str:
-    """A number's mean, or a change of it, with three figures."""
-    return figure(float(f"{value:.3g}"))
 
 
 def _points(change: float) -> str:

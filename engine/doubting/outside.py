@@ -5,9 +5,8 @@ from __future__ import annotations
 import numpy as np
 
 from engine.answering.answer import Caution
-from engine.doubting.case import Case, Found, per_cent
+from engine.doubting.case import Case, Found, per_cent, rounded
 from engine.network.nodes import Number
-from engine.records.wording import figure
 
 WEAKENS_FROM = 0.05  # share of the records asked about; common practice, no source
 RANGE = (0.01, 0.99)  # quantiles of the records that are called their range: single extremes say little
@@ -31,15 +30,10 @@ def check(case: Case) -> Found | None:
         if beyond < WEAKENS_FROM:
             continue
         text = (
-            f"of the records asked about would have {column} outside {figure(_short(low))} to {figure(_short(high))}, "
+            f"of the records asked about would have {column} outside {rounded(low, 3)} to {rounded(high, 3)}, "
             f"where 98% of the records lie. Beyond, the model's straight lines run on without any to hold them."
         )
         do = f"Set {column} to where there are records."
         figures = {"share beyond": beyond, "low": float(low), "high": float(high)}
         found.append(Caution("weakens", "outside", per_cent(beyond), text, do, figures, (column,)))
     return tuple(found)
-
-
-def _short(value: float) -> float:
-    """To three digits, as a range is told."""
-    return float(f"{value:.3g}")

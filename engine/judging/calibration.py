@@ -6,7 +6,8 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.special import ndtri
+
+from engine.records.intervals import wilson
 
 Floats = NDArray[np.float64]
 
@@ -46,19 +47,6 @@ class Brier:
     resolution: float
     uncertainty: float
     within: float
-
-
-def wilson(successes: float, trials: float, coverage: float = 0.90) -> tuple[float, float]:
-    """The score interval of a share (Wilson 1927); 0 to 1 without trials."""
-    if trials <= 0.0:
-        return 0.0, 1.0
-    z = float(ndtri(0.5 + 0.5 * coverage))
-    share = successes / trials
-    middle = (share + z * z / (2.0 * trials)) / (1.0 + z * z / trials)
-    half = z / (1.0 + z * z / trials) * np.sqrt(share * (1.0 - share) / trials + z * z / (4.0 * trials * trials))
-    low = 0.0 if successes <= 0.0 else max(0.0, float(middle - half))
-    high = 1.0 if successes >= trials else min(1.0, float(middle + half))
-    return low, high
 
 
 def brier(

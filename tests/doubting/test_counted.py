@@ -3,7 +3,7 @@
 import pytest
 
 import engine
-from engine.doubting.counted import wilson
+from engine.records.intervals import wilson
 from tests.doubting.worlds import codes_of, only, repeated, world
 
 

@@ -9,7 +9,8 @@ from hypothesis import strategies as st
 from scipy import stats
 from sklearn.metrics import brier_score_loss
 
-from engine.judging.calibration import COVERAGE, brier, in_tenths, spread, tenths, wilson
+from engine.judging.calibration import COVERAGE, brier, in_tenths, spread, tenths
+from engine.records.intervals import wilson
 
 FORECASTS = np.repeat([0.1, 0.3, 0.6, 0.9], [3, 4, 3, 5])
 HAPPENED = np.array([0, 0, 1, 0, 1, 0, 0, 1, 0, 1, 1, 1, 1, 0, 1], dtype=float)
